@@ -1,0 +1,255 @@
+package command
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"reflect"
+	"runtime"
+	"strings"
+	"time"
+
+	"rimlight/reports"
+	"rimlight/runner/canon"
+	"rimlight/runner/engine"
+	"rimlight/runner/plan"
+	"rimlight/steps/check"
+	"rimlight/steps/figure"
+	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/limbtable"
+	"rimlight/steps/spectrum"
+	"rimlight/steps/table"
+)
+
+// shown are the library's result types, by the Go type that recipes know them
+// by. Values of other types are decoded without their Go type.
+var shown = types(
+	check.Check{}, figure.Figure{}, fit.CurveFit{}, fit.Posterior{}, fit.Quantity{}, lightcurve.Channel{}, lightcurve.Cube{}, lightcurve.Curve{},
+	limbtable.Table{}, spectrum.Point{}, spectrum.Spectrum{}, table.Table{}, false, 0, 0.0, "",
+)
+
+func types(samples ...any) map[string]reflect.Type {
+	out := map[string]reflect.Type{}
+	for _, s := range samples {
+		t := reflect.TypeOf(s)
+		name := t.String()
+		if p := t.PkgPath(); p != "" {
+			name = p + "." + t.Name()
+		}
+		out[name] = t
+		out["[]"+name] = reflect.SliceOf(t)
+	}
+	return out
+}
+
+// maxShown is the largest value, in bytes, that is decoded without its Go
+// type: such values are shown as trees, which grow in memory.
+const maxShown = 4 << 20
+
+// decode turns a sealed value into Go for the report; nil when it is not to be
+// shown.
+func decode(sealed []byte) any {
+	typ, layout, data, err := canon.Open(sealed)
+	if err != nil {
+		return nil
+	}
+	if t, ok := shown[typ]; ok {
+		if want, err := canon.Layout(t); err == nil && want == layout {
+			v := reflect.New(t)
+			if canon.UnmarshalValue(data, v.Elem()) == nil {
+				return v.Elem().Interface()
+			}
+		}
+	}
+	if len(data) > maxShown {
+		return nil
+	}
+	v, err := canon.Tree(data, maxShown)
+	if err != nil {
+		return nil
+	}
+	return v
+}
+
+// document gathers what the report shows.
+func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Outcome, started time.Time) reports.Document {
+	p := e.Plan
+	d := reports.Document{Title: p.Recipe.Title, Source: p.Recipe.Source, File: filepath.Base(p.Recipe.File), Started: started,
+		Command: "rimlight " + strings.Join(a.args, " "), Host: host(e.Build)}
+	for i, in := range outcome.Inputs {
+		d.Inputs = append(d.Inputs, inputOf(ctx, e, i, in))
+	}
+	used := map[string]bool{}
+	for i := range p.Steps {
+		d.Steps = append(d.Steps, stepOf(ctx, e, i, outcome))
+		for _, pkg := range e.Library.Reached(p.Steps[i].Packages) {
+			if !used[pkg] {
+				used[pkg] = true
+				d.Library = append(d.Library, reports.Package{Path: pkg, Hash: e.Library.Hash(pkg)})
+			}
+		}
+	}
+	for _, s := range p.Settings {
+		out := reports.Setting{Name: s.Name, Value: s.InForce.Text, Unit: s.Unit, About: s.About, Changed: s.Given, Recipe: s.Value.Text, Line: s.Pos.Line}
+		for _, v := range s.AlsoTry {
+			out.AlsoTry = append(out.AlsoTry, v.Text)
+		}
+		d.Settings = append(d.Settings, out)
+	}
+	for _, m := range e.Build.Modules {
+		d.Modules = append(d.Modules, reports.Module(m))
+	}
+	d.Outcome = verdict(outcome, d.Steps)
+	d.Ended = time.Now().UTC()
+	return d
+}
+
+// verdict is how a run ended as a whole.
+func verdict(outcome *engine.Outcome, steps []reports.Step) reports.Outcome {
+	for _, in := range outcome.Inputs {
+		if in.State == engine.Failed {
+			return reports.StepFailed
+		}
+	}
+	for _, s := range outcome.Steps {
+		if s.State == engine.Failed {
+			return reports.StepFailed
+		}
+	}
+	if outcome.Interrupted {
+		return reports.Interrupted
+	}
+	if _, failed := checks(steps); len(failed) > 0 {
+		return reports.CheckFailed
+	}
+	return reports.Done
+}
+
+// checks are all checks among the results of steps.
+func checks(steps []reports.Step) (passed int, failed []check.Check) {
+	for _, s := range steps {
+		for _, r := range s.Results {
+			var list []check.Check
+			switch v := r.Value.(type) {
+			case check.Check:
+				list = []check.Check{v}
+			case []check.Check:
+				list = v
+			}
+			for _, c := range list {
+				if c.Passed {
+					passed++
+				} else {
+					failed = append(failed, c)
+				}
+			}
+		}
+	}
+	return passed, failed
+}
+
+func inputOf(ctx context.Context, e *engine.Engine, i int, in engine.Input) reports.Input {
+	spec := e.Plan.Inputs[i]
+	out := reports.Input{Name: in.Name, Layout: spec.Layout, About: spec.About, Type: spec.Type, State: reports.State(in.State), Why: in.Why, Took: in.Took}
+	for _, f := range in.Files {
+		out.Files = append(out.Files, reports.InputFile{Name: filepath.Base(f.Path), Size: f.Size, SHA256: f.SHA256})
+	}
+	if in.Text != "" {
+		out.Key = in.Text.Key().String()
+	}
+	if len(in.Results) == 1 {
+		out.Hash = in.Results[0].Hash.String()
+		if len(in.Files) > 0 {
+			if b, err := e.InputBytes(ctx, i); err == nil {
+				out.Value = decode(b)
+			}
+		}
+	}
+	return out
+}
+
+func stepOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcome) reports.Step {
+	spec, s := &e.Plan.Steps[i], &outcome.Steps[i]
+	out := reports.Step{Name: spec.Name, Fence: spec.Fence, Section: e.Plan.Recipe.Sections[spec.Section].Heading, Line: spec.Pos.Line,
+		Signature: spec.Signature, Doc: spec.Doc, State: reports.State(s.State), Why: s.Why, Err: s.Err, Log: s.Log, Seed: s.Seed, Took: s.Took, When: s.When}
+	if spec.Step.Each != nil {
+		out.Each = spec.Step.Each.Element + " in " + spec.Step.Each.Collection
+	}
+	if s.Text != "" {
+		out.Key = s.Text.Key().String()
+	}
+	for _, a := range spec.Args {
+		arg := reports.Argument{Name: a.Name, Type: a.Type, Source: string(a.Source), From: a.From}
+		switch a.Source {
+		case plan.FromSetting:
+			for _, set := range e.Plan.Settings {
+				if set.Name == a.Name {
+					arg.Text = strings.TrimSpace(set.InForce.Text + " " + set.Unit)
+				}
+			}
+		case plan.FromPriors:
+			arg.Value = a.Value
+		case plan.FromInput:
+			if r := outcome.Inputs[a.Input].Results; len(r) == 1 {
+				arg.Hash = r[0].Hash.String()
+			}
+		case plan.FromResult, plan.FromElement:
+			if r := outcome.Steps[a.Step].Results; a.Result < len(r) {
+				arg.Hash = r[a.Result].Hash.String()
+			}
+		}
+		out.Args = append(out.Args, arg)
+	}
+	for n, v := range s.Results {
+		r := reports.Result{Name: spec.Results[n].Name, Type: v.Type, Hash: v.Hash.String(), Size: v.Size}
+		if b, err := e.Bytes(ctx, i, n); err == nil {
+			r.Value = decode(b)
+		}
+		out.Results = append(out.Results, r)
+	}
+	for n, el := range s.Elements {
+		out.Elements = append(out.Elements, elementOf(n, el))
+	}
+	return out
+}
+
+func elementOf(n int, c engine.Computation) reports.Element {
+	el := reports.Element{Label: fmt.Sprint(n + 1), State: reports.State(c.State), Why: c.Why, Err: c.Err, Took: c.Took}
+	if c.Text != "" {
+		el.Key = c.Text.Key().String()
+	}
+	if len(c.Results) > 0 {
+		el.Hash = c.Results[0].Hash.String()
+	}
+	return el
+}
+
+// host is the machine and program that this is.
+func host(b plan.Build) reports.Host {
+	return reports.Host{OS: runtime.GOOS, Arch: b.Arch, CPUs: runtime.NumCPU(), GoVersion: b.Go, Version: b.Version, Revision: b.Revision,
+		Executable: executableHash(), Settings: b.Settings}
+}
+
+// executableHash is the SHA-256 of the running program, in hex, "" when it
+// can't be read.
+func executableHash() string {
+	exe, err := os.Executable()
+	if err != nil {
+		return ""
+	}
+	f, err := os.Open(exe)
+	if err != nil {
+		return ""
+	}
+	defer f.Close()
+	h := sha256.New()
+	if _, err := io.Copy(h, f); err != nil {
+		return ""
+	}
+	return hex.EncodeToString(h.Sum(nil))
+}

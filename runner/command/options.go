@@ -1,0 +1,81 @@
+package command
+
+import (
+	"fmt"
+	"path/filepath"
+	"runtime"
+	"strings"
+
+	"github.com/spf13/cobra"
+)
+
+// options are the flags that run, check and demo share.
+type options struct {
+	in, set    []string
+	out, store string
+	jobs       int
+	on         string
+	quiet      bool
+	json       bool
+}
+
+func (o *options) flags(c *cobra.Command) {
+	f := c.Flags()
+	f.StringArrayVar(&o.in, "in", nil, "`NAME=PATH`: read input NAME from PATH (CSV: PATH;CHANNELS-PATH)")
+	f.StringArrayVar(&o.set, "set", nil, "`NAME=VALUE`: give setting NAME another value")
+	f.StringVar(&o.out, "out", "", "`DIR` for the report and its tables (default: beside the recipe, its name with .out)")
+	f.StringVar(&o.store, "store", "", "`DIR` of the result store (default: rimlight.store beside the recipe)")
+	f.IntVar(&o.jobs, "jobs", runtime.NumCPU(), "worker processes at a time")
+	f.StringVar(&o.on, "on", "local", "where to compute: local")
+	f.BoolVar(&o.quiet, "quiet", false, "say nothing but errors")
+	f.BoolVar(&o.json, "json", false, "events for programs on standard output, one JSON object per line")
+}
+
+// resolve checks the flags and fills in what depends on the recipe's place.
+func (o *options) resolve(recipe string) error {
+	if o.on != "local" {
+		return fmt.Errorf("--on %s: this version computes on the local machine only; expected local", o.on)
+	}
+	if o.jobs < 1 {
+		return fmt.Errorf("--jobs %d: expected at least 1", o.jobs)
+	}
+	stem := strings.TrimSuffix(recipe, filepath.Ext(recipe))
+	if o.out == "" {
+		o.out = stem + ".out"
+	}
+	if o.store == "" {
+		o.store = filepath.Join(filepath.Dir(recipe), "rimlight.store")
+	}
+	return nil
+}
+
+// named splits NAME=VALUE flags.
+func named(flag string, given []string) (map[string]string, error) {
+	out := map[string]string{}
+	for _, g := range given {
+		name, value, ok := strings.Cut(g, "=")
+		if !ok || name == "" {
+			return nil, fmt.Errorf("--%s %s: expected NAME=VALUE", flag, g)
+		}
+		if _, twice := out[name]; twice {
+			return nil, fmt.Errorf("--%s %s: given twice", flag, name)
+		}
+		out[name] = value
+	}
+	return out, nil
+}
+
+// inputs are the files of --in flags.
+func (o *options) inputs() (map[string][]string, error) {
+	given, err := named("in", o.in)
+	if err != nil {
+		return nil, err
+	}
+	out := map[string][]string{}
+	for name, value := range given {
+		for _, p := range strings.Split(value, ";") {
+			out[name] = append(out[name], strings.TrimSpace(p))
+		}
+	}
+	return out, nil
+}

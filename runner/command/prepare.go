@@ -1,0 +1,99 @@
+package command
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+
+	"rimlight/runner/diag"
+	"rimlight/runner/engine"
+	"rimlight/runner/plan"
+	"rimlight/runner/recipe"
+	"rimlight/runner/record"
+	"rimlight/runner/store"
+	"rimlight/runner/worker"
+)
+
+// maxRecipe is the largest recipe that is read, in bytes: far more than anyone
+// writes, far less than what would trouble the parser.
+const maxRecipe = 16 << 20
+
+// prepare reads, checks and wires a recipe. Everything that is wrong with it
+// comes back at once, as a diag.List.
+func prepare(ctx context.Context, file string, o *options) (*plan.Plan, []byte, error) {
+	if err := o.resolve(file); err != nil {
+		return nil, nil, err
+	}
+	set, err := named("set", o.set)
+	if err != nil {
+		return nil, nil, err
+	}
+	in, err := o.inputs()
+	if err != nil {
+		return nil, nil, err
+	}
+	source, err := readRecipe(file)
+	if err != nil {
+		return nil, nil, err
+	}
+	r, diags := recipe.Parse(file, source)
+	code := r.Code()
+	w, err := worker.Start(ctx)
+	if err != nil {
+		return nil, nil, err
+	}
+	defer w.Close()
+	steps, more, err := w.Check(file, code)
+	if err != nil {
+		return nil, nil, fmt.Errorf("%s: the code could not be checked: %w", file, err)
+	}
+	diags = append(diags, more...)
+	p, more, err := plan.Wire(r, steps, plan.Options{Dir: filepath.Dir(file), In: in, Set: set})
+	if err != nil {
+		return nil, nil, err
+	}
+	diags = append(diags, more...)
+	if len(diags) == 0 && len(steps) == 0 {
+		diags.Add(diag.Pos{File: file}, "the recipe has no steps", "expected fenced blocks with the info string go, with exported functions", "")
+	}
+	diags.Sort()
+	return p, code, diags.Err()
+}
+
+func readRecipe(file string) ([]byte, error) {
+	st, err := os.Stat(file)
+	if err != nil {
+		if os.IsNotExist(err) {
+			return nil, fmt.Errorf("there is no recipe %s", file)
+		}
+		return nil, err
+	}
+	if st.IsDir() {
+		return nil, fmt.Errorf("%s is a folder, expected a Markdown file", file)
+	}
+	if st.Size() > maxRecipe {
+		return nil, fmt.Errorf("%s has %d bytes; a recipe may have at most %d", file, st.Size(), maxRecipe)
+	}
+	return os.ReadFile(file)
+}
+
+// newEngine sets up what carries out a plan. The record is that of the run
+// before, if any.
+func newEngine(p *plan.Plan, code []byte, o *options) (*engine.Engine, *record.Record, error) {
+	s, err := store.Open(o.store)
+	if err != nil {
+		return nil, nil, err
+	}
+	lib, err := plan.OpenLibrary()
+	if err != nil {
+		return nil, nil, err
+	}
+	before, err := record.Read(filepath.Join(o.out, recordFile))
+	if err != nil && !errors.Is(err, os.ErrNotExist) {
+		before = nil // an unreadable record explains nothing, but stops nothing
+	}
+	host, _ := os.Hostname()
+	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Before: before.KeyText}, before, nil
+}

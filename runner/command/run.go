@@ -1,0 +1,104 @@
+package command
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"rimlight/reports"
+	"rimlight/runner/diag"
+)
+
+func (a *app) runCommand() *cobra.Command {
+	var o options
+	c := &cobra.Command{
+		Use:   "run RECIPE",
+		Short: "Run a recipe; reuse every result whose key is known",
+		Long: `Run carries out a recipe and writes report.html, spectrum.csv, spectrum.ecsv
+and run.json. Every finished result is kept in the store under a key made of
+all that can change it, and is used again as long as the key is the same.
+
+A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
+		Example: "  rimlight run visit.md --in raw=visit2.fits --set clipSigma=4",
+		Args:    cobra.ExactArgs(1),
+		RunE:    func(c *cobra.Command, args []string) error { return a.run(c.Context(), args[0], &o) },
+	}
+	o.flags(c)
+	return c
+}
+
+// run carries out a recipe from start to report.
+func (a *app) run(ctx context.Context, file string, o *options) error {
+	started := time.Now().UTC()
+	p, code, err := prepare(ctx, file, o)
+	if err != nil {
+		return a.wrong(err, o)
+	}
+	e, before, err := newEngine(p, code, o)
+	if err != nil {
+		return err
+	}
+	if err := os.MkdirAll(o.out, 0o777); err != nil {
+		return fmt.Errorf("no folder for the report: %w", err)
+	}
+	show := a.display(p, o)
+	e.Observe = show.event
+	outcome := e.Run(ctx)
+	show.close()
+
+	// What follows is done even after an interruption: what was finished is
+	// kept, and the report says what is missing.
+	doc := document(context.WithoutCancel(ctx), a, e, outcome, started)
+	written, err := writeOutputs(o.out, doc, e, outcome, before)
+	if err != nil {
+		return &exit{status: ExitFailed, cause: err}
+	}
+	show.finish(doc, written)
+	switch doc.Outcome {
+	case reports.Interrupted:
+		return &exit{status: ExitInterrupted}
+	case reports.StepFailed:
+		return &exit{status: ExitFailed}
+	case reports.CheckFailed:
+		return &exit{status: ExitCheckFailed}
+	}
+	return nil
+}
+
+// wrong tells what is wrong with a recipe, fault by fault.
+func (a *app) wrong(err error, o *options) error {
+	var list diag.List
+	if !errors.As(err, &list) {
+		return err
+	}
+	for _, d := range list {
+		if o.json {
+			writeJSON(a.stdout, map[string]any{"event": "fault", "file": d.Pos.File, "line": d.Pos.Line, "col": d.Pos.Col,
+				"message": d.Message, "expected": d.Expected, "nearest": d.Nearest})
+			continue
+		}
+		fmt.Fprintln(a.stderr, d)
+	}
+	return &exit{status: ExitWrong, cause: err, told: true}
+}
+
+// relativeTo gives path as seen from the current folder when that is shorter.
+func shortPath(path string) string {
+	wd, err := os.Getwd()
+	if err != nil {
+		return path
+	}
+	abs, err := filepath.Abs(path)
+	if err != nil {
+		return path
+	}
+	if rel, err := filepath.Rel(wd, abs); err == nil && len(rel) < len(path) {
+		return rel
+	}
+	return path
+}

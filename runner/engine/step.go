@@ -1,0 +1,444 @@
+package engine
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"reflect"
+	"sync"
+	"sync/atomic"
+
+	"rimlight/runner/canon"
+	"rimlight/runner/plan"
+	"rimlight/runner/worker"
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/limbtable"
+)
+
+// inputTypes are the Go types that layouts read into.
+var inputTypes = map[string]reflect.Type{
+	"rimlight/steps/lightcurve.Cube": reflect.TypeFor[lightcurve.Cube](),
+	"rimlight/steps/limbtable.Table": reflect.TypeFor[limbtable.Table](),
+	"string":                         reflect.TypeFor[string](),
+}
+
+// step looks up or computes step i, whose needs are all there.
+func (e *Engine) step(ctx context.Context, i int) {
+	out, spec := &e.outcome.Steps[i], &e.Plan.Steps[i]
+	var err error
+	if spec.Each >= 0 {
+		err = e.fanOut(ctx, i)
+	} else {
+		err = e.plain(ctx, i)
+	}
+	if ctx.Err() != nil && !out.Finished() {
+		out.State = NotReached
+		return
+	}
+	if err != nil {
+		out.fail(err)
+	}
+	done, total := 0, len(out.Elements)
+	for _, el := range out.Elements {
+		if el.Finished() {
+			done++
+		}
+	}
+	e.observe(Event{Step: out.Name, State: out.State, Why: out.Why, Err: out.Err, Took: out.Took, Done: done, Total: total})
+}
+
+// hashes are the content hashes of a step's arguments, as its key wants them;
+// element is the one of the fan-out that is meant.
+func (e *Engine) hashes(spec *plan.Step, element Value) []string {
+	out := make([]string, len(spec.Args))
+	for i, a := range spec.Args {
+		switch a.Source {
+		case plan.FromInput:
+			out[i] = e.outcome.Inputs[a.Input].Results[0].Hash.String()
+		case plan.FromResult:
+			out[i] = e.result(a.Step, a.Result).Hash.String()
+		case plan.FromElement:
+			out[i] = element.Hash.String()
+		}
+	}
+	return out
+}
+
+// arguments reads what a step is to be called with. The element's place, and
+// the seed's, stay empty.
+func (e *Engine) arguments(ctx context.Context, spec *plan.Step) ([][]byte, error) {
+	out := make([][]byte, len(spec.Args))
+	for i, a := range spec.Args {
+		var err error
+		switch a.Source {
+		case plan.FromSetting, plan.FromPriors:
+			out[i], err = sealGo(a.Type, a.Value)
+		case plan.FromInput:
+			out[i], err = e.inputBytes(ctx, a.Input)
+		case plan.FromResult:
+			out[i], err = e.resultBytes(ctx, a.Step, a.Result)
+		}
+		if err != nil {
+			return nil, fmt.Errorf("argument %s: %w", a.Name, err)
+		}
+	}
+	return out, nil
+}
+
+func sealGo(typ string, v any) ([]byte, error) {
+	layout, err := canon.Layout(reflect.TypeOf(v))
+	if err != nil {
+		return nil, err
+	}
+	b, err := canon.Marshal(v)
+	if err != nil {
+		return nil, err
+	}
+	return canon.Seal(typ, layout, b), nil
+}
+
+// inputBytes reads an input as kept, and reads the raw file again when the
+// kept form turns out to be damaged.
+func (e *Engine) inputBytes(ctx context.Context, i int) ([]byte, error) {
+	in := &e.outcome.Inputs[i]
+	b, err := sealed(e.Store, in.Results[0])
+	if !damaged(err) {
+		return b, err
+	}
+	e.note("input %s: %v; it was read again", in.Name, err)
+	again := Input{Name: in.Name}
+	if err := e.readInput(ctx, &again, &e.Plan.Inputs[i]); err != nil {
+		return nil, err
+	}
+	return sealed(e.Store, again.Results[0])
+}
+
+// result is a result of a step that is done.
+func (e *Engine) result(step, result int) Value {
+	e.state.RLock()
+	defer e.state.RUnlock()
+	return e.outcome.Steps[step].Results[result]
+}
+
+// settle writes down what a step came to.
+func (e *Engine) settle(step int, c Computation, elements []Computation) {
+	e.state.Lock()
+	defer e.state.Unlock()
+	e.outcome.Steps[step].Computation, e.outcome.Steps[step].Elements = c, elements
+}
+
+// resultBytes reads a kept result, and computes it again when it turns out to
+// be damaged.
+func (e *Engine) resultBytes(ctx context.Context, step, result int) ([]byte, error) {
+	b, err := sealed(e.Store, e.result(step, result))
+	if !damaged(err) {
+		return b, err
+	}
+	if err := e.mend(ctx, step, err); err != nil {
+		return nil, err
+	}
+	return sealed(e.Store, e.result(step, result))
+}
+
+// mend computes again whatever of a step's results is missing from the store.
+func (e *Engine) mend(ctx context.Context, step int, cause error) error {
+	e.heal[step].Lock()
+	defer e.heal[step].Unlock()
+	e.note("step %s: %v; it was computed again", e.Plan.Steps[step].Name, cause)
+	if e.Plan.Steps[step].Each >= 0 {
+		return e.fanOut(ctx, step)
+	}
+	return e.plain(ctx, step)
+}
+
+// Bytes reads result number result of a step, in its envelope, mending the
+// store when it is damaged. It may be called after Run.
+func (e *Engine) Bytes(ctx context.Context, step, result int) ([]byte, error) {
+	return e.resultBytes(ctx, step, result)
+}
+
+// InputBytes reads an input as read, in its envelope, likewise.
+func (e *Engine) InputBytes(ctx context.Context, input int) ([]byte, error) {
+	return e.inputBytes(ctx, input)
+}
+
+// plain looks up or computes a step that is no fan-out.
+func (e *Engine) plain(ctx context.Context, i int) error {
+	spec := &e.Plan.Steps[i]
+	c := Computation{State: NotReached, Text: plan.StepKey(spec, e.hashes(spec, Value{}), e.Library, e.Build)}
+	if !e.lookUp(&c, spec.Name, -1) {
+		args, err := e.arguments(ctx, spec)
+		if err != nil {
+			return err
+		}
+		if !e.acquire(ctx) {
+			return ctx.Err()
+		}
+		defer e.release()
+		e.observe(Event{Step: spec.Name, Why: c.Why})
+		p := pool{e: e, spec: spec, args: args}
+		defer p.close()
+		if err := p.compute(ctx, &c, nil); err != nil {
+			e.settle(i, c, nil)
+			return err
+		}
+	}
+	c.Seed = e.seed(spec, c.Text)
+	e.settle(i, c, nil)
+	return nil
+}
+
+// seed is what the step's seed parameter is filled with, 0 when it has none.
+func (e *Engine) seed(spec *plan.Step, text plan.KeyText) uint64 {
+	for _, a := range spec.Args {
+		if a.Source == plan.FromSeed {
+			return text.Seed()
+		}
+	}
+	return 0
+}
+
+// fanOut looks up all elements of a fan-out and computes those that are not
+// known, several at a time.
+func (e *Engine) fanOut(ctx context.Context, i int) error {
+	spec := &e.Plan.Steps[i]
+	each := spec.Args[spec.Each]
+	items, err := e.items(ctx, each)
+	if err != nil {
+		return err
+	}
+	comps, todo := e.lookUpElements(spec, items)
+	if len(todo) > 0 {
+		if err := e.missing(ctx, spec, items, comps, todo); err != nil {
+			return err
+		}
+	}
+	c := Computation{State: Reused}
+	if len(todo) > 0 {
+		c.State, c.Why = Computed, reasons(comps, todo)
+	}
+	failed, first := 0, ""
+	for n := range comps {
+		el := &comps[n]
+		c.Took += el.Took
+		if el.When.After(c.When) {
+			c.When = el.When
+		}
+		if el.State == Failed {
+			if failed++; first == "" {
+				first = fmt.Sprintf("element %d: %s", n+1, el.Err)
+			}
+		}
+	}
+	if ctx.Err() != nil {
+		c.State = NotReached
+		e.settle(i, c, comps)
+		return ctx.Err()
+	}
+	if failed > 0 {
+		e.settle(i, c, comps)
+		return fmt.Errorf("%d of %d elements failed; %s", failed, len(comps), first)
+	}
+	if c.Results, err = e.gather(spec, comps); err != nil {
+		return err
+	}
+	e.settle(i, c, comps)
+	return nil
+}
+
+// lookUpElements looks up every element of a fan-out; todo lists those that
+// are not known.
+func (e *Engine) lookUpElements(spec *plan.Step, items []Value) (comps []Computation, todo []int) {
+	comps = make([]Computation, len(items))
+	for n, item := range items {
+		comps[n] = Computation{State: NotReached, Text: plan.StepKey(spec, e.hashes(spec, item), e.Library, e.Build)}
+		if !e.lookUp(&comps[n], spec.Name, n) {
+			todo = append(todo, n)
+		}
+		comps[n].Seed = e.seed(spec, comps[n].Text)
+	}
+	return comps, todo
+}
+
+// gather puts together, result by result, what the elements gave.
+func (e *Engine) gather(spec *plan.Step, comps []Computation) ([]Value, error) {
+	if len(comps) == 0 {
+		return nil, fmt.Errorf("the collection %s is empty: there is nothing to run the step over", spec.Step.Each.Collection)
+	}
+	out := make([]Value, len(spec.Results))
+	for r := range spec.Results {
+		values := make([]Value, len(comps))
+		for n := range comps {
+			values[n] = comps[n].Results[r]
+		}
+		var err error
+		if out[r], err = collect(e.Store, spec.Results[r].Type, values[0].Layout, values); err != nil {
+			return nil, err
+		}
+	}
+	return out, nil
+}
+
+// items are the elements that a fan-out runs over.
+func (e *Engine) items(ctx context.Context, each plan.Arg) ([]Value, error) {
+	get := func() ([]Value, error) { return elements(e.Store, e.result(each.Step, each.Result)) }
+	items, err := get()
+	if damaged(err) {
+		if err := e.mend(ctx, each.Step, err); err != nil {
+			return nil, err
+		}
+		items, err = get()
+	}
+	return items, err
+}
+
+// missing computes the elements listed in todo with a pool of workers.
+func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int) error {
+	args, err := e.arguments(ctx, spec)
+	if err != nil {
+		return err
+	}
+	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: len(comps) - len(todo), Total: len(comps)})
+	var next, done atomic.Int64
+	done.Store(int64(len(comps) - len(todo)))
+	var all sync.WaitGroup
+	for range min(cap(e.slots), len(todo)) {
+		all.Go(func() {
+			if !e.acquire(ctx) {
+				return
+			}
+			defer e.release()
+			p := pool{e: e, spec: spec, args: args}
+			defer p.close()
+			for {
+				k := int(next.Add(1)) - 1
+				if k >= len(todo) || ctx.Err() != nil {
+					return
+				}
+				n := todo[k]
+				item, err := e.itemBytes(ctx, spec.Args[spec.Each], items, n)
+				if err == nil {
+					err = p.compute(ctx, &comps[n], item)
+				}
+				if ctx.Err() != nil && !comps[n].Finished() {
+					return
+				}
+				if err != nil {
+					comps[n].fail(err)
+				}
+				e.observe(Event{Step: spec.Name, Done: int(done.Add(1)), Total: len(comps), Took: comps[n].Took})
+			}
+		})
+	}
+	all.Wait()
+	return nil
+}
+
+// itemBytes reads one element of a collection. The caller holds a worker slot,
+// which is lent to the step that has to be computed again, if any.
+func (e *Engine) itemBytes(ctx context.Context, each plan.Arg, items []Value, n int) ([]byte, error) {
+	b, err := sealed(e.Store, items[n])
+	if damaged(err) {
+		e.release()
+		mended := e.mend(ctx, each.Step, err)
+		e.slots <- struct{}{}
+		if mended != nil {
+			return nil, mended
+		}
+		b, err = sealed(e.Store, items[n])
+	}
+	return b, err
+}
+
+// reasons says why elements were computed, in the order of first appearance.
+func reasons(comps []Computation, todo []int) string {
+	var order []string
+	count := map[string]int{}
+	for _, n := range todo {
+		w := comps[n].Why
+		if count[w]++; count[w] == 1 {
+			order = append(order, w)
+		}
+	}
+	text := ""
+	for _, w := range order {
+		if text != "" {
+			text += "; "
+		}
+		text += w
+		if len(order) > 1 || count[w] < len(comps) {
+			text += fmt.Sprintf(" (%d of %d elements)", count[w], len(comps))
+		}
+	}
+	return text
+}
+
+// A pool is one worker that serves the elements of one fan-out, or a single
+// step, started when it is first needed and again when it died.
+type pool struct {
+	e    *Engine
+	spec *plan.Step
+	args [][]byte
+	w    *worker.Worker
+}
+
+func (p *pool) close() {
+	if p.w != nil {
+		p.w.Close()
+		p.w = nil
+	}
+}
+
+// compute runs the step once, on the given element for a fan-out, and keeps
+// what it gives. A worker that dies is replaced once: it may not have been the
+// step's doing.
+func (p *pool) compute(ctx context.Context, c *Computation, element []byte) error {
+	args := make([][]byte, len(p.args))
+	copy(args, p.args)
+	for i, a := range p.spec.Args {
+		switch a.Source {
+		case plan.FromElement:
+			args[i] = element
+		case plan.FromSeed:
+			var err error
+			if args[i], err = sealGo("uint64", c.Text.Seed()); err != nil {
+				return err
+			}
+		}
+	}
+	var v worker.Values
+	var err error
+	for range 2 {
+		if v, err = p.call(ctx, args); err == nil {
+			break
+		}
+		var lost *worker.LostError
+		if !errors.As(err, &lost) || ctx.Err() != nil {
+			break
+		}
+		p.close()
+	}
+	c.Log = v.Log
+	if err != nil {
+		return err
+	}
+	names := make([]string, len(p.spec.Results))
+	for i, r := range p.spec.Results {
+		names[i] = r.Name
+	}
+	return p.e.keep(c, p.spec.Name, names, v)
+}
+
+func (p *pool) call(ctx context.Context, args [][]byte) (worker.Values, error) {
+	if p.w == nil {
+		w, err := worker.Start(ctx)
+		if err != nil {
+			return worker.Values{}, err
+		}
+		p.w = w
+		if err := w.Load(p.e.Plan.Recipe.File, p.e.Code); err != nil {
+			return worker.Values{}, err
+		}
+	}
+	return p.w.Call(p.spec.Name, args)
+}

@@ -1,0 +1,18 @@
+package worker
+
+import (
+	"os"
+	"syscall"
+)
+
+// executable is the running program, even when its file was replaced since.
+func executable() (string, error) { return "/proc/self/exe", nil }
+
+// attributes puts a worker into a process group of its own, so that a signal
+// typed at the terminal reaches only the parent, and has the kernel kill it
+// when the parent dies.
+func attributes() *syscall.SysProcAttr {
+	return &syscall.SysProcAttr{Setpgid: true, Pdeathsig: syscall.SIGKILL}
+}
+
+func killGroup(p *os.Process) error { return syscall.Kill(-p.Pid, syscall.SIGKILL) }
