@@ -1,0 +1,3 @@
+package program
+
+func randomProgram(seed, index uint64) string { return "func Run() string { return \"\" }" }

@@ -1,0 +1,154 @@
+package program
+
+import (
+	"go/ast"
+	"go/token"
+	"go/types"
+	"regexp"
+	"strings"
+
+	"rimlight/runner/diag"
+	"rimlight/runner/program/available"
+	"rimlight/runner/program/exportdata"
+)
+
+// language is the version of Go that recipes are written in: the interpreter
+// knows none later.
+const language = "go1.20"
+
+// typeCheck fills c.pkg and c.info and reports every type error.
+func (c *checker) typeCheck() {
+	c.info = &types.Info{
+		Types:      map[ast.Expr]types.TypeAndValue{},
+		Defs:       map[*ast.Ident]types.Object{},
+		Uses:       map[*ast.Ident]types.Object{},
+		Implicits:  map[ast.Node]types.Object{},
+		Selections: map[*ast.SelectorExpr]*types.Selection{},
+		Instances:  map[*ast.Ident]types.Instance{},
+		Scopes:     map[ast.Node]*types.Scope{},
+	}
+	var errs []types.Error
+	config := types.Config{
+		GoVersion: language,
+		Importer:  exportdata.NewImporter(),
+		Sizes:     types.SizesFor("gc", "amd64"),
+		Error: func(err error) {
+			if e, ok := err.(types.Error); ok {
+				errs = append(errs, e)
+			}
+		},
+	}
+	c.pkg, _ = config.Check("main", c.fset, []*ast.File{c.tree}, c.info) // errors went to config.Error
+	for _, e := range errs {
+		c.typeError(e)
+	}
+}
+
+var (
+	undefined = regexp.MustCompile(`^undefined: ([\pL_][\pL\pN_]*)(?:\.([\pL_][\pL\pN_]*))?`)
+	noMember  = regexp.MustCompile(`^[^ ]+\.([\pL_][\pL\pN_]*) undefined \(`)
+)
+
+// typeError reports a type error in the compiler's words, with the nearest
+// name where a name is not known.
+func (c *checker) typeError(e types.Error) {
+	if strings.HasPrefix(e.Msg, "\t") {
+		return // the continuation of an earlier error
+	}
+	message, expected, nearest := e.Msg, "", ""
+	if m := undefined.FindStringSubmatch(message); m != nil {
+		switch {
+		case m[2] != "":
+			nearest = c.nearestMember(m[1], m[2])
+		default:
+			nearest = c.nearestName(e.Pos, m[1])
+		}
+	} else if m := noMember.FindStringSubmatch(message); m != nil && !strings.Contains(message, "but does have") {
+		nearest = c.nearestSelection(e.Pos, m[1])
+	}
+	if name, ok := strings.CutPrefix(message, "undefined: "); ok && available.Path(name) != "" && !exportdata.Has(available.Path(name)) {
+		message, expected, nearest = unavailable(name)
+	}
+	c.diags.Add(c.at(e.Pos), message, expected, nearest)
+}
+
+// nearestName looks among what is in scope at pos and the packages.
+func (c *checker) nearestName(pos token.Pos, name string) string {
+	known := map[string]bool{}
+	scope := c.pkg.Scope().Innermost(pos)
+	if scope == nil {
+		scope = c.pkg.Scope()
+	}
+	for s := scope; s != nil; s = s.Parent() {
+		for _, n := range s.Names() {
+			if o := s.Lookup(n); s.Parent() == nil || s == c.pkg.Scope() || !o.Pos().IsValid() || o.Pos() < pos {
+				known[n] = true
+			}
+		}
+	}
+	for _, p := range available.Packages {
+		if exportdata.Has(p.Path) {
+			known[p.Name] = true
+		}
+	}
+	return nearestOf(name, known)
+}
+
+// nearestMember looks among the exported names of a package.
+func (c *checker) nearestMember(pkg, name string) string {
+	for _, imported := range c.pkg.Imports() {
+		if imported.Name() != pkg {
+			continue
+		}
+		known := map[string]bool{}
+		for _, n := range imported.Scope().Names() {
+			if token.IsExported(n) {
+				known[n] = true
+			}
+		}
+		return nearestOf(name, known)
+	}
+	return ""
+}
+
+// nearestSelection looks among the fields and methods of the value whose
+// selector stands at pos.
+func (c *checker) nearestSelection(pos token.Pos, name string) (nearest string) {
+	ast.Inspect(c.tree, func(n ast.Node) bool {
+		s, ok := n.(*ast.SelectorExpr)
+		if !ok || s.Sel.Pos() != pos && s.Pos() != pos || s.Sel.Name != name {
+			return true
+		}
+		t := c.info.TypeOf(s.X)
+		if t == nil {
+			return true
+		}
+		known := map[string]bool{}
+		base := t
+		if p, ok := t.Underlying().(*types.Pointer); ok {
+			base = p.Elem()
+		}
+		if st, ok := base.Underlying().(*types.Struct); ok {
+			for i := 0; i < st.NumFields(); i++ {
+				known[st.Field(i).Name()] = true
+			}
+		}
+		set := types.NewMethodSet(types.NewPointer(base))
+		for i := 0; i < set.Len(); i++ {
+			known[set.At(i).Obj().Name()] = true
+		}
+		nearest = nearestOf(name, known)
+		return true
+	})
+	return nearest
+}
+
+func nearestOf(name string, known map[string]bool) string {
+	var list []string
+	for k := range known {
+		if k != "_" && k != name {
+			list = append(list, k)
+		}
+	}
+	return diag.Nearest(name, list)
+}
