@@ -12,13 +12,15 @@ import (
 // A Recipe is a parsed Markdown file.
 type Recipe struct {
 	File     string // as named by the user, used in every position
-	Source   []byte // the file's bytes
+	Source   []byte // the file's bytes, without a byte order mark
 	Title    string // text of the first level-1 heading
 	Sections []Section
 	Inputs   []Input
 	Settings []Setting
 	Columns  []Column
 	Blocks   []Block // Go fences in file order
+
+	code []span // the lines of Blocks
 }
 
 // A Section is a heading with what stands under it, up to the next heading.
@@ -54,8 +56,9 @@ type Setting struct {
 	ValuePos diag.Pos
 }
 
-// A Value is a setting's value as written. What kinds it can serve as depends
-// on the step parameter that it fills; see [Value.Float] and its siblings.
+// A Value is a setting's value as written: a number, a text, a boolean, a list
+// or a grid; see [Kind] for the notation. What it can serve as depends on the
+// step parameter that it fills; see [Value.As].
 type Value struct {
 	Text string // trimmed cell text
 }
