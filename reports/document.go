@@ -21,6 +21,8 @@ type Document struct {
 	Command  string    // the command line, for the record
 	Modules  []Module  // what the program was built from
 	Library  []Package // fingerprints of the step packages that were reached
+	Notes    []string  // what else the run had to say: results that were damaged and computed again
+	Record   []byte    // the run's record as JSON, embedded for programs; may be empty
 }
 
 // Outcome says how a run ended.
@@ -36,17 +38,19 @@ const (
 
 // An Input is a raw input file as it was used.
 type Input struct {
-	Name   string
-	Layout string
-	About  string
-	Files  []InputFile // empty for an optional input that was absent
-	Type   string      // Go type of what was read
-	Value  any         // what was read, nil when not available
-	Hash   string      // content hash of what was read, hex
-	Key    string
-	State  State
-	Why    string
-	Took   time.Duration
+	Name    string
+	Layout  string
+	About   string
+	Files   []InputFile // empty for an optional input that was absent
+	Changed bool        // given on the command line instead of the recipe's own file
+	Recipe  string      // the recipe's own file, as written
+	Type    string      // Go type of what was read
+	Value   any         // what was read, nil when not available
+	Hash    string      // content hash of what was read, hex
+	Key     string
+	State   State
+	Why     string
+	Took    time.Duration
 }
 
 // An InputFile is one file of an input.

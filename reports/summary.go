@@ -1,0 +1,171 @@
+package reports
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
+)
+
+// A Headline is one of the few numbers that say what a run came to.
+type Headline struct {
+	Name  string // what it is: "median depth"
+	Text  string // the number with its unit: "14520 ppm"
+	Note  string // what qualifies it, may be empty
+	Alert bool   // something failed
+}
+
+// Summary gives the headline numbers of a run, in the order in which the
+// report and the command line show them: outcome, checks, spectrum, masked
+// samples, white-light parameters. What a run has no results for is left out.
+func Summary(d Document) []Headline {
+	out := []Headline{outcomeHeadline(d)}
+	if v := verdicts(d); len(v) > 0 {
+		out = append(out, checksHeadline(v))
+	}
+	out = append(out, spectrumHeadlines(d)...)
+	if c, ok := lastCube(d); ok {
+		if m := maskOf(c); m.all > 0 {
+			out = append(out, Headline{Name: "masked samples", Text: percent(m.masked, m.all), Note: m.String()})
+		}
+	}
+	if p, _, ok := whitePosterior(d); ok {
+		out = append(out, posteriorHeadlines(p)...)
+	}
+	return out
+}
+
+func outcomeHeadline(d Document) Headline {
+	h := Headline{Name: "outcome", Text: string(d.Outcome), Alert: d.Outcome != Done}
+	var n [4]int
+	for _, s := range d.Steps {
+		switch s.State {
+		case Computed:
+			n[0]++
+		case Reused:
+			n[1]++
+		case Failed:
+			n[2]++
+		default:
+			n[3]++
+		}
+	}
+	var parts []string
+	for i, state := range []State{Computed, Reused, Failed, NotReached} {
+		if n[i] > 0 {
+			parts = append(parts, fmt.Sprintf("%d %s", n[i], state))
+		}
+	}
+	h.Note = count(len(d.Steps), "step")
+	if len(parts) > 0 {
+		h.Note += ": " + strings.Join(parts, ", ")
+	}
+	return h
+}
+
+func checksHeadline(v []verdict) Headline {
+	failed := 0
+	var names []string
+	for _, c := range v {
+		if !c.Passed {
+			failed++
+			names = append(names, label(c.Name))
+		}
+	}
+	h := Headline{Name: "checks", Text: fmt.Sprintf("%d of %d passed", len(v)-failed, len(v)), Alert: failed > 0}
+	if failed > 0 {
+		h.Note = sentence("failed: " + strings.Join(names, "; "))
+	}
+	return h
+}
+
+func spectrumHeadlines(d Document) []Headline {
+	s, ok := lastSpectrum(d)
+	if !ok {
+		return nil
+	}
+	var channels []lightcurve.Channel
+	var depth, err, resolution []float64
+	flagged, unmeasured := 0, 0
+	for _, p := range s.Points {
+		channels = append(channels, p.Channel)
+		if p.Flag != "" {
+			flagged++
+		}
+		if !p.Good() {
+			unmeasured++
+			continue
+		}
+		depth, err = append(depth, p.Depth), append(err, p.DepthErr)
+		if w := p.Channel.Hi - p.Channel.Lo; w > 0 {
+			resolution = append(resolution, (p.Channel.Lo+p.Channel.Hi)/2/w)
+		}
+	}
+	h := Headline{Name: "channels measured", Text: fmt.Sprintf("%d of %d", len(depth), len(s.Points))}
+	if flagged > 0 {
+		h.Note = fmt.Sprintf("%d flagged, %d of them without a depth", flagged, unmeasured)
+	}
+	out := []Headline{h}
+	if lo, hi, ok := span(channels); ok {
+		h := Headline{Name: "wavelengths", Text: fmt.Sprintf("%s to %s µm", number(lo, 5), number(hi, 5))}
+		if len(resolution) > 0 {
+			h.Note = "median λ/Δλ of the channels " + fixed(median(resolution), 0)
+		}
+		out = append(out, h)
+	}
+	if len(depth) > 0 {
+		lo, hi, _ := extent(depth)
+		out = append(out,
+			Headline{Name: "median depth", Text: ppm(median(depth), 0) + " ppm", Note: ppm(lo, 0) + " to " + ppm(hi, 0) + " ppm"},
+			Headline{Name: "median depth error", Text: fixed(median(err)*1e6, 1) + " ppm", Note: "one standard deviation, one channel"})
+	}
+	return out
+}
+
+// symbols are how papers write the parameters that have a symbol.
+var symbols = map[string]string{
+	"radiusRatio": "Rp/R⋆", "depth": "(Rp/R⋆)²", "midTransit": "T₀", "period": "P", "axisRatio": "a/R⋆",
+	"inclination": "i", "impact": "b", "impactParameter": "b", "eccentricity": "e", "periastron": "ω",
+	"duration": "T₁₄", "T14": "T₁₄", "T23": "T₂₃", "u1": "u₁", "u2": "u₂", "q1": "q₁", "q2": "q₂", "density": "ρ⋆",
+}
+
+// leading are the parameters that belong into a summary.
+var leading = []string{"radiusRatio", "depth", "midTransit", "axisRatio", "inclination", "impact", "impactParameter", "duration", "T14", "u1", "u2"}
+
+func posteriorHeadlines(p fit.Posterior) []Headline {
+	var out []Headline
+	for _, want := range leading {
+		if q, ok := quantity(p, want); ok {
+			out = append(out, Headline{Name: "white-light " + want, Text: strings.TrimSpace(measured(q.Value, q.Err) + " " + label(q.Unit)), Note: symbols[want]})
+		}
+	}
+	if p.Dof > 0 && !math.IsNaN(p.Chi2) {
+		out = append(out, Headline{Name: "white-light reduced χ²", Text: fixed(p.Chi2/float64(p.Dof), 3),
+			Note: strings.TrimSuffix(grouped(p.Dof)+" degrees of freedom, "+label(p.Status), ", ")})
+	}
+	return out
+}
+
+// quantity looks up a free or derived parameter.
+func quantity(p fit.Posterior, want string) (fit.Quantity, bool) {
+	for i, n := range p.Names {
+		if n == want && i < len(p.Value) {
+			q := fit.Quantity{Name: n, Value: p.Value[i], Err: math.NaN()}
+			if i < len(p.Err) {
+				q.Err = p.Err[i]
+			}
+			if i < len(p.Units) {
+				q.Unit = p.Units[i]
+			}
+			return q, true
+		}
+	}
+	for _, q := range p.Derived {
+		if q.Name == want {
+			return q, true
+		}
+	}
+	return fit.Quantity{}, false
+}

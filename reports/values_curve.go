@@ -1,0 +1,243 @@
+package reports
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/spectrum"
+	"rimlight/steps/table"
+)
+
+func cubeFacts(c lightcurve.Cube) []fact {
+	m := maskOf(c)
+	return facts(
+		"size", fmt.Sprintf("%s × %s", count(len(c.Time), "integration"), count(len(c.Channels), "channel")),
+		"time", timeText(c.Time),
+		"wavelengths", channelsText(c.Channels),
+		"masked", m.String(),
+		"auxiliaries", auxText(c.Aux),
+	)
+}
+
+func curveFacts(c lightcurve.Curve) []fact {
+	var m maskCount
+	m.add(c.Mask)
+	return facts(
+		"size", count(len(c.Time), "integration"),
+		"time", timeText(c.Time),
+		"channel", channelText(c.Channel),
+		"masked", m.String(),
+		"auxiliaries", auxText(c.Aux),
+	)
+}
+
+func curvesFacts(curves []lightcurve.Curve) []fact {
+	var m maskCount
+	var channels []lightcurve.Channel
+	for _, c := range curves {
+		m.add(c.Mask)
+		channels = append(channels, c.Channel)
+	}
+	out := facts("size", count(len(curves), "light curve"))
+	if len(curves) > 0 {
+		out[0].Text += " of " + count(len(curves[0].Time), "integration")
+		out = append(out, facts("time", timeText(curves[0].Time))...)
+	}
+	return append(out, facts("wavelengths", channelsText(channels), "masked", m.String())...)
+}
+
+// facts pairs names and texts, leaving out those without a text.
+func facts(pairs ...string) []fact {
+	var out []fact
+	for i := 0; i+1 < len(pairs); i += 2 {
+		if pairs[i+1] != "" {
+			out = append(out, fact{pairs[i], pairs[i+1]})
+		}
+	}
+	return out
+}
+
+func timeText(t []float64) string {
+	lo, hi, ok := extent(t)
+	if !ok {
+		return ""
+	}
+	return fmt.Sprintf("%s to %s BJD_TDB, %s h", fixed(lo, 5), fixed(hi, 5), fixed((hi-lo)*24, 2))
+}
+
+func channelsText(channels []lightcurve.Channel) string {
+	lo, hi, ok := span(channels)
+	if !ok {
+		return ""
+	}
+	return fmt.Sprintf("%s from %s to %s µm", count(len(channels), "channel"), number(lo, 5), number(hi, 5))
+}
+
+func channelText(c lightcurve.Channel) string {
+	s := fmt.Sprintf("%s to %s µm", number(c.Lo, 5), number(c.Hi, 5))
+	if c.Index < 0 {
+		return "white light, " + s
+	}
+	return fmt.Sprintf("number %d, %s", c.Index, s)
+}
+
+func auxText(aux []lightcurve.Series) string {
+	var parts []string
+	for i, a := range aux {
+		if i == shownColumns {
+			parts = append(parts, fmt.Sprintf("… and %d more", len(aux)-i))
+			break
+		}
+		s := label(a.Name)
+		if a.Unit != "" {
+			s += " (" + label(a.Unit) + ")"
+		}
+		parts = append(parts, s)
+	}
+	return strings.Join(parts, ", ")
+}
+
+// scatter is the standard deviation of a fit's relative residuals, and its
+// ratio to the root mean square of the errors used; NaN with fewer than two
+// samples.
+func scatter(f fit.CurveFit) (sd, ratio float64, used int) {
+	n := min(len(f.Flux), len(f.Transit), len(f.Trend), len(f.Mask), len(f.Err))
+	var sum, sum2, err2 float64
+	for i := range n {
+		if f.Mask[i] != 0 {
+			continue
+		}
+		r := f.Flux[i]/f.Trend[i] - f.Transit[i]
+		sum += r
+		sum2 += r * r
+		err2 += f.Err[i] * f.Err[i]
+		used++
+	}
+	if used < 2 {
+		return math.NaN(), math.NaN(), used
+	}
+	k := float64(used)
+	sd = math.Sqrt(max(0, sum2-sum*sum/k) / (k - 1))
+	return sd, sd / math.Sqrt(err2/k), used
+}
+
+func curveFitFacts(f fit.CurveFit) []fact {
+	sd, ratio, used := scatter(f)
+	return facts(
+		"channel", channelText(f.Channel),
+		"time", timeText(f.Time),
+		"samples", fmt.Sprintf("%s of %s fitted", grouped(used), grouped(len(f.Time))),
+		"residual scatter", scatterText(sd, ratio),
+		"baseline flux", number(f.Level, 6),
+		"mid-transit time", fixed(f.Mid, 6)+" BJD_TDB",
+	)
+}
+
+func scatterText(sd, ratio float64) string {
+	if math.IsNaN(sd) {
+		return ""
+	}
+	return fmt.Sprintf("%s ppm, %s times the errors used", fixed(sd*1e6, 0), fixed(ratio, 2))
+}
+
+func curveFitsFacts(fits []fit.CurveFit) []fact {
+	var all, ratios []float64
+	var channels []lightcurve.Channel
+	for _, f := range fits {
+		sd, ratio, _ := scatter(f)
+		all, ratios = append(all, sd), append(ratios, ratio)
+		channels = append(channels, f.Channel)
+	}
+	out := facts("size", count(len(fits), "fit"), "wavelengths", channelsText(channels))
+	if lo, hi, ok := extent(all); ok {
+		out = append(out, facts(
+			"residual scatter", fmt.Sprintf("%s to %s ppm, median %s", fixed(lo*1e6, 0), fixed(hi*1e6, 0), fixed(median(all)*1e6, 0)),
+			"scatter / errors used", "median "+fixed(median(ratios), 2),
+		)...)
+	}
+	return out
+}
+
+// spectrum shows a spectrum as a table, by wavelength.
+func (b *builder) spectrum(title string, s spectrum.Spectrum) []block {
+	points := byWavelength(s.Points)
+	b.tables++
+	g := &gridView{Number: b.tables, Named: true, Scroll: len(points) > scrolledRows, Wide: true,
+		Caption: "Transit depths " + title + ", by wavelength"}
+	for _, c := range []columnView{
+		{Name: "channel"}, {Name: "from", Unit: "um", Number: true}, {Name: "to", Unit: "um", Number: true},
+		{Name: "depth", Unit: "ppm", Number: true}, {Name: "Rp/R⋆", Number: true},
+		{Name: "limb darkening"}, {Name: "reduced χ²", Number: true}, {Name: "scatter", Unit: "ppm", Number: true},
+		{Name: "fitted", Number: true}, {Name: "masked", Number: true}, {Name: "flag"},
+	} {
+		g.Columns = append(g.Columns, c)
+	}
+	for i, p := range points {
+		if i == 4*shownRows {
+			g.Note = fmt.Sprintf("The first %d of %d channels are shown. ", i, len(points))
+			break
+		}
+		g.Rows = append(g.Rows, pointRow(p))
+	}
+	t := spectrumTable(points)
+	g.File = b.tableFile(t, len(points), title)
+	if s.Law != "" || s.Policy != "" {
+		g.Note += strings.Trim(fmt.Sprintf("Limb darkening: %s law, %s.", label(s.Law), label(s.Policy)), ", ")
+	}
+	return []block{{Grid: g}}
+}
+
+func pointRow(p spectrum.Point) rowView {
+	row := rowView{Cells: []string{
+		fmt.Sprint(p.Channel.Index), fixed(p.Channel.Lo, 4), fixed(p.Channel.Hi, 4),
+		ppm(p.Depth, p.DepthErr), "", limbText(p), "", "",
+		grouped(p.Used), grouped(p.Masked), label(p.Flag),
+	}}
+	if !math.IsNaN(p.RadiusRatio) && p.RadiusRatio != 0 {
+		row.Cells[4] = measured(p.RadiusRatio, p.RadiusRatioErr)
+	}
+	if p.Dof > 0 && !math.IsNaN(p.Chi2) {
+		row.Cells[6] = fixed(p.Chi2/float64(p.Dof), 3)
+	}
+	if p.Scatter > 0 {
+		row.Cells[7] = fixed(p.Scatter*1e6, 0)
+	}
+	if p.Flag != "" {
+		row.Class = "flagged"
+	}
+	return row
+}
+
+func limbText(p spectrum.Point) string {
+	var parts []string
+	for i, u := range p.Limb {
+		if i == 4 {
+			break
+		}
+		if i < len(p.LimbErr) && p.LimbErr[i] > 0 {
+			parts = append(parts, measured(u, p.LimbErr[i]))
+		} else {
+			parts = append(parts, number(u, 3))
+		}
+	}
+	return strings.Join(parts, "; ")
+}
+
+// spectrumTable is the spectrum with its numbers in full, for a file.
+func spectrumTable(points []spectrum.Point) table.Table {
+	columns := []table.Column{{Name: "wave_lo", Unit: "um"}, {Name: "wave_hi", Unit: "um"}, {Name: "depth"}, {Name: "depth_err"},
+		{Name: "channel"}, {Name: "radius_ratio"}, {Name: "radius_ratio_err"}, {Name: "chi2"}, {Name: "dof"}, {Name: "used"},
+		{Name: "masked"}, {Name: "scatter"}, {Name: "flag", Text: []string{}}}
+	for _, p := range points {
+		for i, v := range []float64{p.Channel.Lo, p.Channel.Hi, p.Depth, p.DepthErr, float64(p.Channel.Index), p.RadiusRatio,
+			p.RadiusRatioErr, p.Chi2, float64(p.Dof), float64(p.Used), float64(p.Masked), p.Scatter} {
+			columns[i].Number = append(columns[i].Number, v)
+		}
+		last := &columns[len(columns)-1]
+		last.Text = append(last.Text, p.Flag)
+	}
+	return table.Table{Columns: columns}
+}
