@@ -26,5 +26,3 @@
 // Checking can use much memory and time on hostile code (constants that grow),
 // so it belongs into a confined process, as running does.
 package program
-
-//go:generate go run ./generate

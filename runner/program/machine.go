@@ -23,6 +23,7 @@ const maxSaid = 4096
 type Machine struct {
 	file  string
 	funcs map[string]reflect.Value
+	at    map[string]diag.Pos // of each step
 	said  *head
 }
 
@@ -77,7 +78,7 @@ func (p *Program) Compile() (m *Machine, err error) {
 	if _, err := i.Execute(compiled); err != nil {
 		return nil, fmt.Errorf("%s: the interpreter cannot load the recipe: %w", p.file, err)
 	}
-	m = &Machine{file: p.file, funcs: map[string]reflect.Value{}, said: said}
+	m = &Machine{file: p.file, funcs: map[string]reflect.Value{}, at: map[string]diag.Pos{}, said: said}
 	exported := i.Symbols("main")["main"]
 	for _, s := range p.Steps {
 		fn, ok := exported[s.Name]
@@ -85,6 +86,7 @@ func (p *Program) Compile() (m *Machine, err error) {
 			return nil, fmt.Errorf("%s: step %s is lost in the interpreter", s.Pos, s.Name)
 		}
 		m.funcs[s.Name] = fn
+		m.at[s.Name] = s.Pos
 	}
 	return m, nil
 }
@@ -125,8 +127,11 @@ func (m *Machine) Call(step string, args []reflect.Value) (results []reflect.Val
 		return nil, fmt.Errorf("step %s takes %d arguments, not %d", step, t.NumIn(), len(args))
 	}
 	for i, a := range args {
-		if !a.IsValid() || !a.Type().AssignableTo(t.In(i)) {
-			return nil, fmt.Errorf("argument %d of step %s is a %v, not a %v", i+1, step, a, t.In(i))
+		if !a.IsValid() {
+			return nil, fmt.Errorf("argument %d of step %s is missing", i+1, step)
+		}
+		if !a.Type().AssignableTo(t.In(i)) {
+			return nil, fmt.Errorf("argument %d of step %s is a %v, not a %v", i+1, step, a.Type(), t.In(i))
 		}
 	}
 	m.said.reset()
@@ -141,7 +146,7 @@ func (m *Machine) Call(step string, args []reflect.Value) (results []reflect.Val
 		failed := results[n-1]
 		results = results[:n-1]
 		if !failed.IsNil() {
-			return nil, &StepError{Step: step, Pos: diag.Pos{File: m.file}, Text: failed.Interface().(error).Error()}
+			return nil, &StepError{Step: step, Pos: m.at[step], Text: failed.Interface().(error).Error()}
 		}
 	}
 	return results, nil

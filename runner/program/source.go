@@ -10,7 +10,6 @@ import (
 
 	"rimlight/runner/diag"
 	"rimlight/runner/program/available"
-	"rimlight/runner/program/exportdata"
 )
 
 // directive matches the comments that tools take for commands: a word, a colon
@@ -147,12 +146,7 @@ func (s *importScan) next(tok token.Token, lit string) (message, expected, neare
 
 // unavailable says that a package is not for recipes.
 func unavailable(path string) (message, expected, nearest string) {
-	var names []string
-	for _, p := range available.Packages {
-		if exportdata.Has(p.Path) {
-			names = append(names, p.Name)
-		}
-	}
+	names := available.Names()
 	last := path[strings.LastIndex(path, "/")+1:]
-	return fmt.Sprintf("package %s is not available to recipes", path), "available: " + strings.Join(names, ", "), diag.Nearest(last, names)
+	return fmt.Sprintf("package %s is not available to recipes", path), "packages available: " + strings.Join(names, ", "), diag.Nearest(last, names)
 }

@@ -239,7 +239,7 @@ func parseEach(text string) *Each {
 }
 
 // nearlyEach matches comments that are meant as the directive.
-var nearlyEach = regexp.MustCompile(`(?i)^//\s*each\s*:`)
+var nearlyEach = regexp.MustCompile(`(?i)^//each\b|^//\s*each\s*:\s*\S+\s+in\s`)
 
 // directives checks every comment that is or looks like //each:.
 func (c *checker) directives() {

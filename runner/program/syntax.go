@@ -32,7 +32,7 @@ func (c *checker) syntax(fences []Fence) {
 		}
 		code := append([]byte(clause+"\n"), bytes.Join(lines[start-1:end], nil)...)
 		_, err := parser.ParseFile(token.NewFileSet(), "", code, parser.SkipObjectResolution|parser.AllErrors)
-		c.syntaxErrors(err, start-2)
+		c.syntaxErrors(err, start-2, code)
 	}
 	if len(c.diags) > 0 {
 		return
@@ -46,13 +46,13 @@ func (c *checker) syntax(fences []Fence) {
 	}
 	if err != nil {
 		if len(c.diags) == 0 {
-			c.syntaxErrors(err, 0)
+			c.syntaxErrors(err, 0, c.src)
 		}
 		return
 	}
 	c.src = c.withClause(clause + implied(f))
 	c.tree, err = parser.ParseFile(c.fset, c.file, c.src, parser.ParseComments|parser.SkipObjectResolution)
-	c.syntaxErrors(err, 0)
+	c.syntaxErrors(err, 0, c.src)
 }
 
 // declarations guesses where top-level declarations begin: after a blank line,
@@ -70,13 +70,19 @@ func declarations(lines [][]byte) []Fence {
 		}
 		blank = strings.TrimSpace(text) == ""
 	}
+	for i := range out { // the end of the source is where the code ends
+		for out[i].End > out[i].Start && strings.TrimSpace(string(lines[out[i].End-1])) == "" {
+			out[i].End--
+		}
+	}
 	return out
 }
 
 var opening = regexp.MustCompile(`^(func|type|const|var)\b|^//|^/\*`)
 
-// syntaxErrors reports the errors of one parse, shifted by some lines.
-func (c *checker) syntaxErrors(err error, shift int) {
+// syntaxErrors reports the errors of one parse of code, whose lines are shift
+// before those of the recipe.
+func (c *checker) syntaxErrors(err error, shift int, code []byte) {
 	list, ok := err.(scanner.ErrorList)
 	if !ok {
 		if err != nil {
@@ -84,12 +90,49 @@ func (c *checker) syntaxErrors(err error, shift int) {
 		}
 		return
 	}
+	reported := 0
 	for i, e := range list {
-		if i == maxSyntax {
+		if i > 0 && e.Pos.Line == list[i-1].Pos.Line {
+			continue
+		}
+		if reported++; reported > maxSyntax {
 			break
 		}
+		message, expected := e.Msg, ""
+		if strings.HasSuffix(e.Msg, "found 'EOF'") {
+			message = "the Go block ends too early"
+			if line, bracket := unclosed(code); line > 0 {
+				expected = fmt.Sprintf("the %s opened in line %d is not closed", bracket, line+shift)
+			}
+		}
 		pos := diag.Pos{File: c.file, Line: e.Pos.Line + shift, Col: e.Pos.Column}
-		c.diags.Add(pos, "syntax error: "+strings.TrimPrefix(e.Msg, "syntax error: "), "", "")
+		c.diags.Add(pos, "syntax error: "+message, expected, "")
+	}
+}
+
+// unclosed finds the last bracket that code opens and does not close.
+func unclosed(code []byte) (line int, bracket string) {
+	files := token.NewFileSet()
+	f := files.AddFile("", -1, len(code))
+	var s scanner.Scanner
+	s.Init(f, code, nil, 0)
+	var open []token.Pos
+	for {
+		pos, tok, _ := s.Scan()
+		switch tok {
+		case token.EOF:
+			if len(open) == 0 {
+				return 0, ""
+			}
+			at := f.PositionFor(open[len(open)-1], false)
+			return at.Line, string(code[at.Offset])
+		case token.LBRACE, token.LPAREN, token.LBRACK:
+			open = append(open, pos)
+		case token.RBRACE, token.RPAREN, token.RBRACK:
+			if len(open) > 0 {
+				open = open[:len(open)-1]
+			}
+		}
 	}
 }
 

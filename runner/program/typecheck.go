@@ -57,23 +57,39 @@ func (c *checker) typeError(e types.Error) {
 	}
 	message, expected, nearest := e.Msg, "", ""
 	if m := undefined.FindStringSubmatch(message); m != nil {
-		switch {
-		case m[2] != "":
+		qualifier := m[2] == "" && c.qualifies(e.Pos)
+		if m[2] != "" {
 			nearest = c.nearestMember(m[1], m[2])
-		default:
-			nearest = c.nearestName(e.Pos, m[1])
+		} else {
+			nearest = c.nearestName(e.Pos, m[1], qualifier)
+		}
+		if qualifier && nearest == "" {
+			_, expected, _ = unavailable(m[1])
 		}
 	} else if m := noMember.FindStringSubmatch(message); m != nil && !strings.Contains(message, "but does have") {
 		nearest = c.nearestSelection(e.Pos, m[1])
 	}
-	if name, ok := strings.CutPrefix(message, "undefined: "); ok && available.Path(name) != "" && !exportdata.Has(available.Path(name)) {
-		message, expected, nearest = unavailable(name)
-	}
 	c.diags.Add(c.at(e.Pos), message, expected, nearest)
 }
 
-// nearestName looks among what is in scope at pos and the packages.
-func (c *checker) nearestName(pos token.Pos, name string) string {
+// qualifies reports whether the identifier at pos stands before a dot, as a
+// package does.
+func (c *checker) qualifies(pos token.Pos) bool {
+	found := false
+	ast.Inspect(c.tree, func(n ast.Node) bool {
+		if s, ok := n.(*ast.SelectorExpr); ok {
+			if id, ok := s.X.(*ast.Ident); ok && id.Pos() == pos {
+				found = true
+			}
+		}
+		return !found
+	})
+	return found
+}
+
+// nearestName looks among what is in scope at pos and the packages; for a name
+// before a dot, among variables and packages.
+func (c *checker) nearestName(pos token.Pos, name string, qualifier bool) string {
 	known := map[string]bool{}
 	scope := c.pkg.Scope().Innermost(pos)
 	if scope == nil {
@@ -81,7 +97,11 @@ func (c *checker) nearestName(pos token.Pos, name string) string {
 	}
 	for s := scope; s != nil; s = s.Parent() {
 		for _, n := range s.Names() {
-			if o := s.Lookup(n); s.Parent() == nil || s == c.pkg.Scope() || !o.Pos().IsValid() || o.Pos() < pos {
+			o := s.Lookup(n)
+			if _, variable := o.(*types.Var); qualifier && !variable {
+				continue
+			}
+			if s == types.Universe || s == c.pkg.Scope() || o.Pos() < pos {
 				known[n] = true
 			}
 		}

@@ -9,7 +9,14 @@ import (
 
 func init() {
 	Table["rimlight/steps/spectrum/spectrum"] = map[string]reflect.Value{
+		"Assemble": reflect.ValueOf(spectrum.Assemble),
+		"CSV":      reflect.ValueOf(spectrum.CSV),
+		"ECSV":     reflect.ValueOf(spectrum.ECSV),
+		"Note":     reflect.ValueOf((*spectrum.Note)(nil)),
 		"Point":    reflect.ValueOf((*spectrum.Point)(nil)),
+		"ReadCSV":  reflect.ValueOf(spectrum.ReadCSV),
 		"Spectrum": reflect.ValueOf((*spectrum.Spectrum)(nil)),
+		"Summary":  reflect.ValueOf((*spectrum.Summary)(nil)),
+		"Table":    reflect.ValueOf(spectrum.Table),
 	}
 }

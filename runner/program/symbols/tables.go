@@ -3,6 +3,11 @@
 // name. One file per package is generated from its exported declarations.
 package symbols
 
+// The directive stands in the file whose name comes last: files before it come
+// and go while it runs.
+
+//go:generate go run ../generate -C ..
+
 import "reflect"
 
 // Table maps "PATH/NAME" of a package to its symbols: functions as values,
