@@ -9,6 +9,7 @@ import (
 	"strings"
 
 	"rimlight/steps/fit"
+	"rimlight/steps/spectrum"
 )
 
 // A builder turns a document into views, in the order of the document, so that
@@ -23,6 +24,7 @@ type builder struct {
 	shown     map[place]int     // number of the figure that a result is shown as
 	sections  map[string]string // id of a heading by its text
 	contents  []entry
+	assembled bool // some step gives a whole spectrum
 }
 
 // An entry is a line of the table of contents.
@@ -36,6 +38,9 @@ func newBuilder(d Document) *builder {
 	b := &builder{doc: d, settings: map[string]Setting{}, shown: map[place]int{}, sections: map[string]string{}}
 	for _, s := range d.Settings {
 		b.settings[s.Name] = s
+	}
+	for _, s := range d.Steps {
+		b.assembled = b.assembled || slices.ContainsFunc(s.Results, func(r Result) bool { _, ok := r.Value.(spectrum.Spectrum); return ok })
 	}
 	return b
 }
@@ -66,8 +71,8 @@ type stepView struct {
 }
 
 type argView struct {
-	Name, Type, Source, From, Link, Text, Hash string
-	Changed                                    string // the recipe's own value, when another was used
+	Name, Type, From, Link, Text, Hash string
+	Changed                            string // the recipe's own value, when another was used
 }
 
 type resultView struct {
@@ -149,21 +154,27 @@ func paragraphs(doc string) []string {
 }
 
 func (b *builder) argument(a Argument) argView {
-	v := argView{Name: label(a.Name), Type: shortType(a.Type), Source: label(a.Source), From: label(a.From), Text: sentence(a.Text), Hash: a.Hash}
+	v := argView{Name: label(a.Name), Type: shortType(a.Type), From: label(a.Source), Text: sentence(a.Text), Hash: a.Hash}
 	switch a.Source {
 	case "result", "element":
+		if a.Source == "element" {
+			v.From = "one by one from "
+		} else {
+			v.From = "step "
+		}
+		v.From += label(a.From)
 		if slices.ContainsFunc(b.doc.Steps, func(s Step) bool { return s.Name == a.From }) {
 			v.Link = stepID(a.From)
 		}
 	case "input":
-		v.From, v.Link = "", "input-"+slug(a.Name)
+		v.Link = "input-" + slug(a.Name)
 	case "setting":
-		v.From, v.Link = "", "setting-"+slug(a.Name)
+		v.Link = "setting-" + slug(a.Name)
 		if s, ok := b.settings[a.Name]; ok && s.Changed {
 			v.Changed = cmp.Or(label(s.Recipe), "nothing")
 		}
 	case "priors":
-		v.Link = b.sections[a.From]
+		v.From, v.Link = "priors above", b.sections[a.From]
 	}
 	if p, ok := a.Value.(fit.Priors); ok && v.Text == "" {
 		v.Text = priorsText(p)

@@ -6,9 +6,18 @@ import (
 	"strings"
 )
 
-// number writes a value with the given number of significant digits: plainly
-// when that is short, with a power of ten otherwise. NaN is "NaN".
-func number(v float64, digits int) string {
+// number writes a value with at most the given number of significant digits:
+// plainly when that is short, with a power of ten otherwise. NaN is "NaN".
+func number(v float64, digits int) string { return decimal(v, digits, false) }
+
+// decimal is number, with all digits written when padded, zeros at the end too.
+func decimal(v float64, digits int, padded bool) string {
+	trim := func(s string) string {
+		if !padded && strings.Contains(s, ".") {
+			s = strings.TrimRight(strings.TrimRight(s, "0"), ".")
+		}
+		return minus(s)
+	}
 	switch {
 	case math.IsNaN(v):
 		return "NaN"
@@ -23,12 +32,12 @@ func number(v float64, digits int) string {
 	mantissa, exp := split(v, digits)
 	if exp >= -4 && exp < max(digits, 6) {
 		s := strconv.FormatFloat(v, 'f', max(0, digits-1-exp), 64)
-		if v == math.Trunc(v) && math.Abs(v) < 1e15 {
+		if v == math.Trunc(v) {
 			s = strconv.FormatFloat(v, 'f', 0, 64)
 		}
-		return minus(s)
+		return trim(s)
 	}
-	return minus(mantissa) + "×10" + superscript(exp)
+	return trim(mantissa) + "×10" + superscript(exp)
 }
 
 // split writes v as a decimal mantissa of the given digits, and its exponent.

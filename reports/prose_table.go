@@ -65,7 +65,7 @@ func (p *proseRenderer) annotate(t ast.Node) {
 func (p *proseRenderer) annotateSetting(id string, value ast.Node) {
 	s, ok := p.b.settings[id]
 	if ok && s.Changed && value != nil {
-		p.notes[value] = cellNote{class: "replaced", after: template.HTML(`<ins class="changed" title="given on the command line">` + html.EscapeString(sentence(s.Value)) + "</ins>")}
+		p.notes[value] = cellNote{class: "replaced", after: template.HTML(` <ins class="changed" title="given on the command line">` + html.EscapeString(sentence(s.Value)) + "</ins>")}
 	}
 }
 

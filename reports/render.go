@@ -9,7 +9,6 @@ import (
 	"fmt"
 	"html/template"
 	"io"
-	"slices"
 	"strings"
 	"time"
 
@@ -34,11 +33,8 @@ var templates = template.Must(template.New("report").Funcs(template.FuncMap{
 
 // unitText is a unit as it is shown beside numbers.
 func unitText(unit string) string {
-	switch unit {
-	case "um":
+	if unit == "um" {
 		return "µm"
-	case "deg":
-		return "°"
 	}
 	return unit
 }
@@ -149,7 +145,7 @@ func (b *builder) summarize(p *page) {
 		}
 	}
 	all := Summary(d)
-	p.Headlines = slices.DeleteFunc(all, func(h Headline) bool { return h.Name == "outcome" })
+	p.Headlines = all[1:] // the outcome is told in words
 	v := verdicts(d)
 	p.Checks = verdictViews(v)
 	p.Course = course(d, all[0].Note)
@@ -213,7 +209,7 @@ func course(d Document, steps string) string {
 	if !d.Started.IsZero() && d.Ended.After(d.Started) {
 		s += fmt.Sprintf(" The run took %s", duration(d.Ended.Sub(d.Started)))
 		if computing > 0 {
-			s += fmt.Sprintf(" and %s of computing", duration(computing))
+			s += fmt.Sprintf(", its steps together %s", duration(computing))
 		}
 		s += "."
 	}

@@ -94,8 +94,6 @@ func FitWhite(clean lightcurve.Cube, period float64, priors fit.Priors, seed uin
 ### One fit per channel
 
 ` + "```go" + `
-//each:channel in channels
-
 // FitChannel fits one channel with the orbit held.
 //each:channel in channels
 func FitChannel(channel lightcurve.Curve, white fit.Posterior, limbPolicy string) (depth spectrum.Point, channelFit fit.CurveFit, err error) {
@@ -276,7 +274,7 @@ func sampleWhite(rng *rand.Rand, c lightcurve.Cube) (fit.Posterior, fit.CurveFit
 			{Name: "impactParameter", Value: 0.3089, Err: 0.0221}, {Name: "T14", Value: 0.10391, Err: 0.00021, Unit: "d", About: "first to fourth contact"}},
 		Chi2: 2981.24, Dof: 2988, Samples: 2996, Iterations: 14, Status: "converged",
 		Warnings: []string{"axisRatio and inclination are correlated by 0.97: the data give their combination only"},
-		Model:    "F(t) = transit(t; Rp/R⋆, T₀, a/R⋆, i, u₁, u₂) × (1 + slope t + A exp(−t/τ))",
+		Model:    "F(t) = transit(t; Rp/Rs, T₀, a/Rs, i, u₁, u₂) × (1 + slope t + A exp(−t/τ))",
 	}
 	for i := range names {
 		row := make([]float64, len(names))
@@ -303,7 +301,7 @@ func samplePoints(rng *rand.Rand, c lightcurve.Cube) (points []spectrum.Point, f
 		p := spectrum.Point{Channel: ch, Depth: depth, DepthErr: err, RadiusRatio: math.Sqrt(depth), RadiusRatioErr: err / 2 / math.Sqrt(depth),
 			Limb: []float64{0.3 / w, 0.15}, LimbErr: []float64{0.02, 0.04}, Chi2: 2980 + 60*rng.NormFloat64(), Dof: 2990, Used: 2985, Masked: 15, Scatter: 0.0008 + 0.0002*w}
 		if j%33 == 17 {
-			p = spectrum.Point{Channel: ch, Depth: math.NaN(), DepthErr: math.NaN(), RadiusRatio: math.NaN(), RadiusRatioErr: math.NaN(), Chi2: math.NaN(), Masked: len(c.Time), Flag: "dead channel: no usable sample"}
+			p = spectrum.Point{Channel: ch, Depth: math.NaN(), DepthErr: math.NaN(), RadiusRatio: math.NaN(), RadiusRatioErr: math.NaN(), Chi2: math.NaN(), Masked: len(c.Time), Scatter: math.NaN(), Flag: "dead channel: no usable sample"}
 		}
 		points = append(points, p)
 		n := len(c.Time)
@@ -432,3 +430,22 @@ func sampleMap(rng *rand.Rand) figure.Figure {
 }
 
 const onePixel = "iVBORw0KGgoAAAANSUhEUgAAAAEAAAABCAYAAAAfFcSJAAAADUlEQVR42mNkYPhfDwAChwGA60e6kgAAAABJRU5ErkJggg=="
+
+// failing is the sample with a step that failed, in part, and what that leads to.
+func failing() Document {
+	d := sample(80, 300)
+	d.Outcome = StepFailed
+	d.Inputs[0].Changed, d.Inputs[0].Recipe, d.Inputs[0].Files[0].Name = true, "visit1.fits", "visit2.fits"
+	s := &d.Steps[3]
+	s.State, s.Results = Failed, nil
+	s.Err = "2 of 80 elements failed; element 18: warm-saturn.md:79:9: channel 17: no usable sample: all 300 are masked (300 missing);\nleave the channel out, or look at the reader's column table"
+	for _, i := range []int{17, 50} {
+		s.Elements[i].State, s.Elements[i].Hash = Failed, ""
+		s.Elements[i].Err = fmt.Sprintf("warm-saturn.md:79:9: channel %d: no usable sample: all 300 are masked (300 missing)", i)
+	}
+	for i := 4; i < 6; i++ {
+		d.Steps[i] = Step{Name: d.Steps[i].Name, Fence: d.Steps[i].Fence, Line: d.Steps[i].Line, Doc: d.Steps[i].Doc, Args: d.Steps[i].Args, State: NotReached}
+	}
+	d.Notes = []string{"object 3f9a1c2b77 was damaged; step Clean was computed again"}
+	return d
+}

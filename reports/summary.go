@@ -109,7 +109,7 @@ func spectrumHeadlines(d Document) []Headline {
 	}
 	out := []Headline{h}
 	if lo, hi, ok := span(channels); ok {
-		h := Headline{Name: "wavelengths", Text: fmt.Sprintf("%s to %s µm", number(lo, 5), number(hi, 5))}
+		h := Headline{Name: "wavelengths", Text: fmt.Sprintf("%s to %s µm", number(lo, 4), number(hi, 4))}
 		if len(resolution) > 0 {
 			h.Note = "median λ/Δλ of the channels " + fixed(median(resolution), 0)
 		}
@@ -126,19 +126,23 @@ func spectrumHeadlines(d Document) []Headline {
 
 // symbols are how papers write the parameters that have a symbol.
 var symbols = map[string]string{
-	"radiusRatio": "Rp/R⋆", "depth": "(Rp/R⋆)²", "midTransit": "T₀", "period": "P", "axisRatio": "a/R⋆",
+	"radiusRatio": "Rp/Rs", "depth": "(Rp/Rs)²", "midTransit": "T₀", "period": "P", "axisRatio": "a/Rs",
 	"inclination": "i", "impact": "b", "impactParameter": "b", "eccentricity": "e", "periastron": "ω",
-	"duration": "T₁₄", "T14": "T₁₄", "T23": "T₂₃", "u1": "u₁", "u2": "u₂", "q1": "q₁", "q2": "q₂", "density": "ρ⋆",
+	"duration": "T₁₄", "T14": "T₁₄", "T23": "T₂₃", "u1": "u₁", "u2": "u₂", "q1": "q₁", "q2": "q₂", "density": "ρs",
 }
 
-// leading are the parameters that belong into a summary.
-var leading = []string{"radiusRatio", "depth", "midTransit", "axisRatio", "inclination", "impact", "impactParameter", "duration", "T14", "u1", "u2"}
+// leading are the parameters that belong into a summary, with their headline.
+var leading = []struct{ name, headline string }{
+	{"radiusRatio", "radius ratio Rp/Rs"}, {"depth", "depth (Rp/Rs)²"}, {"midTransit", "mid-transit time T₀"},
+	{"axisRatio", "axis ratio a/Rs"}, {"inclination", "inclination"}, {"impact", "impact parameter"},
+	{"impactParameter", "impact parameter"}, {"duration", "duration T₁₄"}, {"T14", "duration T₁₄"}, {"u1", "u₁"}, {"u2", "u₂"},
+}
 
 func posteriorHeadlines(p fit.Posterior) []Headline {
 	var out []Headline
 	for _, want := range leading {
-		if q, ok := quantity(p, want); ok {
-			out = append(out, Headline{Name: "white-light " + want, Text: strings.TrimSpace(measured(q.Value, q.Err) + " " + label(q.Unit)), Note: symbols[want]})
+		if q, ok := quantity(p, want.name); ok {
+			out = append(out, Headline{Name: "white-light " + want.headline, Text: strings.TrimSpace(measured(q.Value, q.Err) + " " + label(q.Unit))})
 		}
 	}
 	if p.Dof > 0 && !math.IsNaN(p.Chi2) {

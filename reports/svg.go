@@ -169,7 +169,7 @@ func (s *svgWriter) start(t xml.StartElement) {
 }
 
 // root writes the drawing's size. It keeps its proportions and takes the
-// width of the column, up to half as large again as it was drawn.
+// width of the column, up to a third larger than it was drawn.
 func (s *svgWriter) root(t xml.StartElement) {
 	var width, height float64
 	box := ""
@@ -198,7 +198,7 @@ func (s *svgWriter) root(t xml.StartElement) {
 		box = ""
 	}
 	if width > 0 {
-		fmt.Fprintf(&s.b, ` width="%.0f"`, 1.5*width)
+		fmt.Fprintf(&s.b, ` width="%.0f"`, 4*width/3)
 	}
 	if box != "" {
 		s.b.WriteString(` viewBox="` + html.EscapeString(box) + `"`)

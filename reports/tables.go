@@ -29,8 +29,9 @@ type gridView struct {
 	Columns []columnView
 	Rows    []rowView
 	Scroll  bool
-	Wide    bool // may spread over the margin
-	Named   bool // the first cell of a row names the row
+	Wide    bool   // may spread over the margin
+	Folded  string // says what there is when the table is shown only on demand
+	Named   bool   // the first cell of a row names the row
 	File    *fileView
 }
 
@@ -42,7 +43,11 @@ type columnView struct {
 type rowView struct {
 	Class string
 	Cells []string
+	Rest  string // a cell over all columns that Cells leaves
 }
+
+// Left is the number of columns that a row's own cells leave.
+func (g *gridView) Left(r rowView) int { return len(g.Columns) - len(r.Cells) }
 
 // A fileView is something that the reader can save.
 type fileView struct {
@@ -74,11 +79,10 @@ func cell(c table.Column, row int) string {
 	case row < len(c.Text):
 		return label(c.Text[row])
 	case row < len(c.Number) && !math.IsNaN(c.Number[row]):
-		digits := c.Digits
-		if digits <= 0 {
-			digits = 6
+		if c.Digits > 0 {
+			return decimal(c.Number[row], c.Digits, true)
 		}
-		return number(c.Number[row], digits)
+		return number(c.Number[row], 6)
 	}
 	return ""
 }

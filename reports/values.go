@@ -72,9 +72,9 @@ func (b *builder) show(title string, value any) []block {
 	case spectrum.Spectrum:
 		return b.spectrum(title, v)
 	case []spectrum.Point:
-		return b.spectrum(title, spectrum.Spectrum{Points: v})
+		return b.points(title, v)
 	case spectrum.Point:
-		return b.spectrum(title, spectrum.Spectrum{Points: []spectrum.Point{v}})
+		return b.points(title, []spectrum.Point{v})
 	case fit.Posterior:
 		return []block{{Posterior: b.posterior(v)}}
 	case []fit.Posterior:

@@ -1,6 +1,7 @@
 package reports
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"strings"
@@ -73,7 +74,7 @@ func channelsText(channels []lightcurve.Channel) string {
 	if !ok {
 		return ""
 	}
-	return fmt.Sprintf("%s from %s to %s µm", count(len(channels), "channel"), number(lo, 5), number(hi, 5))
+	return fmt.Sprintf("%s from %s to %s µm", count(len(channels), "channel"), number(lo, 4), number(hi, 4))
 }
 
 func channelText(c lightcurve.Channel) string {
@@ -161,26 +162,44 @@ func curveFitsFacts(fits []fit.CurveFit) []fact {
 	return out
 }
 
+// points shows depths that are not yet a spectrum. Where one follows, their
+// table is folded away.
+func (b *builder) points(title string, points []spectrum.Point) []block {
+	blocks := b.spectrum(title, spectrum.Spectrum{Points: points})
+	if b.assembled && len(points) > 1 {
+		blocks[0].Grid.Folded = count(len(points), "transit depth")
+	}
+	return blocks
+}
+
 // spectrum shows a spectrum as a table, by wavelength.
 func (b *builder) spectrum(title string, s spectrum.Spectrum) []block {
 	points := byWavelength(s.Points)
 	b.tables++
 	g := &gridView{Number: b.tables, Named: true, Scroll: len(points) > scrolledRows, Wide: true,
-		Caption: "Transit depths " + title + ", by wavelength"}
+		Caption: "Transit depths by wavelength"}
 	for _, c := range []columnView{
 		{Name: "channel"}, {Name: "from", Unit: "um", Number: true}, {Name: "to", Unit: "um", Number: true},
-		{Name: "depth", Unit: "ppm", Number: true}, {Name: "Rp/R⋆", Number: true},
-		{Name: "limb darkening"}, {Name: "reduced χ²", Number: true}, {Name: "scatter", Unit: "ppm", Number: true},
-		{Name: "fitted", Number: true}, {Name: "masked", Number: true}, {Name: "flag"},
+		{Name: "depth", Unit: "ppm", Number: true}, {Name: "Rp/Rs", Number: true},
+		{Name: "χ²/dof", Number: true}, {Name: "scatter", Unit: "ppm", Number: true},
+		{Name: "fitted", Number: true}, {Name: "masked", Number: true},
 	} {
 		g.Columns = append(g.Columns, c)
 	}
+	limb := 0
+	for _, p := range points {
+		limb = max(limb, min(len(p.Limb), 4))
+	}
+	for i := range limb {
+		g.Columns = append(g.Columns, columnView{Name: "u" + string([]rune("₁₂₃₄")[i]), Number: true})
+	}
+	g.Columns = append(g.Columns, columnView{Name: "flag"})
 	for i, p := range points {
 		if i == 4*shownRows {
 			g.Note = fmt.Sprintf("The first %d of %d channels are shown. ", i, len(points))
 			break
 		}
-		g.Rows = append(g.Rows, pointRow(p))
+		g.Rows = append(g.Rows, pointRow(p, limb))
 	}
 	t := spectrumTable(points)
 	g.File = b.tableFile(t, len(points), title)
@@ -190,20 +209,27 @@ func (b *builder) spectrum(title string, s spectrum.Spectrum) []block {
 	return []block{{Grid: g}}
 }
 
-func pointRow(p spectrum.Point) rowView {
+func pointRow(p spectrum.Point, limb int) rowView {
+	if !p.Good() {
+		return rowView{Class: "flagged", Rest: "no depth: " + cmp.Or(label(p.Flag), "no reason was given"),
+			Cells: []string{fmt.Sprint(p.Channel.Index), fixed(p.Channel.Lo, 4), fixed(p.Channel.Hi, 4)}}
+	}
 	row := rowView{Cells: []string{
 		fmt.Sprint(p.Channel.Index), fixed(p.Channel.Lo, 4), fixed(p.Channel.Hi, 4),
-		ppm(p.Depth, p.DepthErr), "", limbText(p), "", "",
-		grouped(p.Used), grouped(p.Masked), label(p.Flag),
+		ppm(p.Depth, p.DepthErr), "", "", "", grouped(p.Used), grouped(p.Masked),
 	}}
+	for i := range limb {
+		row.Cells = append(row.Cells, limbText(p, i))
+	}
+	row.Cells = append(row.Cells, label(p.Flag))
 	if !math.IsNaN(p.RadiusRatio) && p.RadiusRatio != 0 {
 		row.Cells[4] = measured(p.RadiusRatio, p.RadiusRatioErr)
 	}
 	if p.Dof > 0 && !math.IsNaN(p.Chi2) {
-		row.Cells[6] = fixed(p.Chi2/float64(p.Dof), 3)
+		row.Cells[5] = fixed(p.Chi2/float64(p.Dof), 3)
 	}
 	if p.Scatter > 0 {
-		row.Cells[7] = fixed(p.Scatter*1e6, 0)
+		row.Cells[6] = fixed(p.Scatter*1e6, 0)
 	}
 	if p.Flag != "" {
 		row.Class = "flagged"
@@ -211,19 +237,16 @@ func pointRow(p spectrum.Point) rowView {
 	return row
 }
 
-func limbText(p spectrum.Point) string {
-	var parts []string
-	for i, u := range p.Limb {
-		if i == 4 {
-			break
-		}
-		if i < len(p.LimbErr) && p.LimbErr[i] > 0 {
-			parts = append(parts, measured(u, p.LimbErr[i]))
-		} else {
-			parts = append(parts, number(u, 3))
-		}
+// limbText is limb-darkening coefficient number i; without an error when it
+// was held.
+func limbText(p spectrum.Point, i int) string {
+	switch {
+	case i >= len(p.Limb):
+		return ""
+	case i < len(p.LimbErr) && p.LimbErr[i] > 0:
+		return measured(p.Limb[i], p.LimbErr[i])
 	}
-	return strings.Join(parts, "; ")
+	return number(p.Limb[i], 3)
 }
 
 // spectrumTable is the spectrum with its numbers in full, for a file.
