@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"sort"
 	"strings"
+	"unicode/utf8"
 )
 
 // A Pos is a place in a recipe. Line and Col count from 1; Col counts bytes.
@@ -98,6 +99,9 @@ func (l List) Error() string {
 func Nearest(name string, known []string) string {
 	best, bestCost := "", 1+len(name)/3
 	for _, k := range known {
+		if n := utf8.RuneCountInString(name) - utf8.RuneCountInString(k); max(n, -n) > bestCost {
+			continue // no need to compare what is too long, at a cost of both lengths multiplied
+		}
 		c := distance(strings.ToLower(name), strings.ToLower(k))
 		if c < bestCost || c == bestCost && (best == "" || k < best) {
 			best, bestCost = k, c

@@ -31,7 +31,7 @@ func parseBlocks(source []byte) *document {
 	p := parser.NewParser(
 		parser.WithBlockParsers(blocks...),
 		parser.WithParagraphTransformers(
-			util.Prioritized(parser.LinkReferenceParagraphTransformer, 100),
+			util.Prioritized(referenceParser{parser.LinkReferenceParagraphTransformer}, 100),
 			util.Prioritized(&tableParser{extension.NewTableParagraphTransformer(), d}, 200),
 		),
 	)
@@ -51,6 +51,19 @@ func (f *fenceParser) Continue(node ast.Node, reader gtext.Reader, pc parser.Con
 		f.doc.closed[node] = true
 	}
 	return state
+}
+
+// maxReferences is the longest paragraph, in lines, that is searched for link
+// references; the search takes the square of their number.
+const maxReferences = 1000
+
+// A referenceParser leaves very long paragraphs alone.
+type referenceParser struct{ parser.ParagraphTransformer }
+
+func (r referenceParser) Transform(node *ast.Paragraph, reader gtext.Reader, pc parser.Context) {
+	if node.Lines().Len() <= maxReferences {
+		r.ParagraphTransformer.Transform(node, reader, pc)
+	}
 }
 
 // A tableParser keeps the lines of tables, since their syntax tree has cells

@@ -147,7 +147,9 @@ func (p *parsing) fence(n *ast.FencedCodeBlock) {
 			continue
 		}
 		line := p.text.line(seg.Stop - 1)
-		p.r.code = append(p.r.code, span{line, max(seg.Start, p.text.starts[line]), p.text.end(line)})
+		if start, end := max(seg.Start, p.text.starts[line]), p.text.end(line); start < end {
+			p.r.code = append(p.r.code, span{line, start, end})
+		}
 	}
 	b.Code = code.String()
 	p.r.Blocks = append(p.r.Blocks, b)

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"rimlight/runner/diag"
@@ -243,7 +244,8 @@ func (pr *Prior) fault(of numberOf) (fault, expected string) {
 	return "", ""
 }
 
-// checkPriors looks up the settings that priors name, once all are known.
+// checkPriors looks up the settings that priors name, once all are known, and
+// leaves out the priors that name wrong ones.
 func (p *parsing) checkPriors() {
 	settings := map[string]*Setting{}
 	var known []string
@@ -252,14 +254,17 @@ func (p *parsing) checkPriors() {
 		settings[s.Name] = s
 		known = append(known, s.Name)
 	}
-	for _, section := range p.r.Sections {
-		for _, pr := range section.Priors {
+	for i := range p.r.Sections {
+		s := &p.r.Sections[i]
+		s.Priors = slices.DeleteFunc(s.Priors, func(pr Prior) bool {
+			faults := len(p.diags)
 			for _, t := range pr.Terms {
 				if t.Setting != "" {
 					p.checkTerm(pr, t, settings, known)
 				}
 			}
-		}
+			return len(p.diags) > faults
+		})
 	}
 }
 

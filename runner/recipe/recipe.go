@@ -2,6 +2,17 @@
 // inputs, settings, priors and columns, and its Go steps, each with its place
 // in the file. It knows Markdown and the meaning of tables; it does not read
 // Go.
+//
+// A table has a meaning when its first header cell is one of
+//
+//	input      file, layout, about
+//	setting    value, unit, about, and if need be also try
+//	parameter  prior, unit, about
+//	column     name, and if need be input, hdu, unit, offset, about
+//
+// The further columns stand in any order, and each row has a cell for each.
+// All other tables are prose. In a cell, backticks or emphasis around the whole
+// and backslashes before punctuation do not count; a pipe is written \|.
 package recipe
 
 import (

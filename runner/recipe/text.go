@@ -10,16 +10,19 @@ import (
 	"rimlight/runner/diag"
 )
 
-// MaxSize is the largest recipe that is read, in bytes. A recipe is prose,
-// tables and code; numbers by the million belong in input files.
-const MaxSize = 4 << 20
+// The largest recipe that is read. A recipe is prose, tables and code; numbers
+// by the million belong in input files.
+const (
+	MaxSize  = 4 << 20 // bytes
+	MaxLines = 100_000
+)
 
 // Bounds on what one line may open. Markdown nests block quotes and lists
-// without end, at a cost that grows with the square of the depth; text meant
-// to be read stays far below these.
+// without end, at a cost in time and memory that grows with the depth times
+// the number of lines; text meant to be read stays far below these.
 const (
 	maxMarkers = 32  // block quote and list markers at the start of a line
-	maxIndent  = 200 // columns of leading blanks, tabs counted as four
+	maxIndent  = 120 // columns of leading blanks, tabs counted as four
 )
 
 // A text is a recipe's source with its line starts.
@@ -68,6 +71,10 @@ func (p *parsing) checkText() bool {
 	s := p.text.source
 	if len(s) > MaxSize {
 		p.add(0, fmt.Sprintf("the recipe has %d bytes", len(s)), fmt.Sprintf("expected at most %d; large tables belong in input files", MaxSize), "")
+		return false
+	}
+	if n := len(p.text.starts); n > MaxLines {
+		p.add(0, fmt.Sprintf("the recipe has %d lines", n), fmt.Sprintf("expected at most %d; large tables belong in input files", MaxLines), "")
 		return false
 	}
 	if bytes.HasPrefix(s, []byte{0xff, 0xfe}) || bytes.HasPrefix(s, []byte{0xfe, 0xff}) {
