@@ -135,7 +135,7 @@ func checkKey(key string) (upper, warning string, err error) {
 			return upper, fmt.Sprintf("keyword %q has characters other than A-Z, 0-9, - and _", key), nil
 		}
 	}
-	if upper != key {
+	if upper != key && !strings.HasPrefix(upper, "HIERARCH ") {
 		warning = fmt.Sprintf("keyword %q is not in upper case", key)
 	}
 	return upper, warning, nil

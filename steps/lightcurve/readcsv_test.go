@@ -122,10 +122,10 @@ func TestReadCSVErrors(t *testing.T) {
 
 // TestHostileCSVMemory: what costs little to write must cost little to refuse.
 func TestHostileCSVMemory(t *testing.T) {
-	long := bytes.Repeat([]byte{','}, 1<<20)
+	long := bytes.Repeat([]byte{','}, 1<<18)
 	var names strings.Builder
 	names.WriteString("time_bjd_tdb")
-	for i := range 60000 {
+	for i := range 20000 {
 		names.WriteString(",a")
 		for n := i; n > 0; n /= 36 {
 			names.WriteByte("0123456789abcdefghijklmnopqrstuvwxyz"[n%36])
@@ -134,10 +134,10 @@ func TestHostileCSVMemory(t *testing.T) {
 	for name, series := range map[string][]byte{
 		"commas":     long,
 		"many names": []byte(names.String()),
-		"blank rows": append([]byte("a,b\n"), bytes.Repeat([]byte(",\n"), 1<<18)...),
+		"blank rows": append([]byte("a,b\n"), bytes.Repeat([]byte(",\n"), 1<<16)...),
 		"open quote": append([]byte("a\n\""), bytes.Repeat([]byte{'\n'}, 1<<19)...),
 		"long rows":  append([]byte("a,b\n"), long...),
-		"newlines":   bytes.Repeat([]byte{'\n'}, 1<<20),
+		"newlines":   bytes.Repeat([]byte{'\n'}, 1<<18),
 		"comments":   bytes.Repeat([]byte("#\n"), 1<<19),
 	} {
 		var err error
@@ -193,4 +193,18 @@ func FuzzReadCSV(f *testing.F) {
 			}
 		}
 	})
+}
+
+func BenchmarkReadCSV(b *testing.B) {
+	series, channels, err := WriteCSV(bigCube(1000, 120))
+	if err != nil {
+		b.Fatal(err)
+	}
+	b.SetBytes(int64(len(series)))
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, _, err := ReadCSV(series, channels, nil); err != nil {
+			b.Fatal(err)
+		}
+	}
 }

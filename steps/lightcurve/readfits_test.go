@@ -364,3 +364,35 @@ print("same")
 		t.Errorf("astropy: %v\n%s", err, out)
 	}
 }
+
+// bigCube has the size of a long visit.
+func bigCube(n, m int) Cube {
+	c := Cube{Time: make([]float64, n)}
+	for i := range c.Time {
+		c.Time[i] = 2459000 + float64(i)/8640
+	}
+	for j := range m {
+		lo := 0.6 + 0.05*float64(j)
+		c.Channels = append(c.Channels, Channel{j, lo, lo + 0.05})
+		flux, sigma := make([]float64, n), make([]float64, n)
+		for i := range flux {
+			flux[i], sigma[i] = 1+1e-3*math.Sin(float64(i*m+j)), 1e-3
+		}
+		c.Flux, c.Err, c.Mask = append(c.Flux, flux), append(c.Err, sigma), append(c.Mask, make([]Flag, n))
+	}
+	return c
+}
+
+func BenchmarkReadFITS(b *testing.B) {
+	data, err := WriteFITS(bigCube(6000, 120))
+	if err != nil {
+		b.Fatal(err)
+	}
+	b.SetBytes(int64(len(data)))
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, _, err := ReadFITS(data, nil); err != nil {
+			b.Fatal(err)
+		}
+	}
+}

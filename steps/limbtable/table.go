@@ -27,9 +27,11 @@ const minCover = 0.5
 // interval. The errors are averaged the same way, as errors of one model
 // atmosphere are shared by all its wavelengths and do not average out; they are
 // zero when the table has none. ok is false, and all numbers zero, when the
-// table covers less than half of the interval.
+// table covers less than half of the interval or its columns differ in length.
 func (t Table) At(lo, hi float64) (u1, u2, e1, e2 float64, ok bool) {
-	if !(lo < hi) {
+	m := len(t.Channels)
+	fits := len(t.U1) == m && len(t.U2) == m && (t.U1Err == nil || len(t.U1Err) == m) && (t.U2Err == nil || len(t.U2Err) == m)
+	if !fits || !(lo < hi) {
 		return 0, 0, 0, 0, false
 	}
 	total, covered, reached := 0.0, 0.0, lo

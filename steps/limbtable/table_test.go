@@ -44,4 +44,7 @@ func TestAt(t *testing.T) {
 	if u1, _, _, _, ok := double.At(1, 1.5); !ok || u1 != 2 {
 		t.Errorf("mean of two channels on top of each other: %g, %v", u1, ok)
 	}
+	if _, _, _, _, ok := (Table{Channels: double.Channels, U1: []float64{1}, U2: []float64{1, 2}}).At(1, 2); ok {
+		t.Error("columns of different length were averaged")
+	}
 }
