@@ -94,9 +94,9 @@ func TestValueAsRefuses(t *testing.T) {
 func TestValueKind(t *testing.T) {
 	for text, want := range map[string]Kind{
 		"5": Number, "a": Text, `"5"`: Text, "true": Boolean, "1, 2": Numbers, "1, a": Texts, "true, 1": Texts,
-		"true, false": Booleans, "0:1:0.5": Grid, "12:30:00": Text, "a:b:c": Text, "1 : 3 : 1": Grid,
+		"true, false": Booleans, "0:1:0.5": Grid, "a:b:c": Text, "1 : 3 : 1": Grid,
 	} {
-		if got, err := (Value{text}).Kind(); text != "12:30:00" && (err != nil || got != want) {
+		if got, err := (Value{text}).Kind(); err != nil || got != want {
 			t.Errorf("%q is a %s (%v), want a %s", text, got, err, want)
 		}
 	}
