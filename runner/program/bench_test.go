@@ -24,7 +24,7 @@ func BenchmarkCheckLong(b *testing.B) {
 }
 
 func BenchmarkCompile(b *testing.B) {
-	p := check(b, sampleRecipe)
+	p := accept(b, sampleRecipe)
 	b.ReportAllocs()
 	for b.Loop() {
 		if _, err := p.Compile(); err != nil {
@@ -34,7 +34,7 @@ func BenchmarkCompile(b *testing.B) {
 }
 
 func BenchmarkCall(b *testing.B) {
-	m, err := check(b, "\nfunc Sum(xs []float64) (sum float64) {\n\tfor _, x := range xs {\n\t\tsum += x * x\n\t}\n\treturn sum\n}\n").Compile()
+	m, err := accept(b, "\nfunc Sum(xs []float64) (sum float64) {\n\tfor _, x := range xs {\n\t\tsum += x * x\n\t}\n\treturn sum\n}\n").Compile()
 	if err != nil {
 		b.Fatal(err)
 	}

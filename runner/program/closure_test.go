@@ -22,7 +22,7 @@ func Second(a []float64) (n int) { return unrelated() + len(a) }
 func hashes(t *testing.T, src string) map[string]string {
 	t.Helper()
 	out := map[string]string{}
-	for _, s := range check(t, src).Steps {
+	for _, s := range accept(t, src).Steps {
 		out[s.Name] = s.CodeHash
 	}
 	return out
@@ -90,7 +90,7 @@ func TestPrecedence(t *testing.T) {
 	} {
 		src := "\ntype node struct { p *node; x float64 }\nfunc f(a float64) func(float64) float64 { return func(b float64) float64 { return a + b } }\n" +
 			"func Step(a, b float64) (r float64) { g := &[]int{1}; v := node{&node{nil, 1}, 2}; _, _ = g, v; return " + e + " }\n"
-		code := check(t, src).Steps[0].Code
+		code := accept(t, src).Steps[0].Code
 		line := code[strings.Index(code, "\treturn "):]
 		line = line[:strings.Index(line, "\n")]
 		if other := forms[line]; other != "" {

@@ -4,7 +4,6 @@ import (
 	"encoding/json"
 	"fmt"
 	"go/ast"
-	"go/token"
 	"go/types"
 	"os"
 	"os/exec"
@@ -214,8 +213,8 @@ var anyOf = map[string]string{
 // prefixed is the sample as written, with a prefix before the names that it
 // declares at top level.
 func prefixed(t *testing.T, s sample, prefix string) string {
-	c := &checker{file: s.name, fset: token.NewFileSet()}
-	if c.check([]byte(s.src), nil); len(c.diags) > 0 {
+	c := check(s.name, []byte(s.src), nil)
+	if len(c.diags) > 0 {
 		t.Fatalf("%s: %v", s.name, c.diags)
 	}
 	top := c.pkg.Scope()

@@ -2,6 +2,7 @@ package program
 
 import (
 	"go/ast"
+	"go/constant"
 	"go/token"
 	"go/types"
 
@@ -17,6 +18,10 @@ func (l *linter) statement(n ast.Node, above []ast.Node) {
 		l.rangeStmt(n)
 	case *ast.AssignStmt:
 		l.assign(n)
+	case *ast.ForStmt:
+		if a, ok := n.Post.(*ast.AssignStmt); ok && (l.needsSplit(a.Rhs) || l.setsMap(a)) {
+			l.refuse(a, "assign at the end of the loop's body", "an assignment of nil or a composite literal, or of several results to map elements, is not available after the condition of a loop")
+		}
 	case *ast.LabeledStmt:
 		for _, a := range above {
 			if _, ok := a.(*ast.CaseClause); ok {
@@ -52,12 +57,15 @@ func (l *linter) rangeStmt(n *ast.RangeStmt) {
 
 // assign refuses the multiple assignments that the normaliser cannot split.
 func (l *linter) assign(n *ast.AssignStmt) {
+	if n.Tok == token.QUO_ASSIGN {
+		l.divisor(n.Rhs[0])
+	}
 	if len(n.Lhs) < 2 {
 		return
 	}
 	if len(n.Rhs) == len(n.Lhs) {
-		if hasLiteral(n.Rhs) && !allNames(n.Lhs) {
-			l.refuse(n, "assign one value per line", "a multiple assignment of composite literals to elements or fields is not available")
+		if l.needsSplit(n.Rhs) && !allNames(n.Lhs) {
+			l.refuse(n, "assign one value per line", "a multiple assignment of nil or composite literals to elements or fields is not available")
 		}
 		return
 	}
@@ -80,8 +88,13 @@ func (l *linter) assign(n *ast.AssignStmt) {
 	}
 }
 
-func hasLiteral(list []ast.Expr) bool {
+// needsSplit reports whether a multiple assignment of these values goes wrong:
+// one is nil or a composite literal.
+func (c *checker) needsSplit(list []ast.Expr) bool {
 	for _, e := range list {
+		if c.info.Types[e].IsNil() {
+			return true
+		}
 		e = ast.Unparen(e)
 		if u, ok := e.(*ast.UnaryExpr); ok {
 			e = ast.Unparen(u.X)
@@ -207,6 +220,8 @@ func (l *linter) binary(n *ast.BinaryExpr) {
 		if ok && b.Info()&types.IsUnsigned == 0 && l.info.Types[n.Y].Value == nil {
 			l.refuse(n.Y, "write uint("+exprText(n.Y)+")", "a shift count that is a signed variable is not available: a negative one would go unnoticed")
 		}
+	case token.QUO:
+		l.divisor(n.Y)
 	case token.LAND, token.LOR:
 		for _, x := range []ast.Expr{n.X, n.Y} {
 			ast.Inspect(x, func(m ast.Node) bool {
@@ -217,6 +232,14 @@ func (l *linter) binary(n *ast.BinaryExpr) {
 				return true
 			})
 		}
+	}
+}
+
+// divisor refuses a floating-point zero that is constant: Go divides by it, the
+// interpreter does not compile.
+func (l *linter) divisor(e ast.Expr) {
+	if v := l.info.Types[e].Value; v != nil && v.Kind() != constant.Unknown && constant.Sign(v) == 0 {
+		l.refuse(e, "write math.Inf(1), math.Inf(-1) or math.NaN()", "a division by the constant zero is not available")
 	}
 }
 

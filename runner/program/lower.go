@@ -183,7 +183,7 @@ func (n *normaliser) assignment(s *ast.AssignStmt) []ast.Stmt {
 			return []ast.Stmt{define(pos, name, lit), set(pos, s.Lhs[0], token.ASSIGN, ident(name, pos))}
 		}
 	case len(s.Rhs) == len(s.Lhs):
-		if allNames(s.Lhs) && (hasLiteral(s.Rhs) || n.redeclares(s)) {
+		if allNames(s.Lhs) && (n.needsSplit(s.Rhs) || n.redeclares(s)) {
 			return n.oneByOne(s)
 		}
 	case n.setsMap(s):
@@ -224,10 +224,14 @@ func (n *normaliser) oneByOne(s *ast.AssignStmt) []ast.Stmt {
 	return append(take, give...)
 }
 
-func (n *normaliser) setsMap(s *ast.AssignStmt) bool {
+// setsMap reports whether several results are assigned and one to a map element.
+func (c *checker) setsMap(s *ast.AssignStmt) bool {
+	if len(s.Lhs) < 2 || len(s.Rhs) != 1 {
+		return false
+	}
 	for _, x := range s.Lhs {
-		if i, ok := x.(*ast.IndexExpr); ok {
-			if _, ok := n.under(i.X).(*types.Map); ok {
+		if i, ok := ast.Unparen(x).(*ast.IndexExpr); ok {
+			if _, ok := c.under(i.X).(*types.Map); ok {
 				return true
 			}
 		}
@@ -268,7 +272,7 @@ func (n *normaliser) declaration(s *ast.DeclStmt) []ast.Stmt {
 	var out []ast.Stmt
 	for _, spec := range d.Specs {
 		v, ok := spec.(*ast.ValueSpec)
-		if !ok || len(v.Values) < 2 || !hasLiteral(v.Values) {
+		if !ok || len(v.Values) < 2 || !n.needsSplit(v.Values) {
 			out = append(out, &ast.DeclStmt{Decl: &ast.GenDecl{TokPos: d.TokPos, Tok: token.VAR, Specs: []ast.Spec{spec}}})
 			continue
 		}

@@ -21,10 +21,11 @@ const maxSaid = 4096
 // A Machine is a compiled recipe with an interpreter of its own. It is not safe
 // for concurrent use. Steps keep no state in it.
 type Machine struct {
-	file  string
-	funcs map[string]reflect.Value
-	at    map[string]diag.Pos // of each step
-	said  *head
+	program *Program
+	file    string
+	funcs   map[string]reflect.Value
+	at      map[string]diag.Pos // of each step
+	said    *head
 }
 
 // A StepError is an error that a step returned.
@@ -36,8 +37,9 @@ type StepError struct {
 
 func (e *StepError) Error() string { return fmt.Sprintf("%s: step %s: %s", e.Pos, e.Step, e.Text) }
 
-// A PanicError is a panic in a step. Pos is where it arose in the recipe; it is
-// the file as a whole when that is not known.
+// A PanicError is a panic in a step. Pos is the statement of the recipe in which
+// it arose, or the beginning of the function when that cannot be found out, or
+// the file as a whole.
 type PanicError struct {
 	Step string
 	Pos  diag.Pos
@@ -50,7 +52,10 @@ func (e *PanicError) Error() string {
 
 // Compile makes a new interpreter and gives it the checked tree. The
 // interpreter sees no environment, no files and no standard streams.
-func (p *Program) Compile() (m *Machine, err error) {
+func (p *Program) Compile() (*Machine, error) { return p.compile(nil) }
+
+// compile is Compile with further symbols.
+func (p *Program) compile(more map[string]map[string]reflect.Value) (m *Machine, err error) {
 	defer func() {
 		if r := recover(); r != nil {
 			m, err = nil, fmt.Errorf("%s: the interpreter cannot compile the recipe: %v", p.file, r)
@@ -68,6 +73,9 @@ func (p *Program) Compile() (m *Machine, err error) {
 	if err := i.Use(symbols.Table); err != nil {
 		return nil, err
 	}
+	if err := i.Use(more); err != nil {
+		return nil, err
+	}
 	// The tree's positions hold in the interpreter's file set too when the file
 	// is entered there at the same place.
 	i.FileSet().AddFile(p.file, int(p.tree.FileStart), len(p.src)).SetLinesForContent(p.src)
@@ -78,7 +86,7 @@ func (p *Program) Compile() (m *Machine, err error) {
 	if _, err := i.Execute(compiled); err != nil {
 		return nil, fmt.Errorf("%s: the interpreter cannot load the recipe: %w", p.file, err)
 	}
-	m = &Machine{file: p.file, funcs: map[string]reflect.Value{}, at: map[string]diag.Pos{}, said: said}
+	m = &Machine{program: p, file: p.file, funcs: map[string]reflect.Value{}, at: map[string]diag.Pos{}, said: said}
 	exported := i.Symbols("main")["main"]
 	for _, s := range p.Steps {
 		fn, ok := exported[s.Name]
@@ -116,8 +124,17 @@ func (m *Machine) noStep(step string) error {
 
 // Call runs a step. Arguments must have the types of its [Machine.Signature];
 // the step may change what they point to. An error that the step returns is a
-// [*StepError], a panic in it a [*PanicError].
-func (m *Machine) Call(step string, args []reflect.Value) (results []reflect.Value, err error) {
+// [*StepError], a panic in it a [*PanicError]; the step is then run a second
+// time, to find the place.
+func (m *Machine) Call(step string, args []reflect.Value) ([]reflect.Value, error) {
+	results, err := m.call(step, args)
+	if p, ok := err.(*PanicError); ok {
+		p.Pos = m.locate(step, args, p.Text, p.Pos)
+	}
+	return results, err
+}
+
+func (m *Machine) call(step string, args []reflect.Value) (results []reflect.Value, err error) {
 	fn, ok := m.funcs[step]
 	if !ok {
 		return nil, m.noStep(step)

@@ -1,7 +1,6 @@
 package program
 
 import (
-	"fmt"
 	"go/ast"
 	"go/token"
 	"go/types"
@@ -30,7 +29,7 @@ import (
 //   - variables of a range that are assigned to are copies, as is what a range
 //     with = assigns;
 //   - function literals that are kept get copies of the loop variables they use.
-func normalise(c *checker) {
+func normalise(c *checker) *normaliser {
 	n := &normaliser{checker: c, taken: map[string]bool{}, rewritten: map[*ast.RangeStmt]*rangeFacts{}, need: map[string]string{}}
 	n.stripComments()
 	n.stripParens()
@@ -40,6 +39,7 @@ func normalise(c *checker) {
 	n.functions()
 	n.copyCaptured()
 	n.addImports()
+	return n
 }
 
 type normaliser struct {
@@ -300,27 +300,4 @@ func (n *normaliser) copyCaptured() {
 		cur.Replace(&ast.CallExpr{Fun: wrapper, Lparen: pos, Rparen: pos})
 		return true
 	})
-}
-
-// treeText is the rewritten tree as text, for tests.
-func treeText(f *ast.File) string {
-	var w writer
-	w.info = &types.Info{}
-	for _, d := range f.Decls {
-		switch d := d.(type) {
-		case *ast.FuncDecl:
-			w.head(d)
-			w.put(" ")
-			w.block(d.Body)
-		case *ast.GenDecl:
-			if d.Tok == token.IMPORT {
-				continue
-			}
-			w.decl(d)
-		default:
-			panic(fmt.Sprintf("program: declaration %T", d))
-		}
-		w.put("\n")
-	}
-	return w.String()
 }

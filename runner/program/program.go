@@ -31,9 +31,9 @@ type Program struct {
 	Steps []Step // in order of position
 
 	file  string
-	src   []byte
+	given []byte    // the source that was checked
+	src   []byte    // the same with the package clause and the imports
 	tree  *ast.File // rewritten for the interpreter
-	names map[string]bool
 }
 
 // A Step is an exported function of a recipe.
@@ -83,21 +83,17 @@ type Fence struct {
 // steps, then what a recipe may not use. When the list is not empty the
 // program is nil.
 func Check(file string, src []byte, fences ...Fence) (*Program, diag.List) {
-	c := &checker{file: file, fset: token.NewFileSet()}
-	c.fset.AddFile("", -1, firstPos) // see Compile
-	c.check(src, fences)
-	c.diags.Sort()
+	c := check(file, src, fences)
 	if len(c.diags) > 0 {
 		return nil, c.diags
 	}
-	p := &Program{file: file, src: c.src, names: map[string]bool{}}
+	p := &Program{file: file, given: bytes.Clone(src), src: c.src}
 	closure := newClosure(c)
 	for _, d := range c.steps {
 		s := c.step(d)
 		s.Code, s.Packages = closure.text(d)
 		s.CodeHash = hash(s.Code)
 		p.Steps = append(p.Steps, s)
-		p.names[s.Name] = true
 	}
 	normalise(c)
 	p.tree = c.tree
@@ -119,6 +115,15 @@ type checker struct {
 	copies map[*ast.FuncLit][]*types.Var
 
 	diags diag.List
+}
+
+// check gives the checker that has been through the source.
+func check(file string, src []byte, fences []Fence) *checker {
+	c := &checker{file: file, fset: token.NewFileSet()}
+	c.fset.AddFile("", -1, firstPos) // see Compile
+	c.check(src, fences)
+	c.diags.Sort()
+	return c
 }
 
 func (c *checker) check(src []byte, fences []Fence) {

@@ -46,7 +46,7 @@ type summary struct {
 func Summary(count int) (limb summary) { return summary{N: count, Name: "all"} }
 `
 
-func check(t testing.TB, src string) *Program {
+func accept(t testing.TB, src string) *Program {
 	t.Helper()
 	p, diags := Check("r.md", []byte(src))
 	if len(diags) > 0 {
@@ -56,7 +56,7 @@ func check(t testing.TB, src string) *Program {
 }
 
 func TestSteps(t *testing.T) {
-	p := check(t, sampleRecipe)
+	p := accept(t, sampleRecipe)
 	if len(p.Steps) != 3 {
 		t.Fatalf("%d steps", len(p.Steps))
 	}
@@ -91,7 +91,7 @@ func TestSteps(t *testing.T) {
 }
 
 func TestCode(t *testing.T) {
-	code := check(t, sampleRecipe).Steps[1].Code
+	code := accept(t, sampleRecipe).Steps[1].Code
 	const want = `program 1
 import rimlight/steps/lightcurve
 
@@ -112,7 +112,7 @@ type summary struct{N int; Name string}
 }
 
 func TestCallStep(t *testing.T) {
-	m, err := check(t, sampleRecipe).Compile()
+	m, err := accept(t, sampleRecipe).Compile()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -154,7 +154,7 @@ func TestCallStep(t *testing.T) {
 }
 
 func TestCallErrors(t *testing.T) {
-	m, err := check(t, sampleRecipe).Compile()
+	m, err := accept(t, sampleRecipe).Compile()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -189,6 +189,21 @@ func helper(values []float64, n int) float64 {
 	return 2 * values[n]
 }
 
+func Later(n int) (x float64) {
+	values := []float64{1}
+	for i := 0; i < n; i++ {
+		if i > 3 {
+			x += helper(values, 0)
+			x += values[i]
+		}
+	}
+	switch {
+	case n > 2:
+		x++
+	}
+	return x
+}
+
 func Divide(n int) (x int) { return 1 / n }
 
 func Explicit(n int) (x int) {
@@ -208,7 +223,7 @@ func Sorted(n int) (x []int) {
 	return x
 }
 `
-	m, err := check(t, src).Compile()
+	m, err := accept(t, src).Compile()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -218,8 +233,8 @@ func Sorted(n int) (x []int) {
 		line int
 		text string
 	}{
-		{"Index", 7, 9, "index out of range"}, {"Divide", 0, 12, "divide by zero"}, {"Explicit", 3, 14, "n is 3"},
-		{"Write", 1, 18, "nil map"}, {"Sorted", 9, 26, "index out of range"},
+		{"Index", 7, 9, "index out of range"}, {"Later", 9, 17, "index out of range"}, {"Divide", 0, 27, "divide by zero"}, {"Explicit", 3, 30, "n is 3"},
+		{"Write", 1, 34, "nil map"}, {"Sorted", 9, 41, "index out of range"},
 	} {
 		_, err := m.Call(c.step, []reflect.Value{reflect.ValueOf(c.n)})
 		p, ok := err.(*PanicError)
@@ -263,7 +278,7 @@ func Fit(limb []float64) (fit float64) {
 	return orbit(limb[0])
 }
 `
-	m, err := check(t, src).Compile()
+	m, err := accept(t, src).Compile()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -293,7 +308,7 @@ func TestLimits(t *testing.T) {
 	for range 5000 {
 		rows.WriteString("\t-1.5, +2, -0.25,\n")
 	}
-	check(t, "\nfunc F() (x []float64) {\n\treturn []float64{\n"+rows.String()+"\t}\n}\n")
+	accept(t, "\nfunc F() (x []float64) {\n\treturn []float64{\n"+rows.String()+"\t}\n}\n")
 }
 
 func TestImports(t *testing.T) {
