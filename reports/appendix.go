@@ -42,9 +42,9 @@ func (b *builder) appendix() appendixView {
 	d := b.doc
 	v := appendixView{Command: listing(d.Command), Host: hostFacts(d)}
 	for _, in := range d.Inputs {
-		view := inputView{ID: "input-used-" + slug(in.Name), Name: label(in.Name), Layout: label(in.Layout), State: string(in.State), Hash: in.Hash}
+		view := inputView{ID: "input-used-" + slug(in.Name), Name: label(in.Name), Layout: label(in.Layout), State: label(string(in.State)), Hash: label(in.Hash)}
 		for _, f := range in.Files {
-			view.Files = append(view.Files, fileLine{label(f.Name), strconv.FormatInt(f.Size, 10), f.SHA256})
+			view.Files = append(view.Files, fileLine{label(f.Name), strconv.FormatInt(f.Size, 10), label(f.SHA256)})
 		}
 		v.Inputs = append(v.Inputs, view)
 	}
@@ -52,12 +52,12 @@ func (b *builder) appendix() appendixView {
 		v.Settings = append(v.Settings, settingView{label(s.Name), sentence(s.Value), label(s.Unit), sentence(s.Recipe), s.Changed})
 	}
 	for _, s := range d.Steps {
-		view := provenanceView{Name: label(s.Name), ID: stepID(s.Name), Class: class(s.State), State: s.State, Key: s.Key, When: utc(s.When), Took: duration(s.Took)}
+		view := provenanceView{Name: label(s.Name), ID: stepID(s.Name), Class: class(s.State), State: s.State, Key: label(s.Key), When: utc(s.When), Took: duration(s.Took)}
 		if s.Seed != 0 {
 			view.Seed = strconv.FormatUint(s.Seed, 10)
 		}
 		for _, r := range s.Results {
-			view.Results = append(view.Results, resultView{Name: label(r.Name), Type: shortType(r.Type), Hash: r.Hash, Size: strconv.FormatInt(r.Size, 10)})
+			view.Results = append(view.Results, resultView{Name: label(r.Name), Type: shortType(r.Type), Hash: label(r.Hash), Size: strconv.FormatInt(r.Size, 10)})
 		}
 		v.Steps = append(v.Steps, view)
 	}

@@ -35,6 +35,17 @@ type entry struct {
 }
 
 func newBuilder(d Document) *builder {
+	d.File = label(d.File)
+	d.Outcome = Outcome(label(string(d.Outcome)))
+	d.Steps = slices.Clone(d.Steps)
+	for i := range d.Steps {
+		s := &d.Steps[i]
+		s.State = State(label(string(s.State)))
+		s.Elements = slices.Clone(s.Elements)
+		for k := range s.Elements {
+			s.Elements[k].State = State(label(string(s.Elements[k].State)))
+		}
+	}
 	b := &builder{doc: d, settings: map[string]Setting{}, shown: map[place]int{}, sections: map[string]string{}}
 	for _, s := range d.Settings {
 		b.settings[s.Name] = s
@@ -105,7 +116,7 @@ func (b *builder) step(i, level int, code []template.HTML, lines string) stepVie
 	v := stepView{
 		ID: stepID(s.Name), Number: i + 1, Name: label(s.Name), Level: min(max(level, 2), 6),
 		Each: label(s.Each), Doc: paragraphs(s.Doc), Code: code, Lines: lines,
-		State: s.State, Class: class(s.State), Why: sentence(s.Why), Took: duration(s.Took), When: utc(s.When), Key: s.Key,
+		State: s.State, Class: class(s.State), Why: sentence(s.Why), Took: duration(s.Took), When: utc(s.When), Key: label(s.Key),
 		Err: listing(s.Err), Log: listing(s.Log),
 	}
 	b.contents = append(b.contents, entry{ID: v.ID, Text: v.Name, State: s.State})
@@ -128,7 +139,7 @@ func (b *builder) step(i, level int, code []template.HTML, lines string) stepVie
 		if k == shownRows {
 			break
 		}
-		view := resultView{ID: "result-" + slug(s.Name+"."+r.Name), Name: label(r.Name), Type: shortType(r.Type), Hash: r.Hash, Blocks: b.show(r.Name, r.Value)}
+		view := resultView{ID: "result-" + slug(s.Name+"."+r.Name), Name: label(r.Name), Type: shortType(r.Type), Hash: label(r.Hash), Blocks: b.show(label(r.Name), r.Value)}
 		if r.Size > 0 {
 			view.Size = size(r.Size)
 		}
@@ -154,7 +165,7 @@ func paragraphs(doc string) []string {
 }
 
 func (b *builder) argument(a Argument) argView {
-	v := argView{Name: label(a.Name), Type: shortType(a.Type), From: label(a.Source), Text: sentence(a.Text), Hash: a.Hash}
+	v := argView{Name: label(a.Name), Type: shortType(a.Type), From: label(a.Source), Text: sentence(a.Text), Hash: label(a.Hash)}
 	switch a.Source {
 	case "result", "element":
 		if a.Source == "element" {
@@ -195,7 +206,7 @@ func elements(s Step) *elementsView {
 		if e.Took > s.Elements[slowest].Took {
 			slowest = i
 		}
-		view := elementView{label(e.Label), class(e.State), sentence(e.Why), clip(e.Err, 500), e.Key, e.Hash, duration(e.Took), e.State}
+		view := elementView{label(e.Label), class(e.State), sentence(e.Why), clip(e.Err, 500), label(e.Key), label(e.Hash), duration(e.Took), e.State}
 		if e.State == Failed && len(v.Failed) < 5 {
 			v.Failed = append(v.Failed, view)
 		}

@@ -90,7 +90,7 @@ func (p *proseRenderer) annotateInput(id string, file ast.Node) {
 			if in.Changed {
 				b.WriteString(`<ins class="changed" title="given on the command line">` + html.EscapeString(label(f.Name)) + "</ins> ")
 			}
-			b.WriteString(html.EscapeString(size(f.Size)) + `, SHA-256 <code class="hash" title="` + html.EscapeString(f.SHA256) + `">` + html.EscapeString(f.SHA256) + "</code></span>")
+			b.WriteString(html.EscapeString(size(f.Size)) + `, SHA-256 <code class="hash" title="` + html.EscapeString(label(f.SHA256)) + `">` + html.EscapeString(label(f.SHA256)) + "</code></span>")
 		}
 		if len(in.Files) == 0 {
 			b.WriteString(`<span class="used">not given</span>`)

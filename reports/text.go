@@ -95,14 +95,6 @@ func slug(s string) string {
 	return strings.Trim(b.String(), "-.")
 }
 
-// shortHash is what of a hash is shown where there is little room.
-func shortHash(h string) string {
-	if len(h) > 10 {
-		return h[:10]
-	}
-	return h
-}
-
 // shortType takes the folders off the package paths in a Go type.
 func shortType(t string) string {
 	t = label(t)
@@ -166,12 +158,4 @@ func count(n int, noun string) string {
 		return "1 " + noun
 	}
 	return fmt.Sprintf("%d %ss", n, noun)
-}
-
-// are is the verb that goes with n things.
-func are(n int) string {
-	if n == 1 {
-		return "is"
-	}
-	return "are"
 }

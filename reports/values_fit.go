@@ -238,7 +238,7 @@ func strongPairs(names []string, r func(i, j int) float64) string {
 // posteriors shows many fits of the same model, one row each.
 func (b *builder) posteriors(title string, fits []fit.Posterior) []block {
 	b.tables++
-	g := &gridView{Number: b.tables, Caption: "Fits " + title, Named: true, Wide: true, Scroll: len(fits) > scrolledRows,
+	g := &gridView{Number: b.tables, Caption: "Fits of the same model", Named: true, Wide: true, Scroll: len(fits) > scrolledRows,
 		Columns: []columnView{{Name: "fit"}}}
 	var names []string
 	if len(fits) > 0 {
