@@ -24,7 +24,6 @@ var markup string
 var templates = template.Must(template.New("report").Funcs(template.FuncMap{
 	"open":  func(level int) template.HTML { return template.HTML(fmt.Sprintf("<h%d>", level)) },
 	"close": func(level int) template.HTML { return template.HTML(fmt.Sprintf("</h%d>", level)) },
-	"short": shortHash,
 	"unit":  unitText,
 	"headline": func(words string) string {
 		return strings.ToUpper(words[:min(1, len(words))]) + words[min(1, len(words)):]
