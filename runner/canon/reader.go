@@ -1,0 +1,190 @@
+package canon
+
+import (
+	"encoding/binary"
+	"math"
+	"unicode/utf8"
+)
+
+// A reader takes canonical items off the front of encoded bytes.
+type reader struct {
+	data []byte
+}
+
+// done is an error if anything is left.
+func (r *reader) done() error {
+	if len(r.data) > 0 {
+		return errorf("%d bytes follow the end of the value", len(r.data))
+	}
+	return nil
+}
+
+// head reads the head of the next item, which must have a major type other
+// than that of simple values and floats.
+func (r *reader) head() (major byte, arg uint64, err error) {
+	if len(r.data) == 0 {
+		return 0, 0, errorf("the bytes end in the middle of the value")
+	}
+	major, info := r.data[0]&0xe0, r.data[0]&0x1f
+	size := 0
+	switch {
+	case info < 24:
+		r.data = r.data[1:]
+		return major, uint64(info), nil
+	case info < 28:
+		size = 1 << (info - 24)
+	case info == 31:
+		return 0, 0, errorf("an item of indefinite length, expected the length at its head")
+	default:
+		return 0, 0, errorf("the initial byte %#x has no meaning", r.data[0])
+	}
+	if len(r.data) < 1+size {
+		return 0, 0, errorf("the bytes end in the middle of the value")
+	}
+	for _, b := range r.data[1 : 1+size] {
+		arg = arg<<8 | uint64(b)
+	}
+	if headSize(arg) != 1+size {
+		return 0, 0, errorf("the number %d is in %d bytes, not in its shortest form", arg, size)
+	}
+	r.data = r.data[1+size:]
+	return major, arg, nil
+}
+
+// expect reads the head of an item that must be of the given major type.
+func (r *reader) expect(major byte, what string) (uint64, error) {
+	if len(r.data) > 0 && r.data[0]&0xe0 != major {
+		return 0, errorf("expected %s, found %s", what, r.found())
+	}
+	_, arg, err := r.head()
+	return arg, err
+}
+
+// count reads the head of an array or map, whose every element takes at least
+// min bytes.
+func (r *reader) count(major byte, what string, min int) (int, error) {
+	n, err := r.expect(major, what)
+	if err != nil {
+		return 0, err
+	}
+	if n > uint64(len(r.data)/max(1, min)) {
+		return 0, errorf("%s of %d elements, but only %d bytes follow", what, n, len(r.data))
+	}
+	return int(n), nil
+}
+
+// take takes off n bytes.
+func (r *reader) take(n uint64) ([]byte, error) {
+	if n > uint64(len(r.data)) {
+		return nil, errorf("an item of %d bytes, but only %d follow", n, len(r.data))
+	}
+	b := r.data[:n]
+	r.data = r.data[n:]
+	return b, nil
+}
+
+// text takes off a text, as a part of the data.
+func (r *reader) text(what string) ([]byte, error) {
+	n, err := r.expect(majorText, what)
+	if err != nil {
+		return nil, err
+	}
+	b, err := r.take(n)
+	if err == nil && !utf8.Valid(b) {
+		err = errorf("the text %.60q is not valid UTF-8", b)
+	}
+	return b, err
+}
+
+func (r *reader) truth() (bool, error) {
+	if len(r.data) > 0 && (r.data[0] == simpleFalse || r.data[0] == simpleTrue) {
+		v := r.data[0] == simpleTrue
+		r.data = r.data[1:]
+		return v, nil
+	}
+	return false, errorf("expected a truth value, found %s", r.found())
+}
+
+func (r *reader) float(what string) (float64, error) {
+	if len(r.data) == 0 || r.data[0] < 0xf9 || r.data[0] > 0xfb {
+		return 0, errorf("expected %s, found %s", what, r.found())
+	}
+	size := 1 << (r.data[0] & 3) // 2, 4, 8
+	if len(r.data) < 1+size {
+		return 0, errorf("the bytes end in the middle of the value")
+	}
+	var x float64
+	whole, b := r.data[:1+size], r.data[1:1+size]
+	switch size {
+	case 2:
+		x = fromHalf(binary.BigEndian.Uint16(b))
+	case 4:
+		x = float64(math.Float32frombits(binary.BigEndian.Uint32(b)))
+	case 8:
+		x = math.Float64frombits(binary.BigEndian.Uint64(b))
+	}
+	var shortest [9]byte
+	if string(appendFloat(shortest[:0], x)) != string(whole) {
+		return 0, errorf("the float %v is not in its shortest form", x)
+	}
+	r.data = r.data[1+size:]
+	return x, nil
+}
+
+// typed takes off a typed array and gives its numbers, undecoded.
+func (r *reader) typed() (numberKind, []byte, error) {
+	tag, err := r.expect(majorTag, "an array of numbers")
+	if err != nil {
+		return numberKind{}, nil, err
+	}
+	k, ok := numberTagged(tag)
+	if !ok {
+		return numberKind{}, nil, errorf("the tag %d has no meaning here", tag)
+	}
+	n, err := r.expect(majorBytes, "the bytes of an array of "+k.kind.String())
+	if err != nil {
+		return numberKind{}, nil, err
+	}
+	if n%uint64(k.width) != 0 {
+		return numberKind{}, nil, errorf("an array of %s of %d bytes, expected a multiple of %d", k.kind, n, k.width)
+	}
+	raw, err := r.take(n)
+	return k, raw, err
+}
+
+// found says in words what the next item is.
+func (r *reader) found() string {
+	if len(r.data) == 0 {
+		return "the end of the bytes"
+	}
+	switch b := r.data[0]; b & 0xe0 {
+	case majorNatural, majorNegative:
+		return "an integer"
+	case majorBytes:
+		return "a byte string"
+	case majorText:
+		return "text"
+	case majorArray:
+		return "an array"
+	case majorMap:
+		return "a map"
+	case majorTag:
+		rest := reader{r.data}
+		if _, tag, err := rest.head(); err == nil {
+			if k, ok := numberTagged(tag); ok {
+				return "an array of " + k.kind.String()
+			}
+		}
+		return "an unknown tag"
+	default:
+		switch {
+		case b == simpleFalse || b == simpleTrue:
+			return "a truth value"
+		case b >= 0xf9 && b <= 0xfb:
+			return "a float"
+		case b == 0xf6:
+			return "null"
+		}
+		return "an unknown simple value"
+	}
+}
