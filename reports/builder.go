@@ -222,7 +222,7 @@ func elements(s Step) *elementsView {
 	}
 	v.Summary = count(len(s.Elements), "element") + ": " + strings.Join(parts, ", ")
 	if e := s.Elements[slowest]; e.Took > 0 {
-		v.Summary += fmt.Sprintf("; the slowest, %s, took %s", label(e.Label), duration(e.Took))
+		v.Summary += fmt.Sprintf("; the slowest (%s) took %s", label(e.Label), duration(e.Took))
 	}
 	if n := len(s.Elements); n > len(v.Rows) {
 		v.Note = fmt.Sprintf("The first %d of %d elements are listed.", len(v.Rows), n)

@@ -143,11 +143,13 @@ func (b *builder) summarize(p *page) {
 			p.Changed = append(p.Changed, changeView{label(s.Name), cmp.Or(label(s.Recipe), "–"), label(s.Value), label(s.Unit)})
 		}
 	}
-	all := Summary(d)
-	p.Headlines = all[1:] // the outcome is told in words
 	v := verdicts(d)
+	if len(v) > 0 {
+		p.Headlines = append(p.Headlines, checksHeadline(v))
+	}
+	p.Headlines = append(p.Headlines, Headlines(d)...)
 	p.Checks = verdictViews(v)
-	p.Course = course(d, all[0].Note)
+	p.Course = course(d)
 	p.Result = result(d, v)
 	for _, n := range d.Notes {
 		p.Notes = append(p.Notes, sentence(n))
@@ -191,8 +193,8 @@ func inputSummary(in Input) dataView {
 }
 
 // course says what was run, when, and how much of it was computed.
-func course(d Document, steps string) string {
-	s := headlineCase(steps)
+func course(d Document) string {
+	s := stepCounts(d)
 	elements := 0
 	var computing time.Duration
 	for _, st := range d.Steps {

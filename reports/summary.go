@@ -11,24 +11,21 @@ import (
 
 // A Headline is one of the few numbers that say what a run came to.
 type Headline struct {
-	Name  string // what it is: "median depth"
-	Text  string // the number with its unit: "14520 ppm"
+	Label string // what it is: "median depth"
+	Value string // the number with its unit: "14520 ppm"
 	Note  string // what qualifies it, may be empty
 	Alert bool   // something failed
 }
 
-// Summary gives the headline numbers of a run, in the order in which the
-// report and the command line show them: outcome, checks, spectrum, masked
-// samples, white-light parameters. What a run has no results for is left out.
-func Summary(d Document) []Headline {
-	out := []Headline{outcomeHeadline(d)}
-	if v := verdicts(d); len(v) > 0 {
-		out = append(out, checksHeadline(v))
-	}
-	out = append(out, spectrumHeadlines(d)...)
+// Headlines gives the headline numbers of a run, in the order in which the
+// report and the command line show them: spectrum, masked samples, white-light
+// parameters. What a run has no results for is left out. How it ended and its
+// checks are told apart from them.
+func Headlines(d Document) []Headline {
+	out := spectrumHeadlines(d)
 	if c, ok := lastCube(d); ok {
 		if m := maskOf(c); m.all > 0 {
-			out = append(out, Headline{Name: "masked samples", Text: percent(m.masked, m.all), Note: m.String()})
+			out = append(out, Headline{Label: "masked samples", Value: percent(m.masked, m.all), Note: m.String()})
 		}
 	}
 	if p, _, ok := whitePosterior(d); ok {
@@ -37,34 +34,26 @@ func Summary(d Document) []Headline {
 	return out
 }
 
-func outcomeHeadline(d Document) Headline {
-	h := Headline{Name: "outcome", Text: string(d.Outcome), Alert: d.Outcome != Done}
-	var n [4]int
+// stepCounts says how many steps there are, and how many of them in which
+// state.
+func stepCounts(d Document) string {
+	n := map[State]int{}
 	for _, s := range d.Steps {
-		switch s.State {
-		case Computed:
-			n[0]++
-		case Reused:
-			n[1]++
-		case Failed:
-			n[2]++
-		default:
-			n[3]++
-		}
+		n[s.State]++
 	}
 	var parts []string
-	for i, state := range []State{Computed, Reused, Failed, NotReached} {
-		if n[i] > 0 {
-			parts = append(parts, fmt.Sprintf("%d %s", n[i], state))
+	for _, state := range []State{Computed, Reused, Failed, NotReached} {
+		if n[state] > 0 {
+			parts = append(parts, fmt.Sprintf("%d %s", n[state], state))
 		}
 	}
-	h.Note = count(len(d.Steps), "step")
-	if len(parts) > 0 {
-		h.Note += ": " + strings.Join(parts, ", ")
+	if len(parts) == 0 {
+		return count(len(d.Steps), "step")
 	}
-	return h
+	return count(len(d.Steps), "step") + ": " + strings.Join(parts, ", ")
 }
 
+// checksHeadline counts the checks, and names those that failed.
 func checksHeadline(v []verdict) Headline {
 	failed := 0
 	var names []string
@@ -74,7 +63,7 @@ func checksHeadline(v []verdict) Headline {
 			names = append(names, label(c.Name))
 		}
 	}
-	h := Headline{Name: "checks", Text: fmt.Sprintf("%d of %d passed", len(v)-failed, len(v)), Alert: failed > 0}
+	h := Headline{Label: "checks", Value: fmt.Sprintf("%d of %d passed", len(v)-failed, len(v)), Alert: failed > 0}
 	if failed > 0 {
 		h.Note = sentence("failed: " + strings.Join(names, "; "))
 	}
@@ -103,13 +92,13 @@ func spectrumHeadlines(d Document) []Headline {
 			resolution = append(resolution, (p.Channel.Lo+p.Channel.Hi)/2/w)
 		}
 	}
-	h := Headline{Name: "channels measured", Text: fmt.Sprintf("%d of %d", len(depth), len(s.Points))}
+	h := Headline{Label: "channels measured", Value: fmt.Sprintf("%d of %d", len(depth), len(s.Points))}
 	if flagged > 0 {
 		h.Note = fmt.Sprintf("%d flagged, %d of them without a depth", flagged, unmeasured)
 	}
 	out := []Headline{h}
 	if lo, hi, ok := span(channels); ok {
-		h := Headline{Name: "wavelengths", Text: fmt.Sprintf("%s to %s µm", number(lo, 4), number(hi, 4))}
+		h := Headline{Label: "wavelengths", Value: fmt.Sprintf("%s to %s µm", number(lo, 4), number(hi, 4))}
 		if len(resolution) > 0 {
 			h.Note = "median λ/Δλ of the channels " + fixed(median(resolution), 0)
 		}
@@ -118,8 +107,8 @@ func spectrumHeadlines(d Document) []Headline {
 	if len(depth) > 0 {
 		lo, hi, _ := extent(depth)
 		out = append(out,
-			Headline{Name: "median depth", Text: ppm(median(depth), 0) + " ppm", Note: ppm(lo, 0) + " to " + ppm(hi, 0) + " ppm"},
-			Headline{Name: "median depth error", Text: fixed(median(err)*1e6, 1) + " ppm", Note: "one standard deviation, one channel"})
+			Headline{Label: "median depth", Value: ppm(median(depth), 0) + " ppm", Note: ppm(lo, 0) + " to " + ppm(hi, 0) + " ppm"},
+			Headline{Label: "median depth error", Value: fixed(median(err)*1e6, 1) + " ppm", Note: "one standard deviation, one channel"})
 	}
 	return out
 }
@@ -142,11 +131,11 @@ func posteriorHeadlines(p fit.Posterior) []Headline {
 	var out []Headline
 	for _, want := range leading {
 		if q, ok := quantity(p, want.name); ok {
-			out = append(out, Headline{Name: "white-light " + want.headline, Text: strings.TrimSpace(measured(q.Value, q.Err) + " " + label(q.Unit))})
+			out = append(out, Headline{Label: "white-light " + want.headline, Value: strings.TrimSpace(measured(q.Value, q.Err) + " " + label(q.Unit))})
 		}
 	}
 	if p.Dof > 0 && !math.IsNaN(p.Chi2) {
-		out = append(out, Headline{Name: "white-light reduced χ²", Text: fixed(p.Chi2/float64(p.Dof), 3),
+		out = append(out, Headline{Label: "white-light reduced χ²", Value: fixed(p.Chi2/float64(p.Dof), 3),
 			Note: strings.TrimSuffix(grouped(p.Dof)+" degrees of freedom, "+label(p.Status), ", ")})
 	}
 	return out

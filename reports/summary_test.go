@@ -5,32 +5,31 @@ import (
 	"testing"
 )
 
-func TestSummary(t *testing.T) {
+func TestHeadlines(t *testing.T) {
+	d := sample(80, 300)
 	got := map[string]Headline{}
-	var order []string
-	for _, h := range Summary(sample(80, 300)) {
-		got[h.Name] = h
-		order = append(order, h.Name)
+	for _, h := range Headlines(d) {
+		got[h.Label] = h
 	}
-	for name, want := range map[string]string{
-		"outcome": "check failed", "checks": "3 of 4 passed", "channels measured": "78 of 80", "wavelengths": "0.6 to 5.2 µm",
-		"white-light radius ratio Rp/Rs": "0.12104 ± 0.00021", "white-light mid-transit time T₀": "2461234.510021 ± 0.000031 d", "white-light reduced χ²": "0.998",
+	for label, want := range map[string]string{
+		"channels measured": "78 of 80", "wavelengths": "0.6 to 5.2 µm", "white-light radius ratio Rp/Rs": "0.12104 ± 0.00021",
+		"white-light mid-transit time T₀": "2461234.510021 ± 0.000031 d", "white-light reduced χ²": "0.998",
 	} {
-		if got[name].Text != want {
-			t.Errorf("%s: got %q, want %q", name, got[name].Text, want)
+		if got[label].Value != want {
+			t.Errorf("%s: got %q, want %q", label, got[label].Value, want)
 		}
-	}
-	if order[0] != "outcome" || order[1] != "checks" || !got["outcome"].Alert || !got["checks"].Alert || got["channels measured"].Alert {
-		t.Error(order, got["outcome"], got["checks"])
-	}
-	if note := got["checks"].Note; note != "failed: correlated noise over 20 minutes" {
-		t.Error(note)
 	}
 	if m := got["masked samples"]; !strings.Contains(m.Note, "missing") || !strings.Contains(m.Note, "of 24\u202f000 samples") {
 		t.Error(m)
 	}
-	if s := Summary(Document{}); len(s) != 1 {
+	if h := checksHeadline(verdicts(d)); h.Value != "3 of 4 passed" || h.Note != "failed: correlated noise over 20 minutes" || !h.Alert {
+		t.Error(h)
+	}
+	if s := stepCounts(d); s != "6 steps: 4 computed, 2 reused" {
 		t.Error(s)
+	}
+	if h := Headlines(Document{}); len(h) != 0 {
+		t.Error(h)
 	}
 }
 
