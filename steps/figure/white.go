@@ -11,7 +11,9 @@ import (
 // Limits of what is drawn of one light curve, so that a figure stays small.
 const (
 	whiteBins = 90
+	leastBins = 15
 	rawPoints = 2500
+	fewPoints = 400 // below this number, single integrations are drawn larger
 )
 
 // WhiteFit draws a light curve with its fit: above, the flux divided by the trend
@@ -26,7 +28,12 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 	if s.used == 0 {
 		return Figure{}, fmt.Errorf("figure of the white fit: none of %d samples is usable; look at the mask", len(f.Time))
 	}
-	flux, residual := binned(s.hours, s.flux, whiteBins), binned(s.hours, s.residual, whiteBins)
+	count := min(whiteBins, max(s.used/4, leastBins))
+	flux, residual := binned(s.hours, s.flux, count), binned(s.hours, s.residual, count)
+	dot := 0.9
+	if s.used < fewPoints {
+		dot = 1.6
+	}
 	single := rms(s.residual)
 	index, every := thin(len(s.hours), rawPoints)
 	x := newSpan(extent(s.hours)).padded(0.015, 0.015)
@@ -44,14 +51,14 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 	from := max(p.margin(upLabels, fluxes), p.margin(downLabels, ppmSpan))
 	box := singleColumn - 1.5 - from
 	up := p.newPanel(from, bottomMargin+downHeight+gap, box, upHeight, x, fluxes)
-	up.dots(pick(s.hours, index), pick(s.flux, index), 0.9, faint(teal, 0.4))
+	up.dots(pick(s.hours, index), pick(s.flux, index), dot, faint(teal, 0.45))
 	up.rings(flux.x, flux.y, 2.9, indigo, color(0xe4e3f6))
 	modelX, modelY := s.modelLine()
 	up.line(modelX, modelY, stroke{color: amber, width: 0.9})
 	up.axes(axes{yTitle: "Relative flux", xLabels: 6, yLabels: upLabels, hideX: true, margin: from})
 
 	down := p.newPanel(from, bottomMargin, box, downHeight, x, ppmSpan)
-	down.dots(pick(s.hours, index), pick(ppms, index), 0.9, faint(teal, 0.4))
+	down.dots(pick(s.hours, index), pick(ppms, index), dot, faint(teal, 0.45))
 	down.level(0, stroke{color: amber, width: 0.9})
 	means := scaled(residual.y, perMillion)
 	errs := make([]float64, len(means))
