@@ -100,7 +100,7 @@ func spectrumFigure(d Document) (figure.Figure, place, bool) {
 				score = 3
 			case strings.Contains(title, "spectrum"):
 				score = 2
-			case strings.Contains(strings.ToLower(r.Name), "spectrum"):
+			case strings.Contains(strings.ToLower(label(r.Name)), "spectrum"):
 				score = 1
 			}
 			if score > 0 && score >= best {
@@ -123,7 +123,7 @@ func whitePosterior(d Document) (fit.Posterior, place, bool) {
 			if !is {
 				continue
 			}
-			if strings.Contains(strings.ToLower(s.Name+" "+r.Name), "white") {
+			if strings.Contains(strings.ToLower(label(s.Name)+" "+label(r.Name)), "white") {
 				return p, place{i, k}, true
 			}
 			if !ok {

@@ -145,8 +145,8 @@ func (s *svgWriter) start(t xml.StartElement) {
 	for _, a := range t.Attr {
 		local := a.Name.Local
 		switch {
-		case a.Name.Space == "xmlns" || local == "xmlns" || local == "version" || local == "class":
-			// HTML needs no name spaces; there are no style sheets to refer to classes
+		case a.Name.Space == "xmlns" || local == "xmlns" || local == "version" || local == "class" || local == "role" || local == "aria-label":
+			// HTML needs no name spaces, there are no style sheets to refer to classes, and the root is named by label
 		case a.Name.Space != "" && local != "href":
 			s.dropped++
 		case root && (local == "width" || local == "height" || local == "viewBox"):

@@ -8,7 +8,7 @@ import (
 )
 
 func wrap(inner string) string {
-	return `<svg xmlns="http://www.w3.org/2000/svg" xmlns:xlink="http://www.w3.org/1999/xlink" width="10pt" height="10pt" viewBox="0 0 10 10">` + inner + `</svg>`
+	return `<svg xmlns="http://www.w3.org/2000/svg" xmlns:xlink="http://www.w3.org/1999/xlink" role="img" aria-label="b" width="10pt" height="10pt" viewBox="0 0 10 10">` + inner + `</svg>`
 }
 
 func TestSanitizeKeeps(t *testing.T) {
