@@ -87,8 +87,12 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 		fmt.Sprintf("Below: residuals, with a root mean square of %s in one integration and %s in the averages, where uncorrelated noise would give %s.",
 			ppm(single), ppm(rms(residual.y)), ppm(expected)),
 		s.since())
+	title := "White light curve and its fit"
+	if f.Channel.Index >= 0 {
+		title = "Light curve at " + wave(f.Channel) + " µm and its fit"
+	}
 	return finish(p, Figure{
-		Title: "White light curve and its fit", Caption: caption, Alt: alt,
+		Title: title, Caption: caption, Alt: alt,
 		Data: table.Table{Title: "Averages of the light curve", Columns: []table.Column{
 			table.Number("time", "h", "mean time from the zero of the figure", 6, flux.x),
 			table.Number("flux", "", "mean flux divided by the trend", 8, flux.y),
