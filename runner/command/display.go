@@ -158,7 +158,11 @@ func (d *display) finish(doc reports.Document, written outputs) {
 	}
 	fmt.Fprintln(d.app.stdout)
 	for _, h := range reports.Headlines(doc) {
-		fmt.Fprintf(d.app.stdout, "%-22s %s\n", h.Label, h.Value)
+		line := fmt.Sprintf("%-22s %s", h.Label, h.Value)
+		if h.Note != "" {
+			line += "  (" + h.Note + ")"
+		}
+		fmt.Fprintln(d.app.stdout, line)
 	}
 	fmt.Fprintf(d.app.stdout, "%-22s %d passed, %d failed\n", "checks", written.passed, len(written.failed))
 	fmt.Fprintf(d.app.stdout, "%-22s %s, in %s\n", "run", doc.Outcome, doc.Ended.Sub(doc.Started).Round(10*time.Millisecond))

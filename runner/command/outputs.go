@@ -57,7 +57,7 @@ func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *e
 	}
 	files := map[string][]byte{csvFile: nil, ecsvFile: nil}
 	if s, ok := lastSpectrum(doc); ok {
-		ecsv, err := spectrum.ECSV(s, map[string]string{"title": doc.Title})
+		ecsv, err := spectrum.ECSV(s, []spectrum.Note{{Name: "title", Text: doc.Title}})
 		if err != nil {
 			return out, fmt.Errorf("the spectrum could not be written: %w", err)
 		}

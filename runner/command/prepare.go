@@ -6,53 +6,54 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"strings"
 
 	"rimlight/runner/diag"
 	"rimlight/runner/engine"
 	"rimlight/runner/plan"
+	"rimlight/runner/program"
 	"rimlight/runner/recipe"
 	"rimlight/runner/record"
 	"rimlight/runner/store"
 	"rimlight/runner/worker"
 )
 
-// maxRecipe is the largest recipe that is read, in bytes: far more than anyone
-// writes, far less than what would trouble the parser.
-const maxRecipe = 16 << 20
-
 // prepare reads, checks and wires a recipe. Everything that is wrong with it
 // comes back at once, as a diag.List.
-func prepare(ctx context.Context, file string, o *options) (*plan.Plan, []byte, error) {
+func prepare(ctx context.Context, file string, o *options) (*plan.Plan, worker.Code, error) {
 	if err := o.resolve(file); err != nil {
-		return nil, nil, err
+		return nil, worker.Code{}, err
 	}
 	set, err := named("set", o.set)
 	if err != nil {
-		return nil, nil, err
+		return nil, worker.Code{}, err
 	}
 	in, err := o.inputs()
 	if err != nil {
-		return nil, nil, err
+		return nil, worker.Code{}, err
 	}
 	source, err := readRecipe(file)
 	if err != nil {
-		return nil, nil, err
+		return nil, worker.Code{}, err
 	}
 	r, diags := recipe.Parse(file, source)
-	code := r.Code()
+	code := worker.Code{File: file, Text: r.Code()}
+	for _, b := range r.Blocks {
+		code.Fences = append(code.Fences, program.Fence{Start: b.Line, End: b.Line + strings.Count(b.Code, "\n")})
+	}
 	w, err := worker.Start(ctx)
 	if err != nil {
-		return nil, nil, err
+		return nil, worker.Code{}, err
 	}
 	defer w.Close()
-	steps, more, err := w.Check(file, code)
+	steps, more, err := w.Check(code)
 	if err != nil {
-		return nil, nil, fmt.Errorf("%s: the code could not be checked: %w", file, err)
+		return nil, worker.Code{}, fmt.Errorf("%s: the code could not be checked: %w", file, err)
 	}
 	diags = append(diags, more...)
 	p, more, err := plan.Wire(r, steps, plan.Options{Dir: filepath.Dir(file), In: in, Set: set})
 	if err != nil {
-		return nil, nil, err
+		return nil, worker.Code{}, err
 	}
 	diags = append(diags, more...)
 	if len(diags) == 0 && len(steps) == 0 {
@@ -73,15 +74,15 @@ func readRecipe(file string) ([]byte, error) {
 	if st.IsDir() {
 		return nil, fmt.Errorf("%s is a folder, expected a Markdown file", file)
 	}
-	if st.Size() > maxRecipe {
-		return nil, fmt.Errorf("%s has %d bytes; a recipe may have at most %d", file, st.Size(), maxRecipe)
+	if st.Size() > recipe.MaxSize {
+		return nil, fmt.Errorf("%s has %d bytes; a recipe may have at most %d", file, st.Size(), recipe.MaxSize)
 	}
 	return os.ReadFile(file)
 }
 
 // newEngine sets up what carries out a plan. The record is that of the run
 // before, if any.
-func newEngine(p *plan.Plan, code []byte, o *options) (*engine.Engine, *record.Record, error) {
+func newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Engine, *record.Record, error) {
 	s, err := store.Open(o.store)
 	if err != nil {
 		return nil, nil, err

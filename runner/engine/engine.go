@@ -28,7 +28,7 @@ type Engine struct {
 	Store   *store.Store
 	Library *plan.Library
 	Build   plan.Build
-	Code    []byte // the recipe's Go code, everything else blanked
+	Code    worker.Code
 	Jobs    int    // worker processes at a time, at least 1
 	Host    string // name of this machine, for records
 

@@ -436,7 +436,7 @@ func (p *pool) call(ctx context.Context, args [][]byte) (worker.Values, error) {
 			return worker.Values{}, err
 		}
 		p.w = w
-		if err := w.Load(p.e.Plan.Recipe.File, p.e.Code); err != nil {
+		if err := w.Load(p.e.Code); err != nil {
 			return worker.Values{}, err
 		}
 	}

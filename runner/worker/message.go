@@ -5,6 +5,8 @@ import (
 	"encoding/json"
 	"fmt"
 	"io"
+
+	"rimlight/runner/program"
 )
 
 // A Message is one frame of the protocol: a kind, a small head in JSON, and
@@ -133,9 +135,12 @@ const (
 	refusal  = "refusal" // the question itself could not be served
 )
 
-type codeHead struct {
-	File string
-	Code []byte
+// Code is the Go code of a recipe: its text with everything else blanked, as
+// [recipe.Recipe.Code] gives it, and the lines that its blocks take up.
+type Code struct {
+	File   string
+	Text   []byte
+	Fences []program.Fence
 }
 
 type callHead struct {

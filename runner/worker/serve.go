@@ -77,22 +77,22 @@ type server struct {
 func (s *server) serve(q Message) (Message, error) {
 	switch q.Kind {
 	case askCheck:
-		var h codeHead
+		var h Code
 		if err := json.Unmarshal(q.Head, &h); err != nil {
 			return Message{}, err
 		}
-		p, diags := program.Check(h.File, h.Code)
+		p, diags := program.Check(h.File, h.Text, h.Fences...)
 		var steps []program.Step
 		if p != nil {
 			steps = p.Steps
 		}
 		return message(answer, map[string]any{"Steps": steps, "Diags": diags})
 	case askLoad:
-		var h codeHead
+		var h Code
 		if err := json.Unmarshal(q.Head, &h); err != nil {
 			return Message{}, err
 		}
-		p, diags := program.Check(h.File, h.Code)
+		p, diags := program.Check(h.File, h.Text, h.Fences...)
 		if err := diags.Err(); err != nil {
 			return Message{}, err
 		}

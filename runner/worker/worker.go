@@ -139,10 +139,9 @@ func (w *Worker) Close() {
 	})
 }
 
-// Check asks for a look at the Go code of a recipe. The code is the recipe's
-// text with everything else blanked, as [recipe.Recipe.Code] gives it.
-func (w *Worker) Check(file string, code []byte) ([]program.Step, diag.List, error) {
-	m, err := w.ask(askCheck, codeHead{file, code})
+// Check asks for a look at the Go code of a recipe.
+func (w *Worker) Check(code Code) ([]program.Step, diag.List, error) {
+	m, err := w.ask(askCheck, code)
 	if err != nil {
 		return nil, nil, err
 	}
@@ -157,8 +156,8 @@ func (w *Worker) Check(file string, code []byte) ([]program.Step, diag.List, err
 }
 
 // Load makes the worker ready for calls of a recipe's steps.
-func (w *Worker) Load(file string, code []byte) error {
-	_, err := w.ask(askLoad, codeHead{file, code})
+func (w *Worker) Load(code Code) error {
+	_, err := w.ask(askLoad, code)
 	return err
 }
 

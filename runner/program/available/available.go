@@ -32,6 +32,7 @@ var Packages = []Package{
 	{"check", stepLibrary + "check"},
 	{"figure", stepLibrary + "figure"},
 	{"fit", stepLibrary + "fit"},
+	{"diagnose", stepLibrary + "diagnose"},
 	{"lightcurve", stepLibrary + "lightcurve"},
 	{"limb", stepLibrary + "limb"},
 	{"limbtable", stepLibrary + "limbtable"},
