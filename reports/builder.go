@@ -9,6 +9,7 @@ import (
 	"strings"
 
 	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
 )
 
@@ -116,15 +117,12 @@ func (b *builder) step(i, level int, code []template.HTML, lines string) stepVie
 	v := stepView{
 		ID: stepID(s.Name), Number: i + 1, Name: label(s.Name), Level: min(max(level, 2), 6),
 		Each: label(s.Each), Doc: paragraphs(s.Doc), Code: code, Lines: lines,
-		State: s.State, Class: class(s.State), Why: sentence(s.Why), Took: duration(s.Took), When: utc(s.When), Key: label(s.Key),
-		Err: listing(s.Err), Log: listing(s.Log),
+		Where: where(b.doc, s), State: s.State, Class: class(s.State), Why: sentence(s.Why), Took: duration(s.Took), When: utc(s.When), Key: label(s.Key),
+		Err: errText(s), Log: listing(s.Log),
 	}
 	b.contents = append(b.contents, entry{ID: v.ID, Text: v.Name, State: s.State})
 	if s.Seed != 0 {
 		v.Seed = fmt.Sprint(s.Seed)
-	}
-	if s.Line > 0 && !strings.Contains(v.Err, b.doc.File+":") {
-		v.Where = fmt.Sprintf("%s:%d", label(b.doc.File), s.Line)
 	}
 	b.priors = nil
 	for k, a := range s.Args {
@@ -149,7 +147,7 @@ func (b *builder) step(i, level int, code []template.HTML, lines string) stepVie
 		}
 		v.Results = append(v.Results, view)
 	}
-	v.Elements = elements(s)
+	v.Elements = b.elements(s)
 	return v
 }
 
@@ -194,9 +192,17 @@ func (b *builder) argument(a Argument) argView {
 }
 
 // elements sums up the elements of a fan-out; nil for another step.
-func elements(s Step) *elementsView {
+func (b *builder) elements(s Step) *elementsView {
 	if len(s.Elements) == 0 {
 		return nil
+	}
+	channels := b.elementChannels(s)
+	called := func(i int) string {
+		l := label(s.Elements[i].Label)
+		if i < len(channels) {
+			l += fmt.Sprintf(", %s–%s µm", fixed(channels[i].Lo, 3), fixed(channels[i].Hi, 3))
+		}
+		return l
 	}
 	v := &elementsView{}
 	counts := map[State]int{}
@@ -206,7 +212,7 @@ func elements(s Step) *elementsView {
 		if e.Took > s.Elements[slowest].Took {
 			slowest = i
 		}
-		view := elementView{label(e.Label), class(e.State), sentence(e.Why), clip(e.Err, 500), label(e.Key), label(e.Hash), duration(e.Took), e.State}
+		view := elementView{called(i), class(e.State), sentence(e.Why), clip(e.Err, 500), label(e.Key), label(e.Hash), duration(e.Took), e.State}
 		if e.State == Failed && len(v.Failed) < 5 {
 			v.Failed = append(v.Failed, view)
 		}
@@ -222,12 +228,47 @@ func elements(s Step) *elementsView {
 	}
 	v.Summary = count(len(s.Elements), "element") + ": " + strings.Join(parts, ", ")
 	if e := s.Elements[slowest]; e.Took > 0 {
-		v.Summary += fmt.Sprintf("; the slowest (%s) took %s", label(e.Label), duration(e.Took))
+		v.Summary += fmt.Sprintf("; the slowest (%s) took %s", called(slowest), duration(e.Took))
 	}
 	if n := len(s.Elements); n > len(v.Rows) {
 		v.Note = fmt.Sprintf("The first %d of %d elements are listed.", len(v.Rows), n)
 	}
 	return v
+}
+
+// elementChannels are the wavelength channels that the elements of a fan-out
+// stand for, as far as its results, or else the collection it ran over, tell.
+func (b *builder) elementChannels(s Step) []lightcurve.Channel {
+	values := s.Results
+	for _, a := range s.Args {
+		if a.Source != "element" {
+			continue
+		}
+		for _, from := range b.doc.Steps {
+			if from.Name == a.From {
+				values = slices.Concat(values, from.Results)
+			}
+		}
+	}
+	for _, r := range values {
+		var out []lightcurve.Channel
+		switch v := r.Value.(type) {
+		case []lightcurve.Channel:
+			out = v
+		case []lightcurve.Curve:
+			for _, c := range v {
+				out = append(out, c.Channel)
+			}
+		case []spectrum.Point:
+			for _, p := range v {
+				out = append(out, p.Channel)
+			}
+		}
+		if len(out) == len(s.Elements) {
+			return out
+		}
+	}
+	return nil
 }
 
 // A fenceView is a fenced block of the recipe as it is shown: steps, or code.

@@ -9,6 +9,7 @@ import (
 	"fmt"
 	"html/template"
 	"io"
+	"slices"
 	"strings"
 	"time"
 
@@ -112,13 +113,21 @@ func (b *builder) page(body template.HTML) page {
 			p.Loose = append(p.Loose, b.step(i, 3, highlight(listing(s.Signature), max(s.Line, 1)), lineRange(s.Line, 1)))
 		}
 		if s.State == Failed {
-			p.Failures = append(p.Failures, stepView{ID: stepID(s.Name), Name: label(s.Name), Err: listing(s.Err), Where: where(d, s)})
+			p.Failures = append(p.Failures, stepView{ID: stepID(s.Name), Name: label(s.Name), Err: errText(s), Where: where(d, s)})
 		}
 	}
 	b.summarize(&p)
 	p.Appendix = b.appendix()
 	p.Attached = attach(d)
 	return p
+}
+
+// errText says why a step failed.
+func errText(s Step) string {
+	if s.State == Failed && s.Err == "" {
+		return "no reason was recorded"
+	}
+	return listing(s.Err)
 }
 
 // where names the place of a step that failed, unless its error does.
@@ -233,10 +242,12 @@ func result(d Document, v []verdict) string {
 			failed++
 		}
 	}
+	stepFailed := slices.ContainsFunc(d.Steps, func(s Step) bool { return s.State == Failed })
+	unfinished := slices.ContainsFunc(d.Steps, func(s Step) bool { return s.State == NotReached })
 	switch {
-	case d.Outcome == StepFailed:
+	case d.Outcome == StepFailed || stepFailed:
 		return "A step failed; what depends on it was not reached."
-	case d.Outcome == Interrupted:
+	case d.Outcome == Interrupted || unfinished:
 		return "The run was interrupted; what was finished by then is shown."
 	case failed == 1:
 		return fmt.Sprintf("Every step finished, but 1 of %s failed.", count(len(v), "check"))

@@ -169,8 +169,8 @@ func sample(channels, integrations int) Document {
 		return Result{Name: name, Type: typ, Hash: hash(name), Size: size, Value: v}
 	}
 	var elements []Element
-	for i, p := range points {
-		e := Element{Label: fmt.Sprintf("%.3f to %.3f um", p.Channel.Lo, p.Channel.Hi), State: Reused, Key: hash(fmt.Sprint("k", i)), Hash: hash(fmt.Sprint("h", i)),
+	for i := range points {
+		e := Element{Label: fmt.Sprint(i + 1), State: Reused, Key: hash(fmt.Sprint("k", i)), Hash: hash(fmt.Sprint("h", i)),
 			Took: time.Duration(180+rng.IntN(90)) * time.Millisecond}
 		if i%4 == 0 {
 			e.State, e.Why = Computed, "input clean changed"
