@@ -140,11 +140,8 @@ func (p *plan) readTyped(r *reader, v reflect.Value) error {
 	if len(raw) == 0 {
 		return nil
 	}
-	s, err := numbers(p.number, raw)
-	if err == nil {
-		setNumbers(v, s)
-	}
-	return err
+	setNumbers(v, numbers(p.number, raw))
+	return nil
 }
 
 func (p *plan) readList(r *reader, v reflect.Value) error {

@@ -91,33 +91,34 @@ func appendNumbers(dst []byte, k numberKind, v reflect.Value) []byte {
 	panic("canon: no such kind of number: " + k.kind.String())
 }
 
-// numbers decodes the bytes of a typed array to a slice of k's own type.
-func numbers(k numberKind, raw []byte) (any, error) {
+// numbers decodes the bytes of a checked typed array to a slice of k's own
+// type.
+func numbers(k numberKind, raw []byte) any {
 	switch k.kind {
 	case reflect.Float64:
 		return float64s(raw)
 	case reflect.Float32:
 		return float32s(raw)
 	case reflect.Uint8:
-		return append(make([]uint8, 0, len(raw)), raw...), nil
+		return append(make([]uint8, 0, len(raw)), raw...)
 	case reflect.Uint16:
-		return integers[uint16](raw, k.width), nil
+		return integers[uint16](raw, k.width)
 	case reflect.Uint32:
-		return integers[uint32](raw, k.width), nil
+		return integers[uint32](raw, k.width)
 	case reflect.Uint64:
-		return integers[uint64](raw, k.width), nil
+		return integers[uint64](raw, k.width)
 	case reflect.Uint:
-		return integers[uint](raw, k.width), nil
+		return integers[uint](raw, k.width)
 	case reflect.Int8:
-		return integers[int8](raw, k.width), nil
+		return integers[int8](raw, k.width)
 	case reflect.Int16:
-		return integers[int16](raw, k.width), nil
+		return integers[int16](raw, k.width)
 	case reflect.Int32:
-		return integers[int32](raw, k.width), nil
+		return integers[int32](raw, k.width)
 	case reflect.Int64:
-		return integers[int64](raw, k.width), nil
+		return integers[int64](raw, k.width)
 	case reflect.Int:
-		return integers[int](raw, k.width), nil
+		return integers[int](raw, k.width)
 	}
 	panic("canon: no such kind of number: " + k.kind.String())
 }
@@ -208,30 +209,43 @@ func appendIntegers[T integer](dst []byte, s []T, width int) []byte {
 	return dst
 }
 
-func float64s(raw []byte) ([]float64, error) {
+// float64s decodes floats that [checkNumbers] has found right.
+func float64s(raw []byte) []float64 {
 	out := make([]float64, len(raw)/8)
 	for i := range out {
-		bits := binary.LittleEndian.Uint64(raw[8*i:])
-		x := math.Float64frombits(bits)
-		if x != x && bits != nan64 {
-			return nil, within(index(i), errorf("NaN with the bits %#x, expected %#x", bits, nan64))
-		}
-		out[i] = x
+		out[i] = math.Float64frombits(binary.LittleEndian.Uint64(raw[8*i:]))
 	}
-	return out, nil
+	return out
 }
 
-func float32s(raw []byte) ([]float32, error) {
+func float32s(raw []byte) []float32 {
 	out := make([]float32, len(raw)/4)
 	for i := range out {
-		bits := binary.LittleEndian.Uint32(raw[4*i:])
-		x := math.Float32frombits(bits)
-		if x != x && bits != nan32 {
-			return nil, within(index(i), errorf("NaN with the bits %#x, expected %#x", bits, nan32))
-		}
-		out[i] = x
+		out[i] = math.Float32frombits(binary.LittleEndian.Uint32(raw[4*i:]))
 	}
-	return out, nil
+	return out
+}
+
+// checkNumbers looks for numbers that are never encoded: NaNs other than the
+// one.
+func checkNumbers(k numberKind, raw []byte) error {
+	switch k.kind {
+	case reflect.Float64:
+		for i := 0; i < len(raw); i += 8 {
+			bits := binary.LittleEndian.Uint64(raw[i:])
+			if x := math.Float64frombits(bits); x != x && bits != nan64 {
+				return within(index(i/8), errorf("NaN with the bits %#x, expected %#x", bits, nan64))
+			}
+		}
+	case reflect.Float32:
+		for i := 0; i < len(raw); i += 4 {
+			bits := binary.LittleEndian.Uint32(raw[i:])
+			if x := math.Float32frombits(bits); x != x && bits != nan32 {
+				return within(index(i/4), errorf("NaN with the bits %#x, expected %#x", bits, nan32))
+			}
+		}
+	}
+	return nil
 }
 
 func integers[T integer](raw []byte, width int) []T {

@@ -131,7 +131,7 @@ func (r *reader) float(what string) (float64, error) {
 	return x, nil
 }
 
-// typed takes off a typed array and gives its numbers, undecoded.
+// typed takes off a typed array and gives its numbers, checked but not decoded.
 func (r *reader) typed() (numberKind, []byte, error) {
 	tag, err := r.expect(majorTag, "an array of numbers")
 	if err != nil {
@@ -149,6 +149,9 @@ func (r *reader) typed() (numberKind, []byte, error) {
 		return numberKind{}, nil, errorf("an array of %s of %d bytes, expected a multiple of %d", k.kind, n, k.width)
 	}
 	raw, err := r.take(n)
+	if err == nil {
+		err = checkNumbers(k, raw)
+	}
 	return k, raw, err
 }
 

@@ -130,15 +130,14 @@ func (r *reader) skip(depth int) error {
 		_, err := r.text("text")
 		return err
 	case majorTag:
-		k, raw, err := r.typed()
-		if err == nil {
-			err = checkNumbers(k, raw)
-		}
+		_, _, err := r.typed()
 		return err
 	case majorArray:
 		n, err := r.count(majorArray, "an array", 1)
 		for i := 0; i < n && err == nil; i++ {
-			err = within(index(i), r.skip(depth+1))
+			if err = r.skip(depth + 1); err != nil {
+				return within(index(i), err)
+			}
 		}
 		return err
 	case majorMap:
@@ -184,17 +183,17 @@ func (r *reader) eachEntry(value func(key any) error) error {
 		if err != nil {
 			return within("[key]", err)
 		}
-		step := keyStep(reflect.ValueOf(key))
+		step := func(err error) error { return within(keyStep(reflect.ValueOf(key)), err) }
 		encoded := start[:len(start)-len(r.data)]
 		switch {
 		case i > 0 && bytes.Compare(last, encoded) >= 0:
-			return within(step, errorf("the key is repeated or not in sorted order"))
+			return step(errorf("the key is repeated or not in sorted order"))
 		case i > 0 && (last[0]&0xe0 == majorText) != (encoded[0]&0xe0 == majorText):
-			return within(step, errorf("a map has both text and integers as keys"))
+			return step(errorf("a map has both text and integers as keys"))
 		}
 		last = encoded
 		if err := value(key); err != nil {
-			return within(step, err)
+			return step(err)
 		}
 	}
 	return nil
@@ -221,14 +220,4 @@ func keyText(key any) string {
 		return strconv.FormatUint(key, 10)
 	}
 	return key.(string)
-}
-
-// checkNumbers checks the numbers of a typed array, of which only floats can
-// be wrong.
-func checkNumbers(k numberKind, raw []byte) error {
-	var err error
-	if k.kind == reflect.Float64 || k.kind == reflect.Float32 {
-		_, err = numbers(k, raw)
-	}
-	return err
 }

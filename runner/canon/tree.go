@@ -67,7 +67,7 @@ func (t *treeReader) value(depth int) (any, error) {
 		if err != nil {
 			return nil, err
 		}
-		return numbers(k, raw)
+		return numbers(k, raw), nil
 	case majorArray:
 		return t.list(depth)
 	case majorMap:
