@@ -273,6 +273,13 @@ func min(a, b int) int {
 	return b
 }
 
+func Named(lightcurve lightcurve.Cube) (table table.Table, check check.Check, err error) {
+	table.Title = "cube"
+	check.Value = float64(len(lightcurve.Time))
+	lightcurve.Time = nil
+	return
+}
+
 func Fit(limb []float64) (fit float64) {
 	orbit := func(math float64) (string float64) { string = math + 1; return }
 	return orbit(limb[0])
@@ -285,6 +292,10 @@ func Fit(limb []float64) (fit float64) {
 	out, err := m.Call("Limb", []reflect.Value{reflect.ValueOf([]float64{1, 2, 3})})
 	if err != nil || fmt.Sprint(out[0]) != "[2 4 6]" {
 		t.Fatalf("%v %v", out, err)
+	}
+	named, err := m.Call("Named", []reflect.Value{reflect.ValueOf(lightcurve.Cube{Time: []float64{1}})})
+	if err != nil || named[0].Field(0).String() != "cube" || named[1].FieldByName("Value").Float() != 1 {
+		t.Fatalf("%v %v", named, err)
 	}
 	out, err = m.Call("Fit", []reflect.Value{out[0]})
 	if err != nil || out[0].Float() != 3 {

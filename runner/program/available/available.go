@@ -30,6 +30,7 @@ var Packages = []Package{
 	{"utf8", "unicode/utf8"},
 
 	{"check", stepLibrary + "check"},
+	{"diagnose", stepLibrary + "diagnose"},
 	{"figure", stepLibrary + "figure"},
 	{"fit", stepLibrary + "fit"},
 	{"diagnose", stepLibrary + "diagnose"},

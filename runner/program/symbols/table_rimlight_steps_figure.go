@@ -9,6 +9,13 @@ import (
 
 func init() {
 	Table["rimlight/steps/figure/figure"] = map[string]reflect.Value{
-		"Figure": reflect.ValueOf((*figure.Figure)(nil)),
+		"BinnedScatter": reflect.ValueOf(figure.BinnedScatter),
+		"ChannelGrid":   reflect.ValueOf(figure.ChannelGrid),
+		"Detrended":     reflect.ValueOf(figure.Detrended),
+		"Figure":        reflect.ValueOf((*figure.Figure)(nil)),
+		"LimbDarkening": reflect.ValueOf(figure.LimbDarkening),
+		"Map":           reflect.ValueOf(figure.Map),
+		"Spectrum":      reflect.ValueOf(figure.Spectrum),
+		"WhiteFit":      reflect.ValueOf(figure.WhiteFit),
 	}
 }
