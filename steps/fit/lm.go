@@ -132,7 +132,7 @@ func (p *leastSquares) solve(start []float64) minimum {
 			if damping > mostDamping {
 				// Rounding hides any further descent.
 				m.status = statusStalled
-				if q.fullReduction() <= 1e-6*m.sum {
+				if q.fullReduction() <= max(1e-6*m.sum, 1e4*p.absolute) {
 					m.status = statusConverged
 				}
 				return m

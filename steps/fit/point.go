@@ -1,0 +1,148 @@
+package fit
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+
+	"gonum.org/v1/gonum/floats"
+
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/spectrum"
+	"rimlight/steps/systematics"
+	"rimlight/steps/transit"
+)
+
+// point summarises a channel's solution.
+func (s *solution) point(curve lightcurve.Curve, white Posterior) (spectrum.Point, error) {
+	m := s.model
+	k := slices.Index(m.space.free, slotRadius)
+	params := m.space.physical(&s.v)
+	r, rErr := params.RadiusRatio, math.Sqrt(s.cov[k][k])
+	out := spectrum.Point{
+		Channel: curve.Channel,
+		Depth:   r * r, DepthErr: 2 * r * rErr,
+		RadiusRatio: r, RadiusRatioErr: rErr,
+		Limb: []float64{params.U1, params.U2},
+		Chi2: s.chi2, Dof: s.dof,
+		Used: len(m.used), Masked: len(curve.Time) - len(m.used),
+		Scatter: s.scatter(),
+	}
+	for a := range 2 {
+		u := s.quantity("", "", "", func(v *[slots]float64) float64 {
+			p := m.space.physical(v)
+			return [2]float64{p.U1, p.U2}[a]
+		})
+		out.LimbErr = append(out.LimbErr, u.Err)
+	}
+	var flags []string
+	if s.status != statusConverged {
+		flags = append(flags, "the fit did not converge: "+s.status)
+	}
+	lo, hi := m.space.limits(slotRadius)
+	if s.x[k] <= lo || s.x[k] >= hi {
+		flags = append(flags, fmt.Sprintf("radius ratio at the end of its range, %.4g", r))
+	}
+	if !s.determined[k] {
+		flags = append(flags, "radius ratio not determined by the data")
+		out.Depth, out.DepthErr, out.RadiusRatio, out.RadiusRatioErr = math.NaN(), math.NaN(), math.NaN(), math.NaN()
+	}
+	if reduced := s.chi2 / float64(s.dof); reduced > doubtfulChi2 {
+		flags = append(flags, fmt.Sprintf("reduced chi-square %.2f", reduced))
+	}
+	out.Flag = strings.Join(flags, "; ")
+	var err error
+	out.ShiftGeometry, err = s.shifts(white)
+	return out, err
+}
+
+// shifts returns the derivative of the depth in each parameter of the white
+// posterior that the channel holds, 0 for the others: the linear response
+// -(JᵀWJ)⁻¹JᵀW J_g of the fit, times 2 r. J_g is the change of the model over
+// one standard deviation of the parameter to either side, as in [solution.slope].
+func (s *solution) shifts(white Posterior) ([]float64, error) {
+	m := s.model
+	k := slices.Index(m.space.free, slotRadius)
+	out := make([]float64, len(white.Names))
+	change := make([]float64, m.rows())
+	for g, name := range white.Names {
+		named, err := findName(name)
+		if isTrend(name) || err != nil || m.space.isFree(named.slot) {
+			continue
+		}
+		switch named.slot {
+		case slotRadius, slotLimb1, slotLimb2: // a channel has its own
+			continue
+		}
+		lo, hi := white.Value[g]-white.Err[g], white.Value[g]+white.Err[g]
+		if !(lo < hi) || math.IsInf(hi-lo, 0) {
+			continue
+		}
+		lo, hi = clipNamed(name, lo, hi)
+		if err := s.modelChange(named.slot, lo, hi, change); err != nil {
+			return nil, err
+		}
+		response := 0.0
+		for l := range m.size() {
+			response -= s.cov[k][l] * floats.Dot(s.jac[l], change)
+		}
+		out[g] = 2 * s.x[k] * response
+	}
+	return out, nil
+}
+
+// clipNamed cuts an interval of a named parameter to where it means something.
+func clipNamed(name string, lo, hi float64) (float64, float64) {
+	switch name {
+	case "inclination":
+		return lo, min(hi, 90)
+	case "impact", "eccentricity":
+		return max(lo, 0), hi
+	case "axisRatio":
+		return max(lo, 1), hi
+	case "settlingTime", "period":
+		return max(lo, hi/10), hi
+	}
+	return lo, hi
+}
+
+// modelChange sets change to the difference of the residuals at two values of a
+// held parameter, divided by their distance.
+func (s *solution) modelChange(slot int, lo, hi float64, change []float64) error {
+	m := s.model
+	at := func(named float64) ([]float64, error) {
+		v := s.v
+		v[slot] = m.space.coordinate(slot, named)
+		flux, err := transit.Curve(m.times, m.space.physical(&v))
+		if err != nil {
+			return nil, err
+		}
+		trend := slices.Clone(m.trend)
+		if k := m.design.Settling; slot == slotSettling && k >= 0 {
+			c := s.x[len(m.space.free)+k]
+			floats.AddScaled(trend, c, settleChange(m, math.Exp(v[slotSettling]), math.Exp(s.v[slotSettling])))
+		}
+		return floats.MulTo(flux, flux, trend), nil
+	}
+	up, err := at(hi)
+	if err != nil {
+		return err
+	}
+	down, err := at(lo)
+	if err != nil {
+		return err
+	}
+	clear(change)
+	for i := range up {
+		change[i] = (up[i] - down[i]) / (hi - lo) * m.weight[i] / m.scale
+	}
+	return nil
+}
+
+// settleChange is the settling column at one settling time less that at another.
+func settleChange(m *model, tau, from float64) []float64 {
+	column := systematics.Settle(m.times, m.design.Start, tau)
+	floats.Sub(column, systematics.Settle(m.times, m.design.Start, from))
+	return column
+}

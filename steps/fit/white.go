@@ -1,0 +1,116 @@
+package fit
+
+import (
+	"errors"
+	"fmt"
+
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/transit"
+)
+
+// Least numbers of usable samples of a fit.
+const (
+	leastSamples   = 50 // altogether
+	leastInTransit = 10 // in transit, and as many out of it
+)
+
+// White fits transit and systematics to a white light curve of n integrations.
+//
+// Every parameter that priors names with a kind other than "=" is free; the
+// others are held at the priors' or else the setup's values. Names are period
+// (d), midTransit (BJD_TDB, d) or midTransitOffset (d, from setup.MidTransit),
+// axisRatio, inclination (deg) or impact, eccentricity, periastron (deg),
+// radiusRatio, u1 and u2 or q1 and q2 (the sampling of Kipping 2013), and
+// settlingTime (d). The coefficients of the trend are always free and come last in the posterior, under
+// names such as "trend.constant", in units of the curve's median flux. Limb darkening follows the
+// priors where they name it, and otherwise setup.LimbPolicy.
+//
+// The maximum of the posterior is found by the Levenberg-Marquardt method from
+// several starts, after a scan in mid-transit time over its prior range (0.05 d
+// to either side at most). Normal priors are further residuals; uniform and
+// log-uniform ones are limits. The covariance is the inverse of the curvature
+// there, limits left out of account; a parameter that the data do not determine
+// has the variance of its prior range, and a warning. Inclinations are reported
+// at or below 90 deg. Chi2 is that of the samples with the errors as given;
+// where setup.Inflate applies, the errors of the curve fit and the covariance
+// are the multiplied ones.
+//
+// Errors: settings or priors out of range, unknown or contradictory names, a
+// trend that does not fit the curve (see systematics.Trend.Design), fewer than
+// 50 usable samples.
+func White(curve lightcurve.Curve, setup Setup, priors Priors) (Posterior, CurveFit, error) {
+	const what = "white fit"
+	fail := func(err error) (Posterior, CurveFit, error) {
+		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", what, err)
+	}
+	if err := setup.check(what); err != nil {
+		return Posterior{}, CurveFit{}, err
+	}
+	rows, warnings, err := limbRows(priors, setup, curve.Channel, false)
+	if err != nil {
+		return fail(err)
+	}
+	space := newSpace(setup)
+	unused, err := space.apply(rows, setup.Trend.Settling)
+	if err != nil {
+		return fail(err)
+	}
+	m, err := newModel(curve, setup, space)
+	if err != nil {
+		return fail(err)
+	}
+	if len(m.used) < leastSamples {
+		return fail(fmt.Errorf("%d usable samples of %d; expected at least %d", len(m.used), len(curve.Time), leastSamples))
+	}
+	if err := m.usableLevel(); err != nil {
+		return fail(err)
+	}
+	if err := m.scan(); err != nil {
+		return fail(err)
+	}
+	s, err := m.solve(m.starts(), setup.Inflate)
+	if err != nil {
+		return fail(err)
+	}
+	s.warnings = append(append(warnings, unused...), s.warnings...)
+	if reason, err := m.coverage(&s.v); err != nil {
+		return fail(err)
+	} else if reason != "" {
+		s.warnings = append(s.warnings, reason)
+	}
+	curveFit, err := s.curveFit(curve)
+	if err != nil {
+		return fail(err)
+	}
+	return s.posterior(setup.Trend), curveFit, nil
+}
+
+// usableLevel reports a median flux that cannot be divided by.
+func (m *model) usableLevel() error {
+	if !(m.level > 0) {
+		return errors.New("the median flux is not above zero; there is no starlight to fit")
+	}
+	return nil
+}
+
+// coverage says what is wrong with the usable samples' cover of transit and
+// baseline, or "".
+func (m *model) coverage(v *[slots]float64) (string, error) {
+	flux, err := transit.Curve(m.times, m.space.physical(v))
+	if err != nil {
+		return "", err
+	}
+	in := 0
+	for _, f := range flux {
+		if f < 1 {
+			in++
+		}
+	}
+	if in < leastInTransit {
+		return fmt.Sprintf("only %d usable samples in transit; at least %d are needed", in, leastInTransit), nil
+	}
+	if out := len(flux) - in; out < leastInTransit {
+		return fmt.Sprintf("only %d usable samples out of transit; at least %d are needed", out, leastInTransit), nil
+	}
+	return "", nil
+}
