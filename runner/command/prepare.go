@@ -55,7 +55,16 @@ func prepare(ctx context.Context, file string, o *options) (*plan.Plan, worker.C
 	if err != nil {
 		return nil, worker.Code{}, err
 	}
-	diags = append(diags, more...)
+	// A fault of the wiring on a line that is wrong anyway is a consequence.
+	wrong := map[int]bool{}
+	for _, d := range diags {
+		wrong[d.Pos.Line] = true
+	}
+	for _, d := range more {
+		if !wrong[d.Pos.Line] {
+			diags = append(diags, d)
+		}
+	}
 	if len(diags) == 0 && len(steps) == 0 {
 		diags.Add(diag.Pos{File: file}, "the recipe has no steps", "expected fenced blocks with the info string go, with exported functions", "")
 	}

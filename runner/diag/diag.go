@@ -97,13 +97,13 @@ func (l List) Error() string {
 // (insertions, deletions, substitutions and swaps of neighbours each count
 // one, case counts less), or "" when none is close enough to be meant.
 func Nearest(name string, known []string) string {
-	best, bestCost := "", 1+len(name)/3
+	best, bestCost := "", 1+max(1, utf8.RuneCountInString(name)/3)
 	for _, k := range known {
 		if n := utf8.RuneCountInString(name) - utf8.RuneCountInString(k); max(n, -n) > bestCost {
 			continue // no need to compare what is too long, at a cost of both lengths multiplied
 		}
 		c := distance(strings.ToLower(name), strings.ToLower(k))
-		if c < bestCost || c == bestCost && (best == "" || k < best) {
+		if c < bestCost || c == bestCost && best != "" && k < best {
 			best, bestCost = k, c
 		}
 	}

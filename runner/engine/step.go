@@ -208,14 +208,32 @@ func (e *Engine) fanOut(ctx context.Context, i int) error {
 		return err
 	}
 	comps, todo := e.lookUpElements(spec, items)
-	if len(todo) > 0 {
-		if err := e.missing(ctx, spec, items, comps, todo); err != nil {
-			return err
+	why := reasons(comps, todo)
+	var results []Value
+	// Twice, because a damaged result of an element may be noticed only when
+	// it is read.
+	for attempt := 0; ; attempt++ {
+		if len(todo) > 0 {
+			if err := e.missing(ctx, spec, items, comps, todo); err != nil {
+				return err
+			}
 		}
+		if !allFinished(comps) {
+			break
+		}
+		if results, err = e.gather(spec, comps); !damaged(err) || attempt > 0 {
+			break
+		}
+		e.note("step %s: %v; it was computed again", spec.Name, err)
+		comps, todo = e.lookUpElements(spec, items)
+		why = reasons(comps, todo)
 	}
-	c := Computation{State: Reused}
-	if len(todo) > 0 {
-		c.State, c.Why = Computed, reasons(comps, todo)
+	if err != nil {
+		return err
+	}
+	c := Computation{State: Reused, Results: results}
+	if why != "" {
+		c.State, c.Why = Computed, why
 	}
 	failed, first := 0, ""
 	for n := range comps {
@@ -239,11 +257,17 @@ func (e *Engine) fanOut(ctx context.Context, i int) error {
 		e.settle(i, c, comps)
 		return fmt.Errorf("%d of %d elements failed; %s", failed, len(comps), first)
 	}
-	if c.Results, err = e.gather(spec, comps); err != nil {
-		return err
-	}
 	e.settle(i, c, comps)
 	return nil
+}
+
+func allFinished(comps []Computation) bool {
+	for n := range comps {
+		if !comps[n].Finished() {
+			return false
+		}
+	}
+	return true
 }
 
 // lookUpElements looks up every element of a fan-out; todo lists those that

@@ -1,6 +1,7 @@
 package plan
 
 import (
+	"math"
 	"strings"
 	"testing"
 
@@ -83,7 +84,7 @@ func TestKeySeesEverything(t *testing.T) {
 
 // TestSpellIsUnambiguous holds that different values never share a spelling.
 func TestSpellIsUnambiguous(t *testing.T) {
-	values := []any{1.0, 1.5, 0.1, 0.1 + 0.2, 0.3, "1", "a, b", []string{"a, b"}, []string{"a", "b"}, []string{"a\", \"b"}, []float64{1, 2}, []float64{12}, true, "true", 1e300}
+	values := []any{1.0, 1.5, 0.1, math.Nextafter(0.3, 1), 0.3, "1", "a, b", []string{"a, b"}, []string{"a", "b"}, []string{"a\", \"b"}, []float64{1, 2}, []float64{12}, true, "true", 1e300}
 	seen := map[string]any{}
 	for _, v := range values {
 		s := spell(v)

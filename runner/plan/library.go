@@ -78,22 +78,27 @@ func readLibrary(sources fs.FS) (*Library, error) {
 
 // essence is the source without comments and formatting: its tokens, one per
 // line. Directives (//go:build, //go:embed) stay, since they change what is
-// built.
+// built; a semicolon that only ends a line before a closing bracket does not.
 func essence(src []byte) []byte {
 	var out []byte
 	var s scanner.Scanner
 	s.Init(token.NewFileSet().AddFile("", -1, len(src)), src, nil, scanner.ScanComments)
+	semicolon := false
 	for {
 		_, tok, lit := s.Scan()
-		if tok == token.EOF {
+		switch {
+		case tok == token.EOF:
 			return out
-		}
-		if tok == token.COMMENT && !strings.HasPrefix(lit, "//go:") {
+		case tok == token.COMMENT && !strings.HasPrefix(lit, "//go:"):
+			continue
+		case tok == token.SEMICOLON:
+			semicolon = true
 			continue
 		}
-		if tok == token.SEMICOLON {
-			lit = ""
+		if semicolon && tok != token.RBRACE && tok != token.RPAREN {
+			out = append(out, ";\n"...)
 		}
+		semicolon = false
 		out = append(out, tok.String()...)
 		out = append(out, ' ')
 		out = append(out, lit...)

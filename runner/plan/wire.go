@@ -256,6 +256,9 @@ func (w *wiring) steps(steps []program.Step) {
 // arg finds what fills a parameter.
 func (w *wiring) arg(steps []program.Step, index int, step *Step, param program.Var) (Arg, bool) {
 	arg := Arg{Name: param.Name, Type: param.Type}
+	if strings.Contains(param.Type, "invalid type") {
+		return arg, false // the type checker has said so
+	}
 	if e := step.Step.Each; e != nil && e.Element == param.Name {
 		return w.element(steps, index, step, param)
 	}

@@ -61,6 +61,9 @@ func (p *Program) compile(more map[string]map[string]reflect.Value) (m *Machine,
 			m, err = nil, fmt.Errorf("%s: the interpreter cannot compile the recipe: %v", p.file, r)
 		}
 	}()
+	if p.tree == nil {
+		return nil, fmt.Errorf("%s: the recipe has faults and cannot be compiled", p.file)
+	}
 	said := &head{}
 	i := interp.New(interp.Options{
 		Stdin:                strings.NewReader(""),

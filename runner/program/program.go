@@ -33,7 +33,7 @@ type Program struct {
 	file  string
 	given []byte    // the source that was checked
 	src   []byte    // the same with the package clause and the imports
-	tree  *ast.File // rewritten for the interpreter
+	tree  *ast.File // rewritten for the interpreter; nil in an outline
 }
 
 // A Step is an exported function of a recipe.
@@ -81,11 +81,17 @@ type Fence struct {
 // file. Without fences the source is parsed as a whole. All faults are
 // reported that can be found at once: syntax first, then types and the rules of
 // steps, then what a recipe may not use. When the list is not empty the
-// program is nil.
+// program is an outline: as far as they could be made out, its steps have
+// names, parameters and results, so that the wiring can be looked at too, but
+// no code, and the program cannot be compiled.
 func Check(file string, src []byte, fences ...Fence) (*Program, diag.List) {
 	c := check(file, src, fences)
 	if len(c.diags) > 0 {
-		return nil, c.diags
+		p := &Program{file: file}
+		for _, d := range c.steps {
+			p.Steps = append(p.Steps, c.step(d))
+		}
+		return p, c.diags
 	}
 	p := &Program{file: file, given: bytes.Clone(src), src: c.src}
 	closure := newClosure(c)

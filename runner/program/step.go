@@ -204,18 +204,21 @@ func (c *checker) typePath(t types.Type) string {
 // step describes a step that has passed the rules, all but its code.
 func (c *checker) step(f *ast.FuncDecl) Step {
 	s := Step{Name: f.Name.Name, Doc: strings.TrimSpace(f.Doc.Text()), Signature: signatureText(f), Pos: c.at(f.Name.Pos())}
-	variable := func(v field) Var {
-		return Var{v.name.Name, c.typePath(c.info.TypeOf(v.typ)), c.at(v.name.Pos())}
+	variable := func(list []Var, v field) []Var {
+		if v.name == nil { // a fault, already told
+			return list
+		}
+		return append(list, Var{v.name.Name, c.typePath(c.info.TypeOf(v.typ)), c.at(v.name.Pos())})
 	}
 	for _, p := range fields(f.Type.Params) {
-		s.Params = append(s.Params, variable(p))
+		s.Params = variable(s.Params, p)
 	}
 	for _, r := range fields(f.Type.Results) {
 		if isError(c.info.TypeOf(r.typ)) {
 			s.Err = true
 			continue
 		}
-		s.Results = append(s.Results, variable(r))
+		s.Results = variable(s.Results, r)
 	}
 	if f.Doc != nil {
 		for _, line := range f.Doc.List {

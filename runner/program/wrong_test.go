@@ -46,7 +46,7 @@ func TestWrongRecipes(t *testing.T) {
 		}
 		src, fences := goLines(md)
 		p, diags := Check(filepath.Base(name), src, fences...)
-		if p != nil || len(diags) == 0 {
+		if _, err := p.Compile(); err == nil || len(diags) == 0 {
 			t.Errorf("%s is accepted", name)
 			continue
 		}

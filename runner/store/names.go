@@ -4,6 +4,7 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
+	"path/filepath"
 )
 
 // A Hash names an object: the SHA-256 of its bytes.
@@ -21,47 +22,57 @@ func KeyOf(text string) Key { return sha256.Sum256([]byte(text)) }
 // String gives 64 hexadecimal digits.
 func (h Hash) String() string { return hex.EncodeToString(h[:]) }
 
-// Short gives the first 12 hexadecimal digits, for people.
-func (h Hash) Short() string { return h.String()[:12] }
-
 // String gives 64 hexadecimal digits.
 func (k Key) String() string { return hex.EncodeToString(k[:]) }
 
+// Short gives the first 12 hexadecimal digits, for people.
+func (h Hash) Short() string { return h.String()[:12] }
+
+// Short gives the first 12 hexadecimal digits, for people.
+func (k Key) Short() string { return k.String()[:12] }
+
 // ParseHash reads 64 lower-case hexadecimal digits.
 func ParseHash(s string) (Hash, error) {
-	b, err := parse(s)
-	return Hash(b), err
+	b, err := parseName(s)
+	return b, err
 }
 
 // ParseKey reads 64 lower-case hexadecimal digits.
 func ParseKey(s string) (Key, error) {
-	b, err := parse(s)
-	return Key(b), err
+	b, err := parseName(s)
+	return b, err
 }
 
-func parse(s string) (out [32]byte, err error) {
-	b, err := hex.DecodeString(s)
-	if err != nil || len(b) != len(out) || hex.EncodeToString(b) != s {
-		return out, fmt.Errorf("%.80q is not a hash; expected 64 lower-case hexadecimal digits", s)
+func parseName(s string) (out [32]byte, err error) {
+	if n, err := hex.Decode(out[:], []byte(s[:min(len(s), 64)])); err != nil || n != len(out) || hex.EncodeToString(out[:]) != s {
+		return [32]byte{}, fmt.Errorf("%.80q is no SHA-256; expected 64 hexadecimal digits in lower case", s)
 	}
-	copy(out[:], b)
 	return out, nil
 }
 
-// MarshalText and UnmarshalText make hashes readable in JSON.
+// MarshalText gives 64 hexadecimal digits.
 func (h Hash) MarshalText() ([]byte, error) { return []byte(h.String()), nil }
 
-// UnmarshalText reads what MarshalText wrote.
+// UnmarshalText reads 64 lower-case hexadecimal digits.
 func (h *Hash) UnmarshalText(b []byte) (err error) {
 	*h, err = ParseHash(string(b))
 	return err
 }
 
-// MarshalText makes keys readable in JSON.
+// MarshalText gives 64 hexadecimal digits.
 func (k Key) MarshalText() ([]byte, error) { return []byte(k.String()), nil }
 
-// UnmarshalText reads what MarshalText wrote.
+// UnmarshalText reads 64 lower-case hexadecimal digits.
 func (k *Key) UnmarshalText(b []byte) (err error) {
 	*k, err = ParseKey(string(b))
 	return err
+}
+
+// The path of an object or record: a folder for each first byte of a name
+// keeps folders small.
+func (s *Store) objectPath(h Hash) string { return s.path("objects", h.String()) }
+func (s *Store) recordPath(k Key) string  { return s.path("records", k.String()) }
+
+func (s *Store) path(kind, name string) string {
+	return filepath.Join(s.dir, kind, name[:2], name)
 }

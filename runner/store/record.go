@@ -1,29 +1,25 @@
 package store
 
 import (
-	"bytes"
-	"crypto/sha256"
-	"encoding/hex"
-	"encoding/json"
 	"errors"
 	"fmt"
 	"io/fs"
 	"os"
-	"path/filepath"
+	"strings"
 	"time"
 )
 
 // A Record says what a computation gave.
 type Record struct {
-	Key     Key           `json:"key"`
-	Text    string        `json:"text"` // the key's text
-	Results []Result      `json:"results"`
-	Log     string        `json:"log,omitempty"`
-	Took    time.Duration `json:"took"` // nanoseconds
-	When    time.Time     `json:"when"`
-	Host    string        `json:"host"`
-	Program string        `json:"program"`
-	Notes   []string      `json:"notes,omitempty"`
+	Key     Key
+	Text    string // the text of the key
+	Results []Result
+	Log     string        // what the computation said
+	Took    time.Duration // its duration
+	When    time.Time     // its end; kept in UTC
+	Host    string        // where it was done
+	Program string        // the version that did it
+	Notes   []string
 }
 
 // A Result is a named object.
@@ -35,112 +31,130 @@ type Result struct {
 	Size   int64  `json:"size"` // of the content, in bytes
 }
 
-// A NotReproducibleError says that a computation gave other bytes than the
-// time before. The first results are kept.
+// A NotReproducibleError says that a computation gave other results than the
+// first time. Both records and all objects are kept.
 type NotReproducibleError struct {
-	Name          string // of the first result that differs
-	First, Second Hash
+	Key      Key
+	Name     string // of the first result that differs
+	First    Hash   // what it was; zero if there was no such result
+	Second   Hash   // what it is now; zero if there is no such result now
+	Beside   string // the file of the record that is not in force
+	Replaced bool   // the first results are no longer in the store, so the second ones took their place
 }
 
-// Error names the result and both hashes.
 func (e *NotReproducibleError) Error() string {
-	return fmt.Sprintf("not reproducible: %s was %s and is %s now; the first one is kept", e.Name, e.First.Short(), e.Second.Short())
+	s := fmt.Sprintf("not reproducible: the result %s was %s at first and is %s now; ", e.Name, e.First.Short(), e.Second.Short())
+	if e.Replaced {
+		return s + "the first one is no longer in the store, its record is " + e.Beside
+	}
+	return s + "the first one stays in force, the record of the second one is " + e.Beside
 }
 
-const recordMark = "rimlight record 1"
-
-func (s *Store) recordPath(k Key) string {
-	name := k.String()
-	return filepath.Join(s.dir, "records", name[:2], name)
+// A BadRecordError says why a record is of no use.
+type BadRecordError struct {
+	Path   string
+	Reason error
 }
 
-// encodeRecord gives a record's file: a line with the mark and the SHA-256 of
-// what follows, then JSON.
-func encodeRecord(r Record) ([]byte, error) {
-	body, err := json.MarshalIndent(r, "", " ")
-	if err != nil {
-		return nil, err
-	}
-	body = append(body, '\n')
-	sum := sha256.Sum256(body)
-	return append(fmt.Appendf(nil, "%s %s\n", recordMark, hex.EncodeToString(sum[:])), body...), nil
+func (e *BadRecordError) Error() string {
+	return fmt.Sprintf("the record %s is of no use: %v", e.Path, e.Reason)
 }
 
-func decodeRecord(k Key, data []byte) (Record, error) {
-	line, body, ok := bytes.Cut(data, []byte("\n"))
-	sum, marked := bytes.CutPrefix(line, []byte(recordMark+" "))
-	if !ok || !marked {
-		return Record{}, errors.New("it does not begin as a record does")
-	}
-	if want := sha256.Sum256(body); string(sum) != hex.EncodeToString(want[:]) {
-		return Record{}, errors.New("its checksum is wrong")
-	}
-	var r Record
-	if err := json.Unmarshal(body, &r); err != nil {
-		return Record{}, err
-	}
-	if r.Key != k || KeyOf(r.Text) != k {
-		return Record{}, errors.New("it is the record of another key")
-	}
-	return r, nil
-}
+// Unwrap gives the reason.
+func (e *BadRecordError) Unwrap() error { return e.Reason }
 
-// Record looks up what a computation gave. Without a record it returns false;
-// a record that can't be used is a miss too, with the reason as the error.
+// Record looks up what a computation gave: true and no error, if that is known.
+// Without a record it gives false and no error. A record that is flawed in any
+// way is as good as none; it gives false and a [*BadRecordError] with the
+// reason, for the user to know, and stays until [Store.SetRecord] sets it aside.
+// The objects that a record names have yet to be read.
 func (s *Store) Record(k Key) (Record, bool, error) {
 	path := s.recordPath(k)
-	data, err := os.ReadFile(path)
+	data, err := s.files.read(path)
 	if errors.Is(err, fs.ErrNotExist) {
 		return Record{}, false, nil
 	}
-	if err != nil {
-		return Record{}, false, err
+	var r Record
+	if err == nil {
+		r, err = decodeRecord(data)
 	}
-	r, err := decodeRecord(k, data)
+	if err == nil && r.Key != k {
+		err = fmt.Errorf("it is the record of another computation, %s", r.Key.Short())
+	}
 	if err != nil {
-		return Record{}, false, fmt.Errorf("the record %s is of no use: %w", path, err)
+		return Record{}, false, &BadRecordError{path, err}
 	}
 	return r, true, nil
 }
 
-// SetRecord keeps a record whose objects are in the store. The first record of
-// a key stays: the same results again change nothing, and other results are
-// kept beside the first ones and give a *[NotReproducibleError]. A record that
-// is damaged, or whose objects are gone, is replaced.
+// SetRecord keeps a record, of results that must have been put before. The
+// first record of a key stays: if the same results are set again nothing
+// changes, and other ones are kept beside the first and give a
+// [*NotReproducibleError]. A flawed record is set aside. A first record whose
+// objects are no longer there gives way to other results, with the same error.
 func (s *Store) SetRecord(r Record) error {
 	if KeyOf(r.Text) != r.Key {
-		panic("store: a record's key is not the hash of its text")
+		return fmt.Errorf("the record of %s has the key text of %s", r.Key.Short(), KeyOf(r.Text).Short())
+	}
+	for _, res := range r.Results {
+		if !s.Has(res.Hash) {
+			return fmt.Errorf("the record of %s names the result %s, %s, which is not in the store", r.Key.Short(), res.Name, res.Hash.Short())
+		}
 	}
 	data, err := encodeRecord(r)
 	if err != nil {
-		return err
+		return fmt.Errorf("the record of %s cannot be written: %w", r.Key.Short(), err)
 	}
-	path := s.recordPath(r.Key)
-	// Twice, for the case that another process sets the record in between.
-	for range 2 {
-		old, ok, flaw := s.Record(r.Key)
-		if flaw != nil || ok && !s.whole(old) && compare(old, r) != nil {
-			s.setAside(path)
-			ok = false
-		}
-		if ok {
-			differs := compare(old, r)
-			if differs == nil {
-				return nil
+	var replaced error
+	const tries = 10 // against other processes that set the same record
+	for range tries {
+		first, ok, flaw := s.Record(r.Key)
+		switch {
+		case flaw != nil:
+			if s.setAside(s.recordPath(r.Key)) == "" {
+				return s.explain(fmt.Errorf("%w; it could not be set aside", flaw))
 			}
-			if err := s.write(path+"."+HashOf(data).Short(), data, 0o444); err != nil {
-				return fmt.Errorf("a record could not be kept: %w", err)
+			continue
+		case !ok:
+			err := s.write(s.recordPath(r.Key), data, 0o444, s.exclusively)
+			if errors.Is(err, fs.ErrExist) {
+				continue
 			}
-			return differs
+			if err != nil {
+				return err
+			}
+			return replaced
 		}
-		if err = s.create(path, data, 0o444); err == nil || !errors.Is(err, fs.ErrExist) {
-			break
+		differs := difference(first, r)
+		if differs == nil {
+			return replaced
 		}
+		if differs.Replaced = !s.whole(first); differs.Replaced {
+			differs.Beside = s.besidePath(first)
+			if err := s.files.rename(s.recordPath(r.Key), differs.Beside); err != nil && !errors.Is(err, fs.ErrNotExist) {
+				return s.explain(err)
+			}
+			replaced = differs
+			continue
+		}
+		differs.Beside = s.besidePath(r)
+		err := s.write(differs.Beside, data, 0o444, s.exclusively)
+		if err != nil && !errors.Is(err, fs.ErrExist) {
+			return err
+		}
+		return differs
 	}
-	if err != nil {
-		return fmt.Errorf("a record could not be kept: %w", err)
+	return fmt.Errorf("the record of %s cannot be kept: other processes change it all the time", r.Key.Short())
+}
+
+// besidePath is where a record lies that is not in force: one for each
+// different outcome.
+func (s *Store) besidePath(r Record) string {
+	var results strings.Builder
+	for _, res := range r.Results {
+		fmt.Fprintf(&results, "%q %s\n", res.Name, res.Hash)
 	}
-	return nil
+	return s.recordPath(r.Key) + "." + HashOf([]byte(results.String())).Short()
 }
 
 // whole reports whether all objects of a record are there.
@@ -153,14 +167,22 @@ func (s *Store) whole(r Record) bool {
 	return true
 }
 
-// compare gives the first difference between the results of two records.
-func compare(first, second Record) error {
-	for i, a := range first.Results {
-		if i >= len(second.Results) {
-			return &NotReproducibleError{Name: a.Name, First: a.Hash}
+// difference gives the first difference between the results of two records.
+func difference(first, second Record) *NotReproducibleError {
+	for i := range max(len(first.Results), len(second.Results)) {
+		var a, b Result
+		if i < len(first.Results) {
+			a = first.Results[i]
 		}
-		if b := second.Results[i]; a.Hash != b.Hash {
-			return &NotReproducibleError{a.Name, a.Hash, b.Hash}
+		if i < len(second.Results) {
+			b = second.Results[i]
+		}
+		if a.Hash != b.Hash || a.Name != b.Name {
+			name := a.Name
+			if name == "" {
+				name = b.Name
+			}
+			return &NotReproducibleError{Key: first.Key, Name: name, First: a.Hash, Second: b.Hash}
 		}
 	}
 	return nil

@@ -82,11 +82,7 @@ func (s *server) serve(q Message) (Message, error) {
 			return Message{}, err
 		}
 		p, diags := program.Check(h.File, h.Text, h.Fences...)
-		var steps []program.Step
-		if p != nil {
-			steps = p.Steps
-		}
-		return message(answer, map[string]any{"Steps": steps, "Diags": diags})
+		return message(answer, map[string]any{"Steps": p.Steps, "Diags": diags})
 	case askLoad:
 		var h Code
 		if err := json.Unmarshal(q.Head, &h); err != nil {

@@ -33,7 +33,6 @@ var Packages = []Package{
 	{"diagnose", stepLibrary + "diagnose"},
 	{"figure", stepLibrary + "figure"},
 	{"fit", stepLibrary + "fit"},
-	{"diagnose", stepLibrary + "diagnose"},
 	{"lightcurve", stepLibrary + "lightcurve"},
 	{"limb", stepLibrary + "limb"},
 	{"limbtable", stepLibrary + "limbtable"},

@@ -9,10 +9,14 @@ import (
 
 func init() {
 	Table["rimlight/steps/fit/fit"] = map[string]reflect.Value{
-		"CurveFit":  reflect.ValueOf((*fit.CurveFit)(nil)),
-		"Posterior": reflect.ValueOf((*fit.Posterior)(nil)),
-		"Prior":     reflect.ValueOf((*fit.Prior)(nil)),
-		"Priors":    reflect.ValueOf((*fit.Priors)(nil)),
-		"Quantity":  reflect.ValueOf((*fit.Quantity)(nil)),
+		"Channel":          reflect.ValueOf(fit.Channel),
+		"CurveFit":         reflect.ValueOf((*fit.CurveFit)(nil)),
+		"Posterior":        reflect.ValueOf((*fit.Posterior)(nil)),
+		"Prior":            reflect.ValueOf((*fit.Prior)(nil)),
+		"Priors":           reflect.ValueOf((*fit.Priors)(nil)),
+		"Quantity":         reflect.ValueOf((*fit.Quantity)(nil)),
+		"Setup":            reflect.ValueOf((*fit.Setup)(nil)),
+		"SharedCovariance": reflect.ValueOf(fit.SharedCovariance),
+		"White":            reflect.ValueOf(fit.White),
 	}
 }

@@ -1,7 +1,0 @@
-//go:build unix
-
-package store
-
-import "syscall"
-
-var errInvalid error = syscall.EINVAL

@@ -1,0 +1,174 @@
+package store
+
+import (
+	"errors"
+	"fmt"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"syscall"
+)
+
+// files are the ways to the disk, so that tests can make them fail.
+type files struct {
+	read   func(path string) ([]byte, error)
+	write  func(f *os.File, data []byte) (int, error)
+	sync   func(f *os.File) error
+	rename func(from, to string) error
+	link   func(from, to string) error
+}
+
+var realFiles = files{os.ReadFile, (*os.File).Write, (*os.File).Sync, os.Rename, os.Link}
+
+// write puts a file in place: complete and on disk, or not at all. Move gives
+// the finished file its name.
+func (s *Store) write(path string, data []byte, mode fs.FileMode, move func(from, to string) error) error {
+	tmp, err := s.stage(data, mode, true)
+	if err != nil {
+		return err
+	}
+	err = s.folder(filepath.Dir(path))
+	if err == nil {
+		err = s.explain(move(tmp, path))
+	}
+	if err != nil {
+		os.Remove(tmp) // if that fails too, a file remains in tmp, which does no harm
+		return err
+	}
+	return s.syncFolder(filepath.Dir(path))
+}
+
+// stage writes a temporary file and gives its path. Without sync, it has yet to
+// be brought to disk.
+func (s *Store) stage(data []byte, mode fs.FileMode, sync bool) (path string, err error) {
+	dir := filepath.Join(s.dir, "tmp")
+	f, err := os.CreateTemp(dir, "new-*")
+	if errors.Is(err, fs.ErrNotExist) { // somebody tidied up
+		if err = os.MkdirAll(dir, 0o777); err == nil {
+			f, err = os.CreateTemp(dir, "new-*")
+		}
+	}
+	if err != nil {
+		return "", s.explain(err)
+	}
+	err = s.fill(f, data, mode, sync)
+	if e := f.Close(); err == nil {
+		err = e
+	}
+	if err != nil {
+		os.Remove(f.Name()) // if that fails too, a file remains in tmp, which does no harm
+		return "", s.explain(err)
+	}
+	return f.Name(), nil
+}
+
+func (s *Store) fill(f *os.File, data []byte, mode fs.FileMode, sync bool) error {
+	if _, err := s.files.write(f, data); err != nil {
+		return err
+	}
+	st, err := f.Stat()
+	if err != nil {
+		return err
+	}
+	if st.Size() != int64(len(data)) {
+		return fmt.Errorf("%s has %d bytes after %d were written", f.Name(), st.Size(), len(data))
+	}
+	if err := f.Chmod(mode); err != nil {
+		return err
+	}
+	if sync {
+		return s.files.sync(f)
+	}
+	return nil
+}
+
+// flush brings staged files to disk. Asking the file system for everything at
+// once comes first because that costs little more than one file does.
+func (s *Store) flush(paths []string) error {
+	if len(paths) > 4 {
+		syncAll(filepath.Join(s.dir, "tmp"))
+	}
+	for _, p := range paths {
+		f, err := os.Open(p)
+		if err != nil {
+			return s.explain(err)
+		}
+		err = s.files.sync(f)
+		f.Close() // opened for reading: nothing can be lost
+		if err != nil {
+			return s.explain(err)
+		}
+	}
+	return nil
+}
+
+// exclusively names a finished file unless the name is taken: the error is
+// then fs.ErrExist. Of several processes, one succeeds. Where the file system
+// has no hard links, the last one does.
+func (s *Store) exclusively(from, to string) error {
+	err := s.files.link(from, to)
+	if err == nil || errors.Is(err, fs.ErrExist) {
+		os.Remove(from) // if that fails, a file remains in tmp, which does no harm
+		return err
+	}
+	if _, e := os.Lstat(to); e == nil {
+		return fs.ErrExist
+	}
+	return s.files.rename(from, to)
+}
+
+// folder makes sure that a folder is there and will be there after a loss of
+// power.
+func (s *Store) folder(dir string) error {
+	if err := os.MkdirAll(dir, 0o777); err != nil {
+		return s.explain(err)
+	}
+	s.mu.Lock()
+	done := s.durable[dir]
+	s.mu.Unlock()
+	if done {
+		return nil
+	}
+	for d := dir; ; d = filepath.Dir(d) {
+		if err := s.syncFolder(filepath.Dir(d)); err != nil {
+			return err
+		}
+		if len(d) <= len(s.dir) {
+			break
+		}
+	}
+	s.mu.Lock()
+	s.durable[dir] = true
+	s.mu.Unlock()
+	return nil
+}
+
+// syncFolder brings the names in a folder to disk. A file system that cannot
+// do this for folders says that it is invalid, and is taken to need none.
+func (s *Store) syncFolder(dir string) error {
+	d, err := os.Open(dir)
+	if errors.Is(err, fs.ErrPermission) && len(dir) < len(s.dir) {
+		return nil // a folder above the store that may not be read: not ours to sync
+	}
+	if err != nil {
+		return s.explain(err)
+	}
+	defer d.Close() // opened for reading: nothing can be lost
+	if err := s.files.sync(d); err != nil && !errors.Is(err, syscall.EINVAL) && !errors.Is(err, errors.ErrUnsupported) {
+		return s.explain(err)
+	}
+	return nil
+}
+
+// explain says what an error in writing means to the user.
+func (s *Store) explain(err error) error {
+	switch {
+	case err == nil || errors.Is(err, fs.ErrExist):
+		return err
+	case errors.Is(err, syscall.ENOSPC) || errors.Is(err, syscall.EDQUOT):
+		return fmt.Errorf("the result store %s is full: make room on its disk, or choose another folder with --store (%w)", s.dir, err)
+	case errors.Is(err, fs.ErrPermission) || errors.Is(err, syscall.EROFS):
+		return fmt.Errorf("the result store %s cannot be written to: choose another folder with --store (%w)", s.dir, err)
+	}
+	return fmt.Errorf("the result store %s failed: %w", s.dir, err)
+}
