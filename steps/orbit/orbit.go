@@ -1,3 +1,20 @@
+// Package orbit places a planet on its Keplerian orbit and on the sky.
+//
+// Nouns. The separation z is the distance between the centres of planet and
+// star projected on the sky, in stellar radii. Inferior conjunction is where
+// the planet is nearest to us in front of the star: there the true anomaly f
+// is 90° minus the argument of periastron ω. Mid-transit is the time of
+// inferior conjunction; on an eccentric, inclined orbit the separation is
+// smallest at a slightly different time. A contact is a time at which the
+// discs of planet and star touch, from outside (first, fourth) or from inside
+// (second, third).
+//
+// With r the distance from the star in stellar radii, the planet is at
+//
+//	X = -r cos(ω+f),  Y = -r sin(ω+f) cos i,  Z = r sin(ω+f) sin i,
+//
+// Z towards us (Winn 2010, in Exoplanets, ed. Seager, ch. 3). Angles are in
+// radians, times in days, lengths in stellar radii.
 package orbit
 
 import (
@@ -5,86 +22,82 @@ import (
 	"math"
 )
 
-// MaxEccentricity is the largest eccentricity of an orbit.
-const MaxEccentricity = 0.999
+const (
+	// gravity is the Newtonian constant G, m3 kg-1 s-2; CODATA 2018, relative
+	// standard uncertainty 2.2e-5.
+	gravity = 6.67430e-11
+	// secondsPerDay is exact.
+	secondsPerDay = 86400
+	// maxEccentricity is the largest eccentricity for which Kepler's equation
+	// is tested to be solved to rounding.
+	maxEccentricity = 0.999
+)
 
-// An Orbit is a Keplerian orbit. Angles are in radians.
+// Orbit is a Keplerian orbit around a star. The zero value is not valid.
 type Orbit struct {
-	Period       float64 // d, above 0
-	MidTransit   float64 // time of inferior conjunction, in the days of the times asked for (BJD_TDB)
-	AxisRatio    float64 // semi-major axis in stellar radii, 1 or more
-	Inclination  float64 // rad, 0 to pi; pi/2 is edge-on
-	Eccentricity float64 // 0 to MaxEccentricity
-	Periastron   float64 // argument of periastron of the star's orbit, rad; without effect on a circular orbit
+	Period       float64 // days, > 0
+	MidTransit   float64 // time of inferior conjunction, days, on the scale of the observation times
+	AxisRatio    float64 // semi-major axis over stellar radius, > 1
+	Inclination  float64 // radians, 0 to π; π/2 is seen edge-on
+	Eccentricity float64 // 0 to 0.999; AxisRatio (1 - Eccentricity) > 1
+	Periastron   float64 // argument of periastron of the planet's path, radians; of no effect on a circular orbit
 }
 
-// Validate checks that every field of the orbit is in its range.
+// Validate returns nil for an orbit that the rest of this package can handle,
+// or an error naming the first field that is wrong and its valid range.
 func (o Orbit) Validate() error {
-	finite := func(x float64) bool { return math.Abs(x) <= math.MaxFloat64 }
+	finite := func(x float64) bool { return !math.IsNaN(x) && !math.IsInf(x, 0) }
 	switch {
-	case !(o.Period > 0 && finite(o.Period)):
-		return fmt.Errorf("orbit: period is %g d; expected a number above 0", o.Period)
+	case !finite(o.Period) || o.Period <= 0:
+		return fmt.Errorf("orbit: Period is %g days, must be finite and above 0", o.Period)
 	case !finite(o.MidTransit):
-		return fmt.Errorf("orbit: mid-transit time is %g; expected a number of days", o.MidTransit)
-	case !(o.AxisRatio >= 1 && finite(o.AxisRatio)):
-		return fmt.Errorf("orbit: semi-major axis is %g stellar radii; expected 1 or more", o.AxisRatio)
+		return fmt.Errorf("orbit: MidTransit is %g, must be a finite time in days", o.MidTransit)
+	case !finite(o.AxisRatio) || o.AxisRatio <= 1:
+		return fmt.Errorf("orbit: AxisRatio is %g stellar radii, must be finite and above 1", o.AxisRatio)
 	case !(o.Inclination >= 0 && o.Inclination <= math.Pi):
-		return fmt.Errorf("orbit: inclination is %g rad; expected 0 to pi (90 deg is %.6g rad)", o.Inclination, math.Pi/2)
-	case !(o.Eccentricity >= 0 && o.Eccentricity <= MaxEccentricity):
-		return fmt.Errorf("orbit: eccentricity is %g; expected 0 to %g", o.Eccentricity, MaxEccentricity)
+		return fmt.Errorf("orbit: Inclination is %g, must be 0 to π radians", o.Inclination)
+	case !(o.Eccentricity >= 0 && o.Eccentricity <= maxEccentricity):
+		return fmt.Errorf("orbit: Eccentricity is %g, must be 0 to %g", o.Eccentricity, maxEccentricity)
 	case !finite(o.Periastron):
-		return fmt.Errorf("orbit: argument of periastron is %g rad; expected a number", o.Periastron)
+		return fmt.Errorf("orbit: Periastron is %g, must be a finite angle in radians", o.Periastron)
+	case o.AxisRatio*(1-o.Eccentricity) <= 1:
+		return fmt.Errorf("orbit: the planet meets the star at periastron: AxisRatio (1 - Eccentricity) is %g, must be above 1; lower Eccentricity or raise AxisRatio",
+			o.AxisRatio*(1-o.Eccentricity))
 	}
 	return nil
 }
 
-// Separation returns the distance of planet and star on the sky at time t, in
-// stellar radii, and whether the planet is in front of the star's plane. It is
-// NaN for an orbit that [Orbit.Validate] refuses.
+// Separation returns the separation z at time t, in stellar radii, and whether
+// the planet is in front of the star's centre (Z > 0). For many times, prepare
+// a [Path] once. The orbit must be valid.
 func (o Orbit) Separation(t float64) (z float64, front bool) {
-	k := o.Track()
-	return k.Separation(t)
+	p := o.Path()
+	since, _ := p.Fold(t)
+	return p.Separation(since)
 }
 
-// SeparationGradient also returns the derivatives of the separation in Period,
-// MidTransit, AxisRatio, Inclination, Eccentricity and Periastron, per day and
-// radian where the argument has that unit. Where the separation is zero it has
-// a kink, and the derivatives are zero.
+// SeparationGradient returns what [Orbit.Separation] does, and the derivatives
+// of z with respect to (Period, MidTransit, AxisRatio, Inclination,
+// Eccentricity, Periastron). z has a corner at z = 0; there all derivatives
+// are given as 0, which is right for functions of z².
 func (o Orbit) SeparationGradient(t float64) (z float64, front bool, grad [6]float64) {
-	k := o.Track()
-	return k.SeparationGradient(t)
+	p := o.Path()
+	since, elapsed := p.Fold(t)
+	return p.SeparationGradient(since, elapsed)
 }
 
-// ImpactParameter is the separation at mid-transit,
-//
-//	b = a/R |cos i| (1-e^2)/(1+e sin w)
-//
-// (Winn 2010, Exoplanets, ed. Seager, eq. 7; the equation's number is from
-// memory). It is NaN for an orbit that [Orbit.Validate] refuses.
+// ImpactParameter returns the separation at inferior conjunction, in stellar
+// radii: a cos i (1-e²)/(1 + e sin ω) (Winn 2010, eq. 7).
 func (o Orbit) ImpactParameter() float64 {
-	if o.Validate() != nil {
-		return math.NaN()
-	}
 	e := o.Eccentricity
-	return o.AxisRatio * math.Abs(math.Cos(o.Inclination)) * (1 - e) * (1 + e) / (1 + e*math.Sin(o.Periastron))
+	return math.Abs(o.AxisRatio * math.Cos(o.Inclination) * (1 - e) * (1 + e) / (1 + e*math.Sin(o.Periastron)))
 }
 
-const (
-	// gravitational is the constant of gravitation, 6.67430(15)e-11 m3 kg-1 s-2
-	// (CODATA 2018; the same in CODATA 2022).
-	gravitational = 6.67430e-11
-	secondsPerDay = 86400
-)
-
-// StellarDensity is the mean density of the star in kg m-3 that follows from
-// Kepler's third law for a planet of negligible mass, given the period in days
-// and the semi-major axis in stellar radii:
-//
-//	rho = 3 pi (a/R)^3 / (G P^2)
-//
-// (Seager & Mallen-Ornelas 2003, ApJ 585, 1038). The constant of gravitation
-// limits it to a relative accuracy of 2e-5.
+// StellarDensity returns the mean density of the star, kg m-3, from the orbital
+// period in days and the ratio of semi-major axis to stellar radius, both
+// above 0, for a planet of negligible mass: 3π a³/(G P²), a in stellar radii
+// (Seager & Mallén-Ornelas 2003, ApJ 585, 1038).
 func StellarDensity(period, axisRatio float64) float64 {
-	p := period * secondsPerDay
-	return 3 * math.Pi * axisRatio * axisRatio * axisRatio / (gravitational * p * p)
+	seconds := period * secondsPerDay
+	return 3 * math.Pi / (gravity * seconds * seconds) * axisRatio * axisRatio * axisRatio
 }
