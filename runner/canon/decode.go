@@ -2,6 +2,7 @@ package canon
 
 import (
 	"bytes"
+	"fmt"
 	"reflect"
 	"strconv"
 )
@@ -11,6 +12,10 @@ import (
 // other kinds of value, unknown, missing or repeated fields, numbers out of
 // range or not in their shortest form, unsorted keys, and bytes after the end.
 // The error, an [*Error], says where, and leaves the value as it was.
+//
+// The memory taken is that of an empty value and a multiple of len(data),
+// whatever lengths the bytes announce: at most 25 bytes for each byte, 150 in
+// values with many small maps.
 func Unmarshal(data []byte, v any) error {
 	p := reflect.ValueOf(v)
 	if p.Kind() != reflect.Pointer || p.IsNil() {
@@ -234,7 +239,8 @@ func (p *plan) strange(r *reader, i int) error {
 	return errorf("there is no field %.60q", name)
 }
 
-// keyStep is the step of a path to the value of a key.
+// keyStep is the step of a path to the value of a key, of which it shows the
+// beginning.
 func keyStep(key reflect.Value) string {
 	switch {
 	case key.CanInt():
@@ -242,5 +248,5 @@ func keyStep(key reflect.Value) string {
 	case key.CanUint():
 		return "[" + strconv.FormatUint(key.Uint(), 10) + "]"
 	}
-	return "[" + strconv.Quote(key.String()) + "]"
+	return fmt.Sprintf("[%.60q]", key.String())
 }

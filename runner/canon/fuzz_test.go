@@ -75,7 +75,16 @@ func FuzzTree(f *testing.F) {
 				t.Errorf("split and joined %x to %x (%v)", data, joined, err)
 			}
 		}
-		if typ, layout, value, err := Open(data); err == nil && !bytes.Equal(Seal(typ, layout, value), data) {
+	})
+}
+
+func FuzzOpen(f *testing.F) {
+	f.Add(Seal("int", "int", []byte{1}))
+	f.Add(Seal("", "struct{Größe float64}", nil))
+	f.Add(Seal("lightcurve.Channel", "struct{Index int}", bytes.Repeat([]byte{0xd9}, 300)))
+	f.Fuzz(func(t *testing.T, data []byte) {
+		typ, layout, value, err := Open(data)
+		if err == nil && !bytes.Equal(Seal(typ, layout, value), data) {
 			t.Errorf("opened and sealed %x otherwise", data)
 		}
 	})

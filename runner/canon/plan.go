@@ -93,15 +93,27 @@ func Layout(t reflect.Type) (string, error) {
 // maxArray is the largest fixed array, in bytes, so that no size overflows.
 const maxArray = 1 << 32
 
+// maxLayout is the length of the longest layout. Each type that holds another
+// one twice doubles it, so that a few lines of source could ask for any length.
+const maxLayout = 1 << 16
+
 // A compiler makes a plan; open holds the types that it is inside of.
 type compiler struct {
 	open []reflect.Type
 }
 
 func (c *compiler) compile(t reflect.Type) (*plan, error) {
+	p, err := c.compileType(t)
+	if err == nil && len(p.layout) > maxLayout {
+		err = errorf("%.100v has more parts than can be encoded; its layout takes %d bytes, expected at most %d", t, len(p.layout), maxLayout)
+	}
+	return p, err
+}
+
+func (c *compiler) compileType(t reflect.Type) (*plan, error) {
 	for _, outer := range c.open {
 		if outer == t {
-			return nil, errorf("%v contains itself; recursive types cannot be encoded", t)
+			return nil, errorf("%.100v contains itself; recursive types cannot be encoded", t)
 		}
 	}
 	if len(c.open) >= maxDepth {
@@ -129,7 +141,7 @@ func (c *compiler) compile(t reflect.Type) (*plan, error) {
 	case reflect.Struct:
 		return p, c.record(p, t)
 	default:
-		return nil, errorf("a value of type %v cannot be encoded; expected numbers, text, truth values, and slices, maps and structs of them", t)
+		return nil, errorf("a value of type %.100v cannot be encoded; expected numbers, text, truth values, and slices, maps and structs of them", t)
 	}
 	return p, nil
 }
@@ -145,7 +157,7 @@ func (c *compiler) sequence(p *plan, t reflect.Type) error {
 		return within("[]", err)
 	}
 	if t.Elem().Size() == 0 {
-		return within("[]", errorf("a value of type %v has no content; slices and arrays of such values cannot be encoded", t.Elem()))
+		return within("[]", errorf("a value of type %.100v has no content; slices and arrays of such values cannot be encoded", t.Elem()))
 	}
 	if p.length >= 0 && t.Size() > maxArray {
 		return errorf("an array of %d bytes cannot be encoded; use a slice", t.Size())

@@ -141,3 +141,20 @@ func TestRefusedTypes(t *testing.T) {
 		t.Errorf("text that is not UTF-8: %v", err)
 	}
 }
+
+// TestHugeLayout checks that types whose layouts double with every line of
+// source are refused, and soon.
+func TestHugeLayout(t *testing.T) {
+	start := time.Now()
+	_, err := Layout(reflect.TypeFor[twice8[twice8[twice8[float64]]]]())
+	if err == nil || !strings.Contains(err.Error(), "has more parts than can be encoded") {
+		t.Errorf("%.200v", err)
+	}
+	if d := time.Since(start); d > 2*time.Second {
+		t.Errorf("it took %v to say so", d)
+	}
+}
+
+type twice[T any] struct{ A, B []T }
+type twice4[T any] struct{ A twice[twice[twice[twice[T]]]] }
+type twice8[T any] struct{ A twice4[twice4[T]] }
