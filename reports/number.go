@@ -129,6 +129,22 @@ func percent(part, whole int) string {
 // exact writes a number so that it reads back the same; for files.
 func exact(v float64) string { return strconv.FormatFloat(v, 'g', -1, 64) }
 
+// precise gives a number in full when that takes at most 15 digits, as a
+// Julian date does, and to 8 digits otherwise.
+func precise(v float64) string {
+	if s := strconv.FormatFloat(v, 'f', -1, 64); len(s) <= 16 {
+		return minus(s)
+	}
+	return number(v, 8)
+}
+
+func counted(n int, one, many string) string {
+	if n == 1 {
+		return "1 " + one
+	}
+	return grouped(n) + " " + many
+}
+
 // median of a slice, NaN when it is empty. It sorts its argument's copy.
 func median(values []float64) float64 {
 	s := sorted(values)

@@ -205,7 +205,7 @@ func generic(value any) []block {
 func scalar(v reflect.Value) string {
 	switch v.Kind() {
 	case reflect.Float32, reflect.Float64:
-		return number(v.Float(), 8)
+		return precise(v.Float())
 	case reflect.String:
 		return sentence(v.String())
 	case reflect.Bool:
@@ -216,7 +216,7 @@ func scalar(v reflect.Value) string {
 		return fmt.Sprint(v.Uint())
 	case reflect.Complex64, reflect.Complex128:
 		c := v.Complex()
-		return number(real(c), 8) + " + " + number(imag(c), 8) + " i"
+		return precise(real(c)) + " + " + precise(imag(c)) + " i"
 	case reflect.Invalid:
 		return "nothing"
 	}
@@ -305,10 +305,13 @@ func (w *treeWriter) node(called string, v reflect.Value, depth int) node {
 }
 
 func (w *treeWriter) head(v reflect.Value) string {
-	if v.Kind() == reflect.Struct {
+	switch {
+	case v.Kind() == reflect.Struct:
 		return shortType(v.Type().String())
+	case v.Kind() == reflect.Map:
+		return counted(v.Len(), "entry", "entries")
 	}
-	return fmt.Sprintf("%s, %d long", shortType(v.Type().String()), v.Len())
+	return counted(v.Len(), "element", "elements")
 }
 
 func (w *treeWriter) kids(v reflect.Value, depth int) []node {

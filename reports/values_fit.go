@@ -99,12 +99,12 @@ func (b *builder) priorOf(parameter string) string {
 
 // priorText writes a prior in the notation of recipes.
 func priorText(p fit.Prior) string {
-	a, c := number(p.A, 10), number(p.B, 10)
+	a, c := precise(p.A), precise(p.B)
 	switch p.Kind {
 	case fit.Fixed:
 		return "= " + a
 	case fit.TruncatedNormal:
-		return fmt.Sprintf("TN(%s, %s, %s, %s)", a, c, number(p.Lo, 10), number(p.Hi, 10))
+		return fmt.Sprintf("TN(%s, %s, %s, %s)", a, c, precise(p.Lo), precise(p.Hi))
 	}
 	return fmt.Sprintf("%s(%s, %s)", label(p.Kind), a, c)
 }
