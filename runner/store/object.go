@@ -115,25 +115,15 @@ func (s *Store) intact(h Hash) bool {
 func (s *Store) Get(h Hash) ([]byte, error) {
 	path := s.objectPath(h)
 	data, flaw, err := s.readObject(h)
-	if errors.Is(err, fs.ErrNotExist) {
-		return nil, fmt.Errorf("the kept result %s is missing from %s: %w", h.Short(), s.dir, fs.ErrNotExist)
+	if err != nil || flaw == "" {
+		return data, err
 	}
-	if err != nil {
-		return nil, fmt.Errorf("a kept result cannot be read: %w", err)
-	}
-	if flaw == "" {
-		return data, nil
-	}
-	aside := s.setAside(path)
-	if aside == "" {
-		return nil, &DamagedError{h, path, "", flaw}
-	}
-	// Another process may have replaced the object before it was moved.
-	if data, err := s.files.read(aside); err == nil && HashOf(data) == h {
-		if err := s.files.rename(aside, path); err != nil {
-			return nil, s.explain(err)
+	aside, err := s.setAside(path, func(data []byte) bool { return HashOf(data) == h })
+	if err == nil && aside == "" || errors.Is(err, fs.ErrNotExist) { // another process was quicker
+		data, again, err := s.readObject(h)
+		if err != nil || again == "" {
+			return data, err
 		}
-		return data, nil
 	}
 	return nil, &DamagedError{h, path, aside, flaw}
 }
@@ -146,10 +136,12 @@ func (s *Store) readObject(h Hash) (data []byte, flaw string, err error) {
 		data, err = s.files.read(s.objectPath(h))
 	}
 	switch {
+	case errors.Is(err, fs.ErrNotExist):
+		return nil, "", fmt.Errorf("the kept result %s is missing from %s: %w", h.Short(), s.dir, fs.ErrNotExist)
 	case errors.Is(err, syscall.EIO) || errors.Is(err, syscall.EISDIR):
 		return nil, err.Error(), nil
 	case err != nil:
-		return nil, "", err
+		return nil, "", fmt.Errorf("the kept result %s cannot be read: %w", h.Short(), err)
 	case HashOf(data) != h:
 		return nil, fmt.Sprintf("its %d bytes have the SHA-256 %s", len(data), HashOf(data)), nil
 	}
@@ -162,24 +154,26 @@ func (s *Store) Has(h Hash) bool {
 	return err == nil
 }
 
-// setAside moves a file to damaged/ and gives its path there, empty when it
-// could not be moved. It is not deleted, since it may tell what went wrong.
-func (s *Store) setAside(path string) string {
+// setAside moves a flawed file to damaged/ and gives its path there. It is not
+// deleted, since it may tell what went wrong. If the file turns out to be good
+// because another process has replaced it meanwhile, it is moved back, and the
+// path is empty.
+func (s *Store) setAside(path string, good func(data []byte) bool) (string, error) {
 	dir := filepath.Join(s.dir, "damaged")
-	if os.MkdirAll(dir, 0o777) != nil {
-		return ""
+	if err := os.MkdirAll(dir, 0o777); err != nil {
+		return "", err
 	}
 	for n := 1; ; n++ {
 		to := filepath.Join(dir, filepath.Base(path)+"-"+strconv.Itoa(n))
-		if _, err := os.Lstat(to); !errors.Is(err, fs.ErrNotExist) {
-			if err != nil {
-				return ""
-			}
+		if _, err := os.Lstat(to); err == nil {
 			continue
 		}
-		if s.files.rename(path, to) != nil {
-			return ""
+		if err := s.files.rename(path, to); err != nil {
+			return "", err
 		}
-		return to
+		if data, err := s.files.read(to); err == nil && good(data) {
+			return "", s.files.rename(to, path)
+		}
+		return to, nil
 	}
 }

@@ -4,7 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
-	"os"
 	"strings"
 	"time"
 )
@@ -76,15 +75,20 @@ func (s *Store) Record(k Key) (Record, bool, error) {
 	}
 	var r Record
 	if err == nil {
-		r, err = decodeRecord(data)
-	}
-	if err == nil && r.Key != k {
-		err = fmt.Errorf("it is the record of another computation, %s", r.Key.Short())
+		r, err = decodeRecord(k, data)
 	}
 	if err != nil {
 		return Record{}, false, &BadRecordError{path, err}
 	}
 	return r, true, nil
+}
+
+// isRecord tells whether bytes are a record of the key without a flaw.
+func isRecord(k Key) func(data []byte) bool {
+	return func(data []byte) bool {
+		_, err := decodeRecord(k, data)
+		return err == nil
+	}
 }
 
 // SetRecord keeps a record, of results that must have been put before. The
@@ -111,8 +115,8 @@ func (s *Store) SetRecord(r Record) error {
 		first, ok, flaw := s.Record(r.Key)
 		switch {
 		case flaw != nil:
-			if s.setAside(s.recordPath(r.Key)) == "" {
-				return s.explain(fmt.Errorf("%w; it could not be set aside", flaw))
+			if _, err := s.setAside(s.recordPath(r.Key), isRecord(r.Key)); err != nil && !errors.Is(err, fs.ErrNotExist) {
+				return s.explain(err)
 			}
 			continue
 		case !ok:

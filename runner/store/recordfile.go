@@ -65,9 +65,9 @@ func withSum(body []byte) []byte {
 	return append(fmt.Appendf(nil, "%s%s\n", recordMark, hex.EncodeToString(sum[:])), body...)
 }
 
-// decodeRecord reads the file of a record. It accepts only what encodeRecord
-// writes.
-func decodeRecord(data []byte) (Record, error) {
+// decodeRecord reads the file of the record of a key. It accepts only what
+// encodeRecord writes.
+func decodeRecord(k Key, data []byte) (Record, error) {
 	line, body, _ := bytes.Cut(data, []byte("\n"))
 	if !bytes.HasPrefix(line, []byte(recordMark)) {
 		return Record{}, fmt.Errorf("it begins with %.40q, expected %q", line, recordMark)
@@ -93,6 +93,9 @@ func decodeRecord(data []byte) (Record, error) {
 	r.When = r.When.UTC()
 	if KeyOf(r.Text) != r.Key {
 		return Record{}, errors.New("its key is not that of its text")
+	}
+	if r.Key != k {
+		return Record{}, fmt.Errorf("it is the record of another computation, %s", r.Key.Short())
 	}
 	if again, err := encodeRecord(r); err != nil || !bytes.Equal(again, data) {
 		return Record{}, errors.New("it is not written as records are")

@@ -84,7 +84,7 @@ func (s *Store) verifyObject(path string) (hint, err error) {
 	_, flaw, err := s.readObject(h)
 	switch {
 	case err != nil:
-		return nil, fmt.Errorf("the kept result %s cannot be read: %w", h.Short(), err)
+		return nil, err
 	case flaw != "":
 		return nil, &DamagedError{Hash: h, Path: path, Reason: flaw}
 	}
@@ -100,10 +100,7 @@ func (s *Store) verifyRecord(path string) (hints, errs []error) {
 	data, err := s.files.read(path)
 	var r Record
 	if err == nil {
-		r, err = decodeRecord(data)
-	}
-	if err == nil && r.Key != k {
-		err = fmt.Errorf("it is the record of another computation, %s", r.Key.Short())
+		r, err = decodeRecord(k, data)
 	}
 	if err != nil {
 		return nil, []error{&BadRecordError{path, err}}

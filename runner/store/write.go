@@ -124,22 +124,15 @@ func (s *Store) folder(dir string) error {
 		return s.explain(err)
 	}
 	s.mu.Lock()
-	done := s.durable[dir]
-	s.mu.Unlock()
-	if done {
-		return nil
-	}
-	for d := dir; ; d = filepath.Dir(d) {
+	defer s.mu.Unlock()
+	for d := dir; len(d) >= len(s.dir) && !s.durable[d]; d = filepath.Dir(d) {
 		if err := s.syncFolder(filepath.Dir(d)); err != nil {
 			return err
 		}
-		if len(d) <= len(s.dir) {
-			break
-		}
 	}
-	s.mu.Lock()
-	s.durable[dir] = true
-	s.mu.Unlock()
+	for d := dir; len(d) >= len(s.dir); d = filepath.Dir(d) {
+		s.durable[d] = true
+	}
 	return nil
 }
 
