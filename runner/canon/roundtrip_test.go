@@ -8,6 +8,8 @@ import (
 	"testing"
 	"testing/quick"
 
+	"rimlight/steps/figure"
+	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
 	"rimlight/steps/table"
@@ -80,7 +82,7 @@ func equal(a, b reflect.Value) bool {
 
 func TestRoundTrip(t *testing.T) {
 	rng := rand.New(rand.NewSource(1))
-	for _, sample := range []any{wide{}, lightcurve.Cube{}, spectrum.Spectrum{}, []table.Column{}, map[int64][]string{}, [2][2]float64{}} {
+	for _, sample := range []any{wide{}, lightcurve.Cube{}, fit.Posterior{}, fit.CurveFit{}, spectrum.Spectrum{}, figure.Figure{}, []table.Column{}, map[int64][]string{}, [2][2]float64{}} {
 		typ := reflect.TypeOf(sample)
 		for range 40 {
 			v := reflect.New(typ).Elem()
