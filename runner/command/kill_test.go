@@ -62,7 +62,7 @@ func TestKilledRuns(t *testing.T) {
 // TestInterrupt holds that an interrupted run says so, keeps what finished, and
 // is taken up where it stopped.
 func TestInterrupt(t *testing.T) {
-	b := newBench(t, strings.ReplaceAll(slow, "60000", "600000"))
+	b := newBench(t, strings.ReplaceAll(slow, "60000", "3000000"))
 	c := rimlight(t, "run", filepath.Join(b.dir, "r.md"), "--jobs", "1")
 	var errs bytes.Buffer
 	c.Stderr = &errs

@@ -62,14 +62,17 @@ func putSealed(s *store.Store, sealed []byte) (Value, error) {
 	if err != nil {
 		return Value{}, err
 	}
-	parts := make([]part, len(items))
+	objects := make([][]byte, len(items))
 	for i, item := range items {
-		b := canon.Seal(strings.TrimPrefix(typ, "[]"), elem, item)
-		h, err := s.Put(b)
-		if err != nil {
-			return Value{}, err
-		}
-		parts[i] = part{h, int64(len(b))}
+		objects[i] = canon.Seal(strings.TrimPrefix(typ, "[]"), elem, item)
+	}
+	hashes, err := s.PutBatch(objects)
+	if err != nil {
+		return Value{}, err
+	}
+	parts := make([]part, len(items))
+	for i, b := range objects {
+		parts[i] = part{hashes[i], int64(len(b))}
 	}
 	return putList(s, typ, layout, parts)
 }
@@ -183,10 +186,24 @@ func elements(s *store.Store, v Value) ([]Value, error) {
 		return nil, err
 	}
 	out := make([]Value, len(items))
-	for i, item := range items {
-		if out[i], err = putSealed(s, canon.Seal(typ, elem, item)); err != nil {
-			return nil, err
+	if isList(elem) {
+		for i, item := range items {
+			if out[i], err = putSealed(s, canon.Seal(typ, elem, item)); err != nil {
+				return nil, err
+			}
 		}
+		return out, nil
+	}
+	objects := make([][]byte, len(items))
+	for i, item := range items {
+		objects[i] = canon.Seal(typ, elem, item)
+	}
+	hashes, err := s.PutBatch(objects)
+	if err != nil {
+		return nil, err
+	}
+	for i, b := range objects {
+		out[i] = Value{Type: typ, Layout: elem, Hash: hashes[i], Size: int64(len(b))}
 	}
 	return out, nil
 }
