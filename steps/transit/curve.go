@@ -131,8 +131,9 @@ func (c *curve) flux(since float64) float64 {
 	if !front || z >= 1+c.radius {
 		return 1
 	}
-	d, _, _ := cover(c.radius, z, false)
-	return 1 - c.law.weigh(d)
+	var d deficits
+	d.cover(c.radius, z, false)
+	return 1 - c.law.weigh(&d.value)
 }
 
 // gradient returns the flux at a time since mid-transit and stores its

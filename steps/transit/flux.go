@@ -18,8 +18,10 @@ const (
 )
 
 // deficits are the integrals of 1, μ and μ² = 1-ρ² over the covered part of the
-// stellar disc, divided by π.
-type deficits [3]float64
+// stellar disc, divided by π, and their derivatives by r and z.
+type deficits struct {
+	value, byR, byZ [3]float64
+}
 
 // Quadratic returns the relative flux of a star with limb-darkening
 // coefficients u1 and u2 behind a planet of radius ratio r at separation z. It
@@ -31,7 +33,7 @@ type deficits [3]float64
 // coefficients with which the star has no light to lose: 1 - u1/3 - u2/6 = 0,
 // or coefficients above 1e100.
 func Quadratic(r, z, u1, u2 float64) float64 {
-	if z >= 1+r && r >= 0 {
+	if z-r >= 1 && r >= 0 {
 		return 1
 	}
 	if !(r >= 0 && z >= 0) || math.IsInf(r, 1) {
@@ -41,8 +43,9 @@ func Quadratic(r, z, u1, u2 float64) float64 {
 	if !l.valid {
 		return 1
 	}
-	d, _, _ := cover(r, z, false)
-	return 1 - l.weigh(d)
+	var d deficits
+	d.cover(r, z, false)
+	return 1 - l.weigh(&d.value)
 }
 
 // QuadraticGradient returns the flux of [Quadratic] and its derivatives with
@@ -50,7 +53,7 @@ func Quadratic(r, z, u1, u2 float64) float64 {
 // continuous, except at r = 1, z = 0, where 0 is returned; they are 0 with
 // respect to z at z = 0. Where the flux is NaN, so are the derivatives.
 func QuadraticGradient(r, z, u1, u2 float64) (flux, dr, dz, du1, du2 float64) {
-	if z >= 1+r && r >= 0 {
+	if z-r >= 1 && r >= 0 {
 		return 1, 0, 0, 0, 0
 	}
 	if !(r >= 0 && z >= 0) || math.IsInf(r, 1) {
@@ -82,23 +85,25 @@ func newLaw(u1, u2 float64) law {
 }
 
 // weigh returns the deficit of flux.
-func (l *law) weigh(d deficits) float64 {
+func (l *law) weigh(d *[3]float64) float64 {
 	return l.weights[0]*d[0] + l.weights[1]*d[1] + l.weights[2]*d[2]
 }
 
 // gradient is [QuadraticGradient] for valid coefficients and 0 ≤ r, 0 ≤ z.
 func (l *law) gradient(r, z float64) (flux, dr, dz, du1, du2 float64) {
-	d, byR, byZ := cover(r, z, true)
+	var all deficits
+	all.cover(r, z, true)
+	d := &all.value
 	deficit := l.weigh(d)
 	// deficit = Σ c_n D_n / total, with d(total) = -du1/3 - du2/6.
 	du1 = l.inverse * (d[0] - d[1] - deficit/3)
 	du2 = l.inverse * (d[0] - 2*d[1] + d[2] - deficit/6)
-	return 1 - deficit, -l.weigh(byR), -l.weigh(byZ), du1, du2
+	return 1 - deficit, -l.weigh(&all.byR), -l.weigh(&all.byZ), du1, du2
 }
 
-// cover returns the deficits for r ≥ 0 and z ≥ 0, and, if asked, their
-// derivatives by r and z.
-func cover(r, z float64, derivatives bool) (d, byR, byZ deficits) {
+// cover sets d to the deficits for r ≥ 0 and z ≥ 0, and, if asked, their
+// derivatives. d must be zero before.
+func (d *deficits) cover(r, z float64, derivatives bool) {
 	if r > largestRadius {
 		z, r = math.Max(z-r+largestRadius, 0), largestRadius
 	}
@@ -120,14 +125,14 @@ func cover(r, z float64, derivatives bool) (d, byR, byZ deficits) {
 		beyond = (z - 1) + r
 	}
 	switch {
-	case outer <= 0 || r < smallest:
-		return d, byR, byZ
+	case outer <= 0 || r < smallest: // nothing is covered
 	case inner <= 0:
-		return deficits{1, 2. / 3, 0.5}, byR, byZ
+		d.value = [3]float64{1, 2. / 3, 0.5}
 	case beyond <= 0:
-		return coverInside(r, z, outer*inner, -beyond, derivatives)
+		d.inside(r, z, outer*inner, -beyond, derivatives)
+	default:
+		d.limb(r, z, outer*inner, beyond, derivatives)
 	}
-	return coverLimb(r, z, outer*inner, beyond, derivatives)
 }
 
 // offset returns z - r, kept away from 0, where the integral of the third kind
@@ -139,12 +144,12 @@ func offset(r, z float64) float64 {
 	return smallest * (z + r)
 }
 
-// coverInside is cover for a planet whose disc lies within the star's:
+// inside is cover for a planet whose disc lies within the star's:
 // w = 1-(z-r)² > 0 and gap = 1-z-r ≥ 0.
-func coverInside(r, z, w, gap float64, derivatives bool) (d, byR, byZ deficits) {
+func (d *deficits) inside(r, z, w, gap float64, derivatives bool) {
 	r2, z2 := r*r, z*z
-	d[0] = r2
-	d[2] = r2 * (1 - 0.5*r2 - z2)
+	d.value[0] = r2
+	d.value[2] = r2 * (1 - 0.5*r2 - z2)
 
 	diff, sum := offset(r, z), z+r
 	ratio := diff / sum
@@ -158,22 +163,21 @@ func coverInside(r, z, w, gap float64, derivatives bool) (d, byR, byZ deficits) 
 	third, cosine, sine := elliptic(math.Sqrt(kc2), p, 1+mu, p+mu)
 	second := cosine + kc2*sine // E
 	root := math.Sqrt(w)
-	d[1] = 2 * root * (opr*third - (4-7*r2-z2)*second) / (9 * math.Pi)
+	d.value[1] = 2 * root * (opr*third - (4-7*r2-z2)*second) / (9 * math.Pi)
 	if diff < 0 {
-		d[1] += 2. / 3
+		d.value[1] += 2. / 3
 	}
 	if derivatives {
-		byR = deficits{2 * r, 4 * r / math.Pi * root * second, 2 * r * (1 - z2 - r2)}
+		d.byR = [3]float64{2 * r, 4 * r / math.Pi * root * second, 2 * r * (1 - z2 - r2)}
 		if z > 0 {
-			byZ = deficits{0, -4 * r / (3 * math.Pi) * root * (cosine - kc2*sine), -2 * r2 * z}
+			d.byZ = [3]float64{0, -4 * r / (3 * math.Pi) * root * (cosine - kc2*sine), -2 * r2 * z}
 		}
 	}
-	return d, byR, byZ
 }
 
-// coverLimb is cover for a planet whose edge crosses the star's:
+// limb is cover for a planet whose edge crosses the star's:
 // w = 1-(z-r)² > 0 and beyond = z+r-1 > 0.
-func coverLimb(r, z, w, beyond float64, derivatives bool) (d, byR, byZ deficits) {
+func (d *deficits) limb(r, z, w, beyond float64, derivatives bool) {
 	diff, sum, product := z-r, z+r, z*r
 	excess := beyond * (1 + sum) // (z+r)²-1
 	// The edges cross at angle half from the centre line, seen from the planet,
@@ -203,8 +207,8 @@ func coverLimb(r, z, w, beyond float64, derivatives bool) (d, byR, byZ deficits)
 		q2 = 1.5*half - 2*sinHalf + sinHalf*cosHalf/(4*product)
 	}
 	quarter := 0.5 - 0.25*diff*diff
-	d[0] = (star + r*(z*q1-diff*half)) / math.Pi
-	d[2] = (0.5*star + 2*r*(z*(quarter+0.5*diff*r)*q1-diff*quarter*half-0.5*z*product*q2)) / math.Pi
+	d.value[0] = (star + r*(z*q1-diff*half)) / math.Pi
+	d.value[2] = (0.5*star + 2*r*(z*(quarter+0.5*diff*r)*q1-diff*quarter*half-0.5*z*product*q2)) / math.Pi
 
 	diff = offset(r, z)
 	kc2 := excess / (4 * product)
@@ -216,16 +220,15 @@ func coverLimb(r, z, w, beyond float64, derivatives bool) (d, byR, byZ deficits)
 	third, cosine, sine := elliptic(math.Sqrt(kc2), diff*diff*kc2, 0, 3*kc2*diff*sum)
 	// w/(3√zr) times the integrals; (6r²-3+2zr) cosine - 4zr E, E = cosine + kc² sine.
 	front := w / math.Sqrt(product)
-	d[1] = front * (third + (6*r*r-3-2*product)*cosine - 4*product*kc2*sine) / (9 * math.Pi)
+	d.value[1] = front * (third + (6*r*r-3-2*product)*cosine - 4*product*kc2*sine) / (9 * math.Pi)
 	if diff < 0 {
-		d[1] += 2. / 3
+		d.value[1] += 2. / 3
 	}
 	if derivatives {
 		c := 2 * r / math.Pi
-		byR = deficits{c * half, c * front * cosine, c * (w*half - 2*product*q1)}
-		byZ = deficits{-c * sinHalf, -c / 3 * front * (cosine + 2*kc2*sine), -c * (w*(half-q1) - 2*product*(q1-q2))}
+		d.byR = [3]float64{c * half, c * front * cosine, c * (w*half - 2*product*q1)}
+		d.byZ = [3]float64{-c * sinHalf, -c / 3 * front * (cosine + 2*kc2*sine), -c * (w*(half-q1) - 2*product*(q1-q2))}
 	}
-	return d, byR, byZ
 }
 
 // versedIntegrals returns the integrals from 0 to x < 0.5 of 1 - cos and
