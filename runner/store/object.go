@@ -67,17 +67,18 @@ func (s *Store) PutBatch(data [][]byte) ([]Hash, error) {
 		}
 		staged, missing = append(staged, tmp), append(missing, h)
 	}
+	for _, h := range missing {
+		if err := s.folder(filepath.Dir(s.objectPath(h))); err != nil {
+			return nil, err
+		}
+	}
 	if len(data) > 1 {
 		if err := s.flush(staged); err != nil {
 			return nil, err
 		}
 	}
 	for _, h := range missing {
-		path := s.objectPath(h)
-		if err := s.folder(filepath.Dir(path)); err != nil {
-			return nil, err
-		}
-		if err := s.files.rename(staged[0], path); err != nil {
+		if err := s.files.rename(staged[0], s.objectPath(h)); err != nil {
 			return nil, s.explain(err)
 		}
 		staged = staged[1:]
@@ -87,6 +88,9 @@ func (s *Store) PutBatch(data [][]byte) ([]Hash, error) {
 }
 
 func (s *Store) syncFolders(objects []Hash) error {
+	if len(objects) > manySyncs {
+		syncAll(s.dir)
+	}
 	done := map[byte]bool{}
 	for _, h := range objects {
 		if done[h[0]] {

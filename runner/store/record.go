@@ -42,11 +42,18 @@ type NotReproducibleError struct {
 }
 
 func (e *NotReproducibleError) Error() string {
-	s := fmt.Sprintf("not reproducible: the result %s was %s at first and is %s now; ", e.Name, e.First.Short(), e.Second.Short())
+	s := fmt.Sprintf("not reproducible: the result %s was %s at first and is %s now; ", e.Name, orAbsent(e.First), orAbsent(e.Second))
 	if e.Replaced {
 		return s + "the first one is no longer in the store, its record is " + e.Beside
 	}
 	return s + "the first one stays in force, the record of the second one is " + e.Beside
+}
+
+func orAbsent(h Hash) string {
+	if h == (Hash{}) {
+		return "absent"
+	}
+	return h.Short()
 }
 
 // A BadRecordError says why a record is of no use.

@@ -217,7 +217,7 @@ func TestNotReproducible(t *testing.T) {
 	more := first
 	more.Results = append(more.Results, Result{Name: "extra", Hash: h[0]})
 	var differs *NotReproducibleError
-	if err := s.SetRecord(more); !errors.As(err, &differs) || differs.Name != "extra" || differs.First != (Hash{}) {
+	if err := s.SetRecord(more); !errors.As(err, &differs) || differs.Name != "extra" || differs.First != (Hash{}) || !strings.Contains(err.Error(), "was absent at first") {
 		t.Errorf("more results: %v", err)
 	}
 	if hints, errs, err := s.Verify(nil); len(hints) != 3 || len(errs) != 0 || err != nil {

@@ -52,7 +52,10 @@ func Open(dir string) (*Store, error) {
 	s := &Store{dir: dir, now: time.Now, files: realFiles, durable: map[string]bool{}}
 	mark, err := os.ReadFile(filepath.Join(dir, markFile))
 	if errors.Is(err, fs.ErrNotExist) {
-		return s, s.create()
+		if err := s.create(); err != nil {
+			return nil, err
+		}
+		return s, nil
 	}
 	if err != nil {
 		return nil, fmt.Errorf("the result store %s cannot be opened: %w", dir, err)
@@ -80,10 +83,39 @@ func (s *Store) create() error {
 		return fmt.Errorf("no result store can be made in %s: %w", s.dir, err)
 	}
 	for _, e := range entries {
-		if e.Name() != readmeFile && e.Name() != "tmp" && e.Name() != markFile {
-			return fmt.Errorf("%s is no result store, and not empty (it has %s): choose another folder with --store", s.dir, e.Name())
+		if s.leftByCreate(e) {
+			continue
 		}
+		if mark, err := os.ReadFile(filepath.Join(s.dir, markFile)); err == nil {
+			return checkMark(s.dir, string(mark)) // another process has just made it
+		}
+		return fmt.Errorf("%s is no result store, and not empty (it has %s): choose another folder with --store", s.dir, e.Name())
 	}
+	return s.begin()
+}
+
+// leftByCreate reports whether an entry of the folder can be there because
+// somebody is making a store in it, or was stopped in that.
+func (s *Store) leftByCreate(e fs.DirEntry) bool {
+	path := filepath.Join(s.dir, e.Name())
+	switch e.Name() {
+	case readmeFile:
+		text, err := os.ReadFile(path)
+		return err == nil && string(text) == readme
+	case "tmp":
+		entries, err := os.ReadDir(path)
+		for _, e := range entries {
+			if !strings.HasPrefix(e.Name(), tmpPrefix) {
+				return false
+			}
+		}
+		return err == nil
+	}
+	return false
+}
+
+// begin makes the folder a store.
+func (s *Store) begin() error {
 	if err := os.MkdirAll(filepath.Join(s.dir, "tmp"), 0o777); err != nil {
 		return fmt.Errorf("no result store can be made in %s: %w", s.dir, err)
 	}

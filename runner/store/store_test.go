@@ -52,6 +52,8 @@ func TestOpenRefuses(t *testing.T) {
 		{"later format", markFile, "rimlight result store, format 2\n", "has format 2, but this program knows format 1 only: choose another folder with --store, or use the program that made it"},
 		{"damaged mark", markFile, "rimlight result store, format \x00\n", `should begin with "rimlight result store, format "`},
 		{"empty mark", markFile, "", `should begin with "rimlight result store, format "`},
+		{"someone's README", readmeFile, "my thesis", "is no result store, and not empty (it has README.txt)"},
+		{"someone's file", "tmp", "my thesis", "is no result store, and not empty (it has tmp)"},
 		{"someone's folder", "thesis.tex", "", "is no result store, and not empty (it has thesis.tex): choose another folder"},
 	} {
 		dir := t.TempDir()
@@ -83,8 +85,8 @@ func TestOpenAfterInterruption(t *testing.T) {
 	if err := os.MkdirAll(filepath.Join(dir, "tmp"), 0o777); err != nil {
 		t.Fatal(err)
 	}
-	for _, name := range []string{"tmp/new-1", readmeFile} {
-		if err := os.WriteFile(filepath.Join(dir, name), []byte("half"), 0o644); err != nil {
+	for name, text := range map[string]string{"tmp/new-1": "half", readmeFile: readme} {
+		if err := os.WriteFile(filepath.Join(dir, name), []byte(text), 0o644); err != nil {
 			t.Fatal(err)
 		}
 	}
@@ -93,6 +95,48 @@ func TestOpenAfterInterruption(t *testing.T) {
 		t.Fatal(err)
 	}
 	if _, err := s.Put([]byte("depth")); err != nil {
+		t.Error(err)
+	}
+}
+
+// TestDeleted deletes a store, or a part of it, while it is open.
+func TestDeleted(t *testing.T) {
+	for _, part := range []string{"", "tmp", "objects", "records"} {
+		s := open(t)
+		h := put(t, s, "depth")[0]
+		if err := s.SetRecord(record("key", "depth", h)); err != nil {
+			t.Fatal(err)
+		}
+		if err := os.RemoveAll(filepath.Join(s.dir, part)); err != nil {
+			t.Fatal(err)
+		}
+		if h := put(t, s, "depth")[0]; !s.Has(h) {
+			t.Errorf("%q was deleted: an object could not be put", part)
+		}
+		if err := s.SetRecord(record("key", "depth", h)); err != nil {
+			t.Errorf("%q was deleted: %v", part, err)
+		}
+		again, err := Open(s.dir)
+		if err != nil {
+			t.Errorf("%q was deleted: it cannot be opened again: %v", part, err)
+			continue
+		}
+		if _, ok, err := again.Record(KeyOf("key")); !ok || err != nil {
+			t.Errorf("%q was deleted: %v, %v", part, ok, err)
+		}
+		if hints, errs, err := again.Verify(nil); len(hints)+len(errs) > 0 || err != nil {
+			t.Errorf("%q was deleted: %v, %v, %v", part, hints, errs, err)
+		}
+	}
+}
+
+// TestForeignAppears has another process make the store, and use it, after this
+// one has seen that there is none.
+func TestForeignAppears(t *testing.T) {
+	s := open(t)
+	put(t, s, "depth")
+	late := &Store{dir: s.dir, files: realFiles, durable: map[string]bool{}}
+	if err := late.create(); err != nil {
 		t.Error(err)
 	}
 }

@@ -20,6 +20,9 @@ type files struct {
 
 var realFiles = files{os.ReadFile, (*os.File).Write, (*os.File).Sync, os.Rename, os.Link}
 
+// tmpPrefix begins the names of temporary files.
+const tmpPrefix = "new-"
+
 // write puts a file in place: complete and on disk, or not at all. Move gives
 // the finished file its name.
 func (s *Store) write(path string, data []byte, mode fs.FileMode, move func(from, to string) error) error {
@@ -42,11 +45,12 @@ func (s *Store) write(path string, data []byte, mode fs.FileMode, move func(from
 // be brought to disk.
 func (s *Store) stage(data []byte, mode fs.FileMode, sync bool) (path string, err error) {
 	dir := filepath.Join(s.dir, "tmp")
-	f, err := os.CreateTemp(dir, "new-*")
+	f, err := os.CreateTemp(dir, tmpPrefix+"*")
 	if errors.Is(err, fs.ErrNotExist) { // somebody tidied up
-		if err = os.MkdirAll(dir, 0o777); err == nil {
-			f, err = os.CreateTemp(dir, "new-*")
+		if err := s.restore(); err != nil {
+			return "", err
 		}
+		f, err = os.CreateTemp(dir, tmpPrefix+"*")
 	}
 	if err != nil {
 		return "", s.explain(err)
@@ -60,6 +64,19 @@ func (s *Store) stage(data []byte, mode fs.FileMode, sync bool) (path string, er
 		return "", s.explain(err)
 	}
 	return f.Name(), nil
+}
+
+// restore makes the folder for temporary files again and, if the whole store
+// was deleted while it was open, begins it anew: without its mark, nobody could
+// open it again.
+func (s *Store) restore() error {
+	if err := os.MkdirAll(filepath.Join(s.dir, "tmp"), 0o777); err != nil {
+		return s.explain(err)
+	}
+	if _, err := os.Stat(filepath.Join(s.dir, markFile)); !errors.Is(err, fs.ErrNotExist) {
+		return s.explain(err)
+	}
+	return s.begin()
 }
 
 func (s *Store) fill(f *os.File, data []byte, mode fs.FileMode, sync bool) error {
@@ -82,10 +99,13 @@ func (s *Store) fill(f *os.File, data []byte, mode fs.FileMode, sync bool) error
 	return nil
 }
 
+// manySyncs is how many syncs are dearer than one of the whole file system.
+const manySyncs = 4
+
 // flush brings staged files to disk. Asking the file system for everything at
 // once comes first because that costs little more than one file does.
 func (s *Store) flush(paths []string) error {
-	if len(paths) > 4 {
+	if len(paths) > manySyncs {
 		syncAll(filepath.Join(s.dir, "tmp"))
 	}
 	for _, p := range paths {
@@ -120,11 +140,17 @@ func (s *Store) exclusively(from, to string) error {
 // folder makes sure that a folder is there and will be there after a loss of
 // power.
 func (s *Store) folder(dir string) error {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	for d := dir; len(d) >= len(s.dir); d = filepath.Dir(d) {
+		if _, err := os.Stat(d); err == nil {
+			break
+		}
+		delete(s.durable, d) // it was deleted, if it was ever made
+	}
 	if err := os.MkdirAll(dir, 0o777); err != nil {
 		return s.explain(err)
 	}
-	s.mu.Lock()
-	defer s.mu.Unlock()
 	for d := dir; len(d) >= len(s.dir) && !s.durable[d]; d = filepath.Dir(d) {
 		if err := s.syncFolder(filepath.Dir(d)); err != nil {
 			return err
