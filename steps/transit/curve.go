@@ -39,7 +39,7 @@ func (p Params) Validate() error {
 // Curve returns the relative flux at the given times, days on the scale of
 // Orbit.MidTransit, one value for each; times are the middles of the exposures.
 // The flux is 1 while the planet is behind the star. With an exposure the flux
-// is averaged over it with an error below 1e-8 (see [Params]). It returns an error
+// is averaged over it with an error below 1e-8. It returns an error
 // for invalid parameters or a time that is not finite.
 func Curve(times []float64, p Params) ([]float64, error) {
 	c, err := newCurve(times, p)

@@ -34,11 +34,12 @@ var rules = func() (all [maxNodes + 1]rule) {
 // piece is a stretch of the transit with a contact at one end and no other
 // contact nearer to any of its points. At a contact the flux goes as the
 // distance in time to the power 3/2; as a function of the square root of that
-// distance it is smooth. The nearest other contact limits how smooth.
+// distance it is smooth. The other contacts limit how smooth.
 type piece struct {
 	from, to float64 // days since mid-transit
 	contact  float64 // from or to
-	other    float64 // distance of the nearest other contact, days
+	opposite float64 // distance from contact to the one beyond the piece, days
+	other    float64 // distance from contact to the nearest other, on either side, days
 }
 
 // split divides the transit into pieces at the contacts and half-way between
@@ -64,8 +65,8 @@ func (c *curve) split() {
 		}
 		middle := (a + b) / 2
 		c.pieces = append(c.pieces,
-			piece{a, middle, a, math.Min(b-a, before)},
-			piece{middle, b, b, math.Min(b-a, after)})
+			piece{a, middle, a, b - a, math.Min(b-a, before)},
+			piece{middle, b, b, b - a, math.Min(b-a, after)})
 	}
 	c.from, c.to = k.First, k.Fourth
 }
@@ -108,7 +109,7 @@ func (c *curve) integrate(p *piece, a, b, offset float64, g *[arguments]float64)
 	smooth := near >= regular*length
 	var nearest float64 // singular point, in units of the half-length from the centre
 	if smooth {
-		nearest = math.Min(near+far, 2*p.other-near-far) / length
+		nearest = math.Min(near+far, 2*p.opposite-near-far) / length
 	} else {
 		near, far = math.Sqrt(near), math.Sqrt(far)
 		nearest = (2*math.Sqrt(p.other) - near - far) / (far - near)
