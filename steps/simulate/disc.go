@@ -2,6 +2,9 @@ package simulate
 
 import "math"
 
+// nodes is the number of rings that each part of the disc is cut into.
+const nodes = 48
+
 // A rule is a Gauss-Legendre quadrature on [0, pi]: abscissae and weights.
 type rule struct {
 	cos, sin, weight []float64 // cosine and sine of the abscissae
@@ -41,7 +44,7 @@ func newRule(n int) rule {
 // The star is cut into rings; of the ring of radius s the planet covers the
 // angle 2 acos((s^2+z^2-r^2)/(2 s z)). The substitution s = a + (b-a)(1-cos
 // phi)/2 takes away the square roots at the ends of the range, so that the
-// quadrature converges fast: with 48 points the error is below 1e-9, but for
+// quadrature converges fast: with 48 nodes the error is below 1e-9, but for
 // discs that touch the limb from inside to within 1e-4, where it is below 1e-7.
 func (q rule) blocked(r, z, u1, u2 float64) float64 {
 	if r <= 0 || z >= 1+r {

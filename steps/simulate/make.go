@@ -42,7 +42,7 @@ func Make(s Scenario) (lightcurve.Cube, Truth, error) {
 		dead[k] = true
 	}
 	truth := Truth{Dead: dead}
-	quad, z := newRule(48), s.separations(cube.Time)
+	quad, z := newRule(nodes), s.separations(cube.Time)
 	deaths := 0
 	for k := range m {
 		width := (s.WaveHi - s.WaveLo) / float64(m)
@@ -81,19 +81,34 @@ func (s Scenario) pointing(rng *rand.Rand) []float64 {
 }
 
 // separations gives, for each integration, the separations at the two Gauss
-// points of its exposure; their mean flux is that of the exposure to fourth
-// order in its length.
-func (s Scenario) separations(times []float64) [][2]float64 {
-	out := make([][2]float64, len(times))
-	h := s.Exposure / 86400 / 2 / math.Sqrt(3)
+// points of each part of its exposure. The mean of their fluxes is that of the
+// exposure to fourth order in the length of a part, and to about 1e-7 where a
+// contact falls into it.
+func (s Scenario) separations(times []float64) [][]float64 {
+	parts := s.parts()
+	out := make([][]float64, len(times))
+	length := s.Exposure / 86400 / float64(parts)
+	h := length / 2 / math.Sqrt(3)
 	for i, t := range times {
-		out[i] = [2]float64{s.separation(t - h), s.separation(t + h)}
+		for k := range parts {
+			middle := t + length*(float64(k)-float64(parts-1)/2)
+			out[i] = append(out[i], s.separation(middle-h), s.separation(middle+h))
+		}
 	}
 	return out
 }
 
+// parts is the number of parts that an exposure is cut into: enough for each to
+// be below a fortieth of the time in which the planet moves by its diameter, and
+// not more than 100.
+func (s Scenario) parts() int {
+	speed := 2 * math.Pi * s.AxisRatio / (s.Period * 86400) // stellar radii per second
+	moved := speed * s.Exposure / (2 * math.Sqrt(math.Max(s.Depth, 1e-6)))
+	return int(math.Min(100, 1+math.Floor(40*moved)))
+}
+
 // channel simulates one light curve.
-func (s Scenario) channel(rng *rand.Rand, quad rule, z [][2]float64, x, y []float64, wave, r, u1, u2 float64) (flux, errs []float64) {
+func (s Scenario) channel(rng *rand.Rand, quad rule, z [][]float64, x, y []float64, wave, r, u1, u2 float64) (flux, errs []float64) {
 	n := len(z)
 	flux, errs = make([]float64, n), make([]float64, n)
 	level := s.Electrons * s.throughput(wave)
@@ -103,7 +118,10 @@ func (s Scenario) channel(rng *rand.Rand, quad rule, z [][2]float64, x, y []floa
 	excess := 1 + s.ExcessNoise*rng.Float64()
 	meanX, meanY := x[0], y[0]
 	for i := range flux {
-		dark := (quad.blocked(r, z[i][0], u1, u2) + quad.blocked(r, z[i][1], u1, u2)) / 2
+		dark := 0.0
+		for _, at := range z[i] {
+			dark += quad.blocked(r, at, u1, u2) / float64(len(z[i]))
+		}
 		t := float64(i) * s.Cadence / 86400
 		trend := 1 - settling*math.Exp(-t/s.SettlingTime) + drift*(float64(i)/float64(n)-0.5) + leakX*(x[i]-meanX) + leakY*(y[i]-meanY)
 		expected := level * trend * (1 - dark)

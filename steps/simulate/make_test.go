@@ -115,6 +115,32 @@ func TestNoiseAndDepth(t *testing.T) {
 	}
 }
 
+// TestLongExposures holds the mean over a long exposure against that of many
+// short ones.
+func TestLongExposures(t *testing.T) {
+	s := Continuous(4)
+	s.Integrations, s.Cadence, s.Exposure, s.Start = 12, 900, 900, s.MidTransit-0.08
+	if s.parts() < 5 {
+		t.Errorf("an exposure of %g s is cut into %d parts", s.Exposure, s.parts())
+	}
+	q := newRule(nodes)
+	for i, z := range s.separations([]float64{s.MidTransit - 0.075, s.MidTransit - 0.067, s.MidTransit - 0.055, s.MidTransit}) {
+		at := []float64{-0.075, -0.067, -0.055, 0}[i]
+		got, want := 0.0, 0.0
+		for _, x := range z {
+			got += q.blocked(0.115, x, 0.4, 0.2) / float64(len(z))
+		}
+		const n = 3000
+		for k := range n {
+			x := s.separation(s.MidTransit + at + 900./86400*((float64(k)+0.5)/n-0.5))
+			want += q.blocked(0.115, x, 0.4, 0.2) / n
+		}
+		if math.Abs(got-want) > 3e-7 {
+			t.Errorf("%g d from mid-transit: mean %.10g, expected %.10g", at, got, want)
+		}
+	}
+}
+
 func moments(x []float64) (mean, sd float64) {
 	for _, v := range x {
 		mean += v
