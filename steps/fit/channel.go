@@ -133,8 +133,8 @@ func (s *space) take(white Posterior) error {
 		s.value[p.slot] = s.coordinate(p.slot, value)
 		return nil
 	}
-	if len(white.Names) == 0 || len(white.Value) != len(white.Names) {
-		return fmt.Errorf("the white posterior has %d names and %d values; expected the result of a white fit", len(white.Names), len(white.Value))
+	if n := len(white.Names); n == 0 || len(white.Value) != n || len(white.Err) != n {
+		return fmt.Errorf("the white posterior has %d names, %d values and %d errors; expected the result of a white fit", n, len(white.Value), len(white.Err))
 	}
 	for _, p := range white.Held {
 		if err := set(p.Name, p.A); err != nil {

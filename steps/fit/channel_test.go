@@ -37,7 +37,7 @@ func (s scene) truthTable(off float64) limbtable.Table {
 }
 
 func TestChannelPolicies(t *testing.T) {
-	s := simulate(t, 21, 800, 4)
+	s := newScene(t, 21, 800, 4)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[0]
 	setup := s.setup()
@@ -72,7 +72,7 @@ func TestChannelPolicies(t *testing.T) {
 }
 
 func TestChannelLaws(t *testing.T) {
-	s := simulate(t, 22, 500, 2)
+	s := newScene(t, 22, 500, 2)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[1]
 	setup := s.setup()
@@ -110,7 +110,7 @@ func TestChannelLaws(t *testing.T) {
 }
 
 func TestChannelUnmeasured(t *testing.T) {
-	s := simulate(t, 23, 400, 2)
+	s := newScene(t, 23, 400, 2)
 	white := whiteOf(t, s)
 	only := func(keep func(phase float64) bool) func(c *lightcurve.Curve) {
 		return func(c *lightcurve.Curve) {
@@ -156,7 +156,7 @@ func TestChannelUnmeasured(t *testing.T) {
 }
 
 func TestChannelErrors(t *testing.T) {
-	s := simulate(t, 24, 300, 2)
+	s := newScene(t, 24, 300, 2)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[0]
 	gappy := s.truthTable(0)
@@ -192,7 +192,7 @@ func TestChannelErrors(t *testing.T) {
 }
 
 func BenchmarkChannel(b *testing.B) {
-	s := simulate(b, 25, 3000, 3)
+	s := newScene(b, 25, 3000, 3)
 	white := whiteOf(b, s)
 	curve := lightcurve.Curves(s.cube)[1]
 	setup, priors := s.setup(), channelPriors("u1", "u2", -1, 2)

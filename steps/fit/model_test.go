@@ -10,7 +10,7 @@ import (
 // TestJacobian compares the Jacobian of the whole model, priors included, with
 // finite differences.
 func TestJacobian(t *testing.T) {
-	s := simulate(t, 3, 400, 1)
+	s := newScene(t, 3, 400, 1)
 	curve, err := lightcurve.White(s.cube)
 	if err != nil {
 		t.Fatal(err)

@@ -4,7 +4,6 @@ import (
 	"math"
 
 	"rimlight/steps/orbit"
-	"rimlight/steps/systematics"
 	"rimlight/steps/transit"
 )
 
@@ -54,13 +53,15 @@ func (s *solution) quantity(name, unit, about string, f func(v *[slots]float64) 
 }
 
 // posterior writes the solution in named parameters and their units.
-func (s *solution) posterior(trend systematics.Trend) Posterior {
+func (s *solution) posterior(setup Setup) Posterior {
+	trend := setup.Trend
 	space := s.model.space
 	size := s.model.size()
 	out := Posterior{
 		Chi2: s.chi2, Dof: s.dof, Samples: len(s.model.used),
 		Iterations: s.steps, Status: s.status, Warnings: s.warnings,
-		Model: "flux = transit(t) × (" + trend.Formula() + ")",
+		Model: "flux = transit(t) × (" + trend.Formula() + "); transit(t) is that of a dark sphere on a Keplerian orbit before a star with " +
+			setup.LimbLaw + " limb darkening, 1 out of transit",
 		Cov:   columns(size, size),
 	}
 	factor := make([]float64, size) // d named / d coordinate

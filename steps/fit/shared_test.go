@@ -11,7 +11,7 @@ import (
 // TestShiftGeometry compares the linear response of a channel's depth to the
 // orbit with fits at changed orbits.
 func TestShiftGeometry(t *testing.T) {
-	s := simulate(t, 31, 600, 6)
+	s := newScene(t, 31, 600, 6)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[2]
 	setup, priors := s.setup(), channelPriors("u1", "u2", -1, 2)
@@ -80,7 +80,7 @@ func TestSpectrumIsHonest(t *testing.T) {
 	var meanSq, rmsSq float64
 	const scenes = 4
 	for seed := range uint64(scenes) {
-		s := simulate(t, 40+seed, 500, 12)
+		s := newScene(t, 40+seed, 500, 12)
 		white, points := s.reduce(t, s.setup(), whitePriors(), channelPriors("u1", "u2", -1, 2))
 		shared := SharedCovariance(points, white)
 		mean, rms := s.pulls(points, shared)

@@ -19,9 +19,9 @@ const (
 )
 
 // scan improves the start values of mid-transit time, radius ratio and settling
-// time where they are free: for each trial time and settling time, the trend and the depth
-// of the start's transit shape are solved for linearly, and the pair that fits
-// best is kept.
+// time where they are free: for each trial time and settling time, the trend and
+// the depth of the start's transit shape are solved for linearly, and the pair
+// that fits best is kept.
 func (m *model) scan() error {
 	s := m.space
 	start := s.value

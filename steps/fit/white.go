@@ -21,9 +21,10 @@ const (
 // (d), midTransit (BJD_TDB, d) or midTransitOffset (d, from setup.MidTransit),
 // axisRatio, inclination (deg) or impact, eccentricity, periastron (deg),
 // radiusRatio, u1 and u2 or q1 and q2 (the sampling of Kipping 2013), and
-// settlingTime (d). The coefficients of the trend are always free and come last in the posterior, under
-// names such as "trend.constant", in units of the curve's median flux. Limb darkening follows the
-// priors where they name it, and otherwise setup.LimbPolicy.
+// settlingTime (d). The coefficients of the trend are always free and come last
+// in the posterior, under names such as "trend.constant", in units of the curve's
+// median flux. Limb darkening follows the priors where they name it, and
+// otherwise setup.LimbPolicy.
 //
 // The maximum of the posterior is found by the Levenberg-Marquardt method from
 // several starts, after a scan in mid-transit time over its prior range (0.05 d
@@ -82,7 +83,7 @@ func White(curve lightcurve.Curve, setup Setup, priors Priors) (Posterior, Curve
 	if err != nil {
 		return fail(err)
 	}
-	return s.posterior(setup.Trend), curveFit, nil
+	return s.posterior(setup), curveFit, nil
 }
 
 // usableLevel reports a median flux that cannot be divided by.

@@ -47,7 +47,7 @@ func value(t testing.TB, p Posterior, name string) (v, e float64) {
 // TestWhiteRecoversTruth fits noise-free data from starts that are off, in every
 // parameterisation.
 func TestWhiteRecoversTruth(t *testing.T) {
-	s := simulate(t, 5, 700, 1)
+	s := newScene(t, 5, 700, 1)
 	curve := quiet(t, s, 0.115, 0.35, 0.2)
 	base := Priors{uniform("midTransitOffset", -0.03, 0.03), uniform("axisRatio", 3, 30), uniform("radiusRatio", 0.02, 0.3),
 		uniform("settlingTime", 0.001, 0.1)}
@@ -89,7 +89,7 @@ func TestWhiteRecoversTruth(t *testing.T) {
 // TestWhiteCentralTransit has its truth at the end of the inclination's range,
 // where the light curve does not change with it.
 func TestWhiteCentralTransit(t *testing.T) {
-	s := simulate(t, 6, 700, 1)
+	s := newScene(t, 6, 700, 1)
 	s.orbit.Inclination = math.Pi / 2
 	curve := quiet(t, s, 0.115, 0.35, 0.2)
 	for i := range curve.Flux { // some noise, so that errors mean something
@@ -116,7 +116,7 @@ func TestWhiteErrorsAreHonest(t *testing.T) {
 	sum, count := map[string]float64{}, 12
 	names := []string{"axisRatio", "inclination", "impact", "duration", "radiusRatio", "midTransit", "stellarDensity"}
 	for seed := range count {
-		s := simulate(t, uint64(seed+100), 300, 1)
+		s := newScene(t, uint64(seed+100), 300, 1)
 		curve := quiet(t, s, 0.115, 0.35, 0.2)
 		rng := rand.New(rand.NewPCG(uint64(seed), 3))
 		for i := range curve.Flux {
@@ -147,7 +147,7 @@ func TestWhiteErrorsAreHonest(t *testing.T) {
 }
 
 func TestWhiteHoldsWhatPriorsDoNotName(t *testing.T) {
-	s := simulate(t, 7, 400, 1)
+	s := newScene(t, 7, 400, 1)
 	curve := quiet(t, s, 0.115, 0.35, 0.2)
 	setup := s.setup()
 	p, _, err := White(curve, setup, Priors{uniform("midTransitOffset", -0.03, 0.03), uniform("radiusRatio", 0.02, 0.3),
@@ -169,7 +169,7 @@ func TestWhiteHoldsWhatPriorsDoNotName(t *testing.T) {
 }
 
 func TestWhiteInflate(t *testing.T) {
-	s := simulate(t, 8, 400, 1)
+	s := newScene(t, 8, 400, 1)
 	curve := lightcurve.Curves(s.cube)[0]
 	for i := range curve.Err {
 		curve.Err[i] /= 2
@@ -196,7 +196,7 @@ func TestWhiteInflate(t *testing.T) {
 }
 
 func TestWhiteErrors(t *testing.T) {
-	s := simulate(t, 9, 200, 1)
+	s := newScene(t, 9, 200, 1)
 	curve := lightcurve.Curves(s.cube)[0]
 	short := curve
 	short.Mask = make([]lightcurve.Flag, len(curve.Mask))
@@ -233,7 +233,7 @@ func TestWhiteErrors(t *testing.T) {
 }
 
 func TestWhiteIsReproducible(t *testing.T) {
-	s := simulate(t, 10, 300, 2)
+	s := newScene(t, 10, 300, 2)
 	curve, err := lightcurve.White(s.cube)
 	if err != nil {
 		t.Fatal(err)

@@ -21,10 +21,10 @@ type scene struct {
 	u1, u2 []float64
 }
 
-// simulate makes n integrations of m channels over 0.6 to 5.2 um: noise of 300 to
+// newScene makes n integrations of m channels over 0.6 to 5.2 um: noise of 300 to
 // 900 ppm, limb darkening that weakens with wavelength, settling, drift and a
 // leak of the pointing.
-func simulate(t testing.TB, seed uint64, n, m int) scene {
+func newScene(t testing.TB, seed uint64, n, m int) scene {
 	t.Helper()
 	rng := rand.New(rand.NewPCG(seed, 77))
 	s := scene{orbit: orbit.Orbit{
