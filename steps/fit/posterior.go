@@ -62,7 +62,7 @@ func (s *solution) posterior(setup Setup) Posterior {
 		Iterations: s.steps, Status: s.status, Warnings: s.warnings,
 		Model: "flux = transit(t) × (" + trend.Formula() + "); transit(t) is that of a dark sphere on a Keplerian orbit before a star with " +
 			setup.LimbLaw + " limb darkening, 1 out of transit",
-		Cov:   columns(size, size),
+		Cov: columns(size, size),
 	}
 	factor := make([]float64, size) // d named / d coordinate
 	for k := range size {
