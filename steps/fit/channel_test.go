@@ -202,3 +202,41 @@ func BenchmarkChannel(b *testing.B) {
 		}
 	}
 }
+
+// TestChannelSettling gives a channel another settling time than the white
+// curve's: held there, the depth suffers; freed by a row, it does not.
+func TestChannelSettling(t *testing.T) {
+	s := newScene(t, 26, 800, 1)
+	white := whiteOf(t, s)
+	curve := quiet(t, s, 0.115, 0.35, 0.2) // settles within 0.015 d
+	for k, name := range white.Names {
+		switch name {
+		case "settlingTime":
+			white.Value[k], white.Err[k] = 0.06, 0.001
+		case "axisRatio":
+			white.Value[k] = 9.4
+		case "inclination":
+			white.Value[k] = 87.3
+		case "midTransitOffset":
+			white.Value[k] = s.orbit.MidTransit - s.setup().MidTransit
+		}
+	}
+	priors := channelPriors("u1", "u2", -1, 2)
+	held, _, err := Channel(curve, white, s.setup(), priors)
+	if err != nil {
+		t.Fatal(err)
+	}
+	free, _, err := Channel(curve, white, s.setup(), append(priors, Prior{Name: "settlingTime", Kind: LogUniform, A: 0.001, B: 0.1}))
+	if err != nil {
+		t.Fatal(err)
+	}
+	const depth = 0.115 * 0.115
+	if math.Abs(free.Depth-depth) > 1e-8 || free.Chi2 > 1e-3 || !(math.Abs(held.Depth-depth) > 10*held.DepthErr) {
+		t.Errorf("depth %.8f with settling free (chi-square %g), %.8f +- %.8f held; want %.8f", free.Depth, free.Chi2, held.Depth, held.DepthErr, depth)
+	}
+	for k, name := range white.Names {
+		if name == "settlingTime" && (held.ShiftGeometry[k] == 0 || free.ShiftGeometry[k] != 0) {
+			t.Errorf("shift with the settling time %g held, %g free", held.ShiftGeometry[k], free.ShiftGeometry[k])
+		}
+	}
+}
