@@ -16,7 +16,7 @@ type Point struct {
 	RadiusRatioErr float64   // one standard deviation
 	Limb           []float64 // limb-darkening coefficients used or fitted (u1, u2 of the quadratic law)
 	LimbErr        []float64 // their standard deviations; 0 where held fixed
-	Chi2           float64   // of the fit, with the errors as used
+	Chi2           float64   // of the fit, with the errors as given
 	Dof            int       // degrees of freedom of the fit
 	Used           int       // samples fitted
 	Masked         int       // samples left out

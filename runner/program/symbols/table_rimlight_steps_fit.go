@@ -18,5 +18,6 @@ func init() {
 		"Setup":            reflect.ValueOf((*fit.Setup)(nil)),
 		"SharedCovariance": reflect.ValueOf(fit.SharedCovariance),
 		"White":            reflect.ValueOf(fit.White),
+		"WhiteOrbit":       reflect.ValueOf(fit.WhiteOrbit),
 	}
 }
