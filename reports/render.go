@@ -226,14 +226,6 @@ func course(d Document) string {
 	return s
 }
 
-// headlineCase puts a capital letter at the beginning.
-func headlineCase(s string) string {
-	if s == "" {
-		return s
-	}
-	return strings.ToUpper(s[:1]) + s[1:]
-}
-
 // result says how the run ended.
 func result(d Document, v []verdict) string {
 	failed := 0

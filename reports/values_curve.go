@@ -178,14 +178,12 @@ func (b *builder) spectrum(title string, s spectrum.Spectrum) []block {
 	b.tables++
 	g := &gridView{Number: b.tables, Named: true, Scroll: len(points) > scrolledRows, Wide: true,
 		Caption: "Transit depths by wavelength"}
-	for _, c := range []columnView{
+	g.Columns = append(g.Columns, []columnView{
 		{Name: "channel"}, {Name: "from", Unit: "um", Number: true}, {Name: "to", Unit: "um", Number: true},
 		{Name: "depth", Unit: "ppm", Number: true}, {Name: "Rp/Rs", Number: true},
 		{Name: "χ²/dof", Number: true}, {Name: "scatter", Unit: "ppm", Number: true},
 		{Name: "fitted", Number: true}, {Name: "masked", Number: true},
-	} {
-		g.Columns = append(g.Columns, c)
-	}
+	}...)
 	limb := 0
 	for _, p := range points {
 		limb = max(limb, min(len(p.Limb), 4))

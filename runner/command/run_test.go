@@ -76,9 +76,8 @@ func Draw(offset float64, seed uint64) (drawn uint64) {
 
 // A bench is a folder with a recipe in it, to run again and again.
 type bench struct {
-	t    *testing.T
-	dir  string
-	args []string
+	t   *testing.T
+	dir string
 }
 
 func newBench(t *testing.T, recipe string) *bench {

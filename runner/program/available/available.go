@@ -97,6 +97,7 @@ var withheld = map[string]string{
 	"sort.Slice":    "it leaves the order of equal elements open; use sort.SliceStable",
 	"sort.Sort":     "it leaves the order of equal elements open; use sort.Stable",
 	"strings.Clone": "it does nothing here; use the string itself",
+	"strings.Title": "it is deprecated; use strings.ToUpper on the first letter",
 }
 
 // Withheld says why recipes may not use the object of that full name, such as
