@@ -39,7 +39,7 @@ func prepare(ctx context.Context, file string, o *options) (*plan.Plan, worker.C
 	r, diags := recipe.Parse(file, source)
 	code := worker.Code{File: file, Text: r.Code()}
 	for _, b := range r.Blocks {
-		code.Fences = append(code.Fences, program.Fence{Start: b.Line, End: b.Line + strings.Count(b.Code, "\n")})
+		code.Fences = append(code.Fences, program.Fence{Start: b.Line, End: b.Line + strings.Count(strings.TrimSuffix(b.Code, "\n"), "\n")})
 	}
 	w, err := worker.Start(ctx)
 	if err != nil {

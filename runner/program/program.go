@@ -89,7 +89,11 @@ func Check(file string, src []byte, fences ...Fence) (*Program, diag.List) {
 	if len(c.diags) > 0 {
 		p := &Program{file: file}
 		for _, d := range c.steps {
-			p.Steps = append(p.Steps, c.step(d))
+			s := c.step(d)
+			if c.faulty(d) { // what it takes is not known for sure
+				s.Params, s.Each = nil, nil
+			}
+			p.Steps = append(p.Steps, s)
 		}
 		return p, c.diags
 	}
@@ -104,6 +108,20 @@ func Check(file string, src []byte, fences ...Fence) (*Program, diag.List) {
 	normalise(c)
 	p.tree = c.tree
 	return p, nil
+}
+
+// faulty reports whether the comment or the signature of a step has a fault.
+func (c *checker) faulty(d *ast.FuncDecl) bool {
+	first, last := c.at(d.Pos()).Line, c.at(d.Type.End()).Line
+	if d.Doc != nil {
+		first = c.at(d.Doc.Pos()).Line
+	}
+	for _, fault := range c.diags {
+		if fault.Pos.Line >= first && fault.Pos.Line <= last {
+			return true
+		}
+	}
+	return false
 }
 
 // A checker carries one source through the check.
