@@ -42,6 +42,7 @@ var Packages = []Package{
 	{"systematics", stepLibrary + "systematics"},
 	{"table", stepLibrary + "table"},
 	{"transit", stepLibrary + "transit"},
+	{"vector", stepLibrary + "vector"},
 }
 
 var (
