@@ -57,7 +57,11 @@ func (a *app) demo(ctx context.Context, dir string, seed uint64, o *options) err
 	if err != nil {
 		return err
 	}
-	for name, data := range map[string][]byte{"visit.fits": raw, "truth.csv": truth.CSV()} {
+	truthTable, err := truth.CSV()
+	if err != nil {
+		return err
+	}
+	for name, data := range map[string][]byte{"visit.fits": raw, "truth.csv": truthTable} {
 		if err := os.WriteFile(filepath.Join(dir, name), data, 0o666); err != nil {
 			return err
 		}

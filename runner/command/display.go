@@ -87,7 +87,10 @@ func (d *display) progress(ev engine.Event) {
 func (d *display) finished(ev engine.Event) {
 	d.dropBar()
 	state := string(ev.State)
-	if ev.Input && ev.State == engine.Computed {
+	switch {
+	case ev.Absent:
+		state = "not given"
+	case ev.Input && ev.State == engine.Computed:
 		state = "read"
 	}
 	line := fmt.Sprintf("[%2d/%d]  %-18s %-12s", d.done, d.total, ev.Step, state)
@@ -125,6 +128,9 @@ func (d *display) json(ev engine.Event) {
 		state = "running"
 	}
 	m := map[string]any{"event": kind, "name": ev.Step, "state": state, "finished": d.done, "of": d.total}
+	if ev.Absent {
+		m["absent"] = true
+	}
 	if ev.Why != "" {
 		m["why"] = ev.Why
 	}

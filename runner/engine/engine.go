@@ -108,14 +108,15 @@ type Step struct {
 
 // An Event is a change that an observer may want to show.
 type Event struct {
-	Step  string // name of the step, or of the input
-	Input bool
-	State State // of the step; empty while it runs
-	Why   string
-	Err   string
-	Done  int // elements of a fan-out that are there
-	Total int // elements in all; 0 for a plain step
-	Took  time.Duration
+	Step   string // name of the step, or of the input
+	Input  bool
+	Absent bool  // an optional input that was not given
+	State  State // of the step; empty while it runs
+	Why    string
+	Err    string
+	Done   int // elements of a fan-out that are there
+	Total  int // elements in all; 0 for a plain step
+	Took   time.Duration
 }
 
 // Run carries out the plan. It returns when everything that could be reached
@@ -222,38 +223,6 @@ func (e *Engine) lookUp(c *Computation, name string, element int) bool {
 	return true
 }
 
-// keep stores what a computation gave, results first, record last.
-func (e *Engine) keep(c *Computation, name string, results []string, v worker.Values) error {
-	if len(v.Sealed) != len(results) {
-		return fmt.Errorf("the worker gave %d results, expected %d", len(v.Sealed), len(results))
-	}
-	r := store.Record{Key: c.Text.Key(), Text: string(c.Text), Log: v.Log, Took: v.Took, When: time.Now().UTC(), Host: e.Host, Program: e.Build.Version, Notes: v.Notes}
-	c.Results = nil
-	for i, b := range v.Sealed {
-		val, err := putSealed(e.Store, b)
-		if err != nil {
-			return err
-		}
-		c.Results = append(c.Results, val)
-		r.Results = append(r.Results, store.Result{Name: results[i], Type: val.Type, Layout: val.Layout, Hash: val.Hash, Size: val.Size})
-	}
-	var differs *store.NotReproducibleError
-	if err := e.Store.SetRecord(r); errors.As(err, &differs) {
-		e.note("%s: %v", name, err)
-		if first, ok, _ := e.Store.Record(r.Key); ok && len(first.Results) == len(c.Results) { // the first results stay in force
-			for i, res := range first.Results {
-				if c.Results[i], err = known(e.Store, res); err != nil {
-					return err
-				}
-			}
-		}
-	} else if err != nil {
-		return err
-	}
-	c.State, c.Log, c.Took, c.When, c.Host = Computed, v.Log, v.Took, r.When, r.Host
-	return nil
-}
-
 // input identifies and reads a raw input.
 func (e *Engine) input(ctx context.Context, i int) {
 	in, spec := &e.outcome.Inputs[i], &e.Plan.Inputs[i]
@@ -263,7 +232,7 @@ func (e *Engine) input(ctx context.Context, i int) {
 		}
 		in.fail(err)
 	}
-	e.observe(Event{Step: in.Name, Input: true, State: in.State, Why: in.Why, Err: in.Err, Took: in.Took})
+	e.observe(Event{Step: in.Name, Input: true, Absent: len(spec.Paths) == 0, State: in.State, Why: in.Why, Err: in.Err, Took: in.Took})
 }
 
 func (e *Engine) readInput(ctx context.Context, in *Input, spec *plan.Input) error {
@@ -325,7 +294,7 @@ func (e *Engine) readInput(ctx context.Context, in *Input, spec *plan.Input) err
 	for _, n := range v.Notes {
 		v.Log += n + "\n"
 	}
-	return e.keep(&in.Computation, in.Name, []string{in.Name}, v)
+	return e.keepOne(keeping{c: &in.Computation, name: in.Name, results: []string{in.Name}, values: v})
 }
 
 // digest gives the size of what r holds, and its SHA-256 in hex.

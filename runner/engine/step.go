@@ -325,7 +325,9 @@ func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, co
 	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: len(comps) - len(todo), Total: len(comps)})
 	var next, done atomic.Int64
 	done.Store(int64(len(comps) - len(todo)))
-	var all sync.WaitGroup
+	arriving := make(chan keeping, maxTogether)
+	var kept, all sync.WaitGroup
+	kept.Go(func() { e.keeper(arriving) })
 	for range min(cap(e.slots), len(todo)) {
 		all.Go(func() {
 			if !e.acquire(ctx) {
@@ -340,21 +342,32 @@ func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, co
 					return
 				}
 				n := todo[k]
+				finish := func(err error) {
+					if err != nil {
+						comps[n].fail(err)
+					}
+					e.observe(Event{Step: spec.Name, Done: int(done.Add(1)), Total: len(comps), Took: comps[n].Took})
+				}
+				p.later = func(k keeping) {
+					k.done = finish
+					arriving <- k
+				}
 				item, err := e.itemBytes(ctx, spec.Args[spec.Each], items, n)
 				if err == nil {
 					err = p.compute(ctx, &comps[n], item)
 				}
-				if ctx.Err() != nil && !comps[n].Finished() {
-					return
-				}
 				if err != nil {
-					comps[n].fail(err)
+					if ctx.Err() != nil {
+						return
+					}
+					finish(err)
 				}
-				e.observe(Event{Step: spec.Name, Done: int(done.Add(1)), Total: len(comps), Took: comps[n].Took})
 			}
 		})
 	}
 	all.Wait()
+	close(arriving)
+	kept.Wait()
 	return nil
 }
 
@@ -404,6 +417,10 @@ type pool struct {
 	spec *plan.Step
 	args [][]byte
 	w    *worker.Worker
+
+	// later, when set, takes what a computation gave to be kept, so that the
+	// next one need not wait for the disk.
+	later func(keeping)
 }
 
 func (p *pool) close() {
@@ -450,7 +467,12 @@ func (p *pool) compute(ctx context.Context, c *Computation, element []byte) erro
 	for i, r := range p.spec.Results {
 		names[i] = r.Name
 	}
-	return p.e.keep(c, p.spec.Name, names, v)
+	k := keeping{c: c, name: p.spec.Name, results: names, values: v}
+	if p.later == nil {
+		return p.e.keepOne(k)
+	}
+	p.later(k)
+	return nil
 }
 
 func (p *pool) call(ctx context.Context, args [][]byte) (worker.Values, error) {

@@ -47,38 +47,45 @@ func isList(layout string) bool {
 
 const listMark = "rimlight list 1\n"
 
-// putSealed keeps a value that came from a worker.
-func putSealed(s *store.Store, sealed []byte) (Value, error) {
+// arrange gives the value that came from a worker in its envelope, and the
+// objects that hold it, which have yet to be put into the store.
+func arrange(sealed []byte) (Value, [][]byte, error) {
 	typ, layout, data, err := canon.Open(sealed)
 	if err != nil {
-		return Value{}, err
+		return Value{}, nil, err
 	}
 	if !isList(layout) {
-		h, err := s.Put(sealed)
-		return Value{Type: typ, Layout: layout, Hash: h, Size: int64(len(sealed))}, err
+		return Value{Type: typ, Layout: layout, Hash: store.HashOf(sealed), Size: int64(len(sealed))}, [][]byte{sealed}, nil
 	}
 	elem := layout[len("[]"):]
 	items, err := canon.Split(elem, data)
 	if err != nil {
-		return Value{}, err
+		return Value{}, nil, err
 	}
-	objects := make([][]byte, len(items))
+	objects := make([][]byte, 0, len(items)+1)
+	parts := make([]part, len(items))
 	for i, item := range items {
-		objects[i] = canon.Seal(strings.TrimPrefix(typ, "[]"), elem, item)
+		b := canon.Seal(strings.TrimPrefix(typ, "[]"), elem, item)
+		objects = append(objects, b)
+		parts[i] = part{store.HashOf(b), int64(len(b))}
 	}
-	hashes, err := s.PutBatch(objects)
+	v, list := listOf(typ, layout, parts)
+	return v, append(objects, list), nil
+}
+
+// putSealed keeps a value that came from a worker.
+func putSealed(s *store.Store, sealed []byte) (Value, error) {
+	v, objects, err := arrange(sealed)
 	if err != nil {
 		return Value{}, err
 	}
-	parts := make([]part, len(items))
-	for i, b := range objects {
-		parts[i] = part{hashes[i], int64(len(b))}
-	}
-	return putList(s, typ, layout, parts)
+	_, err = s.PutBatch(objects)
+	return v, err
 }
 
-// putList keeps the list of parts that are in the store already.
-func putList(s *store.Store, typ, layout string, parts []part) (Value, error) {
+// listOf gives the value that a list of parts is, and the object that names
+// them.
+func listOf(typ, layout string, parts []part) (Value, []byte) {
 	var b bytes.Buffer
 	fmt.Fprintf(&b, "%stype %s\nlayout %s\n", listMark, typ, layout)
 	size := int64(0)
@@ -86,8 +93,7 @@ func putList(s *store.Store, typ, layout string, parts []part) (Value, error) {
 		fmt.Fprintf(&b, "%s %d\n", p.hash, p.size)
 		size += p.size
 	}
-	h, err := s.Put(b.Bytes())
-	return Value{Type: typ, Layout: layout, Hash: h, Size: size, parts: parts}, err
+	return Value{Type: typ, Layout: layout, Hash: store.HashOf(b.Bytes()), Size: size, parts: parts}, b.Bytes()
 }
 
 // known takes up a value that a record names. Of a list, the object that names
@@ -216,7 +222,9 @@ func collect(s *store.Store, typ, layout string, items []Value) (Value, error) {
 		for i, v := range items {
 			parts[i] = part{v.Hash, v.Size}
 		}
-		return putList(s, typ, whole, parts)
+		v, list := listOf(typ, whole, parts)
+		_, err := s.Put(list)
+		return v, err
 	}
 	data := make([][]byte, len(items))
 	for i, v := range items {

@@ -4,6 +4,8 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"os"
+	"path/filepath"
 	"strings"
 	"time"
 )
@@ -156,6 +158,69 @@ func (s *Store) SetRecord(r Record) error {
 		return differs
 	}
 	return fmt.Errorf("the record of %s cannot be kept: other processes change it all the time", r.Key.Short())
+}
+
+// SetRecords is [Store.SetRecord] for many records of different keys, and much
+// quicker than as many calls, as it waits for the disk but once. The errors are
+// those of the records, nil for one that is kept.
+func (s *Store) SetRecords(records []Record) []error {
+	errs := make([]error, len(records))
+	staged := make([]string, len(records)) // temporary files, "" for records that are set one by one
+	var all []string
+	for i, r := range records {
+		if _, err := os.Lstat(s.recordPath(r.Key)); !errors.Is(err, fs.ErrNotExist) || KeyOf(r.Text) != r.Key || !s.whole(r) {
+			continue
+		}
+		data, err := encodeRecord(r)
+		if err != nil {
+			continue
+		}
+		if staged[i], err = s.stage(data, 0o444, false); err != nil {
+			errs[i] = err
+			continue
+		}
+		all = append(all, staged[i])
+	}
+	flushed := s.flush(all)
+	folders := map[string]bool{}
+	for i, r := range records {
+		switch {
+		case errs[i] != nil:
+			continue
+		case staged[i] == "":
+			errs[i] = s.SetRecord(r)
+			continue
+		case flushed != nil:
+			errs[i] = flushed
+		default:
+			dir := filepath.Dir(s.recordPath(r.Key))
+			if errs[i] = s.folder(dir); errs[i] == nil {
+				errs[i] = s.exclusively(staged[i], s.recordPath(r.Key))
+			}
+			if errors.Is(errs[i], fs.ErrExist) { // another process was quicker
+				errs[i] = s.SetRecord(r)
+				continue
+			}
+			folders[dir] = errs[i] == nil || folders[dir]
+		}
+		if errs[i] != nil {
+			os.Remove(staged[i]) // if that fails, a file remains in tmp, which does no harm
+			errs[i] = s.explain(errs[i])
+		}
+	}
+	if len(folders) > manySyncs {
+		syncAll(s.dir)
+	}
+	for dir := range folders {
+		if err := s.syncFolder(dir); err != nil {
+			for i, r := range records {
+				if errs[i] == nil && filepath.Dir(s.recordPath(r.Key)) == dir {
+					errs[i] = err
+				}
+			}
+		}
+	}
+	return errs
 }
 
 // besidePath is where a record lies that is not in force: one for each

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io/fs"
 	"os"
+	"path/filepath"
 	"reflect"
 	"strings"
 	"syscall"
@@ -335,4 +336,53 @@ func FuzzRecord(f *testing.F) {
 			t.Error(fmt.Errorf("accepted the record of %s", got.Key))
 		}
 	})
+}
+
+// TestSetRecords holds that many records set at once are those that would have
+// been set one by one, and that each fault stays with its own.
+func TestSetRecords(t *testing.T) {
+	s := open(t)
+	a, errA := s.Put([]byte("a"))
+	b, errB := s.Put([]byte("b"))
+	if errA != nil || errB != nil {
+		t.Fatal(errA, errB)
+	}
+	record := func(text string, h Hash) Record {
+		return Record{Key: KeyOf(text), Text: text, Results: []Result{{Name: "x", Type: "t", Layout: "l", Hash: h, Size: 1}}}
+	}
+	if err := s.SetRecord(record("old", a)); err != nil {
+		t.Fatal(err)
+	}
+	wrong := record("wrong", a)
+	wrong.Text = "another"
+	var batch []Record
+	for i := range 20 {
+		batch = append(batch, record(fmt.Sprint("new ", i), b))
+	}
+	batch = append(batch, record("old", a), record("old", b), wrong, record("missing", HashOf([]byte("nowhere"))))
+	errs := s.SetRecords(batch)
+	for i, err := range errs[:21] {
+		if err != nil {
+			t.Errorf("record %d: %v", i, err)
+		}
+	}
+	var differs *NotReproducibleError
+	if !errors.As(errs[21], &differs) {
+		t.Errorf("other results for a known key gave %v", errs[21])
+	}
+	if errs[22] == nil || errs[23] == nil {
+		t.Errorf("a wrong key gave %v, a missing object %v", errs[22], errs[23])
+	}
+	for i := range 20 {
+		r, ok, err := s.Record(KeyOf(fmt.Sprint("new ", i)))
+		if !ok || err != nil || r.Results[0].Hash != b {
+			t.Errorf("record %d was read as %v, %v, %v", i, r, ok, err)
+		}
+	}
+	if r, _, _ := s.Record(KeyOf("old")); r.Results[0].Hash != a {
+		t.Error("the first results are no longer in force")
+	}
+	if left, _ := os.ReadDir(filepath.Join(s.dir, "tmp")); len(left) > 0 {
+		t.Errorf("%d temporary files are left", len(left))
+	}
 }
