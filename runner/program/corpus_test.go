@@ -2,17 +2,21 @@ package program
 
 import (
 	"fmt"
+	"go/ast"
+	"go/parser"
+	"go/token"
 	"os"
 	"path/filepath"
 	"strings"
 	"testing"
 )
 
-// A sample is one small program of a differential test: a function run() that
-// gives a text, and what it needs.
+// A sample is one small program of a differential test: a function Run that
+// gives a text, and what it needs. Samples of one origin share declarations.
 type sample struct {
-	name string
-	src  string
+	name   string
+	shared string
+	body   string
 }
 
 // corpus reads the programs in testdata/program. A file holds programs under
@@ -40,36 +44,61 @@ func corpus(t testing.TB) []sample {
 				t.Fatalf("%s: two programs are called %s", name, title)
 			}
 			seen[title] = true
-			out = append(out, sample{title, source(prelude + body)})
+			out = append(out, sample{title, prelude, body})
 		}
 	}
 	return out
 }
 
-// source makes a recipe's source of a program: run becomes a helper that a
-// step calls three times.
-func source(body string) string {
-	body = strings.Replace(body, "func Run() ", "func run() ", 1)
-	return "\n" + body + "\nfunc Run() (text string) {\n\tfor i := 0; i < 3; i++ {\n\t\ttext += \"#\" + run()\n\t}\n\treturn text\n}\n"
+// source makes a recipe's source of the sample. Run becomes a helper, run_, and
+// a function literal with the same body; the step Run calls the helper in a
+// loop, the literal, and both from compiled code.
+func (s sample) source() string {
+	body := strings.Replace(s.body, "func Run() ", "func run_() ", 1)
+	return "\n" + s.shared + body + "\nfunc Run() (text string) {\n" +
+		"\tall_ := \"\"\n\tfor i := 0; i < 3; i++ {\n\t\tall_ += \"#\" + run_()\n\t}\n" +
+		"\tinside_ := func() " + literal(body) + "\n\tall_ += \"#in a literal \" + inside_() + \"#\" + inside_()\n" +
+		"\t_ = strings.Map(func(r rune) rune { all_ += \"#from compiled code \" + run_() + \"#\" + inside_(); return r }, \"a\")\n" +
+		"\treturn all_\n}\n"
 }
 
-// interpret checks and runs the step Run of a source. A program that is
-// refused gives the complaints instead.
-func interpret(name, src string) (out string, refused error) {
-	p, diags := Check(name, []byte(src))
+// literal is what follows func() in the declaration of run_.
+func literal(body string) string {
+	const head = "package main\n"
+	fset := token.NewFileSet()
+	f, err := parser.ParseFile(fset, "", head+body, parser.SkipObjectResolution)
+	if err == nil {
+		for _, d := range f.Decls {
+			if fn, ok := d.(*ast.FuncDecl); ok && fn.Name.Name == "run_" {
+				return (head + body)[fset.Position(fn.Type.Params.End()).Offset:fset.Position(fn.End()).Offset]
+			}
+		}
+	}
+	return "string { return run_() }" // the fault is met again by the check
+}
+
+// interpret checks and runs the sample. A program that is refused gives the
+// complaints instead.
+func (s sample) interpret() (out string, refused error) {
+	p, diags := Check(s.name, []byte(s.source()))
 	if len(diags) > 0 {
 		return "", diags
 	}
+	return p.outcome(), nil
+}
+
+// outcome is what the step Run gives, as the compiled program shows it.
+func (p *Program) outcome() string {
 	m, err := p.Compile()
 	if err != nil {
-		return "COMPILE " + err.Error(), nil
+		return "COMPILE " + err.Error()
 	}
 	results, err := m.Call("Run", nil)
 	if _, ok := err.(*PanicError); ok {
-		return "PANIC", nil
+		return "PANIC"
 	}
 	if err != nil {
-		return "ERROR " + err.Error(), nil
+		return "ERROR " + err.Error()
 	}
-	return fmt.Sprint(results[0]), nil
+	return fmt.Sprint(results[0])
 }

@@ -15,7 +15,7 @@ func FuzzCheck(f *testing.F) {
 	f.Add(reached)
 	for i, s := range corpus(f) {
 		if i%40 == 0 {
-			f.Add(s.src)
+			f.Add(s.source())
 		}
 	}
 	files, err := filepath.Glob("../../testdata/wrong/go-*.md")

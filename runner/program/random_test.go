@@ -137,8 +137,8 @@ type randomWriter struct {
 	loops  int
 }
 
-// randomProgram is a program that the rules accept, nearly always; equal
-// arguments give the same program.
+// randomProgram is a program that the rules accept, nearly always, to stand
+// below randomPrelude; equal arguments give the same program.
 func randomProgram(seed, index uint64) string {
 	w := &randomWriter{r: rand.New(rand.NewPCG(seed, index)), scopes: [][]variable{nil}}
 	var lines []string
@@ -156,7 +156,7 @@ func randomProgram(seed, index uint64) string {
 		}
 		shown = append(shown, fmt.Sprintf(form, v.name))
 	}
-	return randomPrelude + "func Run() string {\n\t" + strings.Join(lines, "\n\t") +
+	return "func Run() string {\n\t" + strings.Join(lines, "\n\t") +
 		"\n\treturn strings.Join([]string{" + strings.Join(shown, ", ") + "}, \"|\")\n}\n"
 }
 
