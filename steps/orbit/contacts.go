@@ -31,6 +31,7 @@ type Contacts struct {
 // on which the planet would touch the star while beside it, transit starts or
 // ends where the planet comes to the star's front.
 func (p *Path) Contacts(radiusRatio float64) Contacts {
+	p = p.known()
 	closest, least := p.closest()
 	c := Contacts{Closest: p.timeAt(closest)}
 	outer, inner := 1+radiusRatio, math.Abs(1-radiusRatio)

@@ -5,7 +5,8 @@ import "math"
 // Path is an orbit with everything that does not depend on time worked out,
 // for evaluation at many times. Its methods take the time in days since a
 // mid-transit, which keeps all digits where a Julian date would lose them.
-// Make one with [Orbit.Path].
+// Make one with [Orbit.Path]. A path that is nil or the zero value, or that of an
+// orbit that is not valid, gives numbers without meaning, most often NaN.
 type Path struct {
 	period, midTransit, axis, e float64
 	motion                      float64 // mean motion, radians per day
@@ -38,9 +39,21 @@ func (o Orbit) Path() *Path {
 	return p
 }
 
+// nowhere is the path of no orbit.
+var nowhere Path
+
+// known returns p, or nowhere for a nil path.
+func (p *Path) known() *Path {
+	if p == nil {
+		return &nowhere
+	}
+	return p
+}
+
 // Fold returns the time since the nearest mid-transit, between -Period/2 and
 // Period/2, and the time elapsed since the orbit's MidTransit, both in days.
 func (p *Path) Fold(t float64) (since, elapsed float64) {
+	p = p.known()
 	elapsed = t - p.midTransit
 	return math.FMA(-math.Round(elapsed/p.period), p.period, elapsed), elapsed
 }
@@ -48,6 +61,7 @@ func (p *Path) Fold(t float64) (since, elapsed float64) {
 // Separation returns the separation, in stellar radii, the given number of
 // days after a mid-transit, and whether the planet is in front.
 func (p *Path) Separation(since float64) (z float64, front bool) {
+	p = p.known()
 	sin, cos := math.Sincos(EccentricAnomaly(p.m0+p.motion*since, p.e))
 	along, across := p.axis*(cos-p.e), p.axis*p.minor*sin
 	x := across*p.sinW - along*p.cosW
@@ -61,6 +75,7 @@ func (p *Path) Separation(since float64) (z float64, front bool) {
 // the orbit's MidTransit (a whole number of periods more than since), which
 // the derivative with respect to the period needs.
 func (p *Path) SeparationGradient(since, elapsed float64) (z float64, front bool, grad [6]float64) {
+	p = p.known()
 	sin, cos := math.Sincos(EccentricAnomaly(p.m0+p.motion*since, p.e))
 	along, across := p.axis*(cos-p.e), p.axis*p.minor*sin
 	x := across*p.sinW - along*p.cosW
@@ -93,6 +108,7 @@ func (p *Path) SeparationGradient(since, elapsed float64) (z float64, front bool
 // star's centre. The span is generous on eccentric orbits. When no such span
 // shorter than the orbit can be told cheaply it is infinite.
 func (p *Path) Window(limit float64) (from, to float64) {
+	p = p.known()
 	sin := limit / (p.axis * (1 - p.e)) // |X| ≥ a (1-e) |cos(ω+f)|
 	if sin < 1 {
 		angle := math.Asin(sin)
