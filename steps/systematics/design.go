@@ -83,7 +83,7 @@ func (t Trend) Design(curve lightcurve.Curve) (Design, error) {
 		}
 		column, err := standardise(value, usable)
 		if err != nil {
-			return Design{}, fmt.Errorf("systematics: regressor %s %w", name, err)
+			return Design{}, fmt.Errorf("systematics: regressor %.40s %w", name, err)
 		}
 		add(name, column)
 	}
@@ -200,7 +200,7 @@ func (d *Design) compare(usable []int) error {
 		}
 		left := floats.Norm(v, 2)
 		if !(left > collinear*length) {
-			return fmt.Errorf("systematics: over the %d usable samples the term %s is a combination of the terms before it (%s); take one of them out",
+			return fmt.Errorf("systematics: over the %d usable samples the term %.40s is a combination of the terms before it (%.200s); take one of them out",
 				len(rows), d.Names[k], strings.Join(d.Names[:k], ", "))
 		}
 		floats.Scale(1/left, v)

@@ -71,6 +71,7 @@ func TestDesignErrors(t *testing.T) {
 		{Trend{Settling: true, SettlingTime: math.NaN()}, "settling time NaN d"},
 		{Trend{Regressors: []string{"Z"}}, "no auxiliary column Z; expected one of X, Y, FLAT, RAMP"},
 		{Trend{Regressors: []string{"x"}}, "nearest known name: X"},
+		{Trend{Regressors: make([]string, 65)}, "65 regressors; expected at most 64"},
 		{Trend{Regressors: []string{"X", "X"}}, "X is listed twice"},
 		{Trend{Regressors: []string{"FLAT"}}, "FLAT is constant, 3"},
 		{Trend{Polynomial: 1, Regressors: []string{"RAMP"}}, "the term RAMP is a combination of the terms before it (constant, time)"},
@@ -122,5 +123,8 @@ func TestFormula(t *testing.T) {
 	}
 	if got := (Trend{}).Formula(); got != "c0" {
 		t.Errorf("constant trend: %s", got)
+	}
+	if got := (Trend{Polynomial: math.MaxInt}).Formula(); got != (Trend{Polynomial: MaxPolynomial}).Formula() {
+		t.Errorf("polynomial of an order out of range: %s", got)
 	}
 }

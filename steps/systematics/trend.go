@@ -8,7 +8,6 @@
 package systematics
 
 import (
-	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -21,6 +20,12 @@ import (
 // MaxPolynomial is the highest order of the polynomial in time.
 const MaxPolynomial = 4
 
+// maxRegressors is far above what any light curve can tell apart.
+const maxRegressors = 64
+
+// listed is how many names a message lists.
+const listed = 20
+
 // A Trend is a model of the systematics: a constant, a polynomial in time, an
 // exponential settling after the start of the observation, and terms linear in
 // auxiliary columns. The zero value is a constant. That such terms describe
@@ -29,7 +34,7 @@ type Trend struct {
 	Polynomial   int      // order in time, 0 to 4
 	Settling     bool     // whether there is a term exp(-(t-t0)/SettlingTime), t0 the first time of the curve
 	SettlingTime float64  // e-folding time in days, above 0; the start value where the fit leaves it free
-	Regressors   []string // names of auxiliary columns, each a linear term
+	Regressors   []string // names of auxiliary columns, each a linear term; at most 64
 }
 
 // check reports settings outside their range.
@@ -40,18 +45,23 @@ func (t Trend) check() error {
 	if t.Settling && !(t.SettlingTime > 0 && t.SettlingTime < math.Inf(1)) {
 		return fmt.Errorf("systematics: settling time %g d; expected a number above 0, for example 0.01", t.SettlingTime)
 	}
+	if n := len(t.Regressors); n > maxRegressors {
+		return fmt.Errorf("systematics: %d regressors; expected at most %d", n, maxRegressors)
+	}
 	for i, name := range t.Regressors {
 		if slices.Contains(t.Regressors[:i], name) {
-			return fmt.Errorf("systematics: regressor %s is listed twice; list it once", name)
+			return fmt.Errorf("systematics: regressor %.40s is listed twice; list it once", name)
 		}
 	}
 	return nil
 }
 
-// Formula writes the trend as an equation in words and symbols.
+// Formula writes the trend as an equation in words and symbols. Of a trend that
+// [Trend.Design] refuses, it leaves out the orders and regressors that are too
+// many.
 func (t Trend) Formula() string {
 	terms := []string{"c0"}
-	for k := 1; k <= t.Polynomial; k++ {
+	for k := 1; k <= min(t.Polynomial, MaxPolynomial); k++ {
 		if k == 1 {
 			terms = append(terms, "c1 x")
 		} else {
@@ -61,7 +71,7 @@ func (t Trend) Formula() string {
 	if t.Settling {
 		terms = append(terms, "s exp(-(t - t0)/settlingTime)")
 	}
-	for _, name := range t.Regressors {
+	for _, name := range t.Regressors[:min(len(t.Regressors), maxRegressors)] {
 		terms = append(terms, "k_"+name+" z("+name+")")
 	}
 	text := strings.Join(terms, " + ")
@@ -87,15 +97,19 @@ func aux(curve lightcurve.Curve, name string) ([]float64, error) {
 	for _, s := range curve.Aux {
 		if s.Name == name {
 			if len(s.Value) != len(curve.Time) {
-				return nil, fmt.Errorf("systematics: regressor %s has %d values; expected one for each of %d times", name, len(s.Value), len(curve.Time))
+				return nil, fmt.Errorf("systematics: regressor %.40s has %d values; expected one for each of %d times", name, len(s.Value), len(curve.Time))
 			}
 			return s.Value, nil
 		}
-		known = append(known, s.Name)
+		known = append(known, fmt.Sprintf("%.40s", s.Name))
 	}
 	if len(known) == 0 {
-		return nil, fmt.Errorf("systematics: no auxiliary column %s: the light curve has none; leave the list of regressors empty", name)
+		return nil, fmt.Errorf("systematics: no auxiliary column %.40s: the light curve has none; leave the list of regressors empty", name)
 	}
-	return nil, errors.New("systematics: no auxiliary column " + name + "; expected one of " +
-		strings.Join(known, ", ") + nearest.Hint(name, known))
+	list := known
+	if len(list) > listed {
+		list = append(slices.Clone(list[:listed]), "...")
+	}
+	return nil, fmt.Errorf("systematics: no auxiliary column %.40s; expected one of %s%s", name,
+		strings.Join(list, ", "), nearest.Hint(name, known))
 }
