@@ -1,6 +1,7 @@
 package simulate
 
 import (
+	"fmt"
 	"math"
 	"math/rand/v2"
 	"strconv"
@@ -24,7 +25,8 @@ const stream = 0x73696d756c617465
 
 // Make simulates the raw data of a scenario: fluxes in electrons, errors as a
 // calibration would estimate them, and the positions X and Y in pixels.
-// The same scenario gives the same data.
+// The same scenario gives the same data. It is an error when [Scenario.Validate]
+// finds one, and when the depth of a channel is not between 0 and 1.
 func Make(s Scenario) (lightcurve.Cube, Truth, error) {
 	if err := s.Validate(); err != nil {
 		return lightcurve.Cube{}, Truth{}, err
@@ -50,6 +52,9 @@ func Make(s Scenario) (lightcurve.Cube, Truth, error) {
 		wave := (ch.Lo + ch.Hi) / 2
 		u1, u2 := s.limb(wave)
 		depth := s.depth(wave)
+		if !(depth >= 0 && depth <= 1) {
+			return lightcurve.Cube{}, Truth{}, fmt.Errorf("simulate: Depth, Slope and Bands come to a depth of %g at %g um; expected a number from 0 to 1", depth, wave)
+		}
 		cube.Channels = append(cube.Channels, ch)
 		truth.Channels = append(truth.Channels, ch)
 		truth.Depth = append(truth.Depth, depth)
@@ -175,8 +180,13 @@ func mask(flux, errs []float64) []lightcurve.Flag {
 }
 
 // CSV gives the truth as a table: wave_lo and wave_hi in um, then depth, u1,
-// u2, and dead (1 for a channel without signal).
-func (t Truth) CSV() []byte {
+// u2, and dead (1 for a channel without signal). It is an error when the slices
+// differ in length.
+func (t Truth) CSV() ([]byte, error) {
+	if m := len(t.Channels); len(t.Depth) != m || len(t.U1) != m || len(t.U2) != m || len(t.Dead) != m {
+		return nil, fmt.Errorf("truth: %d depths, %d u1, %d u2 and %d marks of dead channels; expected one of each for %d channels",
+			len(t.Depth), len(t.U1), len(t.U2), len(t.Dead), m)
+	}
 	var b strings.Builder
 	b.WriteString("wave_lo,wave_hi,depth,u1,u2,dead\n")
 	for i, c := range t.Channels {
@@ -190,5 +200,5 @@ func (t Truth) CSV() []byte {
 			b.WriteString("0\n")
 		}
 	}
-	return []byte(b.String())
+	return []byte(b.String()), nil
 }

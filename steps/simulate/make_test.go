@@ -60,8 +60,13 @@ func TestContinuous(t *testing.T) {
 	if other.Flux[5][7] == cube.Flux[5][7] {
 		t.Error("another seed gave the same flux")
 	}
-	if lines := strings.Count(string(truth.CSV()), "\n"); lines != 81 {
-		t.Errorf("the truth has %d lines", lines)
+	table, err := truth.CSV()
+	if lines := strings.Count(string(table), "\n"); err != nil || lines != 81 {
+		t.Errorf("the truth has %d lines, error %v", lines, err)
+	}
+	truth.U2 = truth.U2[1:]
+	if _, err := truth.CSV(); err == nil || !strings.Contains(err.Error(), "79 u2") {
+		t.Errorf("a truth with a u2 missing: error %v", err)
 	}
 }
 
@@ -163,6 +168,8 @@ func TestWrongScenarios(t *testing.T) {
 		"Eccentricity":          func(s *Scenario) { s.Eccentricity = 1 },
 		"DeadChannels":          func(s *Scenario) { s.DeadChannels = 1000 },
 		"band 1":                func(s *Scenario) { s.Bands = []Band{{0, 1, 0}} },
+		"shorten Exposure":      func(s *Scenario) { s.Integrations, s.Channels, s.Period, s.AxisRatio, s.Depth = 1e6, 5, 0.1, 1e3, 0 },
+		"a depth of -0.0":       func(s *Scenario) { s.Depth, s.Slope, s.Bands = 0.01, 0, []Band{{1, 1e9, -0.03}} },
 	} {
 		s := Continuous(1)
 		change(&s)

@@ -70,7 +70,13 @@ func Continuous(seed uint64) Scenario {
 	}
 }
 
-// Validate checks that a scenario can be simulated.
+// mostSamples bounds the samples of a simulation, and the positions of the planet
+// that it takes: some 300 MB.
+const mostSamples = 1e7
+
+// Validate checks that a scenario can be simulated. Integrations times Channels is
+// at most 1e7; so is Integrations times the parts that an exposure has to be cut
+// into, at most 100.
 func (s Scenario) Validate() error {
 	type limit struct {
 		name   string
@@ -79,7 +85,7 @@ func (s Scenario) Validate() error {
 	}
 	for _, l := range []limit{
 		{"Integrations", float64(s.Integrations), 10, 1e6}, {"Channels", float64(s.Channels), 1, 1e5},
-		{"Integrations*Channels", float64(s.Integrations) * float64(s.Channels), 10, 1e8},
+		{"Integrations*Channels", float64(s.Integrations) * float64(s.Channels), 10, mostSamples},
 		{"WaveLo", s.WaveLo, 1e-3, 1e3}, {"WaveHi", s.WaveHi, s.WaveLo * (1 + 1e-9), 1e3},
 		{"Start", s.Start, -1e8, 1e8}, {"Cadence", s.Cadence, 1e-3, 1e6}, {"Exposure", s.Exposure, 0, s.Cadence},
 		{"Period", s.Period, 1e-3, 1e6}, {"MidTransit", s.MidTransit, -1e8, 1e8}, {"AxisRatio", s.AxisRatio, 1, 1e6},
@@ -93,6 +99,10 @@ func (s Scenario) Validate() error {
 		if !(l.x >= l.lo && l.x <= l.hi) {
 			return fmt.Errorf("simulate: %s is %g; expected a number from %g to %g", l.name, l.x, l.lo, l.hi)
 		}
+	}
+	if n := float64(s.Integrations) * float64(s.parts()); n > mostSamples {
+		return fmt.Errorf("simulate: Exposure is %g s, in which the planet moves so far that %d integrations need %g positions; expected at most %g: shorten Exposure or lower Integrations",
+			s.Exposure, s.Integrations, n, float64(mostSamples))
 	}
 	if len(s.Bands) > 1000 {
 		return fmt.Errorf("simulate: %d bands; expected at most 1000", len(s.Bands))
