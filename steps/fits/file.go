@@ -217,7 +217,7 @@ func (f *File) HDU(name string) (*HDU, error) {
 	if len(f.HDUs) > 0 && strings.EqualFold(want, "PRIMARY") {
 		return f.HDUs[0], nil
 	}
-	return nil, fmt.Errorf("fits: no HDU %q; the file has %s%s", name, f.list(), nearest.Hint(want, known))
+	return nil, fmt.Errorf("fits: no HDU %.40q; the file has %s%s", name, f.list(), nearest.Hint(want, known))
 }
 
 // cutVersion splits "LC,2".

@@ -68,7 +68,7 @@ func (t *Table) Column(name string) (*Column, error) {
 	} else if len(known) > 0 {
 		list = strings.Join(known, ", ")
 	}
-	return nil, fmt.Errorf("fits: %s has no column %q, but %s%s", t.hdu.Label(), name, list, nearest.Hint(name, known))
+	return nil, fmt.Errorf("fits: %s has no column %.40q, but %s%s", t.hdu.Label(), name, list, nearest.Hint(name, known))
 }
 
 // Label names the table's HDU: "HDU 1 (LIGHTCURVES)".

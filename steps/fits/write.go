@@ -23,7 +23,7 @@ func (w *Writer) Bytes() []byte { return w.data }
 func (w *Writer) Image(name string, axes []int, pixels any, cards ...Card) error {
 	err := w.image(name, axes, pixels, cards)
 	if err != nil {
-		return fmt.Errorf("fits: writing image %q: %w", name, err)
+		return fmt.Errorf("fits: writing image %.40q: %w", name, err)
 	}
 	return nil
 }
@@ -104,7 +104,7 @@ func (w *Writer) Table(name string, columns []NewColumn, cards ...Card) error {
 		}
 	}
 	if err := w.table(name, columns, cards); err != nil {
-		return fmt.Errorf("fits: writing table %q: %w", name, err)
+		return fmt.Errorf("fits: writing table %.40q: %w", name, err)
 	}
 	return nil
 }

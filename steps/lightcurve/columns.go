@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 
 	"rimlight/steps/nearest"
 )
@@ -28,8 +29,15 @@ type Column struct {
 }
 
 // Columns is the mapping of a file's layout to the light-curve table; empty for
-// a file that has that layout.
+// a file that has that layout. It has at most 256 rows, and texts of at most 200
+// bytes.
 type Columns []Column
+
+// Every row of a mapping may read a column of the file's size.
+const (
+	maxColumns = 256
+	maxText    = 200 // bytes
+)
 
 // roles are the columns that every light-curve table has, FLUX_ERR excepted.
 var roles = [...]string{"TIME", "FLUX", "FLUX_ERR", "WAVE_LO", "WAVE_HI"}
@@ -45,7 +53,15 @@ func isRole(role string) bool {
 
 // check reports what makes a mapping ambiguous or meaningless.
 func (cols Columns) check() error {
+	if len(cols) > maxColumns {
+		return fmt.Errorf("the column mapping has %d rows, expected at most %d", len(cols), maxColumns)
+	}
 	for i, c := range cols {
+		for _, text := range []string{c.Role, c.HDU, c.Name, c.Unit} {
+			if len(text) > maxText || !utf8.ValidString(text) {
+				return fmt.Errorf("row %d of the column mapping: %.40q is not UTF-8 text of up to %d bytes", i+1, text, maxText)
+			}
+		}
 		if strings.TrimSpace(c.Role) == "" {
 			return fmt.Errorf("row %d of the column mapping has no role, expected %s or an auxiliary's name", i+1, strings.Join(roles[:], ", "))
 		}

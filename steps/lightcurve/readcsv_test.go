@@ -111,6 +111,8 @@ func TestReadCSVErrors(t *testing.T) {
 		"no channels":       {head + "1,2,3\n", "channel,wave_lo,wave_hi\n", nil, "column flux_000, but the channel CSV lists 0 channels"},
 		"mapped auxiliary":  {head + "1,2,3\n", channelCSV, Columns{{Role: "X", Name: "XPOS"}}, `auxiliary X: no column "XPOS"`},
 		"mapped error":      {head + "1,2,3\n", channelCSV, Columns{{Role: "FLUX_ERR", Name: "sig_"}}, "no such column: sig_000"},
+		"endless mapping":   {head + "1,2,3\n", channelCSV, make(Columns, 257), "the column mapping has 257 rows, expected at most 256"},
+		"long role":         {head + "1,2,3\n", channelCSV, Columns{{Role: strings.Repeat("X", 201)}}, "is not UTF-8 text of up to 200 bytes"},
 		"unknown time unit": {head + "1,2,3\n", channelCSV, Columns{{Role: "TIME", Unit: "year"}}, `column time_bjd_tdb: the unit "year" is not one of time`},
 	} {
 		_, _, err := ReadCSV([]byte(c.series), []byte(c.channels), c.mapping)

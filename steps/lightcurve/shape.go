@@ -69,7 +69,7 @@ func (c Curve) checkShape(what string) error {
 func checkAux(what string, aux []Series, n int) error {
 	for _, s := range aux {
 		if len(s.Value) != n {
-			return fmt.Errorf("%s: auxiliary column %s has %d values; expected one for each of %d times", what, s.Name, len(s.Value), n)
+			return fmt.Errorf("%s: auxiliary column %.40s has %d values; expected one for each of %d times", what, s.Name, len(s.Value), n)
 		}
 	}
 	return nil

@@ -66,7 +66,7 @@ func lawComment(data []byte) string {
 	for line := range bytes.Lines(data) {
 		name, value, ok := strings.Cut(strings.TrimPrefix(string(line[:min(len(line), 200)]), "\xef\xbb\xbf"), ":")
 		if ok && strings.HasPrefix(name, "#") && strings.EqualFold(strings.Trim(name, "# \t"), "law") {
-			return strings.TrimSpace(value)
+			return strings.ToValidUTF8(strings.TrimSpace(value), "\ufffd")
 		}
 	}
 	return ""
@@ -92,7 +92,7 @@ func readFITS(data []byte) (Table, error) {
 			return Table{}, err
 		}
 		if k < 2 && c.Unit != "" && c.Unit != "um" {
-			return Table{}, fmt.Errorf("%s: column %s is in %q, expected um", t.Label(), name, c.Unit)
+			return Table{}, fmt.Errorf("%s: column %s is in %.40q, expected um", t.Label(), name, c.Unit)
 		}
 		if columns[k], err = t.Float64s(name); err != nil {
 			return Table{}, err

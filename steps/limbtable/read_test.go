@@ -69,6 +69,13 @@ func TestReadErrors(t *testing.T) {
 	}
 }
 
+func TestReadLaw(t *testing.T) {
+	table, err := Read([]byte("# law: quadr\xe9\nwave_lo,wave_hi,u1,u2\n1,2,3,4\n"))
+	if err != nil || table.Law != "quadr\ufffd" {
+		t.Errorf("a law that is not UTF-8 text: %q, %v", table.Law, err)
+	}
+}
+
 func FuzzRead(f *testing.F) {
 	f.Add([]byte("# law: linear\nwave_lo,wave_hi,u1,u2\n1,2,0.1,0.2\n"))
 	f.Add(fitsTable(f, "um", fits.NewColumn{Name: "U1", Values: []float64{1, 2}}, fits.NewColumn{Name: "U2", Values: []float64{1, 2}}))

@@ -11,6 +11,7 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 
 	"rimlight/steps/nearest"
 )
@@ -26,9 +27,12 @@ type Sheet struct {
 // errors); it keeps the table of names small.
 const maxColumns = 1 << 16
 
+// maxName is the length in bytes of the longest column name.
+const maxName = 200
+
 // Read parses a file. A cell holds a decimal number, or nothing or "nan" for NaN;
 // every row must have as many cells as there are names, and no two names may be
-// alike. Errors start with what and name line and column. Memory stays within a
+// alike. Names are UTF-8 text of up to 200 bytes. Errors start with what and name line and column. Memory stays within a
 // multiple of the file's size.
 func Read(data []byte, what string) (*Sheet, error) {
 	data = bytes.TrimPrefix(data, []byte("\xef\xbb\xbf")) // byte order mark
@@ -53,6 +57,8 @@ func Read(data []byte, what string) (*Sheet, error) {
 		name = strings.TrimSpace(name)
 		line, column := r.FieldPos(i)
 		switch {
+		case len(name) > maxName || !utf8.ValidString(name):
+			return nil, fmt.Errorf("%s: line %d, column %d: the column name %.40q is not UTF-8 text of up to %d bytes", what, line, column, name, maxName)
 		case name == "":
 			return nil, fmt.Errorf("%s: line %d, column %d: a column without a name", what, line, column)
 		case seen[strings.ToUpper(name)]:
@@ -121,7 +127,7 @@ func (s *Sheet) Find(name string) (int, error) {
 	if len(list) > 20 {
 		list = append(append([]string{}, list[:20]...), "...")
 	}
-	return 0, fmt.Errorf("no column %q, but %s%s", name, strings.Join(list, ", "), nearest.Hint(name, s.Names))
+	return 0, fmt.Errorf("no column %.40q, but %s%s", name, strings.Join(list, ", "), nearest.Hint(name, s.Names))
 }
 
 // Row is a view of one row.

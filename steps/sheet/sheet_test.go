@@ -29,6 +29,15 @@ func TestRead(t *testing.T) {
 	}
 }
 
+func TestReadNames(t *testing.T) {
+	for _, name := range []string{"caf\xe9", strings.Repeat("x", maxName+1)} {
+		_, err := Read([]byte("a,"+name+"\n1,2\n"), "test")
+		if err == nil || !strings.Contains(err.Error(), "test: line 1, column 3: the column name") {
+			t.Errorf("column name %.20q: error %v", name, err)
+		}
+	}
+}
+
 func FuzzRead(f *testing.F) {
 	f.Add([]byte("a,b\n1,2\n# c\n,nan\n"))
 	f.Fuzz(func(t *testing.T, data []byte) {
