@@ -17,6 +17,10 @@ const edgeTolerance = 1e-3
 // put down to rounding.
 const asymmetry = 1e-6
 
+// MaxPoints is the largest number of points of a spectrum. Its covariance has as
+// many rows and columns, which then take 128 MiB.
+const MaxPoints = 4096
+
 // noDepth is the flag of a point that came without a depth and without a reason.
 const noDepth = "no depth"
 
@@ -29,7 +33,7 @@ const noDepth = "no depth"
 //
 // A point without a finite depth and a finite error above zero keeps its place
 // with depth and error NaN, and is flagged "no depth" unless it says why itself.
-// It is an error when there are no points, when a channel is not an interval,
+// It is an error when there are no points or more than [MaxPoints], when a channel is not an interval,
 // when two channels are equal or overlap by more than a thousandth of their width
 // (such channels share photons, or belong to two spectra), and when shared is not
 // a symmetric matrix of finite numbers with a diagonal of at least 0. Law and
@@ -37,6 +41,9 @@ const noDepth = "no depth"
 func Assemble(points []Point, shared [][]float64) (Spectrum, error) {
 	if len(points) == 0 {
 		return Spectrum{}, fmt.Errorf("assemble spectrum: no points; expected one for each channel")
+	}
+	if len(points) > MaxPoints {
+		return Spectrum{}, fmt.Errorf("assemble spectrum: %d points; expected at most %d, as their covariance has the square of that", len(points), MaxPoints)
 	}
 	for _, p := range points {
 		if c := p.Channel; !(c.Lo < c.Hi) || !finite(c.Lo) || !finite(c.Hi) {

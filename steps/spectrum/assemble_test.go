@@ -86,6 +86,7 @@ func TestAssembleRefuses(t *testing.T) {
 		want   string
 	}{
 		{nil, nil, "no points"},
+		{make([]Point, MaxPoints+1), nil, "4097 points; expected at most 4096"},
 		{[]Point{a, a}, nil, "channels 0 and 0 both reach from 1 to 1.1 um"},
 		{[]Point{overlapping, a}, nil, "channel 0 (1 to 1.1 um) overlaps channel 1"},
 		{[]Point{a, reversed}, nil, "channel 1 reaches from 1.1 to 1 um"},

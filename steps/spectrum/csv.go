@@ -9,6 +9,7 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 
 	"rimlight/steps/table"
 )
@@ -190,7 +191,9 @@ func ReadCSV(data []byte) (Spectrum, error) {
 			line, _ := r.FieldPos(0)
 			return Spectrum{}, fmt.Errorf("read spectrum: line %d: wave_lo %g is below that of the row before; expected rows in order of wavelength", line, p.Channel.Lo)
 		}
-		points = append(points, p)
+		if points = append(points, p); len(points) > MaxPoints {
+			return Spectrum{}, fmt.Errorf("read spectrum: more than %d rows; expected a row for each channel", MaxPoints)
+		}
 	}
 	out, err := Assemble(points, nil)
 	if err != nil {
@@ -210,6 +213,9 @@ func unmeasured(index int) Point {
 // read puts one cell into p.
 func (f field) read(p *Point, cell string) error {
 	if f.setText != nil {
+		if !utf8.ValidString(cell) {
+			return fmt.Errorf("%.40q; expected UTF-8 text", cell)
+		}
 		f.setText(p, cell)
 		return nil
 	}
@@ -217,14 +223,14 @@ func (f field) read(p *Point, cell string) error {
 	if f.kind == "int64" {
 		n, err := strconv.ParseInt(cell, 10, 53)
 		if err != nil {
-			return fmt.Errorf("%q; expected a whole number", cell)
+			return fmt.Errorf("%.40q; expected a whole number", cell)
 		}
 		f.setNumber(p, float64(n))
 		return nil
 	}
 	x, err := strconv.ParseFloat(cell, 64)
 	if err != nil {
-		return fmt.Errorf("%q; expected a number or nan", cell)
+		return fmt.Errorf("%.40q; expected a number or nan", cell)
 	}
 	f.setNumber(p, x)
 	return nil

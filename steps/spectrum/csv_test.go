@@ -96,11 +96,16 @@ func TestReadCSVRefuses(t *testing.T) {
 		header + "1,1,1,1\n":                  "expected an interval",
 		header + "1,2,1,1\n1,2,1,1\n":         "both reach from 1 to 2 um",
 		header + "1,2,1,\"1\n":                "read spectrum: ",
+		"flag," + header + "\xe9,1,2,1,1\n":   `column flag: "\xe9"; expected UTF-8 text`,
 		"channel," + header + "1.5,1,2,1,1\n": `column channel: "1.5"; expected a whole number`,
 	} {
 		if _, err := ReadCSV([]byte(input)); err == nil || !strings.Contains(err.Error(), want) {
 			t.Errorf("%q: error %v; want %q", input, err, want)
 		}
+	}
+	long := header + strings.Repeat("1,2,nan,nan\n", MaxPoints+1)
+	if _, err := ReadCSV([]byte(long)); err == nil || !strings.Contains(err.Error(), "more than 4096 rows") {
+		t.Errorf("more rows than a spectrum has points: error %v", err)
 	}
 }
 

@@ -86,10 +86,10 @@ func header(s Spectrum, notes []Note) ([]Note, error) {
 	seen := map[string]bool{}
 	for _, n := range out {
 		if n.Name == "" {
-			return nil, fmt.Errorf("write spectrum: the note %q has no name; give it one", n.Text)
+			return nil, fmt.Errorf("write spectrum: the note %.40q has no name; give it one", n.Text)
 		}
 		if seen[n.Name] {
-			return nil, fmt.Errorf("write spectrum: two notes are named %q; rename one", n.Name)
+			return nil, fmt.Errorf("write spectrum: two notes are named %.40q; rename one", n.Name)
 		}
 		seen[n.Name] = true
 	}
