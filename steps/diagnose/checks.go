@@ -144,7 +144,7 @@ func FitChecks(what string, p fit.Posterior) []check.Check {
 		Why:    "a fit that stopped early has neither the best values nor their errors",
 	}
 	if !converged.Passed {
-		converged.Limit += fmt.Sprintf("; it ended %q", p.Status)
+		converged.Limit += fmt.Sprintf("; it ended %.40q", p.Status)
 	}
 	if len(p.Warnings) > 0 {
 		converged.Why += "; the fit warned: " + strings.Join(p.Warnings, "; ")

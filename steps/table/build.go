@@ -33,17 +33,17 @@ func (t Table) Check() error {
 	for k, c := range t.Columns {
 		switch {
 		case c.Name == "":
-			return fmt.Errorf("table %q: column %d has no name; give it one", t.Title, k+1)
+			return fmt.Errorf("table %.40q: column %d has no name; give it one", t.Title, k+1)
 		case seen[c.Name]:
-			return fmt.Errorf("table %q: two columns are named %q; rename one", t.Title, c.Name)
+			return fmt.Errorf("table %.40q: two columns are named %.40q; rename one", t.Title, c.Name)
 		case len(c.Text) > 0 && len(c.Number) > 0:
-			return fmt.Errorf("table %q: column %q has text and numbers; set one of the two", t.Title, c.Name)
+			return fmt.Errorf("table %.40q: column %.40q has text and numbers; set one of the two", t.Title, c.Name)
 		case len(c.Text) > 0 && c.Unit != "":
-			return fmt.Errorf("table %q: column %q is text and has unit %q; leave the unit empty", t.Title, c.Name, c.Unit)
+			return fmt.Errorf("table %.40q: column %.40q is text and has unit %.40q; leave the unit empty", t.Title, c.Name, c.Unit)
 		case c.Digits < 0 || c.Digits > 17:
-			return fmt.Errorf("table %q: column %q asks for %d digits; expected 0 (for 6) to 17", t.Title, c.Name, c.Digits)
+			return fmt.Errorf("table %.40q: column %.40q asks for %d digits; expected 0 (for 6) to 17", t.Title, c.Name, c.Digits)
 		case c.rows() != t.Columns[0].rows():
-			return fmt.Errorf("table %q: column %q has %d rows; expected %d, as column %q has",
+			return fmt.Errorf("table %.40q: column %.40q has %d rows; expected %d, as column %.40q has",
 				t.Title, c.Name, c.rows(), t.Columns[0].rows(), t.Columns[0].Name)
 		}
 		seen[c.Name] = true
