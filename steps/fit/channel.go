@@ -3,6 +3,7 @@ package fit
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
@@ -36,7 +37,17 @@ const doubtfulChi2 = 2
 // doubtful: a fit that did not converge, a radius ratio at the end of its range,
 // a reduced chi-square above 2.
 func Channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors) (spectrum.Point, CurveFit, error) {
-	what := fmt.Sprintf("channel %d (%.6g to %.6g um)", curve.Channel.Index, curve.Channel.Lo, curve.Channel.Hi)
+	return channel(curve, white, setup, priors, nil)
+}
+
+// whatChannel starts the messages of a channel fit.
+func whatChannel(c lightcurve.Channel) string {
+	return fmt.Sprintf("channel %d (%.6g to %.6g um)", c.Index, c.Lo, c.Hi)
+}
+
+// channel is Channel with a function of the recipe, or nil.
+func channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors, own *function) (spectrum.Point, CurveFit, error) {
+	what := whatChannel(curve.Channel)
 	fail := func(err error) (spectrum.Point, CurveFit, error) {
 		return spectrum.Point{}, CurveFit{}, fmt.Errorf("%s: %w", what, err)
 	}
@@ -47,14 +58,14 @@ func Channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors
 	if err != nil {
 		return fail(err)
 	}
-	space, err := channelSpace(setup, white, rows)
+	space, err := channelSpace(setup, white, rows, own)
 	if err != nil {
 		return fail(err)
 	}
 	if usable := countUsable(curve.Mask); usable < leastSamples {
 		return unmeasured(curve, fmt.Sprintf("only %d usable samples; at least %d are needed", usable, leastSamples))
 	}
-	m, err := newModel(curve, setup, space)
+	m, err := newModel(curve, setup, space, own)
 	if err != nil {
 		return fail(err)
 	}
@@ -69,7 +80,7 @@ func Channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors
 	} else if reason != "" {
 		return unmeasured(curve, reason)
 	}
-	if err := m.scan(); err != nil {
+	if err := m.search(); err != nil {
 		return fail(err)
 	}
 	s, err := m.solve([][slots]float64{space.value}, setup.Inflate)
@@ -99,9 +110,9 @@ func countUsable(mask []lightcurve.Flag) int {
 
 // channelSpace is the space of a channel fit: everything at the white fit's
 // values, and the rows' parameters free.
-func channelSpace(setup Setup, white Posterior, rows Priors) (*space, error) {
+func channelSpace(setup Setup, white Posterior, rows Priors, own *function) (*space, error) {
 	space := newSpace(setup)
-	if err := space.take(white); err != nil {
+	if err := space.take(white, own); err != nil {
 		return nil, err
 	}
 	for _, p := range rows {
@@ -122,12 +133,16 @@ func channelSpace(setup Setup, white Posterior, rows Priors) (*space, error) {
 	return space, nil
 }
 
-// take sets the values of a white posterior, free and held.
-func (s *space) take(white Posterior) error {
+// take sets the values of a white posterior, free and held, but for those of the
+// recipe's function.
+func (s *space) take(white Posterior, own *function) error {
 	set := func(name string, value float64) error {
+		if own != nil && slices.Contains(own.names, name) {
+			return nil
+		}
 		p, err := findName(name)
 		if err != nil {
-			return fmt.Errorf("white posterior: %w", err)
+			return fmt.Errorf("white posterior: %w; if it comes from WhiteWith, fit the channels with ChannelWith", err)
 		}
 		s.name[p.slot] = name
 		s.value[p.slot] = s.coordinate(p.slot, value)

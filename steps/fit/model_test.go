@@ -30,7 +30,7 @@ func TestJacobian(t *testing.T) {
 		}, true); err != nil {
 			t.Fatal(err)
 		}
-		m, err := newModel(curve, setup, sp)
+		m, err := newModel(curve, setup, sp, nil)
 		if err != nil {
 			t.Fatal(err)
 		}

@@ -39,7 +39,7 @@ const leastChance = 0.01
 // Errors: those of White; an orbitFrom that is none of the three.
 func WhiteOrbit(curve lightcurve.Curve, setup Setup, priors Priors, orbitFrom string) (Posterior, CurveFit, check.Check, error) {
 	if orbitFrom != OrbitFitted && orbitFrom != OrbitPublished && orbitFrom != OrbitTested {
-		return Posterior{}, CurveFit{}, check.Check{}, fmt.Errorf("white fit: the orbit is to come from %q; expected fitted, published or tested", orbitFrom)
+		return Posterior{}, CurveFit{}, check.Check{}, fmt.Errorf("white fit: the orbit is to come from %.40q; expected fitted, published or tested", orbitFrom)
 	}
 	free, freeFit, err := White(curve, setup, priors)
 	if err != nil {

@@ -72,7 +72,7 @@ func findName(name string) (parameterName, error) {
 		}
 		known = append(known, p.name)
 	}
-	return parameterName{}, fmt.Errorf("unknown parameter %q%s; expected one of %v", name, nearest.Hint(name, known), known)
+	return parameterName{}, fmt.Errorf("unknown parameter %.40q%s; expected one of %v", name, nearest.Hint(name, known), known)
 }
 
 // unitFactors turn values into the units of parameterNames.
@@ -90,10 +90,20 @@ func (p Prior) normalise(unit string) (Prior, error) {
 		if want == "" {
 			want = "none"
 		}
-		return Prior{}, fmt.Errorf("parameter %s has unit %q; expected %s", p.Name, p.Unit, want)
+		return Prior{}, fmt.Errorf("parameter %.40s has unit %.40q; expected %s", p.Name, p.Unit, want)
 	}
-	bad := func(want string) (Prior, error) {
-		return Prior{}, fmt.Errorf("prior of %s is %s with A=%g, B=%g, Lo=%g, Hi=%g; expected %s", p.Name, p.Kind, p.A, p.B, p.Lo, p.Hi, want)
+	if err := p.check(); err != nil {
+		return Prior{}, err
+	}
+	p.A, p.B, p.Lo, p.Hi = p.A*factor, p.B*factor, p.Lo*factor, p.Hi*factor
+	p.Unit = unit
+	return p, nil
+}
+
+// check reports numbers that are no prior of its kind.
+func (p Prior) check() error {
+	bad := func(want string) error {
+		return fmt.Errorf("prior of %.40s is %.40s with A=%g, B=%g, Lo=%g, Hi=%g; expected %s", p.Name, p.Kind, p.A, p.B, p.Lo, p.Hi, want)
 	}
 	for _, v := range []float64{p.A, p.B, p.Lo, p.Hi} {
 		if v-v != 0 {
@@ -119,11 +129,9 @@ func (p Prior) normalise(unit string) (Prior, error) {
 		}
 	case Fixed:
 	default:
-		return Prior{}, fmt.Errorf("prior of %s has kind %q; expected U, N, TN, logU or =", p.Name, p.Kind)
+		return fmt.Errorf("prior of %.40s has kind %.40q; expected U, N, TN, logU or =", p.Name, p.Kind)
 	}
-	p.A, p.B, p.Lo, p.Hi = p.A*factor, p.B*factor, p.Lo*factor, p.Hi*factor
-	p.Unit = unit
-	return p, nil
+	return nil
 }
 
 // limits returns the interval a prior allows, infinite where there is no limit.

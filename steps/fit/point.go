@@ -67,20 +67,28 @@ func (s *solution) shifts(white Posterior) ([]float64, error) {
 	out := make([]float64, len(white.Names))
 	change := make([]float64, m.rows())
 	for g, name := range white.Names {
+		if isTrend(name) {
+			continue
+		}
+		own := m.own.heldFromWhite(name)
 		named, err := findName(name)
-		if isTrend(name) || err != nil || m.space.isFree(named.slot) {
+		if own < 0 && (err != nil || m.space.isFree(named.slot)) {
 			continue
 		}
 		switch named.slot {
 		case slotRadius, slotLimb1, slotLimb2: // a channel has its own
 			continue
 		}
+		at := func(value float64) ([]float64, error) { return s.at(named.slot, value) }
+		if own >= 0 {
+			at = func(value float64) ([]float64, error) { return s.ownAt(own, value) }
+		}
 		lo, hi := white.Value[g]-white.Err[g], white.Value[g]+white.Err[g]
 		if !(lo < hi) || math.IsInf(hi-lo, 0) {
 			continue
 		}
 		lo, hi = clipNamed(name, lo, hi)
-		if err := s.modelChange(named.slot, lo, hi, change); err != nil {
+		if err := s.modelChange(at, lo, hi, change); err != nil {
 			return nil, err
 		}
 		response := 0.0
@@ -107,24 +115,45 @@ func clipNamed(name string, lo, hi float64) (float64, float64) {
 	return lo, hi
 }
 
+// at is the model, relative to its level, with a parameter of the transit or the
+// settling time at another value.
+func (s *solution) at(slot int, named float64) ([]float64, error) {
+	m := s.model
+	v := s.v
+	v[slot] = m.space.coordinate(slot, named)
+	flux, err := transit.Curve(m.times, m.space.physical(&v))
+	if err != nil {
+		return nil, err
+	}
+	trend := slices.Clone(m.linear)
+	if k := m.design.Settling; slot == slotSettling && k >= 0 {
+		c := s.x[m.leading()+k]
+		floats.AddScaled(trend, c, settleChange(m, math.Exp(v[slotSettling]), math.Exp(s.v[slotSettling])))
+	}
+	floats.Mul(trend, m.factor)
+	return floats.MulTo(flux, flux, trend), nil
+}
+
+// ownAt is the same with a parameter of the recipe's function at another value.
+func (s *solution) ownAt(k int, value float64) ([]float64, error) {
+	m := s.model
+	flux, err := m.transit(&s.v)
+	if err != nil {
+		return nil, err
+	}
+	own, factor := slices.Clone(s.own), make([]float64, len(m.used))
+	own[k] = m.own.coordinate(k, value)
+	if !m.own.evaluate(own, factor) {
+		return nil, m.own.fault()
+	}
+	floats.Mul(flux, factor)
+	return floats.MulTo(flux, flux, m.linear), nil
+}
+
 // modelChange sets change to the difference of the residuals at two values of a
 // held parameter, divided by their distance.
-func (s *solution) modelChange(slot int, lo, hi float64, change []float64) error {
+func (s *solution) modelChange(at func(named float64) ([]float64, error), lo, hi float64, change []float64) error {
 	m := s.model
-	at := func(named float64) ([]float64, error) {
-		v := s.v
-		v[slot] = m.space.coordinate(slot, named)
-		flux, err := transit.Curve(m.times, m.space.physical(&v))
-		if err != nil {
-			return nil, err
-		}
-		trend := slices.Clone(m.trend)
-		if k := m.design.Settling; slot == slotSettling && k >= 0 {
-			c := s.x[len(m.space.free)+k]
-			floats.AddScaled(trend, c, settleChange(m, math.Exp(v[slotSettling]), math.Exp(s.v[slotSettling])))
-		}
-		return floats.MulTo(flux, flux, trend), nil
-	}
 	up, err := at(hi)
 	if err != nil {
 		return err

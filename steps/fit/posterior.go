@@ -2,6 +2,7 @@ package fit
 
 import (
 	"math"
+	"strings"
 
 	"rimlight/steps/orbit"
 	"rimlight/steps/transit"
@@ -60,18 +61,19 @@ func (s *solution) posterior(setup Setup) Posterior {
 	out := Posterior{
 		Chi2: s.chi2, Dof: s.dof, Samples: len(s.model.used),
 		Iterations: s.steps, Status: s.status, Warnings: s.warnings,
-		Model: "flux = transit(t) × (" + trend.Formula() + "); transit(t) is that of a dark sphere on a Keplerian orbit before a star with " +
-			setup.LimbLaw + " limb darkening, 1 out of transit",
-		Cov: columns(size, size),
+		Model: s.model.formula(setup), Cov: columns(size, size),
 	}
 	factor := make([]float64, size) // d named / d coordinate
 	for k := range size {
-		value, unit := s.x[k], ""
-		factor[k] = 1
+		var value float64
+		var unit string
+		value, factor[k] = s.value(k)
+		if k >= len(space.free) && k < s.model.leading() {
+			own := s.model.own
+			unit = own.prior[own.free[k-len(space.free)]].Unit
+		}
 		if k < len(space.free) {
 			slot := space.free[k]
-			value, _ = space.named(slot, s.x[k])
-			_, factor[k] = space.named(slot, s.x[k])
 			if slot == slotShape || slot == slotLimb1 { // may bend within the error
 				factor[k] = s.slope(k, func(v *[slots]float64) float64 {
 					named, _ := space.named(slot, v[slot])
@@ -91,14 +93,34 @@ func (s *solution) posterior(setup Setup) Posterior {
 		out.Err = append(out.Err, math.Sqrt(out.Cov[k][k]))
 	}
 	for slot := range slots {
-		if space.isFree(slot) || slot == slotSettling && !trend.Settling {
+		if space.isFree(slot) || slot == slotSettling && !trend.Settling || slot != slotSettling && s.model.alone {
 			continue
 		}
 		value, _ := space.named(slot, space.value[slot])
 		out.Held = append(out.Held, Prior{Name: space.name[slot], Kind: Fixed, A: value, Unit: unitOf(space.name[slot])})
 	}
-	out.Derived = s.derived()
+	if s.model.own != nil {
+		out.Held = append(out.Held, s.model.own.held()...)
+	}
+	if !s.model.alone {
+		out.Derived = s.derived()
+	}
 	return out
+}
+
+// formula is the model as an equation in words and symbols.
+func (m *model) formula(setup Setup) string {
+	const transit = "transit(t) is that of a dark sphere on a Keplerian orbit before a star with "
+	trend := setup.Trend.Formula()
+	if m.own == nil {
+		return "flux = transit(t) × (" + trend + "); " + transit + setup.LimbLaw + " limb darkening, 1 out of transit"
+	}
+	own := "f(t; " + strings.Join(m.own.names, ", ") + ")"
+	if m.alone {
+		return "flux = " + own + " × (" + trend + "); f is a function of the recipe"
+	}
+	return "flux = transit(t) × " + own + " × (" + trend + "); " + transit + setup.LimbLaw +
+		" limb darkening, 1 out of transit; f is a function of the recipe"
 }
 
 func unitOf(name string) string {

@@ -52,10 +52,10 @@ func (s *Setup) check(what string) error {
 		s.LimbPolicy = PolicyFree
 	}
 	if l := s.LimbLaw; l != LawQuadratic && l != LawLinear && l != LawUniform {
-		return fmt.Errorf("%s: limb-darkening law %q; expected quadratic, linear or uniform", what, l)
+		return fmt.Errorf("%s: limb-darkening law %.40q; expected quadratic, linear or uniform", what, l)
 	}
 	if p := s.LimbPolicy; p != PolicyFree && p != PolicyFixed && p != PolicyPrior {
-		return fmt.Errorf("%s: limb-darkening policy %q; expected free, fixed or prior", what, p)
+		return fmt.Errorf("%s: limb-darkening policy %.40q; expected free, fixed or prior", what, p)
 	}
 	settling := s.Trend.SettlingTime
 	if !s.Trend.Settling {

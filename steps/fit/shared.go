@@ -17,9 +17,13 @@ import (
 // change with a signal of the shape that a depth, limb darkening or the trend has.
 //
 // The result has one row and column per point; those of points without a depth,
-// or without a ShiftGeometry that fits the posterior, are NaN.
+// or without a ShiftGeometry that fits the posterior, are NaN. It is nil for more
+// points than a spectrum can have, spectrum.MaxPoints.
 func SharedCovariance(points []spectrum.Point, white Posterior) [][]float64 {
 	n, size := len(points), len(white.Names)
+	if n > spectrum.MaxPoints {
+		return nil
+	}
 	out := make([][]float64, n)
 	spread := make([][]float64, n) // C Sᵀ
 	known := make([]bool, n)

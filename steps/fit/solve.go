@@ -1,9 +1,12 @@
 package fit
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"slices"
+
+	"gonum.org/v1/gonum/floats"
 
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/systematics"
@@ -20,6 +23,7 @@ type solution struct {
 	minimum
 	model      *model
 	v          [slots]float64 // all coordinates at the minimum
+	own        []float64      // the same of the recipe's function
 	cov        [][]float64    // of the vector of the fit
 	determined []bool
 	triangle   *triangle
@@ -43,15 +47,24 @@ func (m *model) best(starts [][slots]float64) (minimum, error) {
 		for _, slot := range m.space.free {
 			x = append(x, v[slot])
 		}
+		if m.own != nil {
+			x = append(x, m.own.at()...)
+		}
 		got := m.problem().solve(append(x, coefficients...))
 		if got.status != statusInvalid && (!found || got.sum < best.sum*(1-1e-9)) {
 			best, found = got, true
 		}
 	}
-	if !found {
+	if m.own != nil && m.own.err != nil {
+		return minimum{}, m.own.err
+	}
+	switch {
+	case found:
+		return best, nil
+	case m.err != nil:
 		return minimum{}, fmt.Errorf("the transit model cannot be computed at the start values: %w", m.err)
 	}
-	return best, nil
+	return minimum{}, errors.New("the model is not finite at the start values")
 }
 
 // solve fits the model and works out the errors.
@@ -68,9 +81,12 @@ func (m *model) solve(starts [][slots]float64, inflate bool) (*solution, error) 
 		s.minimum = m.problem().solve(got.x)
 		s.chi2 = m.sampleSum(s.res) * m.scale * m.scale
 	}
-	v, coefficients := m.unpack(s.x)
-	s.v = *v
-	m.sumTrend(v, coefficients) // the last evaluation may have been of a rejected step
+	v, own, coefficients := m.unpack(s.x)
+	s.v, s.own = *v, own
+	m.setTrend(v, own, coefficients) // the last evaluation may have been of a rejected step
+	if m.own != nil && m.own.err != nil {
+		return nil, m.own.err
+	}
 	none := make([]bool, m.size())
 	s.triangle = factorise(s.jac, s.res, none, columns(m.size(), m.rows()))
 	s.cov, s.determined = s.triangle.covariance()
@@ -95,8 +111,8 @@ func (s *solution) widen() {
 			continue
 		}
 		s.cov[k][k] = math.Inf(1)
-		if k < len(s.model.space.free) {
-			lo, hi := s.model.space.limits(s.model.space.free[k])
+		if k < s.model.leading() {
+			lo, hi := s.model.limits(k)
 			s.cov[k][k] = (hi - lo) * (hi - lo) / 12
 		}
 	}
@@ -104,20 +120,37 @@ func (s *solution) widen() {
 
 // name is what element k of the vector of the fit is called.
 func (s *solution) name(k int) string {
-	free := s.model.space.free
-	if k < len(free) {
+	free, leading := s.model.space.free, s.model.leading()
+	switch {
+	case k < len(free):
 		return s.model.space.name[free[k]]
+	case k < leading:
+		own := s.model.own
+		return own.names[own.free[k-len(free)]]
 	}
-	return trendPrefix + s.model.design.Names[k-len(free)]
+	return trendPrefix + s.model.design.Names[k-leading]
+}
+
+// value is element k of the vector of the fit as a named value, and its
+// derivative in the element.
+func (s *solution) value(k int) (value, slope float64) {
+	free := s.model.space.free
+	switch {
+	case k < len(free):
+		return s.model.space.named(free[k], s.x[k])
+	case k < s.model.leading():
+		return s.model.own.named(s.model.own.free[k-len(free)], s.x[k])
+	}
+	return s.x[k], 1
 }
 
 // warn collects what a reader should know of the fit.
 func (s *solution) warn() {
 	s.warnings = append(s.warnings, s.model.design.Warnings...)
-	for k, slot := range s.model.space.free {
-		lo, hi := s.model.space.limits(slot)
+	for k := range s.model.leading() {
+		lo, hi := s.model.limits(k)
 		if s.x[k] <= lo || s.x[k] >= hi {
-			value, _ := s.model.space.named(slot, s.x[k])
+			value, _ := s.value(k)
 			s.warnings = append(s.warnings, fmt.Sprintf("%s is at the end of its range, %.6g", s.name(k), value))
 		}
 	}
@@ -143,20 +176,16 @@ func (s *solution) warn() {
 func (s *solution) curveFit(curve lightcurve.Curve) (CurveFit, error) {
 	m := s.model
 	params := m.space.physical(&s.v)
-	flux, err := transit.Curve(curve.Time, params)
-	if err != nil {
-		return CurveFit{}, err
-	}
-	coefficients := s.x[len(m.space.free):]
+	coefficients := s.x[m.leading():]
 	level := m.level * coefficients[0]
+	n := len(curve.Time)
 	out := CurveFit{
 		Channel: curve.Channel,
 		Time:    slices.Clone(curve.Time),
-		Flux:    make([]float64, len(flux)),
-		Err:     make([]float64, len(flux)),
+		Flux:    make([]float64, n),
+		Err:     make([]float64, n),
 		Mask:    slices.Clone(curve.Mask),
-		Transit: flux,
-		Trend:   make([]float64, len(flux)),
+		Trend:   make([]float64, n),
 		Level:   level,
 		Mid:     params.Orbit.MidTransit,
 	}
@@ -168,7 +197,14 @@ func (s *solution) curveFit(curve lightcurve.Curve) (CurveFit, error) {
 			out.Trend[i] += coefficients[k] / coefficients[0] * b
 		}
 	}
-	for i := range flux {
+	var err error
+	if out.Transit, err = s.shape(curve.Time, out.Trend); err != nil {
+		return CurveFit{}, err
+	}
+	if m.alone {
+		out.Mid = m.own.midTransit(s.own)
+	}
+	for i := range n {
 		out.Flux[i] = curve.Flux[i] / level
 		out.Err[i] = curve.Err[i] * s.inflation / level
 	}
@@ -183,9 +219,28 @@ func (s *solution) curveFit(curve lightcurve.Curve) (CurveFit, error) {
 	return out, nil
 }
 
+// shape returns the transit, and multiplies the trend by the recipe's function;
+// where that is alone, it stands in for the transit.
+func (s *solution) shape(times, trend []float64) (flux []float64, err error) {
+	m := s.model
+	var factor []float64
+	if m.own != nil {
+		if factor = m.own.whole(s.own); factor == nil {
+			return nil, m.own.fault()
+		}
+	}
+	if m.alone {
+		return slices.Clone(factor), nil
+	}
+	if m.own != nil {
+		floats.Mul(trend, factor)
+	}
+	return transit.Curve(times, m.space.physical(&s.v))
+}
+
 // scatter is the standard deviation of the relative residuals.
 func (s *solution) scatter() float64 {
-	c0 := s.x[len(s.model.space.free)]
+	c0 := s.x[s.model.leading()]
 	sum := 0.0
 	for i := range s.model.used {
 		r := s.res[i] * s.model.scale / s.model.weight[i] / c0

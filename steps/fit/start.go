@@ -18,6 +18,36 @@ const (
 	scanHalf = 0.05 // d, half width of the scan where the prior sets no limits
 )
 
+// search finds start values: those of the recipe's function, where there is one,
+// in turns with the transit's.
+func (m *model) search() error {
+	if m.own == nil {
+		return m.scan()
+	}
+	for range 2 {
+		m.own.improve(func() float64 {
+			_, sum, err := m.solveTrend(&m.space.value)
+			if err != nil {
+				return math.NaN()
+			}
+			return sum
+		})
+		if m.own.err != nil {
+			return m.own.err
+		}
+		if !m.own.evaluate(m.own.value, m.factor) {
+			return m.own.fault()
+		}
+		if m.alone {
+			return nil
+		}
+		if err := m.scan(); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
 // scan improves the start values of mid-transit time, radius ratio and settling
 // time where they are free: for each trial time and settling time, the trend and
 // the depth of the start's transit shape are solved for linearly, and the pair
@@ -89,6 +119,9 @@ func (m *model) trialOffsets() []float64 {
 	if !(lo < hi) { // the prior lies far from the guess
 		lo, hi = s.limits(slotMid)
 	}
+	if math.IsInf(hi-lo, 0) { // or is too narrow to step through
+		return []float64{s.value[slotMid]}
+	}
 	p := s.physical(&s.value)
 	t14, _ := p.Orbit.Duration(p.RadiusRatio)
 	if !(t14 > 0) {
@@ -117,8 +150,8 @@ func (m *model) trialSettling() []float64 {
 }
 
 // projectTrend returns an orthonormal basis of the weighted trend columns at a
-// settling time, the trend that fits best without a transit, and the weighted
-// residuals of that.
+// settling time, times the function's values; the trend that fits best without a
+// transit; and the weighted residuals of that.
 func (m *model) projectTrend(tau float64) (basis [][]float64, level, left []float64) {
 	n := len(m.used)
 	left = make([]float64, n)
@@ -129,6 +162,7 @@ func (m *model) projectTrend(tau float64) (basis [][]float64, level, left []floa
 			column = systematics.Settle(m.times, m.design.Start, tau)
 		}
 		v := floats.MulTo(make([]float64, n), column, m.weight)
+		floats.Mul(v, m.factor)
 		length := floats.Norm(v, 2)
 		for range 2 {
 			for _, q := range basis {

@@ -8,6 +8,9 @@ import (
 	"rimlight/steps/transit"
 )
 
+// whatWhite starts the messages of a white fit.
+const whatWhite = "white fit"
+
 // Least numbers of usable samples of a fit.
 const (
 	leastSamples   = 50 // altogether
@@ -40,11 +43,15 @@ const (
 // trend that does not fit the curve (see systematics.Trend.Design), fewer than
 // 50 usable samples.
 func White(curve lightcurve.Curve, setup Setup, priors Priors) (Posterior, CurveFit, error) {
-	const what = "white fit"
+	return white(curve, setup, priors, nil)
+}
+
+// white is White with a function of the recipe, or nil.
+func white(curve lightcurve.Curve, setup Setup, priors Priors, own *function) (Posterior, CurveFit, error) {
 	fail := func(err error) (Posterior, CurveFit, error) {
-		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", what, err)
+		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", whatWhite, err)
 	}
-	if err := setup.check(what); err != nil {
+	if err := setup.check(whatWhite); err != nil {
 		return Posterior{}, CurveFit{}, err
 	}
 	rows, warnings, err := limbRows(priors, setup, curve.Channel, false)
@@ -56,7 +63,7 @@ func White(curve lightcurve.Curve, setup Setup, priors Priors) (Posterior, Curve
 	if err != nil {
 		return fail(err)
 	}
-	m, err := newModel(curve, setup, space)
+	m, err := newModel(curve, setup, space, own)
 	if err != nil {
 		return fail(err)
 	}
@@ -66,7 +73,7 @@ func White(curve lightcurve.Curve, setup Setup, priors Priors) (Posterior, Curve
 	if err := m.usableLevel(); err != nil {
 		return fail(err)
 	}
-	if err := m.scan(); err != nil {
+	if err := m.search(); err != nil {
 		return fail(err)
 	}
 	s, err := m.solve(m.starts(), setup.Inflate)

@@ -10,7 +10,9 @@ import (
 func init() {
 	Table["rimlight/steps/fit/fit"] = map[string]reflect.Value{
 		"Channel":          reflect.ValueOf(fit.Channel),
+		"ChannelWith":      reflect.ValueOf(fit.ChannelWith),
 		"CurveFit":         reflect.ValueOf((*fit.CurveFit)(nil)),
+		"Function":         reflect.ValueOf(fit.Function),
 		"Posterior":        reflect.ValueOf((*fit.Posterior)(nil)),
 		"Prior":            reflect.ValueOf((*fit.Prior)(nil)),
 		"Priors":           reflect.ValueOf((*fit.Priors)(nil)),
@@ -19,5 +21,6 @@ func init() {
 		"SharedCovariance": reflect.ValueOf(fit.SharedCovariance),
 		"White":            reflect.ValueOf(fit.White),
 		"WhiteOrbit":       reflect.ValueOf(fit.WhiteOrbit),
+		"WhiteWith":        reflect.ValueOf(fit.WhiteWith),
 	}
 }
