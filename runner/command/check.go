@@ -51,9 +51,13 @@ be computed, and why.` + exitHelp,
 					fmt.Fprintf(a.stdout, "%-18s   takes %s\n", "", strings.Join(f.Takes, ", "))
 				}
 			}
+			if o.why != "" {
+				return a.showWhy(o.why, e, e.Looked())
+			}
 			return nil
 		},
 	}
 	o.flags(c)
+	c.Flags().StringVar(&o.why, "why", "", "`STEP`: show the key of a step, and what changed in it (STEP:N for element N)")
 	return c
 }

@@ -99,6 +99,6 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 		SilenceUsage:  true,
 	}
 	root.CompletionOptions.HiddenDefaultCmd = true
-	root.AddCommand(a.runCommand(), a.checkCommand(), a.demoCommand())
+	root.AddCommand(a.runCommand(), a.checkCommand(), a.demoCommand(), a.storeCommand())
 	return root
 }

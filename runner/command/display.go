@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"time"
 
 	"github.com/schollz/progressbar/v3"
@@ -173,4 +174,19 @@ func (d *display) finish(doc reports.Document, written outputs) {
 	fmt.Fprintf(d.app.stdout, "%-22s %d passed, %d failed\n", "checks", written.passed, len(written.failed))
 	fmt.Fprintf(d.app.stdout, "%-22s %s, in %s\n", "run", doc.Outcome, doc.Ended.Sub(doc.Started).Round(10*time.Millisecond))
 	fmt.Fprintf(d.app.stdout, "%-22s %s\n", "report", shortPath(written.report))
+}
+
+// again tells how the results came out that were asked for again.
+func (d *display) again(names []string, outcome *engine.Outcome) {
+	for _, name := range names {
+		text := "the same bytes"
+		if slices.Contains(outcome.Differs, name) {
+			text = "other bytes: not reproducible"
+		}
+		if d.opts.json {
+			writeJSON(d.app.stdout, map[string]any{"event": "again", "name": name, "same": text == "the same bytes"})
+		} else if !d.opts.quiet {
+			fmt.Fprintf(d.app.stdout, "%-22s %s\n", "again "+name, text)
+		}
+	}
 }

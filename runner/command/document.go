@@ -104,6 +104,7 @@ func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Out
 	for _, m := range e.Build.Modules {
 		d.Modules = append(d.Modules, reports.Module(m))
 	}
+	d.Host.Confinement = confinement(e.Confinement)
 	d.Outcome = verdict(outcome, d.Steps)
 	d.Ended = time.Now().UTC()
 	return d

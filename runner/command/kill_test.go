@@ -69,7 +69,15 @@ func TestInterrupt(t *testing.T) {
 	if err := c.Start(); err != nil {
 		t.Fatal(err)
 	}
-	time.Sleep(400 * time.Millisecond)
+	records := filepath.Join(b.dir, "rimlight.store", "records", "*", "*")
+	for deadline := time.Now().Add(time.Minute); ; time.Sleep(5 * time.Millisecond) {
+		if found, _ := filepath.Glob(records); len(found) >= 4 { // the list and some squares
+			break
+		}
+		if time.Now().After(deadline) {
+			t.Fatal("nothing was finished in a minute")
+		}
+	}
 	c.Process.Signal(os.Interrupt)
 	c.Wait()
 	if status := c.ProcessState.ExitCode(); status != ExitInterrupted {

@@ -7,6 +7,9 @@ import (
 	"strings"
 
 	"github.com/spf13/cobra"
+
+	"rimlight/runner/confine"
+	"rimlight/runner/worker"
 )
 
 // options are the flags that run, check and demo share.
@@ -17,6 +20,10 @@ type options struct {
 	on         string
 	quiet      bool
 	json       bool
+	why        string   // of run and check
+	again      []string // of run
+	limits     worker.Options
+	confined   confine.Report // what prepare found out
 }
 
 func (o *options) flags(c *cobra.Command) {
@@ -27,6 +34,7 @@ func (o *options) flags(c *cobra.Command) {
 	f.StringVar(&o.store, "store", "", "`DIR` of the result store (default: rimlight.store beside the recipe)")
 	f.IntVar(&o.jobs, "jobs", runtime.NumCPU(), "worker processes at a time")
 	f.StringVar(&o.on, "on", "local", "where to compute: local")
+	o.limitFlags(f)
 	f.BoolVar(&o.quiet, "quiet", false, "say nothing but errors")
 	f.BoolVar(&o.json, "json", false, "events for programs on standard output, one JSON object per line")
 }
@@ -38,6 +46,9 @@ func (o *options) resolve(recipe string) error {
 	}
 	if o.jobs < 1 {
 		return fmt.Errorf("--jobs %d: expected at least 1", o.jobs)
+	}
+	if err := o.checkLimits(); err != nil {
+		return err
 	}
 	stem := strings.TrimSuffix(recipe, filepath.Ext(recipe))
 	if o.out == "" {

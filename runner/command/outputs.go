@@ -87,7 +87,14 @@ func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *e
 	if err != nil {
 		return out, err
 	}
-	return out, out.write(dir, recordFile, b)
+	if err := out.write(dir, recordFile, b); err != nil {
+		return out, err
+	}
+	// So that trimming the store spares what this report needs.
+	if err := e.Store.Register(filepath.Join(dir, recordFile)); err != nil {
+		out.notes = append(out.notes, fmt.Sprintf("the store will not know that this report needs it: %v", err))
+	}
+	return out, nil
 }
 
 func describe(c check.Check) string {
@@ -146,6 +153,10 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 		Outcome: string(doc.Outcome), Started: doc.Started, Ended: doc.Ended, Command: []string{doc.Command}, Outputs: files, Notes: outcome.Notes,
 		Host:    record.Host{Name: e.Host, OS: doc.Host.OS, Arch: doc.Host.Arch, CPUs: doc.Host.CPUs},
 		Program: record.Program{Version: doc.Host.Version, Revision: doc.Host.Revision, SHA256: doc.Host.Executable, Go: doc.Host.GoVersion, Settings: doc.Host.Settings}}
+	for _, l := range e.Confinement {
+		r.Host.Confinement = append(r.Host.Confinement, record.Layer(l))
+	}
+	r.Limits = record.Limits{StepSeconds: e.Limits.StepTime.Seconds(), StepMemory: e.Limits.Memory}
 	for _, m := range doc.Modules {
 		r.Program.Modules = append(r.Program.Modules, record.Module(m))
 	}

@@ -41,11 +41,12 @@ func prepare(ctx context.Context, file string, o *options) (*plan.Plan, worker.C
 	for _, b := range r.Blocks {
 		code.Fences = append(code.Fences, program.Fence{Start: b.Line, End: b.Line + strings.Count(strings.TrimSuffix(b.Code, "\n"), "\n")})
 	}
-	w, err := worker.Start(ctx)
+	w, err := worker.Start(ctx, o.limits.Checking())
 	if err != nil {
 		return nil, worker.Code{}, err
 	}
 	defer w.Close()
+	o.confined = w.Confinement()
 	steps, more, err := w.Check(code)
 	if err != nil {
 		return nil, worker.Code{}, fmt.Errorf("%s: the code could not be checked: %w", file, err)
@@ -105,5 +106,5 @@ func newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Engine, *rec
 		before = nil // an unreadable record explains nothing, but stops nothing
 	}
 	host, _ := os.Hostname()
-	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Before: before.KeyText}, before, nil
+	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Limits: o.limits, Confinement: o.confined, Before: before.KeyText}, before, nil
 }

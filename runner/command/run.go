@@ -6,12 +6,16 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"slices"
+	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 
 	"rimlight/reports"
 	"rimlight/runner/diag"
+	"rimlight/runner/engine"
+	"rimlight/runner/plan"
 )
 
 func (a *app) runCommand() *cobra.Command {
@@ -29,6 +33,8 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 		RunE:    func(c *cobra.Command, args []string) error { return a.run(c.Context(), args[0], &o) },
 	}
 	o.flags(c)
+	c.Flags().StringVar(&o.why, "why", "", "`STEP`: show the key of a step, and what changed in it (STEP:N for element N)")
+	c.Flags().StringArrayVar(&o.again, "again", nil, "`STEP`: compute the results of a step although they are known, and compare")
 	return c
 }
 
@@ -46,6 +52,10 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 	if err := os.MkdirAll(o.out, 0o777); err != nil {
 		return fmt.Errorf("no folder for the report: %w", err)
 	}
+	if err := o.askAgain(p, e); err != nil {
+		return err
+	}
+	a.showConfinement(o)
 	show := a.display(p, o)
 	e.Observe = show.event
 	outcome := e.Run(ctx)
@@ -59,6 +69,12 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 		return &exit{status: ExitFailed, cause: err}
 	}
 	show.finish(doc, written)
+	show.again(o.again, outcome)
+	if o.why != "" {
+		if err := a.showWhy(o.why, e, outcome); err != nil {
+			return err
+		}
+	}
 	switch doc.Outcome {
 	case reports.Interrupted:
 		return &exit{status: ExitInterrupted}
@@ -66,6 +82,30 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 		return &exit{status: ExitFailed}
 	case reports.CheckFailed:
 		return &exit{status: ExitCheckFailed}
+	}
+	if len(outcome.Differs) > 0 {
+		return &exit{status: ExitCheckFailed}
+	}
+	return nil
+}
+
+// askAgain passes --again on to the engine.
+func (o *options) askAgain(p *plan.Plan, e *engine.Engine) error {
+	var known []string
+	for _, s := range p.Steps {
+		known = append(known, s.Name)
+	}
+	for _, name := range o.again {
+		if !slices.Contains(known, name) {
+			text := fmt.Sprintf("--again %s: the recipe has no step of this name; it has %s", name, strings.Join(known, ", "))
+			if near := diag.Nearest(name, known); near != "" {
+				text += "; nearest: " + near
+			}
+			return &plan.OptionError{Text: text}
+		}
+	}
+	if len(o.again) > 0 {
+		e.Again = func(step string) bool { return slices.Contains(o.again, step) }
 	}
 	return nil
 }

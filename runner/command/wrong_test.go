@@ -23,7 +23,10 @@ func TestWrongRecipes(t *testing.T) {
 		t.Fatalf("%d wrong recipes, expected at least 40", len(files))
 	}
 	dir := t.TempDir()
-	for _, f := range files {
+	for i, f := range files {
+		if testing.Short() && i%8 != 0 {
+			continue
+		}
 		t.Run(strings.TrimSuffix(f, ".md"), func(t *testing.T) {
 			var out, errs bytes.Buffer
 			status := Run([]string{"check", f, "--out", filepath.Join(dir, "out"), "--store", filepath.Join(dir, "store")}, &out, &errs)

@@ -15,6 +15,7 @@ import (
 	"time"
 
 	"rimlight/runner/canon"
+	"rimlight/runner/confine"
 	"rimlight/runner/plan"
 	"rimlight/runner/store"
 	"rimlight/runner/worker"
@@ -29,13 +30,22 @@ type Engine struct {
 	Library *plan.Library
 	Build   plan.Build
 	Code    worker.Code
-	Jobs    int    // worker processes at a time, at least 1
-	Host    string // name of this machine, for records
+	Jobs    int            // worker processes at a time, at least 1
+	Host    string         // name of this machine, for records
+	Limits  worker.Options // what a step may use up
+
+	// Confinement is what the worker that checked the recipe said about its own,
+	// for records.
+	Confinement confine.Report
 
 	// Before gives the text of the key that a step had in the run before, ""
 	// when there was none. The element is -1 for a plain step, the input's
 	// name stands for a step's when an input is read.
 	Before func(step string, element int) plan.KeyText
+
+	// Again, when set, names the steps whose results are to be computed although
+	// they are known, to see whether they come out the same.
+	Again func(step string) bool
 
 	// Observe is told what happens, one event at a time.
 	Observe func(Event)
@@ -46,6 +56,7 @@ type Engine struct {
 	heal    []sync.Mutex // one per step: a step is healed by one caller at a time
 	state   sync.RWMutex // guards outcome.Steps, which mending may rewrite
 	notes   []string
+	differs []string
 }
 
 // State says where results came from.
@@ -64,6 +75,7 @@ type Outcome struct {
 	Inputs      []Input
 	Steps       []Step
 	Interrupted bool
+	Differs     []string // steps that gave other results than the time before
 	Notes       []string // what happened to the store: damage found and healed, results that came out differently
 }
 
@@ -151,6 +163,7 @@ func (e *Engine) Run(ctx context.Context) *Outcome {
 	all.Wait()
 	e.outcome.Interrupted = ctx.Err() != nil
 	e.outcome.Notes = e.notes
+	e.outcome.Differs = e.differs
 	return e.outcome
 }
 
@@ -201,6 +214,10 @@ func (e *Engine) lookUp(c *Computation, name string, element int) bool {
 		before = e.Before(name, element)
 	}
 	c.Why = c.Text.Why(before)
+	if e.Again != nil && e.Again(name) {
+		c.Why = "asked for again"
+		return false
+	}
 	r, ok, err := e.Store.Record(c.Text.Key())
 	if err != nil {
 		e.note("%s: its record in the store is of no use (%v); it was computed again", name, err)
@@ -273,7 +290,11 @@ func (e *Engine) readInput(ctx context.Context, in *Input, spec *plan.Input) err
 	}
 	defer e.release()
 	e.observe(Event{Step: in.Name, Input: true, Why: in.Why})
-	w, err := worker.Start(ctx, files...)
+	total := int64(0)
+	for _, n := range sizes {
+		total += n
+	}
+	w, err := worker.Start(ctx, e.Limits.Reading(total), files...)
 	if err != nil {
 		return err
 	}

@@ -27,6 +27,7 @@ func (e *Engine) Forecast() []Forecast {
 	var out []Forecast
 	for i := range e.Plan.Inputs {
 		spec, in := &e.Plan.Inputs[i], &e.outcome.Inputs[i]
+		in.Name = spec.Name
 		f := Forecast{Name: spec.Name, Input: true, Total: 1}
 		if e.forecastInput(spec, in) {
 			f.Known = 1
@@ -42,6 +43,10 @@ func (e *Engine) Forecast() []Forecast {
 	}
 	return out
 }
+
+// Looked gives the keys that Forecast looked up, as the outcome of a run that
+// computed nothing.
+func (e *Engine) Looked() *Outcome { return e.outcome }
 
 func (e *Engine) forecastInput(spec *plan.Input, in *Input) bool {
 	if len(spec.Paths) == 0 {
@@ -74,6 +79,7 @@ func (e *Engine) forecastInput(spec *plan.Input, in *Input) bool {
 
 func (e *Engine) forecastStep(i int) Forecast {
 	spec, out := &e.Plan.Steps[i], &e.outcome.Steps[i]
+	out.Name = spec.Name
 	f := Forecast{Name: spec.Name, Total: 1}
 	var waits []string
 	for _, a := range spec.Args {
@@ -110,6 +116,7 @@ func (e *Engine) forecastStep(i int) Forecast {
 	}
 	f.Total = len(items)
 	comps, todo := e.lookUpElements(spec, items)
+	out.Elements = comps
 	f.Known, f.Why = len(items)-len(todo), reasons(comps, todo)
 	if len(todo) > 0 {
 		return f

@@ -85,12 +85,21 @@ func (e *Engine) keep(batch []keeping) {
 		var differs *store.NotReproducibleError
 		if errors.As(err, &differs) {
 			e.note("%s: %v", k.name, err)
+			e.differ(k.name)
 			err = e.firstInForce(k.c, records[i].Key)
 		}
 		if err == nil {
 			k.c.State, k.c.Log, k.c.Took, k.c.When, k.c.Host = Computed, k.values.Log, k.values.Took, when, e.Host
 		}
 		k.done(err)
+	}
+}
+
+func (e *Engine) differ(name string) {
+	e.watch.Lock()
+	defer e.watch.Unlock()
+	if len(e.differs) == 0 || e.differs[len(e.differs)-1] != name {
+		e.differs = append(e.differs, name)
 	}
 }
 

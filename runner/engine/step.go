@@ -431,8 +431,8 @@ func (p *pool) close() {
 }
 
 // compute runs the step once, on the given element for a fan-out, and keeps
-// what it gives. A worker that dies is replaced once: it may not have been the
-// step's doing.
+// what it gives. When the worker dies of something that may not have been the
+// step's doing, another one gets a second try.
 func (p *pool) compute(ctx context.Context, c *Computation, element []byte) error {
 	args := make([][]byte, len(p.args))
 	copy(args, p.args)
@@ -454,10 +454,14 @@ func (p *pool) compute(ctx context.Context, c *Computation, element []byte) erro
 			break
 		}
 		var lost *worker.LostError
-		if !errors.As(err, &lost) || ctx.Err() != nil {
+		var late *worker.TimeLimitError
+		died := errors.As(err, &lost)
+		if died || errors.As(err, &late) {
+			p.close()
+		}
+		if !died || !lost.Outside() || ctx.Err() != nil {
 			break
 		}
-		p.close()
 	}
 	c.Log = v.Log
 	if err != nil {
@@ -476,8 +480,11 @@ func (p *pool) compute(ctx context.Context, c *Computation, element []byte) erro
 }
 
 func (p *pool) call(ctx context.Context, args [][]byte) (worker.Values, error) {
+	if p.w != nil && p.w.Spent() {
+		p.close()
+	}
 	if p.w == nil {
-		w, err := worker.Start(ctx)
+		w, err := worker.Start(ctx, p.e.Limits)
 		if err != nil {
 			return worker.Values{}, err
 		}

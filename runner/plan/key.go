@@ -79,11 +79,11 @@ func spell(v any) string {
 // The sums are the SHA-256 of its files.
 func ReadKey(in *Input, sums []string, lib *Library, build Build) KeyText {
 	lines := []string{keyVersion, "read " + in.Layout}
-	for _, s := range sums {
-		lines = append(lines, "file "+s)
+	for i, s := range sums {
+		lines = append(lines, fmt.Sprintf("file %d %s", i, s))
 	}
-	for _, c := range in.Columns {
-		lines = append(lines, fmt.Sprintf("column %q %q %q %q %x", c.Role, c.HDU, c.Name, c.Unit, c.Offset))
+	for i, c := range in.Columns {
+		lines = append(lines, fmt.Sprintf("column %d %q %q %q %q %x", i, c.Role, c.HDU, c.Name, c.Unit, c.Offset))
 	}
 	for _, p := range lib.Reached([]string{libraryPath + "lightcurve", libraryPath + "limbtable"}) {
 		lines = append(lines, "library "+p+" "+lib.Hash(p))
@@ -99,7 +99,7 @@ func (t KeyText) Why(before KeyText) string {
 	if before == "" {
 		return "first time"
 	}
-	old, now := t.labelled(before), t.labelled(t)
+	old, now := before.labelled(), t.labelled()
 	changed := map[string]bool{}
 	for label, v := range now {
 		if w, ok := old[label]; !ok || w != v {
@@ -137,23 +137,29 @@ func (t KeyText) Why(before KeyText) string {
 	return strings.Join(reasons, ", ")
 }
 
-// labelled splits a key's text into labels and values: "setting clipSigma" is
-// the label of the line "setting clipSigma float64 3f…".
-func (KeyText) labelled(t KeyText) map[string]string {
+// labelled gives the lines of a key's text by what they are about.
+func (t KeyText) labelled() map[string]string {
 	out := map[string]string{}
-	for i, line := range strings.Split(strings.TrimSuffix(string(t), "\n"), "\n") {
-		kind, rest, _ := strings.Cut(line, " ")
-		label, value := kind, rest
-		switch kind {
-		case "setting", "input", "result", "element", "prior", "library", "module", "program":
-			name, v, _ := strings.Cut(rest, " ")
-			label, value = kind+" "+name, v
-		case "file", "column":
-			label = fmt.Sprintf("%s %d", kind, i)
-		}
-		out[label] = value
+	for _, line := range t.lines() {
+		out[labelOf(line)] = line
 	}
 	return out
+}
+
+// labelOf is what a line of a key's text is about: "setting clipSigma" for the
+// line "setting clipSigma float64 5".
+func labelOf(line string) string {
+	kind, rest, _ := strings.Cut(line, " ")
+	switch kind {
+	case "setting", "input", "result", "element", "prior", "library", "module", "program", "file", "column":
+		name, value, _ := strings.Cut(rest, " ")
+		if kind == "program" && name == "setting" {
+			setting, _, _ := strings.Cut(value, "=")
+			name += " " + setting
+		}
+		return kind + " " + name
+	}
+	return kind
 }
 
 func rank(label string) int {

@@ -2,6 +2,7 @@ package plan
 
 import (
 	"math"
+	"slices"
 	"strings"
 	"testing"
 
@@ -59,7 +60,7 @@ func TestKeySeesEverything(t *testing.T) {
 			b.Modules = []Module{{"gonum.org/v1/gonum", "v0.18.0", "h1:y"}}
 		}},
 		{"program changed: go", func(s *Step, h []string, lib *Library, b *Build) { b.Go = "go1.27" }},
-		{"program changed: setting", func(s *Step, h []string, lib *Library, b *Build) { b.Settings = []string{"GOAMD64=v3"} }},
+		{"program changed: setting GOAMD64", func(s *Step, h []string, lib *Library, b *Build) { b.Settings = []string{"GOAMD64=v3"} }},
 		{"program changed: arch", func(s *Step, h []string, lib *Library, b *Build) { b.Arch = "arm64" }},
 		{"code changed, setting clipSigma changed", func(s *Step, h []string, lib *Library, b *Build) { s.CodeHash, s.Args[3].Value = "beef", 4.0 }},
 	} {
@@ -95,6 +96,25 @@ func TestSpellIsUnambiguous(t *testing.T) {
 			t.Errorf("%#v is spelled over several lines", v)
 		}
 		seen[s] = v
+	}
+}
+
+func TestDiff(t *testing.T) {
+	before := KeyText("rimlight key 1\nstep Fit\ncode aa\nsetting clipSigma float64 5\nsetting gone bool true\nlibrary p 11\nprogram setting GOAMD64=v1\nprogram setting GOEXPERIMENT=x\n")
+	now := KeyText("rimlight key 1\nstep Fit\ncode aa\nsetting clipSigma float64 4\nsetting new int 1\nlibrary p 11\nprogram setting GOAMD64=v1\nprogram setting GOEXPERIMENT=y\n")
+	var got []string
+	for _, l := range now.Diff(before) {
+		got = append(got, string(l.Mark)+l.Text)
+	}
+	want := []string{" rimlight key 1", " step Fit", " code aa", "-setting clipSigma float64 5", "+setting clipSigma float64 4", "+setting new int 1", " library p 11",
+		" program setting GOAMD64=v1", "-program setting GOEXPERIMENT=x", "+program setting GOEXPERIMENT=y", "-setting gone bool true"}
+	if !slices.Equal(got, want) {
+		t.Errorf("got\n%s\nwant\n%s", strings.Join(got, "\n"), strings.Join(want, "\n"))
+	}
+	for _, l := range now.Diff("") {
+		if l.Mark != ' ' {
+			t.Errorf("without a run before, %q is marked %q", l.Text, l.Mark)
+		}
 	}
 }
 

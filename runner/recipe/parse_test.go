@@ -212,6 +212,7 @@ func FuzzParse(f *testing.F) {
 	f.Add([]byte("\ufeff# T\r\n-\t```go\r\n\t\tx\r\n\t```"))
 	f.Add([]byte("> - ~~~go\n>   `a\n> \tb`"))
 	f.Add([]byte("* ```go\n \r\n0")) // a blank line of code that starts behind its own end
+	f.Add([]byte("```go\n\r\r"))
 	f.Add([]byte(small))
 	f.Fuzz(func(t *testing.T, source []byte) {
 		r, diags := Parse("r.md", source)
@@ -231,7 +232,7 @@ func FuzzParse(f *testing.F) {
 		for i, c := range code {
 			text := strings.TrimLeft(c, " ")
 			at := len(c) - len(text)
-			if at > len(lines[i]) || strings.TrimSuffix(lines[i][at:], "\r") != strings.TrimSuffix(text, "\r") && text != "" {
+			if at > len(lines[i]) || strings.TrimRight(lines[i][at:], "\r") != strings.TrimRight(text, "\r") && text != "" {
 				t.Errorf("line %d of the code is %q, of the source %q", i+1, c, lines[i])
 			}
 			if lost := strings.Trim(lines[i][:min(at, len(lines[i]))], " \t\r\v\f>-+*.)0123456789"); lost != "" && text != "" {

@@ -10,6 +10,7 @@ import (
 	"time"
 
 	"rimlight/runner/plan"
+	"rimlight/runner/store"
 )
 
 // Format marks the files that this package writes. A file with another mark
@@ -27,6 +28,7 @@ type Record struct {
 	Command  []string  `json:"command"`
 	Program  Program   `json:"program"`
 	Host     Host      `json:"host"`
+	Limits   Limits    `json:"limits"`
 	Inputs   []Input   `json:"inputs"`
 	Settings []Setting `json:"settings"`
 	Steps    []Step    `json:"steps"`
@@ -66,6 +68,21 @@ type Host struct {
 	OS   string `json:"os"`
 	Arch string `json:"arch"`
 	CPUs int    `json:"cpus"`
+
+	Confinement []Layer `json:"confinement,omitempty"`
+}
+
+// A Layer is a means by which steps were confined, or why it was not there.
+type Layer struct {
+	Name   string `json:"name"`
+	Active bool   `json:"active"`
+	Detail string `json:"detail"`
+}
+
+// Limits are what one step was allowed to use up.
+type Limits struct {
+	StepSeconds float64 `json:"step_seconds"`
+	StepMemory  int64   `json:"step_memory"` // bytes
 }
 
 // A Package is a step-library package with the hash of its sources.
@@ -150,6 +167,26 @@ func Read(path string) (*Record, error) {
 func (r *Record) Bytes() ([]byte, error) {
 	b, err := json.MarshalIndent(r, "", " ")
 	return append(b, '\n'), err
+}
+
+// Keys are the keys of everything that the recorded run computed or used.
+func (r *Record) Keys() []store.Key {
+	var out []store.Key
+	add := func(c Computation) {
+		if k, err := store.ParseKey(c.Key); err == nil {
+			out = append(out, k)
+		}
+	}
+	for _, in := range r.Inputs {
+		add(in.Computation)
+	}
+	for _, s := range r.Steps {
+		add(s.Computation)
+		for _, e := range s.Elements {
+			add(e)
+		}
+	}
+	return out
 }
 
 // KeyText is the text of the key that a step, an input (element -1) or an
