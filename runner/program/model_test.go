@@ -2,6 +2,7 @@ package program
 
 import (
 	"math"
+	"os"
 	"reflect"
 	"strings"
 	"testing"
@@ -153,5 +154,33 @@ func TestOwnModel(t *testing.T) {
 	wantLine := 1 + strings.Count(modelRecipe[:strings.Index(modelRecipe, "curvature := p[1]")], "\n")
 	if e, ok := err.(*PanicError); !ok || e.Pos.Line != wantLine || !strings.Contains(e.Text, "index out of range") {
 		t.Errorf("error %v, want a panic in line %d", err, wantLine)
+	}
+}
+
+// TestReadmeModel checks the code of the README's section on models.
+func TestReadmeModel(t *testing.T) {
+	readme, err := os.ReadFile("../../README.md")
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, section, _ := strings.Cut(string(readme), "\n## Your own model\n")
+	_, code, _ := strings.Cut(section, "```go\n")
+	code, _, found := strings.Cut(code, "```")
+	if !found {
+		t.Fatal("the section has no Go block")
+	}
+	m, err := accept(t, "\n"+code).Compile()
+	if err != nil {
+		t.Fatal(err)
+	}
+	setup := fit.Setup{Period: 3.1, MidTransit: 2460100.4, AxisRatio: 9.4, Inclination: 87.3, RadiusRatio: 0.11}
+	priors := fit.Priors{{Name: "radiusRatio", Kind: fit.Uniform, A: 0.01, B: 0.3}, {Name: "u1", Kind: fit.Uniform, A: -1, B: 2}, {Name: "u2", Kind: fit.Uniform, A: -1, B: 2},
+		{Name: "hook", Kind: fit.Uniform, A: -0.01, B: 0.01}, {Name: "hookTime", Kind: fit.LogUniform, A: 0.001, B: 0.1, Unit: "d"}}
+	out, err := m.Call("FitWhite", []reflect.Value{reflect.ValueOf(modelCurve(t, setup)), reflect.ValueOf(setup), reflect.ValueOf(priors)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if p := out[0].Interface().(fit.Posterior); p.Status != "converged" || len(p.Warnings) > 0 {
+		t.Errorf("%s, %v", p.Status, p.Warnings)
 	}
 }

@@ -13,4 +13,9 @@
 // derivatives; all coefficients, of the transit and of the trend, are fitted
 // jointly, so that the covariance holds all of them. Nothing is random: the same
 // input gives the same result, bit for bit.
+//
+// A recipe can bring a model of its own, a function of parameters that returns a
+// column with a value for each integration (package vector): as a further factor
+// beside the transit, in [WhiteWith] and [ChannelWith], or instead of it, in
+// [Function]. Its derivatives are numeric.
 package fit
