@@ -1,7 +1,6 @@
 package vector
 
 import (
-	"errors"
 	"fmt"
 	"slices"
 )
@@ -89,7 +88,7 @@ func (v V) Repeat(times int) V {
 // Values returns the elements, or the fault as an error.
 func (v V) Values() ([]float64, error) {
 	if v.Fault != "" {
-		return nil, errors.New("vector: " + v.Fault)
+		return nil, fmt.Errorf("vector: %.300s", v.Fault)
 	}
 	return v.X, nil
 }
