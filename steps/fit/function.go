@@ -163,7 +163,8 @@ func (o *function) coordinate(k int, named float64) float64 {
 // named turns a coordinate into the parameter, and gives its derivative.
 func (o *function) named(k int, x float64) (value, slope float64) {
 	if o.logarithmic(k) {
-		return math.Exp(x), math.Exp(x)
+		value = math.Exp(x)
+		return min(max(value, o.prior[k].A), o.prior[k].B), value // rounding may leave the range
 	}
 	return x, 1
 }

@@ -65,5 +65,5 @@ type CurveFit struct {
 	Transit []float64         // transit model, 1 out of transit
 	Trend   []float64         // systematics model, relative to Level; Flux is about Transit times Trend
 	Level   float64           // baseline flux in the curve's own unit
-	Mid     float64           // fitted or held mid-transit time, BJD_TDB, days
+	Mid     float64           // fitted or held mid-transit time, BJD_TDB, days; NaN when a model of the recipe has none
 }

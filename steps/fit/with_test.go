@@ -372,3 +372,61 @@ func TestWithIsReproducible(t *testing.T) {
 		t.Error("two fits of the same data differ")
 	}
 }
+
+// TestFunctionHostile throws odd functions and priors at the fit, which must end,
+// in a result or in an error.
+func TestFunctionHostile(t *testing.T) {
+	s := newScene(t, 34, 80, 1)
+	curve := lightcurve.Curves(s.cube)[0]
+	n := len(curve.Time)
+	constant := func(x float64) vector.V { return vector.Full(n, x) }
+	functions := []func(p []float64) vector.V{
+		func(p []float64) vector.V { return constant(p[0]) },
+		func(p []float64) vector.V { return constant(math.Floor(p[0])) },
+		func(p []float64) vector.V { return constant(math.Log(p[0])) },
+		func(p []float64) vector.V { return constant(1 / p[0]) },
+		func(p []float64) vector.V { return constant(1e300 * p[0]) },
+		func(p []float64) vector.V { return constant(1e-300 * p[0]) },
+		func(p []float64) vector.V { return constant(math.Exp(1e3 * p[0])) },
+		func(p []float64) vector.V { return vector.Linspace(0, p[0], n).Pow(p[0]) },
+		func(p []float64) vector.V { return vector.Linspace(-p[0], p[0], n).Log() },
+		func(p []float64) vector.V { return vector.V{Fault: strings.Repeat("x", 1000)} },
+		func(p []float64) vector.V { // chaos
+			rng := rand.New(rand.NewPCG(math.Float64bits(p[0]), 1))
+			out := make([]float64, n)
+			for i := range out {
+				out[i] = math.Float64frombits(rng.Uint64())
+			}
+			return vector.Of(out)
+		},
+		func(p []float64) vector.V { // noise
+			rng := rand.New(rand.NewPCG(math.Float64bits(p[0]), 1))
+			return constant(rng.NormFloat64()).Add(vector.Linspace(0, rng.NormFloat64(), n))
+		},
+	}
+	priors := []Prior{
+		{Kind: Uniform, A: -1, B: 1}, {Kind: Uniform, A: 0, B: math.SmallestNonzeroFloat64}, {Kind: Uniform, A: -8e307, B: 8e307},
+		{Kind: Uniform, A: 1, B: 1 + 1e-15}, {Kind: LogUniform, A: math.SmallestNonzeroFloat64, B: math.MaxFloat64},
+		{Kind: Normal, A: 1e308, B: 1e308}, {Kind: Normal, A: 0, B: math.SmallestNonzeroFloat64}, {Kind: Normal, A: 1, B: 1e-9},
+		{Kind: TruncatedNormal, A: -1e9, B: 1, Lo: 1, Hi: 2}, {Kind: TruncatedNormal, A: 0, B: 1, Lo: -math.MaxFloat64, Hi: math.MaxFloat64},
+		{Kind: Fixed, A: 1}, {Kind: Fixed, A: -1e308},
+	}
+	for i, f := range functions {
+		for j, prior := range priors {
+			prior.Name = "a"
+			p, fitted, err := Function(curve, systematics.Trend{}, Priors{prior}, []string{"a"}, f)
+			if err != nil {
+				if len(err.Error()) > 600 {
+					t.Errorf("function %d, prior %d: error of %d bytes", i, j, len(err.Error()))
+				}
+				continue
+			}
+			if lo, hi := prior.limits(); prior.Kind != Fixed && !(p.Value[0] >= lo && p.Value[0] <= hi) {
+				t.Errorf("function %d, prior %d: value %g", i, j, p.Value[0])
+			}
+			if len(fitted.Trend) != n || len(p.Cov) != len(p.Names) {
+				t.Errorf("function %d, prior %d: %d values, %d rows", i, j, len(fitted.Trend), len(p.Cov))
+			}
+		}
+	}
+}
