@@ -75,7 +75,7 @@ func Enter(l Limits) (Report, error) {
 	// The collector works harder from here on, well before the kernel refuses
 	// more memory, which no Go program survives.
 	debug.SetMemoryLimit(l.Memory / 4 * 3)
-	return append(Report{{"Go runtime", true, "limits of stack and threads"}}, kernel(l)...), nil
+	return append(Report{{"runtime limits", true, "stack and threads"}}, kernel(l)...), nil
 }
 
 // layer is the outcome of putting on one layer.

@@ -18,7 +18,7 @@ import (
 // a later one forbids.
 func kernel(l Limits) Report {
 	return Report{
-		layer("descriptors", "none inherited but those handed over", closeInherited(l.Keep)),
+		layer("closed descriptors", "none inherited but those handed over", closeInherited(l.Keep)),
 		layer("resource limits", "memory, processor time, open files; no writing to files, no core dumps", setLimits(l)),
 		layer("no tracing", "other processes of the same user cannot look inside", unix.Prctl(unix.PR_SET_DUMPABLE, 0, 0, 0, 0)),
 		layer("no new privileges", "for all threads", noNewPrivileges()),

@@ -316,6 +316,17 @@ func (e *Engine) items(ctx context.Context, each plan.Arg) ([]Value, error) {
 	return items, err
 }
 
+// maxDeaths is how many elements of a fan-out may cost their worker its life
+// before the rest is left alone: each may take its full limit of time.
+const maxDeaths = 4
+
+// fatal reports whether an error is that a worker had to be stopped or died.
+func fatal(err error) bool {
+	var late *worker.TimeLimitError
+	var lost *worker.LostError
+	return errors.As(err, &late) || errors.As(err, &lost)
+}
+
 // missing computes the elements listed in todo with a pool of workers.
 func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int) error {
 	args, err := e.arguments(ctx, spec)
@@ -323,7 +334,7 @@ func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, co
 		return err
 	}
 	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: len(comps) - len(todo), Total: len(comps)})
-	var next, done atomic.Int64
+	var next, done, deaths atomic.Int64
 	done.Store(int64(len(comps) - len(todo)))
 	arriving := make(chan keeping, maxTogether)
 	var kept, all sync.WaitGroup
@@ -359,6 +370,9 @@ func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, co
 				if err != nil {
 					if ctx.Err() != nil {
 						return
+					}
+					if fatal(err) && deaths.Add(1) == maxDeaths {
+						next.Store(int64(len(todo)))
 					}
 					finish(err)
 				}
@@ -454,12 +468,10 @@ func (p *pool) compute(ctx context.Context, c *Computation, element []byte) erro
 			break
 		}
 		var lost *worker.LostError
-		var late *worker.TimeLimitError
-		died := errors.As(err, &lost)
-		if died || errors.As(err, &late) {
+		if fatal(err) {
 			p.close()
 		}
-		if !died || !lost.Outside() || ctx.Err() != nil {
+		if !errors.As(err, &lost) || !lost.Outside() || ctx.Err() != nil {
 			break
 		}
 	}

@@ -8,6 +8,11 @@
 // obeyed. A worker that dies takes nothing with it but the answer that it
 // owed.
 //
+// The first thing that a worker is told is the limits that it has to live
+// under. It confines itself to them (package confine) before it looks at
+// anything that comes from a recipe or a raw file, and reports how far the
+// kernel was able to.
+//
 // There are four questions: check the Go code of a recipe, load it, call one
 // of its steps, and read a raw input file. A file to be read is opened by the
 // parent and handed over as an open descriptor, so a worker needs no path.

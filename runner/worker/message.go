@@ -127,12 +127,13 @@ func message(kind string, v any, blobs ...[]byte) (Message, error) {
 
 // Kinds of question and answer.
 const (
-	askCheck = "check"
-	askLoad  = "load"
-	askCall  = "call"
-	askRead  = "read"
-	answer   = "answer"
-	refusal  = "refusal" // the question itself could not be served
+	askLimits = "limits" // the first question, and only the first
+	askCheck  = "check"
+	askLoad   = "load"
+	askCall   = "call"
+	askRead   = "read"
+	answer    = "answer"
+	refusal   = "refusal" // the question itself could not be served
 )
 
 // Code is the Go code of a recipe: its text with everything else blanked, as

@@ -5,6 +5,18 @@ import (
 	"syscall"
 )
 
+// forbiddenSignal ends a process that makes a forbidden system call.
+const forbiddenSignal = syscall.SIGSYS
+
+// peakMemory is the most memory, in bytes, that a process that has ended was
+// resident with.
+func peakMemory(state *os.ProcessState) int64 {
+	if u, ok := state.SysUsage().(*syscall.Rusage); ok {
+		return u.Maxrss << 10
+	}
+	return 0
+}
+
 // executable is the running program, even when its file was replaced since.
 func executable() (string, error) { return "/proc/self/exe", nil }
 

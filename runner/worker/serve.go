@@ -14,6 +14,7 @@ import (
 	"time"
 
 	"rimlight/runner/canon"
+	"rimlight/runner/confine"
 	"rimlight/runner/program"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/limbtable"
@@ -26,10 +27,7 @@ func Requested() bool { return len(os.Args) == 1 && os.Args[0] == Name }
 // status of the process.
 func Main() int {
 	debug.SetTraceback("none")
-	if err := confine(); err != nil {
-		fmt.Fprintln(os.Stderr, err)
-		return 1
-	}
+	os.Clearenv()
 	// Nothing that runs here may write into the stream of answers by chance.
 	out := os.Stdout
 	os.Stdout = os.Stderr
@@ -40,17 +38,13 @@ func Main() int {
 	return 0
 }
 
-// confine takes away from this process what a step has no need of.
-// Kernel-level layers belong here, before the first question is read.
-func confine() error {
-	os.Clearenv()
-	return nil
-}
+// maxQuestion is how many bytes of arguments one question may hold.
+const maxQuestion = 8 << 30
 
 func serve(r io.Reader, w io.Writer) error {
 	var s server
 	for {
-		q, err := ReadMessage(r, DefaultLimit)
+		q, err := ReadMessage(r, maxQuestion)
 		if err == io.EOF {
 			return nil
 		}
@@ -70,12 +64,28 @@ func serve(r io.Reader, w io.Writer) error {
 }
 
 type server struct {
-	program *program.Program
-	machine *program.Machine
+	confined bool
+	results  int64 // bytes that the results of a step may have together
+	program  *program.Program
+	machine  *program.Machine
 }
 
 func (s *server) serve(q Message) (Message, error) {
+	if s.confined == (q.Kind == askLimits) {
+		return Message{}, fmt.Errorf("question %q out of turn: limits come first, once", q.Kind)
+	}
 	switch q.Kind {
+	case askLimits:
+		var h limitsHead
+		if err := json.Unmarshal(q.Head, &h); err != nil {
+			return Message{}, err
+		}
+		report, err := confine.Enter(h.Limits)
+		if err != nil {
+			return Message{}, err
+		}
+		s.confined, s.results = true, h.Results
+		return message(answer, report)
 	case askCheck:
 		var h Code
 		if err := json.Unmarshal(q.Head, &h); err != nil {
@@ -149,9 +159,14 @@ func (s *server) call(name string, sealed [][]byte) (Message, error) {
 		return message(answer, h)
 	}
 	out := make([][]byte, len(results))
+	size := int64(0)
 	for i, v := range results {
 		if out[i], err = seal(step.Results[i].Type, v); err != nil {
 			h.Failure = &Failure{Text: fmt.Sprintf("result %s cannot be kept: %v", step.Results[i].Name, err), Pos: step.Results[i].Pos}
+			return message(answer, h)
+		}
+		if size += int64(len(out[i])); size > s.results {
+			h.Failure = &Failure{Text: fmt.Sprintf("the results take more than %s, a quarter of --%s; return less, or raise it", Size(s.results), MemoryFlag), Pos: step.Results[i].Pos}
 			return message(answer, h)
 		}
 	}
@@ -163,11 +178,11 @@ func failure(err error) *Failure {
 	var panicked *program.PanicError
 	switch {
 	case errors.As(err, &stepErr):
-		return &Failure{Text: stepErr.Text, Pos: stepErr.Pos}
+		return &Failure{Text: plain(stepErr.Text, maxText), Pos: stepErr.Pos}
 	case errors.As(err, &panicked):
-		return &Failure{Text: panicked.Error(), Pos: panicked.Pos, Panic: true}
+		return &Failure{Text: plain(panicked.Error(), maxText), Pos: panicked.Pos, Panic: true}
 	}
-	return &Failure{Text: err.Error()}
+	return &Failure{Text: plain(err.Error(), maxText)}
 }
 
 func seal(typ string, v reflect.Value) ([]byte, error) {

@@ -11,9 +11,11 @@ import (
 	"os/exec"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"syscall"
 	"time"
 
+	"rimlight/runner/confine"
 	"rimlight/runner/diag"
 	"rimlight/runner/program"
 	"rimlight/steps/lightcurve"
@@ -26,14 +28,16 @@ const Name = "rimlight-worker"
 // A Worker is a running worker process. Its methods may not be called
 // concurrently, but Close may be called at any time.
 type Worker struct {
-	cmd    *exec.Cmd
-	in     io.WriteCloser
-	out    io.Reader
-	stderr *tail
-	limit  int64
-	done   chan struct{}
-	close  sync.Once
-	state  *os.ProcessState
+	cmd     *exec.Cmd
+	options Options
+	layers  confine.Report
+	spent   time.Duration
+	in      io.WriteCloser
+	out     *os.File
+	stderr  *tail
+	done    chan struct{}
+	close   sync.Once
+	state   *os.ProcessState
 }
 
 // A Failure is why a step gave no results.
@@ -60,28 +64,35 @@ type Values struct {
 	Notes  []string // what a reader had to say about its files
 }
 
-// A LostError says that the worker ended without answering.
-type LostError struct {
-	How    string // how the process ended
-	Stderr string // the last that it wrote
-}
+// maxText is how many bytes of a message from a worker are kept.
+const maxText = 4096
 
-// Error says how the process ended.
-func (e *LostError) Error() string {
-	s := "the worker process ended without an answer: " + e.How
-	if e.Stderr != "" {
-		s += "; its last words: " + e.Stderr
+// Start starts a worker and has it confine itself. The files, which may be
+// none, are handed over open; the caller still has to close its own
+// descriptors. The worker is killed when ctx ends. Where a layer of confinement
+// is missing that the options require, the error is an *[UnconfinedError].
+func Start(ctx context.Context, o Options, files ...*os.File) (*Worker, error) {
+	o = o.filled()
+	w, err := start(ctx, o, files)
+	if err != nil {
+		return nil, err
 	}
-	return s
+	m, err := w.ask(askLimits, o.limits(len(files)))
+	if err == nil {
+		err = json.Unmarshal(m.Head, &w.layers)
+	}
+	if err != nil {
+		w.Close()
+		return nil, fmt.Errorf("a worker process could not be confined: %w", err)
+	}
+	if missing := w.layers.Missing(); o.Require && len(missing) > 0 {
+		w.Close()
+		return nil, &UnconfinedError{missing}
+	}
+	return w, nil
 }
 
-// DefaultLimit is how many bytes of results one answer may hold.
-const DefaultLimit = 8 << 30
-
-// Start starts a worker. The files, which may be none, are handed over open;
-// the caller still has to close its own descriptors. The worker is killed when
-// ctx ends.
-func Start(ctx context.Context, files ...*os.File) (*Worker, error) {
+func start(ctx context.Context, o Options, files []*os.File) (*Worker, error) {
 	exe, err := executable()
 	if err != nil {
 		return nil, err
@@ -90,7 +101,7 @@ func Start(ctx context.Context, files ...*os.File) (*Worker, error) {
 	if err != nil {
 		return nil, fmt.Errorf("no working directory for a worker: %w", err)
 	}
-	w := &Worker{stderr: &tail{max: 4096}, limit: DefaultLimit, done: make(chan struct{})}
+	w := &Worker{options: o, stderr: &tail{max: maxText}, done: make(chan struct{})}
 	w.cmd = exec.CommandContext(ctx, exe)
 	w.cmd.Args = []string{Name}
 	w.cmd.Env = []string{}
@@ -131,13 +142,19 @@ func Start(ctx context.Context, files ...*os.File) (*Worker, error) {
 func (w *Worker) Close() {
 	w.close.Do(func() {
 		w.in.Close()
-		killGroup(w.cmd.Process)
+		w.kill()
 		<-w.done
-		if c, ok := w.out.(io.Closer); ok {
-			c.Close()
-		}
+		w.out.Close()
 	})
 }
+
+// Confinement lists the layers that the worker is confined by, and those that
+// could not be had.
+func (w *Worker) Confinement() confine.Report { return w.layers }
+
+// Spent reports whether the worker has worked for so long that it should be
+// replaced before it is asked again.
+func (w *Worker) Spent() bool { return w.spent > w.options.StepTime }
 
 // Check asks for a look at the Go code of a recipe.
 func (w *Worker) Check(code Code) ([]program.Step, diag.List, error) {
@@ -162,8 +179,8 @@ func (w *Worker) Load(code Code) error {
 }
 
 // Call runs a step of the loaded recipe on arguments in their envelopes. A
-// failure of the step itself comes back as a *[Failure], a worker that died as
-// a *[LostError].
+// failure of the step itself comes back as a *[Failure], a worker that took too
+// long and was stopped as a *[TimeLimitError], one that died as a *[LostError].
 func (w *Worker) Call(step string, args [][]byte) (Values, error) {
 	return w.values(w.ask(askCall, callHead{step}, args...))
 }
@@ -186,8 +203,12 @@ func (w *Worker) values(m Message, err error) (Values, error) {
 	if err := json.Unmarshal(m.Head, &h); err != nil {
 		return Values{}, fmt.Errorf("the worker's answer is malformed: %w", err)
 	}
-	v := Values{m.Blobs, h.Log, time.Duration(h.Nanos), h.SHA256, h.Notes}
+	v := Values{m.Blobs, plain(h.Log, 1<<20), time.Duration(h.Nanos), h.SHA256, h.Notes}
+	for i, n := range v.Notes {
+		v.Notes[i] = plain(n, maxText)
+	}
 	if h.Failure != nil {
+		h.Failure.Text = plain(h.Failure.Text, 2*maxText)
 		return v, h.Failure
 	}
 	return v, nil
@@ -198,12 +219,25 @@ func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
 	if err != nil {
 		return Message{}, err
 	}
-	if err := q.Write(w.in); err != nil {
-		return Message{}, w.lost(err)
-	}
-	a, err := ReadMessage(w.out, w.limit)
-	if err != nil {
-		return Message{}, w.lost(err)
+	began := time.Now()
+	var expired atomic.Bool
+	timer := time.AfterFunc(w.options.StepTime, func() {
+		expired.Store(true)
+		w.kill()
+		w.out.SetReadDeadline(time.Now().Add(time.Second)) // should anything else hold the pipe open
+	})
+	a, err := w.exchange(q)
+	timer.Stop()
+	w.spent += time.Since(began)
+	switch {
+	case err != nil && expired.Load():
+		flag := TimeFlag
+		if kind == askCheck {
+			flag = ""
+		}
+		return Message{}, &TimeLimitError{w.options.StepTime, flag}
+	case err != nil:
+		return Message{}, w.lost(kind, err)
 	}
 	switch a.Kind {
 	case answer:
@@ -211,27 +245,49 @@ func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
 	case refusal:
 		var text string
 		json.Unmarshal(a.Head, &text)
-		return Message{}, errors.New(text)
+		return Message{}, errors.New(plain(text, 2*maxText))
 	}
 	return Message{}, fmt.Errorf("the worker gave an answer of unknown kind %q", a.Kind)
 }
 
-// lost waits for the process to end and says how it did.
-func (w *Worker) lost(cause error) error {
-	select {
-	case <-w.done:
-	case <-time.After(2 * time.Second):
-		killGroup(w.cmd.Process)
-		<-w.done
+func (w *Worker) exchange(q Message) (Message, error) {
+	if err := q.Write(w.in); err != nil {
+		return Message{}, err
 	}
-	how := cause.Error()
-	if w.state != nil {
-		how = w.state.String()
-		if ws, ok := w.state.Sys().(syscall.WaitStatus); ok && ws.Signaled() {
-			how = "signal " + ws.Signal().String()
+	// The lengths of the results come on top of the results.
+	return ReadMessage(w.out, w.options.results()+1<<20)
+}
+
+// lost says how a worker ended that gave no answer. One that goes on after a
+// malformed answer is ended.
+func (w *Worker) lost(task string, err error) error {
+	e := &LostError{task: task, limits: w.options}
+	ended := errors.Is(err, io.EOF) || errors.Is(err, io.ErrUnexpectedEOF) || errors.Is(err, syscall.EPIPE)
+	if ended {
+		select {
+		case <-w.done:
+		case <-time.After(2 * time.Second): // it closed the pipe and goes on
+			ended = false
 		}
 	}
-	return &LostError{how, w.stderr.String()}
+	if ended {
+		e.Cause, e.How = causeOf(w.state, w.stderr.String(), w.options)
+	} else {
+		w.kill()
+		<-w.done
+		e.Cause, e.How = Malformed, err.Error()
+	}
+	e.Stderr = w.stderr.String()
+	return e
+}
+
+// kill ends the process, unless it has ended.
+func (w *Worker) kill() {
+	select {
+	case <-w.done:
+	default:
+		killGroup(w.cmd.Process)
+	}
 }
 
 // tail keeps the end of what is written to it.
@@ -254,5 +310,5 @@ func (t *tail) Write(p []byte) (int, error) {
 func (t *tail) String() string {
 	t.mu.Lock()
 	defer t.mu.Unlock()
-	return strings.Join(strings.Fields(t.buf.String()), " ")
+	return plain(strings.Join(strings.Fields(t.buf.String()), " "), t.max)
 }
