@@ -4,7 +4,6 @@ import (
 	"bufio"
 	"encoding/json"
 	"fmt"
-	"go/ast"
 	"os"
 	"os/exec"
 	"sort"
@@ -69,12 +68,7 @@ func undetermined(s sample) bool {
 	c := typed(s)
 	l := &linter{checker: c}
 	l.declarations()
-	ast.Inspect(c.tree, func(n ast.Node) bool {
-		if n != nil {
-			l.result(n)
-		}
-		return true
-	})
+	walk(c.tree, l.result)
 	return len(c.diags) > 0
 }
 

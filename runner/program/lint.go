@@ -21,7 +21,7 @@ func (c *checker) lint() {
 	})
 	l.declarations()
 	walk(c.tree, func(n ast.Node, above []ast.Node) {
-		l.result(n)
+		l.result(n, above)
 		l.statement(n, above)
 		l.expression(n, above)
 	})

@@ -17,10 +17,8 @@ func (l *linter) statement(n ast.Node, above []ast.Node) {
 	case *ast.RangeStmt:
 		l.rangeStmt(n)
 	case *ast.AssignStmt:
-		l.assign(n)
-	case *ast.ForStmt:
-		if a, ok := n.Post.(*ast.AssignStmt); ok && (l.needsSplit(a.Rhs) || l.setsMap(a)) {
-			l.refuse(a, "assign at the end of the loop's body", "an assignment of nil or a composite literal, or of several results to map elements, is not available after the condition of a loop")
+		if n.Tok == token.QUO_ASSIGN {
+			l.divisor(n.Rhs[0])
 		}
 	case *ast.LabeledStmt:
 		for _, a := range above {
@@ -43,76 +41,12 @@ func (l *linter) statement(n ast.Node, above []ast.Node) {
 }
 
 func (l *linter) rangeStmt(n *ast.RangeStmt) {
-	switch u := l.under(n.X).(type) {
-	case *types.Basic:
-		if u.Info()&types.IsString != 0 && n.Key != nil && !isBlank(n.Key) {
-			l.refuse(n, "range over []rune(s) or []byte(s)", "the index of a range over a string is not reliable")
-		}
+	switch l.under(n.X).(type) {
 	case *types.Pointer:
 		l.refuse(n.X, "range over *p", "a range over a pointer to an array is not available")
 	case *types.Signature:
 		l.refuse(n.X, "write a loop with a condition", "a range over a function is not available")
 	}
-}
-
-// assign refuses the multiple assignments that the normaliser cannot split.
-func (l *linter) assign(n *ast.AssignStmt) {
-	if n.Tok == token.QUO_ASSIGN {
-		l.divisor(n.Rhs[0])
-	}
-	if len(n.Lhs) < 2 {
-		return
-	}
-	if len(n.Rhs) == len(n.Lhs) {
-		if l.needsSplit(n.Rhs) && !allNames(n.Lhs) {
-			l.refuse(n, "assign one value per line", "a multiple assignment of nil or composite literals to elements or fields is not available")
-		}
-		return
-	}
-	maps, others := 0, 0
-	for _, x := range n.Lhs {
-		switch x := ast.Unparen(x).(type) {
-		case *ast.Ident:
-		case *ast.IndexExpr:
-			if _, ok := l.under(x.X).(*types.Map); ok {
-				maps++
-				continue
-			}
-			others++
-		default:
-			others++
-		}
-	}
-	if maps > 0 && others > 0 {
-		l.refuse(n, "assign to variables first", "several results cannot be assigned to a map element and to another element or field at once")
-	}
-}
-
-// needsSplit reports whether a multiple assignment of these values goes wrong:
-// one is nil or a composite literal.
-func (c *checker) needsSplit(list []ast.Expr) bool {
-	for _, e := range list {
-		if c.info.Types[e].IsNil() {
-			return true
-		}
-		e = ast.Unparen(e)
-		if u, ok := e.(*ast.UnaryExpr); ok {
-			e = ast.Unparen(u.X)
-		}
-		if _, ok := e.(*ast.CompositeLit); ok {
-			return true
-		}
-	}
-	return false
-}
-
-func allNames(list []ast.Expr) bool {
-	for _, e := range list {
-		if _, ok := ast.Unparen(e).(*ast.Ident); !ok {
-			return false
-		}
-	}
-	return true
 }
 
 func isBlank(e ast.Expr) bool {
@@ -145,10 +79,13 @@ func (l *linter) expression(n ast.Node, above []ast.Node) {
 			l.refuse(n.Key, "use keys of a concrete type", "map keys of interface type are not reliable")
 		}
 	case *ast.SelectorExpr:
-		l.selector(n)
+		l.selector(n, above)
 	case *ast.SliceExpr:
-		if _, ok := l.under(n.X).(*types.Pointer); ok {
+		switch l.under(n.X).(type) {
+		case *types.Pointer:
 			l.refuse(n, "write (*p)[i:j]", "slicing a pointer to an array is not available")
+		case *types.Array:
+			l.shared(n, n.X, above)
 		}
 	case *ast.TypeAssertExpr:
 		if n.Type != nil {
@@ -157,7 +94,9 @@ func (l *linter) expression(n ast.Node, above []ast.Node) {
 	case *ast.BinaryExpr:
 		l.binary(n)
 	case *ast.UnaryExpr:
-		l.address(n, above)
+		if n.Op == token.AND {
+			l.shared(n, n.X, above)
+		}
 	case *ast.Ident:
 		l.name(n)
 	case *ast.CompositeLit:
@@ -184,14 +123,18 @@ func (l *linter) embedding(n *ast.StructType) {
 	}
 }
 
-func (l *linter) selector(n *ast.SelectorExpr) {
+func (l *linter) selector(n *ast.SelectorExpr, above []ast.Node) {
 	s := l.info.Selections[n]
 	switch {
 	case s == nil:
 	case s.Kind() == types.MethodExpr:
 		l.refuse(n, "write func(x T) { x."+n.Sel.Name+"() }", "method expression %s is not available", exprText(n))
 	case s.Kind() == types.MethodVal && !l.called[n]:
-		l.refuse(n, "write func(…) { return x."+n.Sel.Name+"(…) }", "method value %s is not available: it would see later changes of its receiver", exprText(n))
+		if !l.bindable(s, n.Pos()) {
+			l.refuse(n, "write func(…) { return x."+n.Sel.Name+"(…) }", "method value %s of an interface or embedded type is not available", exprText(n))
+		} else if takesPointer(s.Obj().Type().(*types.Signature)) && !s.Indirect() {
+			l.shared(n, n.X, above)
+		}
 	}
 }
 
@@ -214,11 +157,6 @@ func (l *linter) binary(n *ast.BinaryExpr) {
 		}
 		if isInterface(x.Type) || isInterface(y.Type) {
 			l.refuse(n, "compare values of a concrete type", "a comparison of interface values is not reliable")
-		}
-	case token.SHL, token.SHR:
-		b, ok := l.under(n.Y).(*types.Basic)
-		if ok && b.Info()&types.IsUnsigned == 0 && l.info.Types[n.Y].Value == nil {
-			l.refuse(n.Y, "write uint("+exprText(n.Y)+")", "a shift count that is a signed variable is not available: a negative one would go unnoticed")
 		}
 	case token.QUO:
 		l.divisor(n.Y)
@@ -243,17 +181,15 @@ func (l *linter) divisor(e ast.Expr) {
 	}
 }
 
-// address refuses pointers to variables that the iterations of a loop share.
-func (l *linter) address(n *ast.UnaryExpr, above []ast.Node) {
-	if n.Op != token.AND {
-		return
-	}
-	id := l.storage(n.X)
+// shared looks at n, which makes a pointer to x or a slice of it: the variable
+// must not be one that the iterations of a loop share.
+func (l *linter) shared(n, x ast.Expr, above []ast.Node) {
+	id := l.storage(x)
 	if id == nil {
 		return
 	}
-	if o := l.info.Uses[id]; o != nil && loopOf(above, o) != nil {
-		l.refuse(n, "use p := &T{…}, or make it in a function that the loop calls", "the address of %s, declared in a loop, would be the same in all iterations", id.Name)
+	if o := l.info.Uses[id]; o != nil && loopOf(above, o) != nil && !l.fresh(o, above) {
+		l.refuse(n, "use p := &T{…}, or move the body of the loop into a function", "%s would be the same variable in all iterations of the loop", id.Name)
 	}
 }
 
@@ -335,8 +271,12 @@ func (l *linter) closure(lit *ast.FuncLit, above []ast.Node) {
 	if len(vars) == 0 || !l.escape.kept(append(above[:len(above):len(above)], lit)) {
 		return
 	}
+	var copies []*types.Var
 	for _, v := range vars {
-		if !l.escape.copyable(v, lit, above) {
+		switch {
+		case l.escape.copyable(v, lit, above):
+			copies = append(copies, v)
+		case !l.fresh(v, above):
 			l.refuse(lit, "write "+v.Name()+" := "+v.Name()+" just before it, and change neither after", "a function that is kept uses %s, a variable of the loop that all iterations share", v.Name())
 			return
 		}
@@ -344,5 +284,5 @@ func (l *linter) closure(lit *ast.FuncLit, above []ast.Node) {
 	if l.copies == nil {
 		l.checker.copies = map[*ast.FuncLit][]*types.Var{}
 	}
-	l.checker.copies[lit] = vars
+	l.checker.copies[lit] = copies
 }

@@ -12,12 +12,14 @@ import (
 
 // result refuses code whose outcome is not a function of the step's arguments,
 // or that acts otherwise than by its results.
-func (l *linter) result(n ast.Node) {
+func (l *linter) result(n ast.Node, above []ast.Node) {
 	switch n := n.(type) {
 	case *ast.RangeStmt:
 		switch l.under(n.X).(type) {
 		case *types.Map:
-			l.refuse(n, "keep the keys in a slice and range over that", "the order of a range over a map differs from run to run")
+			if !l.sortsKeys(n, above) {
+				l.refuse(n, "collect the keys alone: var keys []string; for k := range m { keys = append(keys, k) }; sort.Strings(keys); and range over them", "the order of a range over a map differs from run to run")
+			}
 		case *types.Chan:
 			l.refuse(n, "use a slice", "channels are not available to recipes")
 		}
@@ -30,17 +32,17 @@ func (l *linter) result(n ast.Node) {
 	case *ast.ChanType:
 		l.refuse(n, "use a slice", "channels are not available to recipes")
 	case *ast.Ident:
-		l.use(n)
+		l.use(n, above)
 	case *ast.CallExpr:
 		l.format(n)
 	}
 }
 
 // use looks at what an identifier names.
-func (l *linter) use(id *ast.Ident) {
+func (l *linter) use(id *ast.Ident, above []ast.Node) {
 	switch o := l.info.Uses[id].(type) {
 	case *types.Func:
-		if why := available.Withheld(o.FullName()); why != "" {
+		if why := available.Withheld(o.FullName()); why != "" && !l.writesText(o, above) {
 			l.refuse(id, why, "%s is not available to recipes", o.FullName())
 		}
 	case *types.Var:
@@ -64,7 +66,7 @@ var addressVerb = regexp.MustCompile(`%[-+# 0-9.\[\]*]*[Tp]|%[-0-9.\[\]]*[+#][-+
 // format looks at calls of the printing functions of package fmt.
 func (l *linter) format(call *ast.CallExpr) {
 	fn := l.callee(call)
-	if fn == nil || fn.Pkg() == nil || fn.Pkg().Path() != "fmt" || available.Withheld(fn.FullName()) != "" {
+	if fn == nil || fn.Pkg() == nil || fn.Pkg().Path() != "fmt" || available.Withheld(fn.FullName()) != "" && !l.writesTextTo(fn, call) {
 		return
 	}
 	sig := fn.Signature()
@@ -75,7 +77,7 @@ func (l *linter) format(call *ast.CallExpr) {
 	if len(call.Args) < fixed {
 		return // the arguments are the results of another call
 	}
-	if name := fn.Name(); name == "Sprintf" || name == "Errorf" || name == "Appendf" {
+	if name := fn.Name(); name == "Sprintf" || name == "Errorf" || name == "Appendf" || name == "Fprintf" {
 		f := call.Args[fixed-1]
 		if v := l.info.Types[f].Value; v == nil || v.Kind() != constant.String {
 			l.refuse(f, "write the format as a literal or constant", "the format of %s is not a constant", name)
@@ -149,4 +151,26 @@ func notPrintable(t types.Type, top bool, seen map[types.Type]bool) string {
 		}
 	}
 	return ""
+}
+
+// writesText reports whether fn, named at the end of above, is called to print
+// into a strings.Builder, which normalise.go rewrites.
+func (l *linter) writesText(fn *types.Func, above []ast.Node) bool {
+	for i := len(above) - 1; i >= max(len(above)-2, 0); i-- {
+		if call, ok := above[i].(*ast.CallExpr); ok && l.callee(call) == fn {
+			return l.writesTextTo(fn, call)
+		}
+	}
+	return false
+}
+
+func (c *checker) writesTextTo(fn *types.Func, call *ast.CallExpr) bool {
+	switch fn.FullName() {
+	case "fmt.Fprint", "fmt.Fprintf", "fmt.Fprintln":
+		if len(call.Args) > 0 {
+			t := c.info.TypeOf(call.Args[0])
+			return t != nil && types.TypeString(t, nil) == "*strings.Builder"
+		}
+	}
+	return false
 }

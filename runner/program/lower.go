@@ -82,8 +82,12 @@ func (n *normaliser) statement(s ast.Stmt) (out []ast.Stmt, scoped bool) {
 		return n.ifStmt(s)
 	case *ast.ForStmt:
 		s.Body.List = n.statements(s.Body.List)
+		n.post(s)
 		return n.hoist(s, &s.Init, s.Post == nil)
 	case *ast.RangeStmt:
+		if n.rewritten[s].text && s.Key != nil && !isBlank(s.Key) {
+			return n.textRange(s), true
+		}
 		n.rangeStmt(s)
 	case *ast.SwitchStmt:
 		n.clauses(s.Body)
@@ -93,6 +97,27 @@ func (n *normaliser) statement(s ast.Stmt) (out []ast.Stmt, scoped bool) {
 		return n.hoist(s, &s.Init, false)
 	}
 	return []ast.Stmt{s}, false
+}
+
+// post rewrites the statement after the condition of a loop. It becomes a call
+// of a function literal when it would be several statements.
+func (n *normaliser) post(s *ast.ForStmt) {
+	if s.Post == nil {
+		return
+	}
+	around := n.fn.literal
+	n.fn.literal = true
+	list, _ := n.statement(s.Post)
+	n.fn.literal = around
+	if len(list) == 1 {
+		s.Post = list[0]
+		return
+	}
+	pos := s.Post.Pos()
+	s.Post = &ast.ExprStmt{X: &ast.CallExpr{Lparen: pos, Rparen: pos, Fun: &ast.FuncLit{
+		Type: &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}},
+		Body: &ast.BlockStmt{Lbrace: pos, List: list, Rbrace: pos},
+	}}}
 }
 
 func (n *normaliser) clauses(body *ast.BlockStmt) {
@@ -138,7 +163,7 @@ func (n *normaliser) rangeStmt(s *ast.RangeStmt) {
 	facts := n.rewritten[s]
 	pos := s.Body.Lbrace
 	if facts.text {
-		// Only the value is used; the interpreter counts the index wrong.
+		// Only the value is used, see textRange.
 		s.X = &ast.CallExpr{Fun: &ast.ArrayType{Lbrack: s.X.Pos(), Elt: ident("rune", s.X.Pos())}, Lparen: s.X.Pos(), Args: []ast.Expr{s.X}, Rparen: s.X.End()}
 	}
 	if s.Key == nil || s.Tok == token.DEFINE && !facts.assigned {
@@ -164,6 +189,51 @@ func (n *normaliser) rangeStmt(s *ast.RangeStmt) {
 	s.Body = &ast.BlockStmt{Lbrace: pos, List: append(head, inner), Rbrace: s.Body.Rbrace}
 }
 
+// textRange makes a range over a string that uses the index a loop, since the
+// interpreter counts the index wrong:
+//
+//	text_1, width_1 := string(x), 0
+//	for at_1 := 0; at_1 < len(text_1); at_1 += width_1 {
+//		rune_1, size_1 := utf8.DecodeRuneInString(text_1[at_1:])
+//		width_1 = size_1
+//		i, r := at_1, rune_1
+//		…
+//	}
+func (n *normaliser) textRange(s *ast.RangeStmt) []ast.Stmt {
+	s.Body.List = n.statements(s.Body.List)
+	n.need["unicode/utf8"] = "utf8"
+	pos := s.Pos()
+	text, width, at, char, size := n.temporary("text"), n.temporary("width"), n.temporary("at"), n.temporary("rune"), n.temporary("size")
+	call := func(fun ast.Expr, x ast.Expr) ast.Expr {
+		return &ast.CallExpr{Fun: fun, Lparen: pos, Args: []ast.Expr{x}, Rparen: pos}
+	}
+	decode := call(&ast.SelectorExpr{X: ident("utf8", pos), Sel: ident("DecodeRuneInString", pos)},
+		&ast.SliceExpr{X: ident(text, pos), Lbrack: pos, Low: ident(at, pos), Rbrack: pos})
+	first := ident(char, pos)
+	give := []ast.Stmt{set(pos, s.Key, s.Tok, ident(at, pos))}
+	if s.Value == nil || isBlank(s.Value) {
+		first = ident("_", pos)
+	} else {
+		give = append(give, set(pos, s.Value, s.Tok, ident(char, pos)))
+	}
+	list := []ast.Stmt{
+		&ast.AssignStmt{Lhs: []ast.Expr{first, ident(size, pos)}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{decode}},
+		set(pos, ident(width, pos), token.ASSIGN, ident(size, pos)),
+	}
+	list = append(append(list, give...), &ast.BlockStmt{Lbrace: s.Body.Lbrace, List: s.Body.List, Rbrace: s.Body.Rbrace})
+	return []ast.Stmt{
+		define(pos, text, call(ident("string", pos), s.X)),
+		define(pos, width, number(pos, token.INT, "0")),
+		&ast.ForStmt{
+			For:  pos,
+			Init: define(pos, at, number(pos, token.INT, "0")),
+			Cond: &ast.BinaryExpr{X: ident(at, pos), OpPos: pos, Op: token.LSS, Y: call(ident("len", pos), ident(text, pos))},
+			Post: set(pos, ident(at, pos), token.ADD_ASSIGN, ident(width, pos)),
+			Body: &ast.BlockStmt{Lbrace: s.Body.Lbrace, List: list, Rbrace: s.Body.Rbrace},
+		},
+	}
+}
+
 func define(pos token.Pos, name string, value ast.Expr) ast.Stmt {
 	return &ast.AssignStmt{Lhs: []ast.Expr{ident(name, pos)}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{value}}
 }
@@ -183,13 +253,32 @@ func (n *normaliser) assignment(s *ast.AssignStmt) []ast.Stmt {
 			return []ast.Stmt{define(pos, name, lit), set(pos, s.Lhs[0], token.ASSIGN, ident(name, pos))}
 		}
 	case len(s.Rhs) == len(s.Lhs):
-		if allNames(s.Lhs) && (n.needsSplit(s.Rhs) || n.redeclares(s)) {
+		if n.needsSplit(s.Rhs) || n.redeclares(s) {
 			return n.oneByOne(s)
 		}
 	case n.setsMap(s):
 		return n.byTemporaries(s)
 	}
 	return []ast.Stmt{s}
+}
+
+// needsSplit reports whether a multiple assignment of these values goes wrong:
+// one is nil, or contains a call, a composite literal or a function literal.
+func (n *normaliser) needsSplit(list []ast.Expr) bool {
+	found := false
+	for _, e := range list {
+		if n.info.Types[e].IsNil() {
+			return true
+		}
+		ast.Inspect(e, func(m ast.Node) bool {
+			switch m.(type) {
+			case *ast.CallExpr, *ast.CompositeLit, *ast.FuncLit:
+				found = true
+			}
+			return !found
+		})
+	}
+	return found
 }
 
 func (n *normaliser) redeclares(s *ast.AssignStmt) bool {
@@ -204,11 +293,52 @@ func (n *normaliser) redeclares(s *ast.AssignStmt) bool {
 	return false
 }
 
-// oneByOne splits a, b := x, y with names on the left.
+// place evaluates the operands of a place that is assigned to: it gives the
+// statements that do so and the place in terms of their variables.
+func (n *normaliser) place(x ast.Expr) (take []ast.Stmt, place ast.Expr) {
+	pos := x.Pos()
+	keep := func(base string, e ast.Expr) ast.Expr {
+		name := n.temporary(base)
+		take = append(take, define(pos, name, e))
+		return ident(name, pos)
+	}
+	switch x := x.(type) {
+	case *ast.IndexExpr:
+		from := x.X
+		if _, array := n.under(x.X).(*types.Array); !array {
+			from = keep("of", x.X)
+		} else {
+			more, inner := n.place(x.X)
+			take, from = append(take, more...), inner
+		}
+		return take, &ast.IndexExpr{X: from, Lbrack: x.Lbrack, Index: keep("key", x.Index), Rbrack: x.Rbrack}
+	case *ast.SelectorExpr:
+		s := n.info.Selections[x]
+		if s == nil {
+			return nil, x
+		}
+		if s.Indirect() {
+			return take, &ast.SelectorExpr{X: keep("of", x.X), Sel: x.Sel}
+		}
+		more, inner := n.place(x.X)
+		return more, &ast.SelectorExpr{X: inner, Sel: x.Sel}
+	case *ast.StarExpr:
+		return take, &ast.StarExpr{Star: x.Star, X: keep("of", x.X)}
+	}
+	return nil, x
+}
+
+// oneByOne splits a, b := x, y.
 func (n *normaliser) oneByOne(s *ast.AssignStmt) []ast.Stmt {
 	pos := s.TokPos
 	var take, give []ast.Stmt
+	places := make([]ast.Expr, len(s.Lhs))
 	for i, x := range s.Lhs {
+		var operands []ast.Stmt
+		operands, places[i] = n.place(x)
+		take = append(take, operands...)
+	}
+	for i, x := range places {
 		tok := token.ASSIGN
 		if s.Tok == token.DEFINE && !isBlank(x) && n.info.Defs[x.(*ast.Ident)] != nil {
 			tok = token.DEFINE
@@ -225,13 +355,13 @@ func (n *normaliser) oneByOne(s *ast.AssignStmt) []ast.Stmt {
 }
 
 // setsMap reports whether several results are assigned and one to a map element.
-func (c *checker) setsMap(s *ast.AssignStmt) bool {
+func (n *normaliser) setsMap(s *ast.AssignStmt) bool {
 	if len(s.Lhs) < 2 || len(s.Rhs) != 1 {
 		return false
 	}
 	for _, x := range s.Lhs {
 		if i, ok := ast.Unparen(x).(*ast.IndexExpr); ok {
-			if _, ok := c.under(i.X).(*types.Map); ok {
+			if _, ok := n.under(i.X).(*types.Map); ok {
 				return true
 			}
 		}
@@ -239,8 +369,8 @@ func (c *checker) setsMap(s *ast.AssignStmt) bool {
 	return false
 }
 
-// byTemporaries splits m[k], x = f() with map elements and names on the left:
-// the operands on the left are evaluated first, then f.
+// byTemporaries splits m[k], x = f() with map elements on the left: the operands
+// on the left are evaluated first, then f.
 func (n *normaliser) byTemporaries(s *ast.AssignStmt) []ast.Stmt {
 	pos := s.TokPos
 	var take, give []ast.Stmt
@@ -252,18 +382,15 @@ func (n *normaliser) byTemporaries(s *ast.AssignStmt) []ast.Stmt {
 		}
 		name := n.temporary("value")
 		names = append(names, ident(name, pos))
-		if i, ok := x.(*ast.IndexExpr); ok {
-			m, k := n.temporary("map"), n.temporary("key")
-			take = append(take, define(pos, m, i.X), define(pos, k, i.Index))
-			x = &ast.IndexExpr{X: ident(m, pos), Lbrack: pos, Index: ident(k, pos), Rbrack: pos}
-		}
+		operands, x := n.place(x)
+		take = append(take, operands...)
 		give = append(give, set(pos, x, token.ASSIGN, ident(name, pos)))
 	}
 	take = append(take, &ast.AssignStmt{Lhs: names, TokPos: pos, Tok: token.DEFINE, Rhs: s.Rhs})
 	return append(take, give...)
 }
 
-// declaration splits var a, b = x, y when a value is a composite literal.
+// declaration splits var a, b = x, y when that goes wrong.
 func (n *normaliser) declaration(s *ast.DeclStmt) []ast.Stmt {
 	d, ok := s.Decl.(*ast.GenDecl)
 	if !ok || d.Tok != token.VAR {

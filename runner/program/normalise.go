@@ -20,12 +20,19 @@ import (
 //     recipe are changed;
 //   - constant expressions become literals of their final type, as the type
 //     checker found it (the interpreter takes var x float64 = 3/2 for 1.5);
+//   - bodies of loops whose variables are kept become calls (loopbody.go);
+//   - method values become function literals (methodvalue.go);
+//   - printing into a strings.Builder and shifts by signed numbers become calls of
+//     other functions (calls.go);
 //   - named results become local variables (in the interpreter they keep the
 //     values of the previous call);
-//   - multiple assignments that redeclare a variable, contain composite
-//     literals or set map elements are split by way of temporary variables;
+//   - multiple assignments that redeclare a variable, contain calls or composite
+//     literals, or set map elements, are split by way of temporary variables (in
+//     the interpreter x, y = x+1, f() leaves x as it was);
+//   - a range over a string with its index becomes a loop that decodes runes;
 //   - a statement before the condition of a loop without a post statement, and
-//     any that had to be split, moves before the statement it belongs to;
+//     any that had to be split, moves before the statement it belongs to; one
+//     after the condition becomes a call;
 //   - variables of a range that are assigned to are copies, as is what a range
 //     with = assigns;
 //   - function literals that are kept get copies of the loop variables they use.
@@ -33,12 +40,17 @@ func normalise(c *checker) *normaliser {
 	n := &normaliser{checker: c, taken: map[string]bool{}, rewritten: map[*ast.RangeStmt]*rangeFacts{}, need: map[string]string{}}
 	n.stripComments()
 	n.stripParens()
+	n.names()
+	n.loopBodies()
+	n.methodValues()
+	n.replaceCalls()
 	n.gather()
 	n.rename()
 	n.fold()
 	n.functions()
 	n.copyCaptured()
 	n.addImports()
+	n.addShift()
 	return n
 }
 
@@ -49,6 +61,7 @@ type normaliser struct {
 	rewritten map[*ast.RangeStmt]*rangeFacts
 	results   map[types.Object]bool // named results that a function literal uses
 	need      map[string]string     // packages that folded constants name, by path
+	shift     string                // name of the function that checks counts of shifts, "" when there is none
 	fn        function
 }
 
@@ -103,8 +116,18 @@ func (n *normaliser) stripParens() {
 	})
 }
 
-// gather collects identifiers, facts on ranges, and the named results that
-// function literals use.
+// names collects the identifiers in use.
+func (n *normaliser) names() {
+	ast.Inspect(n.tree, func(m ast.Node) bool {
+		if id, ok := m.(*ast.Ident); ok {
+			n.taken[id.Name] = true
+		}
+		return true
+	})
+}
+
+// gather collects facts on ranges, and the named results that function literals
+// use.
 func (n *normaliser) gather() {
 	n.results = map[types.Object]bool{}
 	owner := map[types.Object]ast.Node{}
@@ -117,7 +140,6 @@ func (n *normaliser) gather() {
 	walk(n.tree, func(m ast.Node, above []ast.Node) {
 		switch m := m.(type) {
 		case *ast.Ident:
-			n.taken[m.Name] = true
 			if o := n.info.Uses[m]; owner[o] != nil && innermostFunction(above) != owner[o] {
 				n.results[o] = true
 			}

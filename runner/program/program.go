@@ -13,7 +13,7 @@ import (
 // Version names the rules of the check, of the normal form and of the
 // rewriting for the interpreter. It changes whenever the same source could give
 // another normal form or another result, and belongs into every key.
-const Version = "1"
+const Version = "2"
 
 // Limits of a source, beyond which it is refused unread.
 const (
@@ -137,6 +137,10 @@ type checker struct {
 	// copies holds the function literals that must be given copies of variables
 	// of the loop around them.
 	copies map[*ast.FuncLit][]*types.Var
+
+	// calls holds the loops, with their labels, whose bodies must become calls,
+	// so that the variables of the body are new in each iteration.
+	calls map[ast.Node]string
 
 	diags diag.List
 }
