@@ -58,6 +58,6 @@ be computed, and why.` + exitHelp,
 		},
 	}
 	o.flags(c)
-	c.Flags().StringVar(&o.why, "why", "", "`STEP`: show the key of a step, and what changed in it (STEP:N for element N)")
+	c.Flags().StringVar(&o.why, "why", "", "show the key of `STEP`, and what changed in it (STEP:N for element N)")
 	return c
 }

@@ -36,8 +36,8 @@ func (s *size) Type() string { return "size" }
 // limitFlags adds the flags that say what steps may use up.
 func (o *options) limitFlags(f *pflag.FlagSet) {
 	o.limits = worker.Options{StepTime: worker.DefaultStepTime, Memory: worker.DefaultMemory}
-	f.DurationVar(&o.limits.StepTime, worker.TimeFlag, worker.DefaultStepTime, "`DURATION`: longest that a step, or one element of a fan-out, may take")
-	f.Var((*size)(&o.limits.Memory), worker.MemoryFlag, "`SIZE`: most memory that each worker process may use")
+	f.DurationVar(&o.limits.StepTime, worker.TimeFlag, worker.DefaultStepTime, "longest `DURATION` that a step, or one element of a fan-out, may take")
+	f.Var((*size)(&o.limits.Memory), worker.MemoryFlag, "largest `SIZE` of memory that a worker process may use")
 	f.BoolVar(&o.limits.Require, worker.RequireFlag, false, "refuse to run steps unless every layer of confinement is active")
 }
 

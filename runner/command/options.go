@@ -28,10 +28,10 @@ type options struct {
 
 func (o *options) flags(c *cobra.Command) {
 	f := c.Flags()
-	f.StringArrayVar(&o.in, "in", nil, "`NAME=PATH`: read input NAME from PATH (CSV: PATH;CHANNELS-PATH)")
-	f.StringArrayVar(&o.set, "set", nil, "`NAME=VALUE`: give setting NAME another value")
-	f.StringVar(&o.out, "out", "", "`DIR` for the report and its tables (default: beside the recipe, its name with .out)")
-	f.StringVar(&o.store, "store", "", "`DIR` of the result store (default: rimlight.store beside the recipe)")
+	f.StringArrayVar(&o.in, "in", nil, "read an input from another file: `NAME=PATH` (CSV: NAME=PATH;CHANNELS-PATH)")
+	f.StringArrayVar(&o.set, "set", nil, "give a setting another value: `NAME=VALUE`")
+	f.StringVar(&o.out, "out", "", "write the report and its tables into `DIR` (default: beside the recipe, its name with .out)")
+	f.StringVar(&o.store, "store", "", "keep results in the store `DIR` (default: rimlight.store beside the recipe)")
 	f.IntVar(&o.jobs, "jobs", runtime.NumCPU(), "worker processes at a time")
 	f.StringVar(&o.on, "on", "local", "where to compute: local")
 	o.limitFlags(f)

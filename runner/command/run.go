@@ -33,8 +33,8 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 		RunE:    func(c *cobra.Command, args []string) error { return a.run(c.Context(), args[0], &o) },
 	}
 	o.flags(c)
-	c.Flags().StringVar(&o.why, "why", "", "`STEP`: show the key of a step, and what changed in it (STEP:N for element N)")
-	c.Flags().StringArrayVar(&o.again, "again", nil, "`STEP`: compute the results of a step although they are known, and compare")
+	c.Flags().StringVar(&o.why, "why", "", "show the key of `STEP`, and what changed in it (STEP:N for element N)")
+	c.Flags().StringArrayVar(&o.again, "again", nil, "compute the results of `STEP` although they are known, and compare")
 	return c
 }
 

@@ -249,9 +249,9 @@ their age and size. Do not trim while a run is going on.`,
 			return a.trim(s, keep, age, most, remove)
 		},
 	}
-	c.Flags().StringVar(&older, "older", "", "`AGE`: only what was written longer ago, such as 30d or 12h")
-	c.Flags().StringVar(&size, "size", "", "`SIZE`: only as much, oldest first, as brings the store down to it, such as 2GB")
-	c.Flags().StringArrayVar(&keep, "keep", nil, "`REPORT`: a folder or run.json of a run whose results stay")
+	c.Flags().StringVar(&older, "older", "", "only what was written longer ago than `AGE`, such as 30d or 12h")
+	c.Flags().StringVar(&size, "size", "", "only as much, oldest first, as brings the store down to `SIZE`, such as 2GB")
+	c.Flags().StringArrayVar(&keep, "keep", nil, "also keep what the run in `FOLDER` needs (or name its run.json)")
 	c.Flags().BoolVar(&remove, "remove", false, "take them out; without it they are only shown")
 	return c
 }
