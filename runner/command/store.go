@@ -221,7 +221,8 @@ something is damaged.`,
 }
 
 func (a *app) storeTrimCommand() *cobra.Command {
-	var older, size string
+	var older string
+	var most size
 	var keep []string
 	var remove bool
 	c := &cobra.Command{
@@ -242,15 +243,11 @@ their age and size. Do not trim while a run is going on.`,
 			if err != nil {
 				return err
 			}
-			most, err := bytesOf(size)
-			if err != nil {
-				return err
-			}
-			return a.trim(s, keep, age, most, remove)
+			return a.trim(s, keep, age, int64(most), remove)
 		},
 	}
 	c.Flags().StringVar(&older, "older", "", "only what was written longer ago than `AGE`, such as 30d or 12h")
-	c.Flags().StringVar(&size, "size", "", "only as much, oldest first, as brings the store down to `SIZE`, such as 2GB")
+	c.Flags().Var(&most, "size", "only as much, oldest first, as brings the store down to `SIZE`, such as 2GB")
 	c.Flags().StringArrayVar(&keep, "keep", nil, "also keep what the run in `FOLDER` needs (or name its run.json)")
 	c.Flags().BoolVar(&remove, "remove", false, "take them out; without it they are only shown")
 	return c
@@ -311,19 +308,4 @@ func parseAge(s string) (time.Duration, error) {
 		return d, nil
 	}
 	return 0, fmt.Errorf("%q is not an age; expected a number with a unit, such as 30d or 12h", s)
-}
-
-// bytesOf reads a size: 2GB, 500MB, 1.5GiB, or bytes without a unit.
-func bytesOf(s string) (int64, error) {
-	if s == "" {
-		return 0, nil
-	}
-	number := strings.TrimRight(s, "KMGTiBkb")
-	unit := map[string]float64{"": 1, "B": 1, "kB": 1e3, "MB": 1e6, "GB": 1e9, "TB": 1e12, "KiB": 1 << 10, "MiB": 1 << 20, "GiB": 1 << 30, "TiB": 1 << 40}
-	factor, ok := unit[s[len(number):]]
-	n, err := strconv.ParseFloat(number, 64)
-	if !ok || err != nil || !(n >= 0 && n*factor < 1<<62) {
-		return 0, fmt.Errorf("%q is not a size; expected a number with a unit, such as 500MB or 2GiB", s)
-	}
-	return int64(n * factor), nil
 }

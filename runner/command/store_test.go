@@ -89,14 +89,4 @@ func TestStoreWrong(t *testing.T) {
 		{"trim", dir, "--older", "soon"}, {"trim", dir, "--size", "large"}, {"trim", dir, "--keep", filepath.Join(dir, "nowhere")}} {
 		storeCommand(t, ExitWrong, args...)
 	}
-	for in, want := range map[string]int64{"": 0, "12": 12, "2GB": 2e9, "1.5MiB": 3 << 19, "10kB": 10000} {
-		if got, err := bytesOf(in); got != want || err != nil {
-			t.Errorf("bytesOf(%q) = %d, %v; expected %d", in, got, err, want)
-		}
-	}
-	for _, in := range []string{"GB", "-1", "2XB", "1e30GB", "NaN"} {
-		if _, err := bytesOf(in); err == nil {
-			t.Errorf("bytesOf(%q) gave no error", in)
-		}
-	}
 }
