@@ -1,0 +1,225 @@
+package surface
+
+import (
+	"math"
+	"reflect"
+	"slices"
+
+	"rimlight/steps/check"
+	"rimlight/steps/diagnose"
+	"rimlight/steps/figure"
+	"rimlight/steps/fit"
+	"rimlight/steps/fits"
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/limbtable"
+	"rimlight/steps/orbit"
+	"rimlight/steps/simulate"
+	"rimlight/steps/spectrum"
+	"rimlight/steps/systematics"
+	"rimlight/steps/table"
+	"rimlight/steps/transit"
+	"rimlight/steps/vector"
+)
+
+// samples are valid values, which hostile ones are made from.
+type samples struct {
+	byType map[reflect.Type][]reflect.Value
+	// Values that go together, by target: one list for each parameter, which may be
+	// empty and be missing.
+	own map[string][][]any
+}
+
+// of lists the samples for the parameter of a target.
+func (s *samples) of(target string, parameter int, t reflect.Type) []reflect.Value {
+	own := s.own[target]
+	if parameter >= len(own) || len(own[parameter]) == 0 {
+		return s.byType[t]
+	}
+	var all []reflect.Value
+	for _, v := range own[parameter] {
+		all = append(all, reflect.ValueOf(v))
+	}
+	return all
+}
+
+// asksForMuch reports whether a call is meant to take long: a simulation takes
+// as long as the number of its samples and their parts has it.
+func asksForMuch(args []reflect.Value) bool {
+	for _, a := range args {
+		if s, ok := a.Interface().(simulate.Scenario); ok && s.Validate() == nil {
+			parts := 1 + min(100, 40*s.AxisRatio/s.Period*s.Exposure/86400/math.Sqrt(max(s.Depth, 1e-6))*4)
+			return float64(s.Integrations)*float64(s.Channels)*parts > 2e5
+		}
+	}
+	return false
+}
+
+// limbCSV is a limb-darkening table.
+const limbCSV = `# law: quadratic
+wave_lo,wave_hi,u1,u2,u1_err,u2_err
+0.5,1.0,0.41,0.18,0.02,0.03
+1.0,2.0,0.25,0.20,0.02,0.03
+2.0,6.0,0.10,0.14,0.02,0.03
+`
+
+// newSamples reduces a small simulated observation and gathers everything that
+// was passed on the way. It panics when a step of that fails.
+func newSamples() *samples {
+	scenario := simulate.Continuous(7)
+	scenario.Integrations, scenario.Channels, scenario.DeadChannels = 72, 4, 1
+	scenario.Cadence, scenario.Exposure = 290, 280
+	settled := scenario
+	settled.Integrations, settled.Channels = 12, 3
+	cube, truth, err := simulate.Make(scenario)
+	must(err)
+	clean, err := lightcurve.MaskOutliers(cube, lightcurve.RunningMedian{Window: 11, Sigma: 5})
+	must(err)
+	white, err := lightcurve.White(clean)
+	must(err)
+	limb, err := limbtable.Read([]byte(limbCSV))
+	must(err)
+
+	setup := fit.Setup{
+		Period: scenario.Period, MidTransit: scenario.MidTransit, AxisRatio: scenario.AxisRatio,
+		Inclination: scenario.Inclination, Periastron: 90, RadiusRatio: 0.115, Exposure: 280,
+		LimbLaw: fit.LawQuadratic, LimbPolicy: fit.PolicyFree, Limb: limb,
+		Trend: systematics.Trend{Polynomial: 1, Regressors: []string{"X"}},
+	}
+	settling := setup
+	settling.Trend = systematics.Trend{Polynomial: 2, Settling: true, SettlingTime: 0.02}
+	settling.LimbPolicy = fit.PolicyPrior
+	whitePriors := fit.Priors{
+		{Name: "midTransitOffset", Kind: fit.Uniform, A: -0.05, B: 0.05, Unit: "d"},
+		{Name: "axisRatio", Kind: fit.TruncatedNormal, A: 9.5, B: 0.3, Lo: 5, Hi: 15},
+		{Name: "impact", Kind: fit.Uniform, A: 0, B: 1.2},
+		{Name: "radiusRatio", Kind: fit.LogUniform, A: 0.01, B: 0.5},
+		{Name: "q1", Kind: fit.Uniform, A: 0, B: 1},
+		{Name: "q2", Kind: fit.Normal, A: 0.3, B: 0.1},
+		{Name: "period", Kind: fit.Fixed, A: scenario.Period, Unit: "d"},
+	}
+	otherPriors := fit.Priors{
+		{Name: "midTransit", Kind: fit.Normal, A: scenario.MidTransit, B: 0.01, Unit: "d"},
+		{Name: "period", Kind: fit.Normal, A: scenario.Period, B: 1e-4, Unit: "d"},
+		{Name: "inclination", Kind: fit.Uniform, A: 80, B: 90, Unit: "deg"},
+		{Name: "eccentricity", Kind: fit.Uniform, A: 0, B: 0.3},
+		{Name: "periastron", Kind: fit.Fixed, A: 80, Unit: "deg"},
+		{Name: "radiusRatio", Kind: fit.TruncatedNormal, A: 0.11, B: 0.1, Lo: 0.01, Hi: 0.3},
+		{Name: "u1", Kind: fit.Normal, A: 0.3, B: 0.2},
+		{Name: "settlingTime", Kind: fit.LogUniform, A: 0.002, B: 0.2, Unit: "d"},
+	}
+	channelPriors := fit.Priors{
+		{Name: "radiusRatio", Kind: fit.Uniform, A: 0.001, B: 0.5},
+		{Name: "u1", Kind: fit.Uniform, A: -2, B: 3},
+		{Name: "u2", Kind: fit.Uniform, A: -2, B: 3},
+	}
+	posterior, whiteFit, err := fit.White(white, setup, whitePriors)
+	must(err)
+	curves := lightcurve.Curves(clean)
+	var points []spectrum.Point
+	var curveFits []fit.CurveFit
+	for _, c := range curves {
+		p, f, err := fit.Channel(c, posterior, setup, channelPriors)
+		must(err)
+		points, curveFits = append(points, p), append(curveFits, f)
+	}
+	spec, err := spectrum.Assemble(points, fit.SharedCovariance(points, posterior))
+	must(err)
+	fig, err := figure.WhiteFit(whiteFit)
+	must(err)
+	binning, err := lightcurve.Binned(white.Flux)
+	must(err)
+	fitsFile, err := lightcurve.WriteFITS(cube)
+	must(err)
+	withComparison, err := lightcurve.WriteFITSComparison(cube, cube)
+	must(err)
+	series, channels, err := lightcurve.WriteCSV(cube)
+	must(err)
+	path := orbit.Orbit{Period: 3.2, MidTransit: 2460512.35, AxisRatio: 9.5, Inclination: 1.53, Eccentricity: 0.1, Periastron: 1}
+	columns := lightcurve.Columns{
+		{Role: "TIME", Unit: "d", Offset: 2400000.5},
+		{Role: "FLUX_ERR", Name: ""},
+		{Role: "drift", Name: "X"},
+	}
+
+	var limbFITS fits.Writer
+	must(limbFITS.Table("LIMB", []fits.NewColumn{
+		{Name: "WAVE_LO", Unit: "um", Values: []float64{0.5, 1}}, {Name: "WAVE_HI", Unit: "um", Values: []float64{1, 6}},
+		{Name: "U1", Values: []float64{0.4, 0.2}}, {Name: "U2", Values: []float64{0.2, 0.2}},
+	}, fits.StringCard("LIMBLAW", "quadratic", "")))
+	// A ramp is a model of a recipe's own.
+	times := vector.Of(white.Time).Shift(-white.Time[0])
+	ramp := func(p []float64) vector.V {
+		if len(p) < 2 {
+			return times
+		}
+		return times.Scale(-1 / p[1]).Exp().Scale(p[0]).Shift(1)
+	}
+	names := []string{"hook", "hookTime"}
+	hook := fit.Priors{
+		{Name: "hook", Kind: fit.Normal, A: 0, B: 0.01},
+		{Name: "hookTime", Kind: fit.LogUniform, A: 0.002, B: 0.2, Unit: "d"},
+	}
+	whiteWith, channelWith := append(slices.Clone(whitePriors), hook...), append(slices.Clone(channelPriors), hook...)
+
+	s := &samples{byType: map[reflect.Type][]reflect.Value{}, own: map[string][][]any{
+		"fit.White":       {{white, curves[0]}, {setup, settling}, {whitePriors, otherPriors}},
+		"fit.WhiteOrbit":  {{white}, {setup, settling}, {whitePriors, otherPriors}, {"fitted", "published", "tested"}},
+		"fit.Channel":     {{curves[0], curves[1]}, {posterior}, {setup, settling}, {channelPriors}},
+		"fit.WhiteWith":   {{white}, {setup}, {whiteWith}, {names}, {ramp}},
+		"fit.ChannelWith": {{curves[0], curves[1]}, {posterior}, {setup}, {channelWith}, {names}, {ramp}},
+		"fit.Function":    {{white}, {systematics.Trend{}, setup.Trend}, {hook}, {names}, {ramp}},
+
+		"lightcurve.Exclude":     {{}, {scenario.Start, scenario.Start + 0.1}, {scenario.MidTransit, scenario.MidTransit + 1}},
+		"lightcurve.SkipStart":   {{}, {0.0, 10.0, 60.0}},
+		"diagnose.TimeAveraging": {{whiteFit, curveFits[0]}, {5.0, 10.0}, {30.0, 60.0}},
+		"spectrum.Assemble":      {{points}, {[][]float64(nil), fit.SharedCovariance(points, posterior)}},
+		"figure.Detrended":       {{clean}, {curveFits}},
+		"simulate.Make":          {{scenario, settled}},
+
+		"lightcurve.ReadFITS":           {{fitsFile, withComparison}},
+		"lightcurve.ReadFITSComparison": {{withComparison}},
+		"lightcurve.ReadCSV":            {{series}, {channels}},
+		"limbtable.Read":                {{[]byte(limbCSV), limbFITS.Bytes()}},
+		"spectrum.ReadCSV":              {{spectrum.CSV(spec)}},
+	}}
+	for _, v := range []any{
+		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
+		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limb, setup, settling, whitePriors, channelPriors,
+		posterior, whiteFit, curveFits, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},
+		transit.Params{Orbit: path, RadiusRatio: 0.12, U1: 0.3, U2: 0.2, Exposure: 280},
+		diagnose.FitChecks("white light", posterior), []check.Check{},
+		[]spectrum.Note{{Name: "title", Text: "An invented planet"}, {Name: "by", Text: "no one"}},
+		fitsFile, series, spectrum.CSV(spec),
+		times, times.Sin(), vector.Of(white.Flux), times.Less(0.1), vector.Used(white.Mask),
+	} {
+		s.add(reflect.ValueOf(v), 0)
+	}
+	return s
+}
+
+// add keeps v and the values of composed types inside it, a few of each type.
+func (s *samples) add(v reflect.Value, depth int) {
+	if depth > 4 {
+		return
+	}
+	kind := v.Kind()
+	if kind != reflect.Struct && kind != reflect.Slice || depth > 0 && len(s.byType[v.Type()]) >= 12 {
+		return
+	}
+	s.byType[v.Type()] = append(s.byType[v.Type()], v)
+	if kind == reflect.Struct {
+		for i := range v.NumField() {
+			s.add(v.Field(i), depth+1)
+		}
+		return
+	}
+	for i := range min(v.Len(), 4) {
+		s.add(v.Index(i), depth+1)
+	}
+}
+
+func must(err error) {
+	if err != nil {
+		panic("samples: " + err.Error())
+	}
+}
