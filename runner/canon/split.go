@@ -32,6 +32,21 @@ func Split(elem string, data []byte) ([][]byte, error) {
 	return items, r.done()
 }
 
+// Len is the number of elements of an encoded slice, whose elements have the
+// layout elem, as far as its head tells: the elements are not looked at. It is
+// for deciding whether to call [Split], which takes memory for each element.
+func Len(elem string, data []byte) (int, error) {
+	r := reader{data}
+	if _, ok := numberNamed(elem); ok {
+		k, raw, err := r.typed()
+		if err != nil {
+			return 0, err
+		}
+		return len(raw) / k.width, nil
+	}
+	return r.count(majorArray, "an array", 1)
+}
+
 // Join is the inverse of [Split]: the bytes of the slice of the items, each the
 // canonical bytes of a value of the layout elem. For numbers that is checked;
 // for the rest, that items are canonical.

@@ -83,3 +83,23 @@ func TestSplitRefuses(t *testing.T) {
 		}
 	}
 }
+
+func TestLen(t *testing.T) {
+	for _, v := range []any{[]float64{1, 2, 3}, []string{"a", ""}, []uint8{}, [][]int{{1}, {2}, nil}} {
+		data, err := Marshal(v)
+		if err != nil {
+			t.Fatal(err)
+		}
+		slice := reflect.ValueOf(v)
+		layout, err := Layout(slice.Type().Elem())
+		if err != nil {
+			t.Fatal(err)
+		}
+		if n, err := Len(layout, data); err != nil || n != slice.Len() {
+			t.Errorf("%v: got %d, %v; want %d", v, n, err, slice.Len())
+		}
+	}
+	if n, err := Len("string", []byte{0x61, 'a'}); err == nil {
+		t.Errorf("a text has the length %d as a slice", n)
+	}
+}

@@ -45,6 +45,23 @@ func isList(layout string) bool {
 	return ok && (strings.HasPrefix(elem, "struct") || elem == "string")
 }
 
+// maxElements is how many elements a list may have, and a collection that a
+// step runs over: each of them is a file in the store.
+const maxElements = 100000
+
+// split takes a slice apart into the bytes of its elements.
+func split(elem string, data []byte) ([][]byte, error) {
+	n, err := canon.Len(elem, data)
+	if err != nil {
+		return nil, err
+	}
+	if n > maxElements {
+		return nil, fmt.Errorf("a slice of %d elements of type %s: a step runs over at most %d, and no longer slice of structures or texts is kept; use slices of numbers for mass data",
+			n, elem, maxElements)
+	}
+	return canon.Split(elem, data)
+}
+
 const listMark = "rimlight list 1\n"
 
 // arrange gives the value that came from a worker in its envelope, and the
@@ -58,7 +75,7 @@ func arrange(sealed []byte) (Value, [][]byte, error) {
 		return Value{Type: typ, Layout: layout, Hash: store.HashOf(sealed), Size: int64(len(sealed))}, [][]byte{sealed}, nil
 	}
 	elem := layout[len("[]"):]
-	items, err := canon.Split(elem, data)
+	items, err := split(elem, data)
 	if err != nil {
 		return Value{}, nil, err
 	}
@@ -187,7 +204,7 @@ func elements(s *store.Store, v Value) ([]Value, error) {
 	if err != nil {
 		return nil, err
 	}
-	items, err := canon.Split(elem, data)
+	items, err := split(elem, data)
 	if err != nil {
 		return nil, err
 	}

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"os"
 	"strings"
+	"sync"
 	"syscall"
 	"time"
 
@@ -57,26 +58,32 @@ func (e *LostError) Error() string {
 	case ForbiddenCall:
 		return "stopped at a system call that recipes have no business with; nothing that a recipe may use makes it, so it is a fault of rimlight or an attack"
 	case Crashed:
-		return "the worker process crashed: " + firstOf(e.Stderr, e.How) + "; this is a fault of rimlight, which the code has hit upon"
+		return fmt.Sprintf("the worker process crashed (%s); this is a fault of rimlight, which the code has hit upon", reason(e.Stderr))
 	case Malformed:
 		return "the worker's answer was refused: " + e.How
 	case Killed:
 		return "the worker process was killed from outside: " + e.How
 	}
 	s := "the worker process ended without an answer: " + e.How
-	if e.Stderr != "" {
-		s += "; its last words: " + e.Stderr
+	if r := reason(e.Stderr); r != "" {
+		s += "; it said: " + r
 	}
 	return s
 }
 
-func firstOf(list ...string) string {
-	for _, s := range list {
-		if s != "" {
-			return s
+// reason is the line of a dying Go program that says why it dies.
+func reason(stderr string) string {
+	first := ""
+	for _, line := range strings.Split(stderr, "\n") {
+		line = strings.TrimSpace(line)
+		if strings.HasPrefix(line, "fatal error: ") || strings.HasPrefix(line, "panic: ") {
+			return plain(line, 300)
+		}
+		if first == "" {
+			first = plain(line, 300)
 		}
 	}
-	return ""
+	return first
 }
 
 // A TimeLimitError says that a question took longer than it may, by the clock
@@ -146,6 +153,32 @@ func causeOf(state *os.ProcessState, stderr string, limits Options) (Cause, stri
 		return Killed, how
 	}
 	return Vanished, how
+}
+
+// ends keeps the beginning and the end of what is written to it. A Go program
+// that dies says why first, and then at length where.
+type ends struct {
+	mu         sync.Mutex
+	head, tail []byte
+	max        int // bytes of each
+}
+
+func (e *ends) Write(p []byte) (int, error) {
+	e.mu.Lock()
+	defer e.mu.Unlock()
+	n := len(p)
+	if room := min(e.max-len(e.head), n); room > 0 {
+		e.head, p = append(e.head, p[:room]...), p[room:]
+	}
+	e.tail = append(e.tail, p[max(0, len(p)-e.max):]...)
+	e.tail = e.tail[max(0, len(e.tail)-e.max):]
+	return n, nil
+}
+
+func (e *ends) String() string {
+	e.mu.Lock()
+	defer e.mu.Unlock()
+	return plain(string(e.head)+string(e.tail), 2*e.max)
 }
 
 // plain makes text from a worker fit for a terminal and a report: at most max

@@ -180,7 +180,7 @@ func failure(err error) *Failure {
 	case errors.As(err, &stepErr):
 		return &Failure{Text: plain(stepErr.Text, maxText), Pos: stepErr.Pos}
 	case errors.As(err, &panicked):
-		return &Failure{Text: plain(panicked.Error(), maxText), Pos: panicked.Pos, Panic: true}
+		return &Failure{Text: plain("step "+panicked.Step+" panicked: "+panicked.Text, maxText), Pos: panicked.Pos, Panic: true}
 	}
 	return &Failure{Text: plain(err.Error(), maxText)}
 }

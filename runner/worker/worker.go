@@ -1,7 +1,6 @@
 package worker
 
 import (
-	"bytes"
 	"context"
 	"encoding/json"
 	"errors"
@@ -9,7 +8,6 @@ import (
 	"io"
 	"os"
 	"os/exec"
-	"strings"
 	"sync"
 	"sync/atomic"
 	"syscall"
@@ -34,7 +32,7 @@ type Worker struct {
 	spent   time.Duration
 	in      io.WriteCloser
 	out     *os.File
-	stderr  *tail
+	stderr  *ends
 	done    chan struct{}
 	close   sync.Once
 	state   *os.ProcessState
@@ -101,7 +99,7 @@ func start(ctx context.Context, o Options, files []*os.File) (*Worker, error) {
 	if err != nil {
 		return nil, fmt.Errorf("no working directory for a worker: %w", err)
 	}
-	w := &Worker{options: o, stderr: &tail{max: maxText}, done: make(chan struct{})}
+	w := &Worker{options: o, stderr: &ends{max: maxText / 2}, done: make(chan struct{})}
 	w.cmd = exec.CommandContext(ctx, exe)
 	w.cmd.Args = []string{Name}
 	w.cmd.Env = []string{}
@@ -288,27 +286,4 @@ func (w *Worker) kill() {
 	default:
 		killGroup(w.cmd.Process)
 	}
-}
-
-// tail keeps the end of what is written to it.
-type tail struct {
-	mu  sync.Mutex
-	buf bytes.Buffer
-	max int
-}
-
-func (t *tail) Write(p []byte) (int, error) {
-	t.mu.Lock()
-	defer t.mu.Unlock()
-	t.buf.Write(p)
-	if over := t.buf.Len() - t.max; over > 0 {
-		t.buf.Next(over)
-	}
-	return len(p), nil
-}
-
-func (t *tail) String() string {
-	t.mu.Lock()
-	defer t.mu.Unlock()
-	return plain(strings.Join(strings.Fields(t.buf.String()), " "), t.max)
 }
