@@ -1,3 +1,5 @@
+//go:build amd64 || arm64
+
 package confine
 
 import (
@@ -170,6 +172,18 @@ func try(what, path string) int {
 		fmt.Print("holds")
 		return 0
 	}
+	if call, ok := lacking[what]; ok {
+		if err := withhold(call); err != nil {
+			fmt.Print(err)
+			return 0
+		}
+		report, err := Enter(limits)
+		for _, l := range report.Missing() {
+			fmt.Print(l.Name, " ")
+		}
+		fmt.Print(err)
+		return 0
+	}
 	l := limits
 	if what == "processor time" {
 		l.CPU = time.Second
@@ -215,9 +229,40 @@ func try(what, path string) int {
 	return 0
 }
 
+// lacking are the system calls that a kernel without a layer does not have.
+var lacking = map[string]uint32{
+	"Landlock": unix.SYS_LANDLOCK_CREATE_RULESET,
+	"seccomp":  unix.SYS_SECCOMP,
+}
+
+// withhold makes the kernel pretend, for all threads of this process, that it
+// has no such system call.
+func withhold(call uint32) error {
+	noNewPrivileges()
+	var p program
+	p.load(offNumber)
+	p.on(call, absent)
+	p.decide(allow)
+	return p.install()
+}
+
+// TestLackingKernel holds that a layer that the kernel does not have is
+// reported, and is the only one that is missing.
+func TestLackingKernel(t *testing.T) {
+	needAll(t)
+	for what := range lacking {
+		if said, errs := run(t, -1, what); said != what+" <nil>" {
+			t.Errorf("missing: %s, expected %s; %s", said, what, errs)
+		}
+	}
+}
+
 var hold [][]byte
 
 func deep(n int) int {
+	if n < 0 {
+		return 0
+	}
 	var room [1024]byte
 	room[n%1024] = 1
 	return deep(n+1) + int(room[n%7])

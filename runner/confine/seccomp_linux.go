@@ -172,18 +172,25 @@ func filter(pid int) program {
 	return p
 }
 
-// filterCalls puts the filter on all threads and tries whether it holds.
-func filterCalls() error {
+// install puts the filter on all threads.
+func (p program) install() error {
 	runtime.LockOSThread()
 	defer runtime.UnlockOSThread()
-	f := filter(os.Getpid())
-	prog := unix.SockFprog{Len: uint16(len(f)), Filter: &f[0]}
+	prog := unix.SockFprog{Len: uint16(len(p)), Filter: &p[0]}
 	thread, _, e := unix.Syscall(unix.SYS_SECCOMP, unix.SECCOMP_SET_MODE_FILTER, unix.SECCOMP_FILTER_FLAG_TSYNC, uintptr(unsafe.Pointer(&prog)))
 	if e != 0 {
 		return fmt.Errorf("the kernel refused the filter: %w", e)
 	}
 	if thread != 0 {
 		return fmt.Errorf("thread %d could not be given the filter", thread)
+	}
+	return nil
+}
+
+// filterCalls puts the filter in force and tries whether it holds.
+func filterCalls() error {
+	if err := filter(os.Getpid()).install(); err != nil {
+		return err
 	}
 	if _, _, e := unix.RawSyscall(unix.SYS_GETPPID, 0, 0, 0); e != unix.EPERM {
 		return errors.New("not in force although the kernel accepted it")

@@ -1,0 +1,356 @@
+package worker
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+	"reflect"
+	"strings"
+	"syscall"
+	"testing"
+	"time"
+
+	"rimlight/runner/canon"
+	"rimlight/runner/confine"
+)
+
+func TestMain(m *testing.M) {
+	if Requested() {
+		os.Exit(Main())
+	}
+	os.Exit(m.Run())
+}
+
+// code is a recipe of which each test calls what it needs.
+func code(text string) Code { return Code{File: "test.md", Text: []byte(text)} }
+
+const ordinary = `
+func Double(x float64) (y float64) {
+	y = 2 * x
+	return
+}
+
+func Sum(list []float64) (sum float64) {
+	for _, v := range list {
+		sum += v
+	}
+	return
+}
+
+func Spin(x float64) (y float64) {
+	for x > 0 {
+		y += x
+	}
+	return
+}
+
+func Eat(x float64) (y float64) {
+	var all [][]float64
+	for x > 0 {
+		all = append(all, make([]float64, 1<<16))
+	}
+	y = float64(len(all))
+	return
+}
+
+func fall(n float64) float64 { return fall(n+1) + 1 }
+
+func Fall(x float64) (y float64) {
+	y = fall(x)
+	return
+}
+
+func Flood(x float64) (text string, err error) {
+	text = strings.Repeat("ab", int(x))
+	return
+}
+`
+
+func begin(t testing.TB, o Options, files ...*os.File) *Worker {
+	t.Helper()
+	w, err := Start(context.Background(), o, files...)
+	if err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(w.Close)
+	return w
+}
+
+func loaded(t testing.TB, o Options) *Worker {
+	t.Helper()
+	w := begin(t, o)
+	if err := w.Load(code(ordinary)); err != nil {
+		t.Fatal(err)
+	}
+	return w
+}
+
+func sealed(t testing.TB, typ string, v any) []byte {
+	t.Helper()
+	layout, err := canon.Layout(reflect.TypeOf(v))
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := canon.Marshal(v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return canon.Seal(typ, layout, b)
+}
+
+func TestCall(t *testing.T) {
+	w := loaded(t, Options{})
+	v, err := w.Call("Double", [][]byte{sealed(t, "float64", 21.0)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if want := sealed(t, "float64", 42.0); len(v.Sealed) != 1 || string(v.Sealed[0]) != string(want) {
+		t.Errorf("got %x, want %x", v.Sealed, want)
+	}
+}
+
+// TestEnds holds that each way to end is told from the others, and that none
+// is put down to chance.
+func TestEnds(t *testing.T) {
+	small := Options{StepTime: time.Minute, Memory: 256 << 20}
+	for _, c := range []struct {
+		step  string
+		opts  Options
+		cause Cause
+		says  string
+	}{
+		{"Eat", small, OutOfMemory, "more than 256 MiB were needed; keep less at a time, or raise --step-memory"},
+		{"Fall", Options{}, OutOfStack, "calls itself without end"},
+	} {
+		t.Run(c.step, func(t *testing.T) {
+			t.Parallel()
+			_, err := loaded(t, c.opts).Call(c.step, [][]byte{sealed(t, "float64", 1.0)})
+			var lost *LostError
+			if !errors.As(err, &lost) {
+				t.Fatalf("got %v", err)
+			}
+			if lost.Cause != c.cause || lost.Outside() || !strings.Contains(err.Error(), c.says) || strings.Contains(err.Error(), "\n") {
+				t.Errorf("cause %q, outside %v: %v (%s)", lost.Cause, lost.Outside(), err, lost.Stderr)
+			}
+		})
+	}
+}
+
+func TestTimeLimit(t *testing.T) {
+	w := loaded(t, Options{StepTime: 2 * time.Second})
+	began := time.Now()
+	_, err := w.Call("Spin", [][]byte{sealed(t, "float64", 1.0)})
+	var late *TimeLimitError
+	if !errors.As(err, &late) || late.Limit != 2*time.Second || late.Flag != TimeFlag {
+		t.Fatalf("got %v", err)
+	}
+	if took := time.Since(began); took > 20*time.Second {
+		t.Errorf("it took %v to stop", took)
+	}
+	if !w.Spent() {
+		t.Error("a worker that was stopped is not spent")
+	}
+}
+
+func TestCheckingTooLarge(t *testing.T) {
+	e := &LostError{Cause: OutOfMemory, task: askCheck, limits: Options{}.Checking()}
+	if s := e.Error(); !strings.Contains(s, "512 MiB") || strings.Contains(s, MemoryFlag) {
+		t.Error(s)
+	}
+	late := &TimeLimitError{Limit: time.Second}
+	if s := late.Error(); strings.Contains(s, "raise") {
+		t.Error(s)
+	}
+}
+
+// TestKilledFromOutside holds that a worker somebody kills is worth a second
+// try.
+func TestKilledFromOutside(t *testing.T) {
+	w := loaded(t, Options{})
+	time.AfterFunc(300*time.Millisecond, func() { syscall.Kill(w.cmd.Process.Pid, syscall.SIGTERM) })
+	_, err := w.Call("Spin", [][]byte{sealed(t, "float64", 1.0)})
+	var lost *LostError
+	if !errors.As(err, &lost) || lost.Cause != Killed || !lost.Outside() {
+		t.Errorf("got %v", err)
+	}
+}
+
+func TestResultsTooLarge(t *testing.T) {
+	w := loaded(t, Options{Memory: 512 << 20})
+	_, err := w.Call("Flood", [][]byte{sealed(t, "float64", 30e6)})
+	if err != nil {
+		t.Errorf("60 MB: %v", err)
+	}
+	var failed *Failure
+	_, err = w.Call("Flood", [][]byte{sealed(t, "float64", 68e6)})
+	var lost *LostError // its copies need more than there is, or else it is refused
+	if !errors.As(err, &failed) && !(errors.As(err, &lost) && lost.Cause == OutOfMemory) {
+		t.Errorf("136 MB: %v", err)
+	}
+}
+
+func TestConfinement(t *testing.T) {
+	w := begin(t, Options{Require: os.Getenv("RIMLIGHT_REQUIRE") != ""})
+	if len(w.Confinement()) < 8 {
+		t.Errorf("layers: %v", w.Confinement())
+	}
+	err := error(&UnconfinedError{[]confine.Layer{{Name: "Landlock", Detail: "the kernel has none"}, {Name: "seccomp", Detail: "nor this"}}})
+	const want = "--require-confinement: steps cannot be confined by Landlock (the kernel has none), nor by seccomp (nor this); nothing was run"
+	if err.Error() != want {
+		t.Errorf("got %q, want %q", err, want)
+	}
+}
+
+// TestLimitsComeFirst holds that a worker looks at nothing before it is
+// confined, and is confined only once.
+func TestLimitsComeFirst(t *testing.T) {
+	var s server
+	if _, err := s.serve(Message{Kind: askCheck, Head: []byte("not looked at")}); err == nil || !strings.Contains(err.Error(), "out of turn") {
+		t.Errorf("a question before the limits: %v", err)
+	}
+	w := begin(t, Options{})
+	if _, err := w.ask(askLimits, Options{}.filled().limits(0)); err == nil || !strings.Contains(err.Error(), "out of turn") {
+		t.Errorf("limits for the second time: %v", err)
+	}
+}
+
+func TestRead(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "text")
+	if err := os.WriteFile(path, []byte("hello"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	f, err := os.Open(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer f.Close()
+	v, err := begin(t, Options{}.Reading(5), f).Read("text", nil, []string{"text"}, []int64{5})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if want := sealed(t, "string", "hello"); len(v.Sealed) != 1 || string(v.Sealed[0]) != string(want) {
+		t.Errorf("got %q, want %q", v.Sealed, want)
+	}
+}
+
+func TestOptions(t *testing.T) {
+	var o Options
+	if c := o.Checking(); c.Memory != checkMemory || c.StepTime != checkTime {
+		t.Errorf("checking: %+v", c)
+	}
+	if r := o.Reading(0); r.Memory != readMemory || r.StepTime != readTime {
+		t.Errorf("reading nothing: %+v", r)
+	}
+	if r := o.Reading(1 << 40); r.Memory != DefaultMemory || r.StepTime != DefaultStepTime {
+		t.Errorf("reading a lot: %+v", r)
+	}
+	o = Options{StepTime: time.Second, Memory: confine.MinMemory}
+	if c := o.Checking(); c != o {
+		t.Errorf("strict limits were widened: %+v", c)
+	}
+}
+
+func TestPlain(t *testing.T) {
+	for _, c := range []struct {
+		in   string
+		max  int
+		want string
+	}{
+		{"a\tb\nü", 100, "a\tb\nü"},
+		{"\x1b]0;x\x07\u202e\x9b\xff", 100, "�]0;x���"},
+		{strings.Repeat("x", 5000), 10, "xxxxxxxxxx … (4.9 KiB in all)"},
+	} {
+		if got := plain(c.in, c.max); got != c.want {
+			t.Errorf("%q: got %q, want %q", c.in, got, c.want)
+		}
+	}
+}
+
+func TestEndsOfOutput(t *testing.T) {
+	e := &ends{max: 4}
+	for _, s := range []string{"ab", "cdef", "ghijklmn", "", "o"} {
+		if n, err := e.Write([]byte(s)); n != len(s) || err != nil {
+			t.Fatal(n, err)
+		}
+	}
+	if got, want := e.String(), "abcdlmno"; got != want {
+		t.Errorf("got %q, want %q", got, want)
+	}
+}
+
+// resident is the memory, in KiB, that a process is resident with.
+func resident(t testing.TB, pid int) (kib int) {
+	b, err := os.ReadFile(fmt.Sprintf("/proc/%d/status", pid))
+	if err != nil {
+		t.Skip(err)
+	}
+	_, rest, _ := strings.Cut(string(b), "VmRSS:")
+	fmt.Sscan(rest, &kib)
+	return kib
+}
+
+// TestNoLeak holds that a worker does not grow over 10,000 calls.
+func TestNoLeak(t *testing.T) {
+	if testing.Short() {
+		t.Skip("10,000 calls")
+	}
+	w := loaded(t, Options{})
+	list := make([]float64, 1000)
+	args := [][]byte{sealed(t, "[]float64", list)}
+	call := func(n int) int {
+		for range n {
+			if _, err := w.Call("Sum", args); err != nil {
+				t.Fatal(err)
+			}
+		}
+		return resident(t, w.cmd.Process.Pid)
+	}
+	first := call(2000)
+	last := call(8000)
+	t.Logf("resident after 2,000 calls %d KiB, after 10,000 calls %d KiB", first, last)
+	if last > first+16<<10 {
+		t.Errorf("the worker grew from %d to %d KiB in 8,000 calls", first, last)
+	}
+}
+
+// BenchmarkStart is the time from nothing to a confined worker.
+func BenchmarkStart(b *testing.B) {
+	for b.Loop() {
+		w, err := Start(context.Background(), Options{})
+		if err != nil {
+			b.Fatal(err)
+		}
+		w.Close()
+	}
+}
+
+// BenchmarkStartAndLoad is the time to the first answer of a step.
+func BenchmarkStartAndLoad(b *testing.B) {
+	args := [][]byte{sealed(b, "float64", 1.0)}
+	for b.Loop() {
+		w, err := Start(context.Background(), Options{})
+		if err != nil {
+			b.Fatal(err)
+		}
+		if err := w.Load(code(ordinary)); err != nil {
+			b.Fatal(err)
+		}
+		if _, err := w.Call("Double", args); err != nil {
+			b.Fatal(err)
+		}
+		w.Close()
+	}
+}
+
+// BenchmarkCall is what a call costs besides the step itself.
+func BenchmarkCall(b *testing.B) {
+	w := loaded(b, Options{})
+	args := [][]byte{sealed(b, "float64", 1.0)}
+	for b.Loop() {
+		if _, err := w.Call("Double", args); err != nil {
+			b.Fatal(err)
+		}
+	}
+}
