@@ -9,6 +9,7 @@ import (
 	"os"
 	"os/exec"
 	"path/filepath"
+	"slices"
 	"strings"
 	"syscall"
 	"testing"
@@ -68,6 +69,9 @@ const (
 // uid is not negative, and holds that it ends as it has to.
 func runHostile(t *testing.T, h hostile, uid int) {
 	t.Helper()
+	if racing && slices.Contains(h.flags, "--step-memory") {
+		t.Skip("a small limit of memory")
+	}
 	dir := t.TempDir()
 	source, err := os.ReadFile(filepath.Join("../../testdata/hostile", h.name+".md"))
 	if err != nil {

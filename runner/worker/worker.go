@@ -260,7 +260,7 @@ func (w *Worker) exchange(q Message) (Message, error) {
 // malformed answer is ended.
 func (w *Worker) lost(task string, err error) error {
 	e := &LostError{task: task, limits: w.options}
-	ended := errors.Is(err, io.EOF) || errors.Is(err, io.ErrUnexpectedEOF) || errors.Is(err, syscall.EPIPE)
+	ended := errors.Is(err, io.EOF) || errors.Is(err, io.ErrUnexpectedEOF) || errors.Is(err, syscall.EPIPE) || errors.Is(err, os.ErrClosed)
 	if ended {
 		select {
 		case <-w.done:

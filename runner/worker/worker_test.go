@@ -126,6 +126,9 @@ func TestEnds(t *testing.T) {
 	} {
 		t.Run(c.step, func(t *testing.T) {
 			t.Parallel()
+			if racing && c.opts.Memory != 0 {
+				t.Skip("a small limit of memory")
+			}
 			_, err := loaded(t, c.opts).Call(c.step, [][]byte{sealed(t, "float64", 1.0)})
 			var lost *LostError
 			if !errors.As(err, &lost) {
@@ -178,6 +181,9 @@ func TestKilledFromOutside(t *testing.T) {
 }
 
 func TestResultsTooLarge(t *testing.T) {
+	if racing {
+		t.Skip("a small limit of memory")
+	}
 	w := loaded(t, Options{Memory: 512 << 20})
 	_, err := w.Call("Flood", [][]byte{sealed(t, "float64", 30e6)})
 	if err != nil {
@@ -200,6 +206,19 @@ func TestConfinement(t *testing.T) {
 	const want = "--require-confinement: steps cannot be confined by Landlock (the kernel has none), nor by seccomp (nor this); nothing was run"
 	if err.Error() != want {
 		t.Errorf("got %q, want %q", err, want)
+	}
+}
+
+// TestCallOfTheDead holds that a question to a worker that has died already is
+// answered by the reason of its death.
+func TestCallOfTheDead(t *testing.T) {
+	w := loaded(t, Options{})
+	syscall.Kill(w.cmd.Process.Pid, syscall.SIGTERM)
+	<-w.done
+	_, err := w.Call("Double", [][]byte{sealed(t, "float64", 1.0)})
+	var lost *LostError
+	if !errors.As(err, &lost) || lost.Cause != Killed {
+		t.Errorf("got %v", err)
 	}
 }
 
