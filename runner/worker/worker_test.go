@@ -222,6 +222,21 @@ func TestCallOfTheDead(t *testing.T) {
 	}
 }
 
+// TestNothingLeftBehind holds that a worker's working directory is gone while
+// it works, and that the worker is gone after Close.
+func TestNothingLeftBehind(t *testing.T) {
+	dir := t.TempDir()
+	t.Setenv("TMPDIR", dir)
+	w := begin(t, Options{})
+	if left, _ := os.ReadDir(dir); len(left) != 0 {
+		t.Errorf("left in the folder for temporary files: %v", left)
+	}
+	w.Close()
+	if err := syscall.Kill(w.cmd.Process.Pid, 0); err == nil {
+		t.Error("the process is still there")
+	}
+}
+
 // TestLimitsComeFirst holds that a worker looks at nothing before it is
 // confined, and is confined only once.
 func TestLimitsComeFirst(t *testing.T) {
