@@ -25,7 +25,8 @@ type Summary struct {
 // Summary condenses the spectrum. The mean is the one of least variance given
 // the whole covariance, and FlatChi2 tests whether the spectrum is flat: a part
 // of the covariance that shifts all depths alike widens the error of the mean but
-// does not hide a slope (Aitken 1936 for the estimator, cited from memory).
+// does not hide a slope (Aitken 1936 for the estimator, cited from memory). A
+// covariance of another size than the points counts as none.
 func (s Spectrum) Summary() Summary {
 	nan := math.NaN()
 	out := Summary{Channels: len(s.Points), Lo: nan, Hi: nan, MedianErr: nan, MeanDepth: nan, MeanDepthErr: nan, FlatChi2: nan}
@@ -46,13 +47,39 @@ func (s Spectrum) Summary() Summary {
 		return out
 	}
 	out.Lo, out.Hi = s.Points[good[0]].Channel.Lo, s.Points[good[len(good)-1]].Channel.Hi
-	out.MedianErr = median(errs)
+	out.MedianErr = median(slices.Clone(errs))
 	out.FlatDof = out.Good - 1
+	if s.correlated() {
+		s.fitCorrelated(&out, good, errs)
+	} else {
+		s.fitIndependent(&out, good, errs)
+	}
+	return out
+}
 
-	cov := s.covariance(good, errs)
+// fitIndependent sets the mean and its chi-square from the points good, which
+// have errors sigma and nothing in common.
+func (s Spectrum) fitIndependent(out *Summary, good []int, sigma []float64) {
+	var information, sum, chi2 float64
+	for k, i := range good {
+		weight := 1 / (sigma[k] * sigma[k])
+		information += weight
+		sum += weight * s.Points[i].Depth
+	}
+	mean := sum / information
+	for k, i := range good {
+		pull := (s.Points[i].Depth - mean) / sigma[k]
+		chi2 += pull * pull
+	}
+	out.MeanDepth, out.MeanDepthErr, out.FlatChi2 = mean, 1/math.Sqrt(information), chi2
+}
+
+// fitCorrelated does the same with the whole covariance. It leaves out as it is
+// when that is not positive definite.
+func (s Spectrum) fitCorrelated(out *Summary, good []int, sigma []float64) {
 	var factor mat.Cholesky
-	if !factor.Factorize(cov) {
-		return out
+	if !factor.Factorize(s.covariance(good, sigma)) {
+		return
 	}
 	ones, depth := mat.NewVecDense(len(good), nil), mat.NewVecDense(len(good), nil)
 	for k, i := range good {
@@ -70,17 +97,16 @@ func (s Spectrum) Summary() Summary {
 	residual.AddScaledVec(depth, -mean, ones)
 	_ = factor.SolveVecTo(&solved, residual)
 	out.FlatChi2 = mat.Dot(residual, &solved)
-	return out
 }
 
 // covariance returns the covariance of the points good, which have errors
-// sigma. Elements that are missing count as zero.
+// sigma. Elements that are not finite count as zero.
 func (s Spectrum) covariance(good []int, sigma []float64) *mat.SymDense {
 	cov := mat.NewSymDense(len(good), nil)
 	for a, i := range good {
 		for b := 0; b < a; b++ {
-			if j := good[b]; len(s.Cov) == len(s.Points) && j < len(s.Cov[i]) && finite(s.Cov[i][j]) {
-				cov.SetSym(a, b, s.Cov[i][j])
+			if c := s.Cov[i][good[b]]; finite(c) {
+				cov.SetSym(a, b, c)
 			}
 		}
 		cov.SetSym(a, a, sigma[a]*sigma[a])

@@ -6,7 +6,7 @@ import (
 )
 
 func TestSummaryIndependent(t *testing.T) {
-	points := []Point{point(0, 1, 0.0100, 1e-5), failed(1, 1.1, "dead channel"), point(2, 1.2, 0.0103, 2e-5)}
+	points := []Point{point(0, 1, 0.0103, 2e-5), failed(1, 1.1, "dead channel"), point(2, 1.2, 0.0100, 1e-5)}
 	points[2].Flag = "limb darkening at a bound"
 	s, err := Assemble(points, nil)
 	if err != nil {
@@ -31,7 +31,7 @@ func TestSummaryIndependent(t *testing.T) {
 // TestSummaryCommonShift: a variance that all depths share widens the mean and
 // leaves the test for flatness as it was.
 func TestSummaryCommonShift(t *testing.T) {
-	points := []Point{point(0, 1, 0.0100, 1e-5), point(1, 1.1, 0.01004, 1e-5), point(2, 1.2, 0.01001, 3e-5)}
+	points := []Point{point(0, 1, 0.0100, 3e-5), point(1, 1.1, 0.01004, 1e-5), point(2, 1.2, 0.01001, 1e-5)}
 	alone, err := Assemble(points, nil)
 	if err != nil {
 		t.Fatal(err)
@@ -47,6 +47,17 @@ func TestSummaryCommonShift(t *testing.T) {
 	}
 	if want := math.Sqrt(a.MeanDepthErr*a.MeanDepthErr + v); math.Abs(b.MeanDepthErr/want-1) > 1e-6 {
 		t.Errorf("error of the mean %g, want %g", b.MeanDepthErr, want)
+	}
+}
+
+// TestSummaryOfMany: points alone, without a covariance, need no matrix.
+func TestSummaryOfMany(t *testing.T) {
+	s := Spectrum{Points: make([]Point, 100000), Cov: make([][]float64, 100000)}
+	for i := range s.Points {
+		s.Points[i] = point(i, float64(1+i), 0.01, 1e-5)
+	}
+	if got := s.Summary(); math.Abs(got.MeanDepth-0.01) > 1e-9 || math.Abs(got.MeanDepthErr/(1e-5/math.Sqrt(1e5))-1) > 1e-6 {
+		t.Errorf("%+v", got)
 	}
 }
 
