@@ -129,8 +129,11 @@ func fill(s *sheet.Sheet, l *listing, cols Columns) (warnings []string, err erro
 	}
 	for _, c := range cols {
 		if !isRole(c.Role) && !mapped[strings.ToUpper(c.Role)] {
-			_, err := s.Find(fallback(c.Name, c.Role))
-			return nil, fmt.Errorf("auxiliary %s: %w", c.Role, err)
+			name := fallback(c.Name, c.Role)
+			if _, err := s.Find(name); err != nil {
+				return nil, fmt.Errorf("auxiliary %s: %w", c.Role, err)
+			}
+			return nil, fmt.Errorf("auxiliary %s: the column %s has another role already", c.Role, name)
 		}
 	}
 	return warnings, nil

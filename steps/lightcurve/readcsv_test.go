@@ -110,6 +110,7 @@ func TestReadCSVErrors(t *testing.T) {
 		"channel repeated":  {head + "1,2,3\n", "channel,wave_lo,wave_hi\n0,1,2\n0,2,3\n", nil, "channel CSV: line 3: channel 0 is there twice"},
 		"no channels":       {head + "1,2,3\n", "channel,wave_lo,wave_hi\n", nil, "column flux_000, but the channel CSV lists 0 channels"},
 		"mapped auxiliary":  {head + "1,2,3\n", channelCSV, Columns{{Role: "X", Name: "XPOS"}}, `auxiliary X: no column "XPOS"`},
+		"mapped twice":      {"time_bjd_tdb,X,flux_000,flux_001\n1,2,3,4\n", channelCSV, Columns{{Role: "a", Name: "X"}, {Role: "b", Name: "X"}}, "auxiliary b: the column X has another role already"},
 		"mapped error":      {head + "1,2,3\n", channelCSV, Columns{{Role: "FLUX_ERR", Name: "sig_"}}, "no such column: sig_000"},
 		"endless mapping":   {head + "1,2,3\n", channelCSV, make(Columns, 257), "the column mapping has 257 rows, expected at most 256"},
 		"long role":         {head + "1,2,3\n", channelCSV, Columns{{Role: strings.Repeat("X", 201)}}, "is not UTF-8 text of up to 200 bytes"},

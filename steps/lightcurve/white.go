@@ -100,7 +100,8 @@ func levelAndWeight(flux, sigma []float64, mask []Flag) (level, weight float64) 
 }
 
 // Curves returns the channels of a cube as light curves of their own, in order.
-// They share no memory with the cube.
+// They share no memory with the cube. A cube whose slices differ in length gives
+// none; [MaskDead] and all other steps of cleaning say what is wrong with it.
 func Curves(cube Cube) []Curve {
 	if cube.checkShape("curves") != nil {
 		return nil
