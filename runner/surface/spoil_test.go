@@ -80,10 +80,10 @@ func (g *generator) spoilSlice(v reflect.Value) {
 		}
 	case 9: // much longer
 		limit := 4000
-		if composed(elem) {
+		if composed(elem) || elem.Kind() == reflect.String {
 			limit = 200
 		}
-		if g.IntN(30) == 0 {
+		if g.IntN(30) == 0 && elem.Kind() != reflect.String {
 			limit *= 20
 		}
 		for v.Len() > 0 && v.Len() < limit {

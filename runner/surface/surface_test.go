@@ -105,6 +105,10 @@ func run(t *testing.T, jobs []job, counts map[string]*count, report func(finding
 	}
 }
 
+// A count says how many calls of a target were begun, and how many of them
+// returned without an error.
+type count struct{ Calls, Good int }
+
 // attempt runs one worker. It gives the number of calls begun, whether all were
 // made, and what the worker said when it died.
 func attempt(t *testing.T, jobs []job, counts map[string]*count, report func(finding)) (begun int, complete bool, died string) {
@@ -128,25 +132,26 @@ func attempt(t *testing.T, jobs []job, counts map[string]*count, report func(fin
 	for d := json.NewDecoder(out); ; {
 		var m message
 		if err := d.Decode(&m); err != nil {
-			if !errors.Is(err, io.EOF) {
+			if !errors.Is(err, io.EOF) && !errors.Is(err, io.ErrUnexpectedEOF) {
 				t.Errorf("what a worker wrote: %v", err)
 			}
 			break
 		}
+		if m.Good {
+			counts[jobs[begun-1].Target].Good++
+		}
 		if m.Begin > 0 {
 			begun = m.Begin
+			name := jobs[begun-1].Target
+			if counts[name] == nil {
+				counts[name] = &count{}
+			}
+			counts[name].Calls++
 		}
 		if m.Finding != nil {
 			report(*m.Finding)
 		}
 		complete = complete || m.Done
-		for name, c := range m.Counts {
-			if counts[name] == nil {
-				counts[name] = &count{}
-			}
-			counts[name].Calls += c.Calls
-			counts[name].Good += c.Good
-		}
 	}
 	if err := cmd.Wait(); err != nil && !complete {
 		return begun, false, head(stderr.String())

@@ -35,16 +35,14 @@ type finding struct {
 }
 
 // A message goes from the worker to the test: the number of the job that is
-// about to begin, a finding, how many calls of each target there were and how
-// many of these returned without an error, or that all jobs are done.
+// about to begin, or that all are done; whether the one before returned without
+// an error; a finding.
 type message struct {
-	Begin   int               `json:",omitempty"`
-	Finding *finding          `json:",omitempty"`
-	Counts  map[string]*count `json:",omitempty"`
-	Done    bool              `json:",omitempty"`
+	Begin   int      `json:",omitempty"` // from 1
+	Good    bool     `json:",omitempty"`
+	Done    bool     `json:",omitempty"`
+	Finding *finding `json:",omitempty"`
 }
-
-type count struct{ Calls, Good int }
 
 // workerMark in the environment makes this binary a worker.
 const workerMark = "RIMLIGHT_SURFACE_WORKER"
@@ -67,18 +65,18 @@ func work(in io.Reader, out io.Writer) {
 	must(json.NewDecoder(in).Decode(&jobs))
 	w := newWorker(out)
 	go w.watch()
+	good := false
 	for i, j := range jobs {
-		w.say(message{Begin: i + 1})
-		w.run(j)
+		w.say(message{Begin: i + 1, Good: good})
+		good = w.run(j)
 	}
-	w.say(message{Counts: w.counts, Done: true})
+	w.say(message{Done: true, Good: good})
 }
 
 type worker struct {
 	targets map[string]target
 	makers  map[reflect.Type][]target
 	samples *samples
-	counts  map[string]*count
 
 	lock    sync.Mutex // guards out and current
 	out     *json.Encoder
@@ -93,7 +91,7 @@ func newWorker(out io.Writer) *worker {
 	buffered := bufio.NewWriter(out)
 	w := &worker{
 		targets: map[string]target{}, makers: map[reflect.Type][]target{}, samples: newSamples(),
-		counts: map[string]*count{}, out: json.NewEncoder(buffered), flush: buffered,
+		out: json.NewEncoder(buffered), flush: buffered,
 	}
 	for _, t := range append(targets(), faults...) {
 		w.targets[t.Name] = t
@@ -125,35 +123,32 @@ func (w *worker) watch() {
 		w.lock.Lock()
 		j := w.current
 		w.lock.Unlock()
-		w.say(message{Finding: &finding{j, "time", "no end after 2 s\n" + inLibrary(stacks)}, Counts: w.counts})
+		w.say(message{Finding: &finding{j, "time", "no end after 2 s\n" + inLibrary(stacks)}})
 		os.Exit(1)
 	}
 }
 
-// run makes one call and reports what is wrong with it.
-func (w *worker) run(j job) {
+// run makes one call and reports what is wrong with it. good says that it
+// returned without an error.
+func (w *worker) run(j job) (good bool) {
 	t, ok := w.targets[j.Target]
 	if !ok {
 		w.say(message{Finding: &finding{j, "target", "there is no such function"}})
-		return
+		return false
 	}
 	w.lock.Lock()
 	w.current = j
 	w.lock.Unlock()
-	if w.counts[t.Name] == nil {
-		w.counts[t.Name] = &count{}
-	}
-	w.counts[t.Name].Calls++
 	fail := func(kind, text string) { w.say(message{Finding: &finding{j, kind, text}}) }
 
 	g := newGenerator(j, w.samples, w.makers)
 	args, problem := guard(func() []reflect.Value { return g.arguments(t, 0) })
 	if problem != "" {
 		fail("panic", "making the arguments: "+problem)
-		return
+		return false
 	}
 	if len(args) < len(t.In) || asksForMuch(args) {
-		return
+		return false
 	}
 	before, keepable := encode(args)
 	allocated := allocatedBytes()
@@ -165,7 +160,7 @@ func (w *worker) run(j job) {
 
 	if problem != "" {
 		fail("panic", problem)
-		return
+		return false
 	}
 	if allocated > memoryLimit {
 		fail("memory", fmt.Sprintf("%d MiB allocated", allocated>>20))
@@ -175,30 +170,30 @@ func (w *worker) run(j job) {
 		fail("argument", "the call wrote to its arguments")
 	}
 	if len(results) < len(t.Out) {
-		return // ended by a generated function
+		return false // ended by a generated function
 	}
 	if n := len(results); n > 0 {
 		if err, _ := results[n-1].Interface().(error); err != nil {
 			if problem := unreadable(err, keepable); problem != "" {
 				fail("error", problem)
 			}
-			return
+			return false
 		}
 		if t.Out[n-1] == errorType {
 			results = results[:n-1]
 		}
 	}
-	w.counts[t.Name].Good++
 	if !keepable {
-		return
+		return true
 	}
 	if problem := unkeepable(results); problem != "" {
 		fail("result", problem)
-		return
+		return false
 	}
 	if j.Seed%16 == 0 {
 		w.again(j, t, results)
 	}
+	return true
 }
 
 // again makes a call for the second time and compares the results.
