@@ -15,7 +15,7 @@ func BenchmarkCheck(b *testing.B) {
 }
 
 func BenchmarkCheckLong(b *testing.B) {
-	src := []byte(sample{"random", randomPrelude, randomProgram(1, 1)}.source())
+	src := []byte(sample{name: "random", shared: randomPrelude, body: randomProgram(1, 1)}.source())
 	for b.Loop() {
 		if _, diags := Check("r.md", src); len(diags) > 0 {
 			b.Fatal(diags)

@@ -8,14 +8,14 @@ import (
 const reached = `
 const K = 2.5
 const Other = 1
-type vector struct{ X, Y float64 }
-func (t vector) length() float64 { return math.Hypot(t.X, t.Y) * scale(1) }
+type arrow struct{ X, Y float64 }
+func (t arrow) length() float64 { return math.Hypot(t.X, t.Y) * scale(1) }
 func scale(n int) float64 { if n == 0 { return K }; return even(n-1) }
 func even(n int) float64 { return scale(n) }
 func unrelated() int { return Other }
 type measured interface{ length() float64 }
 func use(m measured) float64 { return m.length() }
-func Step(a []float64) (r float64) { return use(vector{a[0], a[1]}) + float64(len(a)) }
+func Step(a []float64) (r float64) { return use(arrow{a[0], a[1]}) + float64(len(a)) }
 func Second(a []float64) (n int) { return unrelated() + len(a) }
 `
 
@@ -63,8 +63,8 @@ func TestHashSees(t *testing.T) {
 		"a helper in a cycle":   {change(t, "return scale(n) }", "return scale(n) + 1 }"), false},
 		"a literal":             {change(t, "scale(1)", "scale(2)"), false},
 		"a local name":          {change(t, "even(n int) float64 { return scale(n) }", "even(k int) float64 { return scale(k) }"), false},
-		"a further method":      {change(t, "func scale", "func (t *vector) grow() {}\nfunc scale"), false},
-		"grouping":              {change(t, "return use(vector{a[0], a[1]}) + float64(len(a))", "return use(vector{a[0], a[1] + float64(len(a))})"), false},
+		"a further method":      {change(t, "func scale", "func (t *arrow) grow() {}\nfunc scale"), false},
+		"grouping":              {change(t, "return use(arrow{a[0], a[1]}) + float64(len(a))", "return use(arrow{a[0], a[1] + float64(len(a))})"), false},
 		"signs":                 {change(t, "scale(1)", "scale(- -1)"), false},
 		"both":                  {strings.ReplaceAll(reached, "len(a)", "len(a[1:])"), true},
 		"an operator's operand": {change(t, "even(n-1)", "even(-(n-1))"), false},

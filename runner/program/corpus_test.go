@@ -17,10 +17,12 @@ type sample struct {
 	name   string
 	shared string
 	body   string
+	turn   int // in a file of programs made by rule; 0 in other files
 }
 
 // corpus reads the programs in testdata/program. A file holds programs under
-// lines "=== NAME"; one called prelude stands before each of the others.
+// lines "=== NAME"; one called prelude stands before each of the others, and
+// what stands under "=== define NAME" is put where they say «NAME».
 func corpus(t testing.TB) []sample {
 	files, err := filepath.Glob("../../testdata/program/*.txt")
 	if err != nil || len(files) == 0 {
@@ -34,21 +36,35 @@ func corpus(t testing.TB) []sample {
 			t.Fatal(err)
 		}
 		prelude := ""
+		var defined []string
+		turn := 0
 		for _, part := range strings.Split("\n"+string(b), "\n=== ")[1:] {
 			title, body, _ := strings.Cut(part, "\n")
 			if title == "prelude" {
 				prelude = body + "\n"
 				continue
 			}
+			if name, ok := strings.CutPrefix(title, "define "); ok {
+				defined = append(defined, "«"+name+"»", strings.TrimSpace(body))
+				continue
+			}
+			body = strings.NewReplacer(defined...).Replace(body)
 			if seen[title] {
 				t.Fatalf("%s: two programs are called %s", name, title)
 			}
 			seen[title] = true
-			out = append(out, sample{title, prelude, body})
+			if systematic[filepath.Base(name)] {
+				turn++
+			}
+			out = append(out, sample{title, prelude, body, turn})
 		}
 	}
 	return out
 }
+
+// systematic are the files whose programs are made by rule, one for each
+// combination of things.
+var systematic = map[string]bool{"constants.txt": true, "assignments.txt": true, "places.txt": true, "copies.txt": true, "effects.txt": true}
 
 // source makes a recipe's source of the sample. Run becomes a helper, run_, and
 // a function literal with the same body; the step Run calls the helper in a

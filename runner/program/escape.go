@@ -16,7 +16,6 @@ type escape struct {
 	uses   map[types.Object][][]ast.Node // paths to the uses of a variable that holds a function
 	known  map[types.Object]bool
 	writes map[types.Object][]write // changes of a variable after its declaration
-	loops  []ast.Node
 }
 
 // A write is a place where a variable, or a part of it, is or could be
@@ -36,10 +35,7 @@ func newEscape(c *checker) *escape {
 		switch n := n.(type) {
 		case *ast.FuncDecl:
 			e.decl[c.info.Defs[n.Name]] = n
-		case *ast.ForStmt:
-			e.loops = append(e.loops, n)
 		case *ast.RangeStmt:
-			e.loops = append(e.loops, n)
 			if n.Tok == token.ASSIGN {
 				e.written(n.Key, above)
 				e.written(n.Value, above)
@@ -180,8 +176,8 @@ func (e *escape) copyable(o *types.Var, lit *ast.FuncLit, above []ast.Node) bool
 		if w.pos >= lit.Pos() || w.fn != nil && !within(o.Pos(), w.fn) {
 			return false
 		}
-		for _, loop := range e.loops {
-			if loop.Pos() > o.Pos() && within(w.pos, loop) && within(lit.Pos(), loop) {
+		for _, loop := range above {
+			if loopBody(loop) != nil && loop.Pos() > o.Pos() && within(w.pos, loop) {
 				return false
 			}
 		}

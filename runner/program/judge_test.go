@@ -29,7 +29,9 @@ runner/program writes this list with -update.
 func judge(t *testing.T, suspects []sample, complaint map[string]error, want map[string][]string) int {
 	given := withoutRules(t, suspects)
 	var entries []string
+	judged := map[string]bool{}
 	for _, s := range suspects {
+		judged[s.name] = true
 		for _, way := range []string{"bare", "rewritten"} {
 			if agree(given[s.name+" "+way], want[s.name]) {
 				first, _, _ := strings.Cut(complaint[s.name].Error(), "\n")
@@ -46,8 +48,24 @@ func judge(t *testing.T, suspects []sample, complaint map[string]error, want map
 			t.Fatal(err)
 		}
 	}
-	if old, err := os.ReadFile(strictList); err != nil || string(old) != text {
-		t.Errorf("%s is not up to date (%v), it should be:\n%s", strictList, err, text)
+	old, err := os.ReadFile(strictList)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if thorough() {
+		if string(old) != text {
+			t.Errorf("%s is not up to date, it should be:\n%s", strictList, text)
+		}
+		return len(entries)
+	}
+	var listed []string // of the programs that were run
+	for _, line := range strings.SplitAfter(string(old), "\n") {
+		if name := strings.Split(line, "`"); strings.HasPrefix(line, "- `") && judged[name[1]] {
+			listed = append(listed, line)
+		}
+	}
+	if got, want := strings.Join(entries, ""), strings.Join(listed, ""); got != want {
+		t.Errorf("%s should say of the programs run:\n%snot:\n%s", strictList, got, want)
 	}
 	return len(entries)
 }

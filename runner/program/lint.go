@@ -20,6 +20,7 @@ func (c *checker) lint() {
 		}
 	})
 	l.declarations()
+	l.becomesInterface()
 	walk(c.tree, func(n ast.Node, above []ast.Node) {
 		l.result(n, above)
 		l.statement(n, above)

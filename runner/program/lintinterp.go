@@ -57,14 +57,7 @@ func isBlank(e ast.Expr) bool {
 // expression refuses expressions and types that the interpreter gets wrong.
 func (l *linter) expression(n ast.Node, above []ast.Node) {
 	switch n := n.(type) {
-	case *ast.FuncType:
-		if n.TypeParams != nil {
-			l.refuse(n.TypeParams, "write one function per type", "type parameters are not available")
-		}
 	case *ast.TypeSpec:
-		if n.TypeParams != nil {
-			l.refuse(n.TypeParams, "write one type per element type", "type parameters are not available")
-		}
 		if name := n.Name.Name; types.Universe.Lookup(name) != nil || available.Path(name) != "" {
 			l.refuse(n.Name, "choose another name", "type %s would hide what Go or a package calls %s", name, name)
 		}

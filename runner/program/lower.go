@@ -304,28 +304,31 @@ func (n *normaliser) place(x ast.Expr) (take []ast.Stmt, place ast.Expr) {
 	}
 	switch x := x.(type) {
 	case *ast.IndexExpr:
-		from := x.X
-		if _, array := n.under(x.X).(*types.Array); !array {
-			from = keep("of", x.X)
+		var from ast.Expr
+		if _, array := n.under(x.X).(*types.Array); array {
+			take, from = n.place(x.X)
 		} else {
-			more, inner := n.place(x.X)
-			take, from = append(take, more...), inner
+			from = keep("of", x.X)
 		}
-		return take, &ast.IndexExpr{X: from, Lbrack: x.Lbrack, Index: keep("key", x.Index), Rbrack: x.Rbrack}
+		place = &ast.IndexExpr{X: from, Lbrack: x.Lbrack, Index: keep("key", x.Index), Rbrack: x.Rbrack}
 	case *ast.SelectorExpr:
 		s := n.info.Selections[x]
-		if s == nil {
-			return nil, x
+		switch {
+		case s == nil:
+			place = x
+		case s.Indirect():
+			place = &ast.SelectorExpr{X: keep("of", x.X), Sel: x.Sel}
+		default:
+			var of ast.Expr
+			take, of = n.place(x.X)
+			place = &ast.SelectorExpr{X: of, Sel: x.Sel}
 		}
-		if s.Indirect() {
-			return take, &ast.SelectorExpr{X: keep("of", x.X), Sel: x.Sel}
-		}
-		more, inner := n.place(x.X)
-		return more, &ast.SelectorExpr{X: inner, Sel: x.Sel}
 	case *ast.StarExpr:
-		return take, &ast.StarExpr{Star: x.Star, X: keep("of", x.X)}
+		place = &ast.StarExpr{Star: x.Star, X: keep("of", x.X)}
+	default:
+		place = x
 	}
-	return nil, x
+	return take, place
 }
 
 // oneByOne splits a, b := x, y.
@@ -420,11 +423,39 @@ func (n *normaliser) declaration(s *ast.DeclStmt) []ast.Stmt {
 	return out
 }
 
+// returnedFields evaluates several results before the return when one is the
+// call of a function in a field: the interpreter would return zero for it.
+func (n *normaliser) returnedFields(s *ast.ReturnStmt) []ast.Stmt {
+	field := false
+	for _, e := range s.Results {
+		if call, ok := e.(*ast.CallExpr); ok {
+			if sel, ok := call.Fun.(*ast.SelectorExpr); ok {
+				f := n.info.Selections[sel]
+				field = field || f != nil && f.Kind() == types.FieldVal
+			}
+		}
+	}
+	if !field || len(s.Results) < 2 {
+		return []ast.Stmt{s}
+	}
+	pos := s.Pos()
+	var out []ast.Stmt
+	for i, e := range s.Results {
+		if n.info.Types[e].IsNil() {
+			continue
+		}
+		name := n.temporary("value")
+		out = append(out, define(pos, name, e))
+		s.Results[i] = ident(name, pos)
+	}
+	return append(out, s)
+}
+
 // returned gives a bare return the results it stands for. Where a function
 // literal can see the results, a return with values sets them first.
 func (n *normaliser) returned(s *ast.ReturnStmt) []ast.Stmt {
 	if n.fn.results == nil {
-		return []ast.Stmt{s}
+		return n.returnedFields(s)
 	}
 	pos := s.Pos()
 	names := func() []ast.Expr {
@@ -439,7 +470,7 @@ func (n *normaliser) returned(s *ast.ReturnStmt) []ast.Stmt {
 		return []ast.Stmt{s}
 	}
 	if !n.fn.captured {
-		return []ast.Stmt{s}
+		return n.returnedFields(s)
 	}
 	var take, give []ast.Stmt
 	var temporaries []ast.Expr

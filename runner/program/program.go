@@ -15,13 +15,6 @@ import (
 // another normal form or another result, and belongs into every key.
 const Version = "2"
 
-// Limits of a source, beyond which it is refused unread.
-const (
-	maxSource  = 1 << 20 // bytes
-	maxNesting = 100     // brackets of any kind in one another
-	maxChain   = 1000    // operators in a row, which nest as deeply in the tree
-)
-
 // firstPos is below the positions of every source: the interpreter has files of
 // its own in its file set, and the tree must come after them.
 const firstPos = 1 << 20
@@ -99,11 +92,16 @@ func Check(file string, src []byte, fences ...Fence) (*Program, diag.List) {
 	}
 	p := &Program{file: file, given: bytes.Clone(src), src: c.src}
 	closure := newClosure(c)
+	total := 0
 	for _, d := range c.steps {
 		s := c.step(d)
 		s.Code, s.Packages = closure.text(d)
 		s.CodeHash = hash(s.Code)
 		p.Steps = append(p.Steps, s)
+		if total += len(s.Code); total > maxCode {
+			c.refuse(d.Name, "split the recipe", "the steps reach more than %d bytes of code", maxCode)
+			return &Program{file: file}, c.diags
+		}
 	}
 	normalise(c)
 	p.tree = c.tree
@@ -151,6 +149,7 @@ func check(file string, src []byte, fences []Fence) *checker {
 	c.fset.AddFile("", -1, firstPos) // see Compile
 	c.check(src, fences)
 	c.diags.Sort()
+	c.diags = shorten(c.diags)
 	return c
 }
 
@@ -166,11 +165,17 @@ func (c *checker) check(src []byte, fences []Fence) {
 	if c.syntax(fences); len(c.diags) > 0 {
 		return
 	}
+	if c.bounds(); len(c.diags) > 0 {
+		return
+	}
 	c.typeCheck()
-	typed := len(c.diags) == 0
+	faults := len(c.diags)
+	if c.boundSizes(); len(c.diags) > faults {
+		return
+	}
 	c.stepRules()
 	c.directives()
-	if typed {
+	if faults == 0 {
 		c.lint()
 	}
 }

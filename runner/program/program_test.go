@@ -303,25 +303,6 @@ func Fit(limb []float64) (fit float64) {
 	}
 }
 
-func TestLimits(t *testing.T) {
-	for name, src := range map[string]string{
-		"long":      strings.Repeat("\n", maxSource+1),
-		"brackets":  "\nfunc F() (x int) { return " + strings.Repeat("(", 200000) + "1" + strings.Repeat(")", 200000) + " }",
-		"operators": "\nfunc F() (x int) { return 1" + strings.Repeat("+1", 100000) + " }",
-		"unary":     "\nfunc F() (x int) { return " + strings.Repeat("-", 100000) + "1 }",
-		"else":      "\nfunc F() (x int) { if x > 1 {}" + strings.Repeat(" else if x > 1 {}", 20000) + " }",
-	} {
-		if _, diags := Check("r.md", []byte(src)); len(diags) != 1 {
-			t.Errorf("%s: %.300v", name, diags)
-		}
-	}
-	var rows strings.Builder
-	for range 5000 {
-		rows.WriteString("\t-1.5, +2, -0.25,\n")
-	}
-	accept(t, "\nfunc F() (x []float64) {\n\treturn []float64{\n"+rows.String()+"\t}\n}\n")
-}
-
 func TestImports(t *testing.T) {
 	for src, want := range map[string]string{
 		"\nimport \"math\"\n\nfunc F() (x float64) { return math.Sqrt(2) }\n":                                                 "",

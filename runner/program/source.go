@@ -28,7 +28,7 @@ func (c *checker) scan() {
 	}
 	var s scanner.Scanner
 	s.Init(f, c.src, nil, scanner.ScanComments)
-	depth := 0
+	depth, tokens := 0, 0
 	var chain [maxNesting + 1]int // operators since the last separator, by depth
 	var imports importScan
 	var blank [][2]int
@@ -40,6 +40,14 @@ func (c *checker) scan() {
 		if tok == token.COMMENT {
 			c.comment(at, pos, lit)
 			continue
+		}
+		if tokens++; tokens > maxTokens {
+			c.diags.Add(at(pos), fmt.Sprintf("the recipe has more than %d words and signs of code", maxTokens), "read long tables from a file", "")
+			return
+		}
+		if tok == token.IDENT && len(lit) > maxIdentifier {
+			c.diags.Add(at(pos), fmt.Sprintf("a name is %d bytes long", len(lit)), fmt.Sprintf("at most %d are read", maxIdentifier), "")
+			return
 		}
 		if imports.active {
 			from := f.Offset(pos)
@@ -78,7 +86,7 @@ func (c *checker) scan() {
 				blank = append(blank, [2]int{f.Offset(pos), f.Offset(pos) + len("import")})
 			}
 		default:
-			if tok.IsOperator() || tok == token.ELSE || tok == token.FUNC || tok == token.MAP {
+			if tok.IsOperator() || tok == token.ELSE || tok == token.FUNC || tok == token.MAP || tok == token.CHAN {
 				chain[depth]++
 			}
 		}

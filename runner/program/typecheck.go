@@ -33,7 +33,7 @@ func (c *checker) typeCheck() {
 		Importer:  exportdata.NewImporter(),
 		Sizes:     types.SizesFor("gc", "amd64"),
 		Error: func(err error) {
-			if e, ok := err.(types.Error); ok {
+			if e, ok := err.(types.Error); ok && len(errs) <= 2*maxFaults {
 				errs = append(errs, e)
 			}
 		},
