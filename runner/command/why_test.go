@@ -79,7 +79,7 @@ func TestAgain(t *testing.T) {
 	if err := s.SetRecord(record); err != nil {
 		t.Fatal(err)
 	}
-	r, said = b.run(ExitCheckFailed, "--again", "Sum")
+	_, said = b.run(ExitCheckFailed, "--again", "Sum")
 	if !strings.Contains(said, "not reproducible") {
 		t.Errorf("it said\n%s", said)
 	}
