@@ -22,6 +22,9 @@ func (c *checker) lint() {
 	l.declarations()
 	l.becomesInterface()
 	walk(c.tree, func(n ast.Node, above []ast.Node) {
+		if len(c.diags) > 10*maxFaults {
+			return
+		}
 		l.result(n, above)
 		l.statement(n, above)
 		l.expression(n, above)

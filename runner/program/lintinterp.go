@@ -96,6 +96,7 @@ func (l *linter) expression(n ast.Node, above []ast.Node) {
 		l.interfaceField(n)
 	case *ast.CallExpr:
 		l.interfaceArgument(n)
+		l.verbs(n)
 	case *ast.FuncLit:
 		l.closure(n, above)
 	}

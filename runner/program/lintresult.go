@@ -3,7 +3,6 @@ package program
 import (
 	"fmt"
 	"go/ast"
-	"go/constant"
 	"go/types"
 	"regexp"
 
@@ -79,9 +78,10 @@ func (l *linter) format(call *ast.CallExpr) {
 	}
 	if name := fn.Name(); name == "Sprintf" || name == "Errorf" || name == "Appendf" || name == "Fprintf" {
 		f := call.Args[fixed-1]
-		if v := l.info.Types[f].Value; v == nil || v.Kind() != constant.String {
+		text, ok := l.formatText(f)
+		if verb := addressVerb.FindString(text); !ok {
 			l.refuse(f, "write the format as a literal or constant", "the format of %s is not a constant", name)
-		} else if verb := addressVerb.FindString(constant.StringVal(v)); verb != "" {
+		} else if verb != "" {
 			l.refuse(f, "print the fields, or use %v", "format %s prints addresses or names of types", verb)
 		}
 	}
@@ -135,6 +135,9 @@ func notPrintable(t types.Type, top bool, seen map[types.Type]bool) string {
 	case *types.Array:
 		return notPrintable(u.Elem(), false, seen)
 	case *types.Map:
+		if b, ok := u.Key().Underlying().(*types.Basic); ok && b.Info()&(types.IsFloat|types.IsComplex) != 0 {
+			return "its keys could be NaN, in any order"
+		}
 		if why := notPrintable(u.Key(), false, seen); why != "" {
 			return why
 		}

@@ -26,6 +26,9 @@ func (l *linter) fresh(o types.Object, above []ast.Node) bool {
 	if body == nil || !within(o.Pos(), body) {
 		return false
 	}
+	if _, known := l.calls[loop]; known {
+		return true
+	}
 	for i, n := range above {
 		if s, ok := n.(*ast.LabeledStmt); ok && i+1 < len(above) && above[i+1] == loop {
 			label = s.Label.Name

@@ -69,7 +69,30 @@ func (c *checker) typeError(e types.Error) {
 	} else if m := noMember.FindStringSubmatch(message); m != nil && !strings.Contains(message, "but does have") {
 		nearest = c.nearestSelection(e.Pos, m[1])
 	}
+	for _, h := range hints {
+		if expected == "" && nearest == "" && h.message.MatchString(message) {
+			expected = h.message.ReplaceAllString(h.message.FindString(message), h.instead)
+		}
+	}
 	c.diags.Add(c.at(e.Pos), message, expected, nearest)
+}
+
+// hints say what to write instead where the compiler's words do not.
+var hints = []struct {
+	message *regexp.Regexp
+	instead string
+}{
+	{regexp.MustCompile(`^declared and not used: (\w+)`), "leave it out, or write _ = $1"},
+	{regexp.MustCompile(`^result parameter (\w+) not in scope at return`), "another $1 hides it: write = instead of :=, or return the values"},
+	{regexp.MustCompile(`^cannot range over (.*) \(.*requires go1\.22.*`), "write for i := 0; i < $1; i++"},
+	{regexp.MustCompile(`^cannot range over .*requires go1\.23.*`), "write a loop with a condition"},
+	{regexp.MustCompile(`^(?:built-in )?(min|max) requires go1\.21.*`), "use math.Min or math.Max, or write the function"},
+	{regexp.MustCompile(`^(?:built-in )?clear requires go1\.21.*`), "make a new map or slice"},
+	{regexp.MustCompile(`\(mismatched types (?:untyped )?(?:int|float64)(?: constant)? and (?:int|float64)\)`), "convert one of them: float64(n)"},
+	{regexp.MustCompile(`^missing return`), "end the function with return"},
+	{regexp.MustCompile(`^(\w+) redeclared in this block`), "choose another name, or write = instead of :="},
+	{regexp.MustCompile(`^no new variables on left side of :=`), "write = instead of :="},
+	{regexp.MustCompile(`^cannot use .* \(.* of type (?:int|float64)\) as (int|float64) value`), "convert it: $1(…)"},
 }
 
 // qualifies reports whether the identifier at pos stands before a dot, as a
