@@ -222,21 +222,24 @@ func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
 	}
 	began := time.Now()
 	var expired atomic.Bool
-	timer := time.AfterFunc(w.options.StepTime, func() {
+	limit := w.limit(kind)
+	timer := time.AfterFunc(limit, func() {
 		expired.Store(true)
 		w.kill()
 		w.out.SetReadDeadline(time.Now().Add(time.Second)) // should anything else hold the pipe open
 	})
 	a, err := w.exchange(q)
 	timer.Stop()
-	w.spent += time.Since(began)
+	if limit == w.options.StepTime {
+		w.spent += time.Since(began)
+	}
 	switch {
 	case err != nil && expired.Load():
 		flag := TimeFlag
 		if kind == askCheck {
 			flag = ""
 		}
-		return Message{}, &TimeLimitError{w.options.StepTime, flag}
+		return Message{}, &TimeLimitError{limit, flag}
 	case err != nil:
 		return Message{}, w.lost(kind, err)
 	}
@@ -249,6 +252,16 @@ func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
 		return Message{}, errors.New(plain(text, 2*maxText))
 	}
 	return Message{}, fmt.Errorf("the worker gave an answer of unknown kind %q", a.Kind)
+}
+
+// limit is how long the answer to a question may take. Getting ready is no work
+// of a step's, and takes long on a busy machine only.
+func (w *Worker) limit(kind string) time.Duration {
+	switch kind {
+	case askLimits, askCheck, askLoad:
+		return max(w.options.StepTime, checkTime)
+	}
+	return w.options.StepTime
 }
 
 func (w *Worker) exchange(q Message) (Message, error) {
