@@ -135,14 +135,7 @@ func verdict(outcome *engine.Outcome, steps []reports.Step) reports.Outcome {
 func checks(steps []reports.Step) (passed int, failed []check.Check) {
 	for _, s := range steps {
 		for _, r := range s.Results {
-			var list []check.Check
-			switch v := r.Value.(type) {
-			case check.Check:
-				list = []check.Check{v}
-			case []check.Check:
-				list = v
-			}
-			for _, c := range list {
+			for _, c := range checksIn(r) {
 				if c.Passed {
 					passed++
 				} else {
@@ -152,6 +145,17 @@ func checks(steps []reports.Step) (passed int, failed []check.Check) {
 		}
 	}
 	return passed, failed
+}
+
+// checksIn are the checks that a result consists of, if it does.
+func checksIn(r reports.Result) []check.Check {
+	switch v := r.Value.(type) {
+	case check.Check:
+		return []check.Check{v}
+	case []check.Check:
+		return v
+	}
+	return nil
 }
 
 func inputOf(ctx context.Context, e *engine.Engine, i int, in engine.Input) reports.Input {

@@ -203,14 +203,7 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 	}
 	for _, s := range doc.Steps {
 		for _, res := range s.Results {
-			var list []check.Check
-			switch v := res.Value.(type) {
-			case check.Check:
-				list = []check.Check{v}
-			case []check.Check:
-				list = v
-			}
-			for _, c := range list {
+			for _, c := range checksIn(res) {
 				rc := record.Check{Step: s.Name, Name: c.Name, Unit: c.Unit, Limit: c.Limit, Passed: c.Passed}
 				if !math.IsNaN(c.Value) && !math.IsInf(c.Value, 0) {
 					rc.Value = &c.Value

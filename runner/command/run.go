@@ -89,6 +89,15 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 	return nil
 }
 
+// noSuch is the error for a flag that names what the recipe does not have.
+func noSuch(flag, name, what string, known []string) error {
+	text := fmt.Sprintf("%s %s: the recipe has no %s of this name; it has %s", flag, name, what, strings.Join(known, ", "))
+	if near := diag.Nearest(name, known); near != "" {
+		text += "; nearest: " + near
+	}
+	return &plan.OptionError{Text: text}
+}
+
 // askAgain passes --again on to the engine.
 func (o *options) askAgain(p *plan.Plan, e *engine.Engine) error {
 	var known []string
@@ -97,11 +106,7 @@ func (o *options) askAgain(p *plan.Plan, e *engine.Engine) error {
 	}
 	for _, name := range o.again {
 		if !slices.Contains(known, name) {
-			text := fmt.Sprintf("--again %s: the recipe has no step of this name; it has %s", name, strings.Join(known, ", "))
-			if near := diag.Nearest(name, known); near != "" {
-				text += "; nearest: " + near
-			}
-			return &plan.OptionError{Text: text}
+			return noSuch("--again", name, "step", known)
 		}
 	}
 	if len(o.again) > 0 {
@@ -127,7 +132,7 @@ func (a *app) wrong(err error, o *options) error {
 	return &exit{status: ExitWrong, cause: err, told: true}
 }
 
-// relativeTo gives path as seen from the current folder when that is shorter.
+// shortPath gives path as seen from the current folder when that is shorter.
 func shortPath(path string) string {
 	wd, err := os.Getwd()
 	if err != nil {

@@ -5,7 +5,6 @@ import (
 	"strconv"
 	"strings"
 
-	"rimlight/runner/diag"
 	"rimlight/runner/engine"
 	"rimlight/runner/plan"
 )
@@ -57,11 +56,7 @@ func (a *app) showWhy(name string, e *engine.Engine, outcome *engine.Outcome) er
 		a.printKey(fmt.Sprintf("%s, element %d of %d", name, element+1, len(s.Elements)), s.Elements[element], e.Before(name, element))
 		return nil
 	}
-	text := fmt.Sprintf("--why %s: the recipe has no input or step of this name; it has %s", name, strings.Join(known, ", "))
-	if near := diag.Nearest(name, known); near != "" {
-		text += "; nearest: " + near
-	}
-	return &plan.OptionError{Text: text}
+	return noSuch("--why", name, "input or step", known)
 }
 
 func (a *app) printKey(what string, c engine.Computation, before plan.KeyText) {

@@ -325,8 +325,6 @@ func digest(ctx context.Context, r io.Reader) (int64, string, error) {
 	return n, hex.EncodeToString(h.Sum(nil)), err
 }
 
-func hashOf(b []byte) store.Hash { return sha256.Sum256(b) }
-
 // zero is what fills the parameter of an optional input that is absent.
 func zero(typ string) ([]byte, error) {
 	t, ok := inputTypes[typ]

@@ -7,6 +7,7 @@ import (
 	"strings"
 
 	"rimlight/runner/plan"
+	"rimlight/runner/store"
 )
 
 // A Forecast says what a run would do about one input or step.
@@ -55,7 +56,7 @@ func (e *Engine) forecastInput(spec *plan.Input, in *Input) bool {
 			in.fail(err)
 			return false
 		}
-		in.State, in.Results = Reused, []Value{{Type: spec.Type, Hash: hashOf(b)}}
+		in.State, in.Results = Reused, []Value{{Type: spec.Type, Hash: store.HashOf(b)}}
 		return true
 	}
 	var sums []string

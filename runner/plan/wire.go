@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -178,7 +179,7 @@ func unknownOption(flag, what string, given map[string]string, known []string) e
 	}
 	sort.Strings(names)
 	for _, n := range names {
-		if !contains(known, n) {
+		if !slices.Contains(known, n) {
 			text := fmt.Sprintf("%s %s: the recipe has no %s of this name", flag, n, what)
 			if len(known) > 0 {
 				text += "; it has " + strings.Join(known, ", ")
@@ -192,16 +193,7 @@ func unknownOption(flag, what string, given map[string]string, known []string) e
 	return nil
 }
 
-func contains(list []string, s string) bool {
-	for _, x := range list {
-		if x == s {
-			return true
-		}
-	}
-	return false
-}
-
-// step looks up which fence and section a line of code stands in.
+// block looks up which fence and section a line of code stands in.
 func (w *wiring) block(line int) recipe.Block {
 	for _, b := range w.plan.Recipe.Blocks {
 		if line >= b.Line && line < b.Line+strings.Count(b.Code, "\n")+1 {
