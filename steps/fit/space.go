@@ -59,9 +59,9 @@ func (s *space) rename(slot int, name string) {
 		b := p.Orbit.ImpactParameter()
 		s.value[slotShape] = max(b*b, leastShape)
 	case "q1", "q2":
-		q1, q2 := limb.ToKipping(p.U1, p.U2)
-		if !(q1 > 0) || math.IsNaN(q2) {
-			q1, q2 = max(q1, 0), 0.5
+		q1, q2, err := limb.ToSquare(limb.Quadratic, p.U1, p.U2)
+		if err != nil { // the start is nowhere near a star
+			q1, q2 = 0, 0.5
 		}
 		s.value[slotLimb1], s.value[slotLimb2] = math.Sqrt(q1), q2
 		s.name[slotLimb1], s.name[slotLimb2] = "q1", "q2"
@@ -263,7 +263,7 @@ func (s *space) physical(v *[slots]float64) transit.Params {
 	}
 	u1, u2 := v[slotLimb1], v[slotLimb2]
 	if s.name[slotLimb1] == "q1" {
-		u1, u2 = limb.FromKipping(v[slotLimb1]*v[slotLimb1], v[slotLimb2])
+		u1, u2, _, _ = limb.FromRoot(limb.Quadratic, v[slotLimb1], v[slotLimb2])
 	}
 	return transit.Params{
 		Orbit: orbit.Orbit{

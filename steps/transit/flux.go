@@ -26,7 +26,7 @@ type deficits struct {
 // Quadratic returns the relative flux of a star with limb-darkening
 // coefficients u1 and u2 behind a planet of radius ratio r at separation z. It
 // is exactly 1 for z ≥ 1+r and 0 for z ≤ r-1. The absolute error is below 1e-14
-// for r ≤ 10 and limb darkening that [limb.Physical] accepts, and grows in
+// for r ≤ 10 and limb darkening that [limb.Law.Physical] accepts, and grows in
 // proportion to r beyond.
 //
 // The result is NaN if r or z is negative or NaN, or r is infinite. It is 1 for

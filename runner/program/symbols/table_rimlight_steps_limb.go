@@ -9,10 +9,14 @@ import (
 
 func init() {
 	Table["rimlight/steps/limb/limb"] = map[string]reflect.Value{
-		"FromKipping":         reflect.ValueOf(limb.FromKipping),
-		"FromKippingGradient": reflect.ValueOf(limb.FromKippingGradient),
-		"Physical":            reflect.ValueOf(limb.Physical),
-		"QuadraticIntensity":  reflect.ValueOf(limb.QuadraticIntensity),
-		"ToKipping":           reflect.ValueOf(limb.ToKipping),
+		"Count":      reflect.ValueOf(limb.Count),
+		"FromHalf":   reflect.ValueOf(limb.FromHalf),
+		"FromRoot":   reflect.ValueOf(limb.FromRoot),
+		"FromSquare": reflect.ValueOf(limb.FromSquare),
+		"Law":        reflect.ValueOf((*limb.Law)(nil)),
+		"Names":      reflect.ValueOf(limb.Names),
+		"New":        reflect.ValueOf(limb.New),
+		"ToHalf":     reflect.ValueOf(limb.ToHalf),
+		"ToSquare":   reflect.ValueOf(limb.ToSquare),
 	}
 }
