@@ -11,6 +11,7 @@ import (
 	"rimlight/steps/fit"
 	"rimlight/steps/fits"
 	"rimlight/steps/lightcurve"
+	"rimlight/steps/limb"
 	"rimlight/steps/limbtable"
 	"rimlight/steps/orbit"
 	"rimlight/steps/simulate"
@@ -76,13 +77,13 @@ func newSamples() *samples {
 	must(err)
 	white, err := lightcurve.White(clean)
 	must(err)
-	limb, err := limbtable.Read([]byte(limbCSV))
+	limbs, err := limbtable.Read([]byte(limbCSV))
 	must(err)
 
 	setup := fit.Setup{
 		Period: scenario.Period, MidTransit: scenario.MidTransit, AxisRatio: scenario.AxisRatio,
 		Inclination: scenario.Inclination, Periastron: 90, RadiusRatio: 0.115, Exposure: 280,
-		LimbLaw: fit.LawQuadratic, LimbPolicy: fit.PolicyFree, Limb: limb,
+		LimbLaw: fit.LawQuadratic, LimbPolicy: fit.PolicyFree, Limb: limbs,
 		Trend: systematics.Trend{Polynomial: 1, Regressors: []string{"X"}},
 	}
 	settling := setup
@@ -169,6 +170,13 @@ func newSamples() *samples {
 		"fit.ChannelWith": {{curves[0], curves[1]}, {posterior}, {setup}, {channelWith}, {names}, {ramp}},
 		"fit.Function":    {{white}, {systematics.Trend{}, setup.Trend}, {hook}, {names}, {ramp}},
 
+		"limb.Count":      {{limb.Power2, limb.FourParameter}},
+		"limb.New":        {{limb.Power2, limb.SquareRoot}, {[]float64{0.6, 0.7}}},
+		"limb.FromSquare": {{limb.Quadratic, limb.Power2}, {0.2, 0.7}, {0.3, 0.6}},
+		"limb.FromRoot":   {{limb.SquareRoot, limb.Power2}, {0.2, 0.7}, {0.3, 0.6}},
+		"limb.ToSquare":   {{limb.Logarithmic, limb.Power2}, {0.4, 0.7}, {0.3, 0.6}},
+		"limb.FromHalf":   {{}, {0.4, 0.7}, {0.1, 0.3}},
+
 		"lightcurve.Exclude":     {{}, {scenario.Start, scenario.Start + 0.1}, {scenario.MidTransit, scenario.MidTransit + 1}},
 		"lightcurve.SkipStart":   {{}, {0.0, 10.0, 60.0}},
 		"diagnose.TimeAveraging": {{whiteFit, curveFits[0]}, {5.0, 10.0}, {30.0, 60.0}},
@@ -183,8 +191,9 @@ func newSamples() *samples {
 		"spectrum.ReadCSV":              {{spectrum.CSV(spec)}},
 	}}
 	for _, v := range []any{
+		limb.Law{Name: limb.Power2, Coefficients: []float64{0.6, 0.7}}, limb.Law{Name: limb.FourParameter, Coefficients: []float64{0.5, 0.3, -0.4, 0.2}},
 		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
-		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limb, setup, settling, whitePriors, channelPriors,
+		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, setup, settling, whitePriors, channelPriors,
 		posterior, whiteFit, curveFits, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},
 		transit.Params{Orbit: path, RadiusRatio: 0.12, U1: 0.3, U2: 0.2, Exposure: 280},
 		diagnose.FitChecks("white light", posterior), []check.Check{},
