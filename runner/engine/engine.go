@@ -47,6 +47,9 @@ type Engine struct {
 	// they are known, to see whether they come out the same.
 	Again func(step string) bool
 
+	// Elsewhere, when set, may take the work of steps.
+	Elsewhere Elsewhere
+
 	// Observe is told what happens, one event at a time.
 	Observe func(Event)
 
@@ -57,6 +60,11 @@ type Engine struct {
 	state   sync.RWMutex // guards outcome.Steps, which mending may rewrite
 	notes   []string
 	differs []string
+
+	// Of an engine that works for another one: whose values it cannot mend, and
+	// which is told how each element ended.
+	foreign bool
+	ended   func(element int, err error)
 }
 
 // State says where results came from.
@@ -92,6 +100,7 @@ type Computation struct {
 	Took    time.Duration // of the computing, whenever that was
 	When    time.Time
 	Host    string
+	cause   error // behind Err
 }
 
 // An Input is a raw input as used.
@@ -129,6 +138,7 @@ type Event struct {
 	Done   int // elements of a fan-out that are there
 	Total  int // elements in all; 0 for a plain step
 	Took   time.Duration
+	Where  string // it is computed, when that is elsewhere
 }
 
 // Run carries out the plan. It returns when everything that could be reached
@@ -189,7 +199,7 @@ func (e *Engine) ready(ctx context.Context, i int) bool {
 // Finished reports whether there are results.
 func (c *Computation) Finished() bool { return c.State == Computed || c.State == Reused }
 
-func (c *Computation) fail(err error) { c.State, c.Err = Failed, err.Error() }
+func (c *Computation) fail(err error) { c.State, c.Err, c.cause = Failed, err.Error(), err }
 
 func (e *Engine) observe(ev Event) {
 	if e.Observe == nil {
@@ -370,5 +380,6 @@ func (c contextReader) Read(p []byte) (int, error) {
 // computing it again will mend.
 func damaged(err error) bool {
 	var d *store.DamagedError
-	return errors.As(err, &d) || errors.Is(err, fs.ErrNotExist)
+	var f *Fault
+	return errors.As(err, &d) || errors.As(err, &f) && f.Unreadable || errors.Is(err, fs.ErrNotExist)
 }

@@ -102,7 +102,7 @@ func sealGo(typ string, v any) ([]byte, error) {
 func (e *Engine) inputBytes(ctx context.Context, i int) ([]byte, error) {
 	in := &e.outcome.Inputs[i]
 	b, err := sealed(e.Store, in.Results[0])
-	if !damaged(err) {
+	if !damaged(err) || e.foreign {
 		return b, err
 	}
 	e.note("input %s: %v; it was read again", in.Name, err)
@@ -142,6 +142,9 @@ func (e *Engine) resultBytes(ctx context.Context, step, result int) ([]byte, err
 
 // mend computes again whatever of a step's results is missing from the store.
 func (e *Engine) mend(ctx context.Context, step int, cause error) error {
+	if e.foreign {
+		return cause
+	}
 	e.heal[step].Lock()
 	defer e.heal[step].Unlock()
 	e.note("step %s: %v; it was computed again", e.Plan.Steps[step].Name, cause)
@@ -167,18 +170,7 @@ func (e *Engine) plain(ctx context.Context, i int) error {
 	spec := &e.Plan.Steps[i]
 	c := Computation{State: NotReached, Text: plan.StepKey(spec, e.hashes(spec, Value{}), e.Library, e.Build)}
 	if !e.lookUp(&c, spec.Name, -1) {
-		args, err := e.arguments(ctx, spec)
-		if err != nil {
-			return err
-		}
-		if !e.acquire(ctx) {
-			return ctx.Err()
-		}
-		defer e.release()
-		e.observe(Event{Step: spec.Name, Why: c.Why})
-		p := pool{e: e, spec: spec, args: args}
-		defer p.close()
-		if err := p.compute(ctx, &c, nil); err != nil {
+		if err := e.compute(ctx, spec, &c); err != nil {
 			e.settle(i, c, nil)
 			return err
 		}
@@ -186,6 +178,25 @@ func (e *Engine) plain(ctx context.Context, i int) error {
 	c.Seed = e.seed(spec, c.Text)
 	e.settle(i, c, nil)
 	return nil
+}
+
+// compute computes a plain step, here or elsewhere.
+func (e *Engine) compute(ctx context.Context, spec *plan.Step, c *Computation) error {
+	if took := e.tookBefore(spec.Name, -1); e.mayLeave(spec) && e.Elsewhere.Takes(1, took) {
+		return e.computeAway(ctx, spec, c, took)
+	}
+	args, err := e.arguments(ctx, spec)
+	if err != nil {
+		return err
+	}
+	if !e.acquire(ctx) {
+		return ctx.Err()
+	}
+	defer e.release()
+	e.observe(Event{Step: spec.Name, Why: c.Why})
+	p := pool{e: e, spec: spec, args: args}
+	defer p.close()
+	return p.compute(ctx, c, nil)
 }
 
 // seed is what the step's seed parameter is filled with, 0 when it has none.
@@ -324,18 +335,23 @@ const maxDeaths = 4
 func fatal(err error) bool {
 	var late *worker.TimeLimitError
 	var lost *worker.LostError
-	return errors.As(err, &late) || errors.As(err, &lost)
+	var fault *Fault
+	return errors.As(err, &late) || errors.As(err, &lost) || errors.As(err, &fault) && fault.Fatal
 }
 
-// missing computes the elements listed in todo with a pool of workers.
-func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int) error {
+// missingHere computes the elements listed in todo with a pool of workers.
+func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int) error {
 	args, err := e.arguments(ctx, spec)
 	if err != nil {
 		return err
 	}
-	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: len(comps) - len(todo), Total: len(comps)})
 	var next, done, deaths atomic.Int64
-	done.Store(int64(len(comps) - len(todo)))
+	for n := range comps {
+		if comps[n].State != NotReached {
+			done.Add(1)
+		}
+	}
+	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: int(done.Load()), Total: len(comps)})
 	arriving := make(chan keeping, maxTogether)
 	var kept, all sync.WaitGroup
 	kept.Go(func() { e.keeper(arriving) })
@@ -356,6 +372,9 @@ func (e *Engine) missing(ctx context.Context, spec *plan.Step, items []Value, co
 				finish := func(err error) {
 					if err != nil {
 						comps[n].fail(err)
+					}
+					if e.ended != nil {
+						e.ended(n, err)
 					}
 					e.observe(Event{Step: spec.Name, Done: int(done.Add(1)), Total: len(comps), Took: comps[n].Took})
 				}
