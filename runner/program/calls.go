@@ -56,11 +56,7 @@ func (n *normaliser) count(e ast.Expr) ast.Expr {
 	if n.shift == "" {
 		n.shift = n.temporary("count")
 	}
-	pos := e.Pos()
-	call := func(name string, x ast.Expr) ast.Expr {
-		return &ast.CallExpr{Fun: ident(name, pos), Lparen: pos, Args: []ast.Expr{x}, Rparen: e.End()}
-	}
-	return call(n.shift, call("int", e))
+	return call(e.Pos(), n.shift, call(e.Pos(), "int", e))
 }
 
 // addShift declares the function that checks counts of shifts.
@@ -71,9 +67,6 @@ func (n *normaliser) addShift() {
 	pos := n.tree.Name.End()
 	arg := func() *ast.Ident { return ident("n", pos) }
 	block := func(list ...ast.Stmt) *ast.BlockStmt { return &ast.BlockStmt{Lbrace: pos, List: list, Rbrace: pos} }
-	call := func(name string, x ast.Expr) *ast.CallExpr {
-		return &ast.CallExpr{Fun: ident(name, pos), Lparen: pos, Args: []ast.Expr{x}, Rparen: pos}
-	}
 	n.tree.Decls = append(n.tree.Decls, &ast.FuncDecl{
 		Name: ident(n.shift, pos),
 		Type: &ast.FuncType{
@@ -85,9 +78,9 @@ func (n *normaliser) addShift() {
 			&ast.IfStmt{
 				If:   pos,
 				Cond: &ast.BinaryExpr{X: arg(), OpPos: pos, Op: token.LSS, Y: number(pos, token.INT, "0")},
-				Body: block(&ast.ExprStmt{X: call("panic", &ast.BasicLit{ValuePos: pos, Kind: token.STRING, Value: `"negative shift amount"`})}),
+				Body: block(&ast.ExprStmt{X: call(pos, "panic", &ast.BasicLit{ValuePos: pos, Kind: token.STRING, Value: `"negative shift amount"`})}),
 			},
-			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{call("uint", arg())}},
+			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{call(pos, "uint", arg())}},
 		),
 	})
 }

@@ -92,11 +92,17 @@ func (l *linter) expression(n ast.Node, above []ast.Node) {
 		}
 	case *ast.Ident:
 		l.name(n)
+		l.asValue(n, above)
 	case *ast.CompositeLit:
 		l.interfaceField(n)
 	case *ast.CallExpr:
 		l.interfaceArgument(n)
 		l.verbs(n)
+		if l.handsOnTuple(n) {
+			if sig := l.under(n.Fun).(*types.Signature); !l.writable(sig, n.Pos()) {
+				l.refuse(n, "assign the results to variables first", "a call of this type cannot hand on the results of another")
+			}
+		}
 	case *ast.FuncLit:
 		l.closure(n, above)
 	}
@@ -201,6 +207,17 @@ func (l *linter) name(id *ast.Ident) {
 		if o.Name() == "recover" {
 			l.refuse(id, "return an error where it arises", "recover is not available: a panic ends the step and is reported")
 		}
+	}
+}
+
+// asValue refuses functions as values that signs cannot wrap.
+func (l *linter) asValue(id *ast.Ident, above []ast.Node) {
+	e := ast.Expr(id)
+	if s, ok := above[len(above)-1].(*ast.SelectorExpr); ok && s.Sel == id {
+		e = s
+	}
+	if !l.called[e] && l.functionValue(e) && !l.writable(l.under(e), id.Pos()) {
+		l.refuse(e, "write func(…) { return "+exprText(e)+"(…) }", "function %s is not available as a value", exprText(e))
 	}
 }
 

@@ -43,25 +43,14 @@ func (n *normaliser) methodValues() {
 			receiver = &ast.StarExpr{Star: pos, X: sel.X}
 		}
 		name := n.temporary("receiver")
-		call := &ast.CallExpr{Fun: &ast.SelectorExpr{X: ident(name, pos), Sel: ident(sel.Sel.Name, pos)}, Lparen: pos, Rparen: pos}
+		inner := &ast.CallExpr{Fun: &ast.SelectorExpr{X: ident(name, pos), Sel: ident(sel.Sel.Name, pos)}, Lparen: pos, Rparen: pos}
 		typ := n.typeExpr(sig, pos).(*ast.FuncType)
 		own := n.typeExpr(sig, pos).(*ast.FuncType)
-		for _, p := range own.Params.List {
-			arg := n.temporary("argument")
-			p.Names = []*ast.Ident{ident(arg, pos)}
-			call.Args = append(call.Args, ident(arg, pos))
-			if _, ok := p.Type.(*ast.Ellipsis); ok {
-				call.Ellipsis = pos
-			}
-		}
-		var act ast.Stmt = &ast.ExprStmt{X: call}
-		if sig.Results().Len() > 0 {
-			act = &ast.ReturnStmt{Return: pos, Results: []ast.Expr{call}}
-		}
+		n.forward(own, sig, inner, n.direct(sel))
 		block := func(list ...ast.Stmt) *ast.BlockStmt { return &ast.BlockStmt{Lbrace: pos, List: list, Rbrace: pos} }
 		outer := &ast.FuncLit{
 			Type: &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}, Results: &ast.FieldList{List: []*ast.Field{{Type: typ}}}},
-			Body: block(define(pos, name, receiver), &ast.ReturnStmt{Return: pos, Results: []ast.Expr{&ast.FuncLit{Type: own, Body: block(act)}}}),
+			Body: block(define(pos, name, receiver), &ast.ReturnStmt{Return: pos, Results: []ast.Expr{&ast.FuncLit{Type: own, Body: block(returning(sig, inner))}}}),
 		}
 		cur.Replace(&ast.CallExpr{Fun: outer, Lparen: pos, Rparen: pos})
 		return true
@@ -121,7 +110,7 @@ func (c *checker) writable(t types.Type, pos token.Pos) bool {
 	return false
 }
 
-// typeExpr writes a writable type.
+// typeExpr writes a writable type; functions take signed numbers as complex ones.
 func (n *normaliser) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 	switch t := types.Unalias(t).(type) {
 	case *types.Basic:
@@ -141,10 +130,13 @@ func (n *normaliser) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 	case *types.Map:
 		return &ast.MapType{Map: pos, Key: n.typeExpr(t.Key(), pos), Value: n.typeExpr(t.Elem(), pos)}
 	case *types.Signature:
-		list := func(tuple *types.Tuple, variadic bool) *ast.FieldList {
+		list := func(tuple *types.Tuple, parameters, variadic bool) *ast.FieldList {
 			out := &ast.FieldList{Opening: pos, Closing: pos}
 			for i := 0; i < tuple.Len(); i++ {
 				e := n.typeExpr(tuple.At(i).Type(), pos)
+				if parameters && signed(tuple.At(i).Type()) {
+					e = ident("complex128", pos)
+				}
 				if variadic && i == tuple.Len()-1 {
 					e = &ast.Ellipsis{Ellipsis: pos, Elt: e.(*ast.ArrayType).Elt}
 				}
@@ -152,9 +144,9 @@ func (n *normaliser) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 			}
 			return out
 		}
-		f := &ast.FuncType{Func: pos, Params: list(t.Params(), t.Variadic())}
+		f := &ast.FuncType{Func: pos, Params: list(t.Params(), true, t.Variadic())}
 		if t.Results().Len() > 0 {
-			f.Results = list(t.Results(), false)
+			f.Results = list(t.Results(), false, false)
 		}
 		return f
 	}

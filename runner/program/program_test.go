@@ -92,7 +92,7 @@ func TestSteps(t *testing.T) {
 
 func TestCode(t *testing.T) {
 	code := accept(t, sampleRecipe).Steps[1].Code
-	const want = `program 2
+	const want = `program 3
 import rimlight/steps/lightcurve
 
 func Level(channel lightcurve.Curve, limb summary) (level float64) {
