@@ -93,16 +93,6 @@ func literal(body string) string {
 	return "string { return run_() }" // the fault is met again by the check
 }
 
-// interpret checks and runs the sample. A program that is refused gives the
-// complaints instead.
-func (s sample) interpret() (out string, refused error) {
-	p, diags := Check(s.name, []byte(s.source()))
-	if len(diags) > 0 {
-		return "", diags
-	}
-	return p.outcome(), nil
-}
-
 // outcome is what the step Run gives, as the compiled program shows it.
 func (p *Program) outcome() string {
 	m, err := p.Compile()

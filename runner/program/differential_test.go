@@ -44,23 +44,31 @@ func TestInterpreterAgreesWithGo(t *testing.T) {
 	}
 	random, seed := randomSamples(t)
 	got := map[string]string{}
-	complaint := map[string]error{}
+	complaint := map[string]string{}
 	var valid []sample
 	refused, refusedRandom := 0, 0
-	for i, s := range append(fixed[:len(fixed):len(fixed)], random...) {
-		out, err := s.interpret()
+	samples := append(fixed[:len(fixed):len(fixed)], random...)
+	var errands []errand
+	for _, s := range samples {
+		errands = append(errands, s.errand(checked))
+	}
+	for i, o := range apart(t, errands) {
+		s := samples[i]
 		switch {
-		case err == nil:
-			got[s.name] = out
+		case o.Ended != "":
+			t.Errorf("%s ends the interpreter: %s\n%s", s.name, o.Ended, s.source())
+			continue
+		case o.Refused == "":
+			got[s.name] = string(o.Text)
 		case i >= len(fixed):
 			refusedRandom++
-			t.Logf("%s is refused: %v", s.name, err)
+			t.Logf("%s is refused: %v", s.name, o.Refused)
 			continue
 		default:
 			refused++
-			complaint[s.name] = err
+			complaint[s.name] = o.Refused
 		}
-		if err == nil || typed(s) != nil && !undetermined(s) {
+		if o.Refused == "" || typed(s) != nil && !undetermined(s) {
 			valid = append(valid, s)
 		}
 	}
@@ -68,7 +76,7 @@ func TestInterpreterAgreesWithGo(t *testing.T) {
 	same, signs, wrong := 0, 0, 0
 	var suspects []sample
 	for _, s := range valid {
-		if complaint[s.name] != nil {
+		if complaint[s.name] != "" {
 			suspects = append(suspects, s)
 			continue
 		}
@@ -197,10 +205,11 @@ import "fmt"
 func show(name string, run func() string) {
 	defer func() {
 		if r := recover(); r != nil {
-			fmt.Printf("%s\x00PANIC\x01", name)
+			fmt.Print("PANIC\x01")
 		}
 	}()
-	fmt.Printf("%s\x00%s\x01", name, run())
+	fmt.Print(name, "\x00")
+	fmt.Print(run(), "\x01")
 }
 
 func main() {
@@ -219,14 +228,16 @@ func main() {
 		t.Fatalf("go build: %v\n%.4000s", err, out)
 	}
 	out, err := exec.Command(binary).Output()
-	if err != nil {
-		t.Fatalf("compiled programs: %v", err)
-	}
 	result := map[string][]string{}
-	for _, record := range strings.Split(string(out), "\x01") {
+	records := strings.Split(string(out), "\x01")
+	for _, record := range records {
 		if name, text, ok := strings.Cut(record, "\x00"); ok {
 			result[name] = append(result[name], text)
 		}
+	}
+	if err != nil {
+		last, _, _ := strings.Cut(records[len(records)-1], "\x00")
+		t.Fatalf("compiled programs: %v, in %s", err, last)
 	}
 	return result
 }

@@ -1,15 +1,11 @@
 package program
 
 import (
-	"bufio"
-	"encoding/json"
 	"fmt"
 	"os"
-	"os/exec"
 	"sort"
 	"strings"
 	"testing"
-	"time"
 )
 
 const strictList = "../../testdata/program/strict.md"
@@ -26,15 +22,15 @@ runner/program writes this list with -update.
 // give compiled. A refusal is deserved when the interpreter, left to itself and
 // with the rewriting, gives something else. All others must be in the list of
 // those refused needlessly. It gives their number.
-func judge(t *testing.T, suspects []sample, complaint map[string]error, want map[string][]string) int {
+func judge(t *testing.T, suspects []sample, complaint map[string]string, want map[string][]string) int {
 	given := withoutRules(t, suspects)
 	var entries []string
 	judged := map[string]bool{}
 	for _, s := range suspects {
 		judged[s.name] = true
-		for _, way := range []string{"bare", "rewritten"} {
-			if agree(given[s.name+" "+way], want[s.name]) {
-				first, _, _ := strings.Cut(complaint[s.name].Error(), "\n")
+		for _, way := range []way{bare, rewritten} {
+			if agree(given[s.name+" "+string(way)], want[s.name]) {
+				first, _, _ := strings.Cut(complaint[s.name], "\n")
 				_, message, _ := strings.Cut(first, ": ")
 				entries = append(entries, fmt.Sprintf("- `%s` (%s): %s\n", s.name, way, message))
 				break
@@ -91,106 +87,15 @@ func undetermined(s sample) bool {
 }
 
 // withoutRules runs programs in the interpreter that the rules refuse, each as
-// it stands and rewritten. They may hang, so that happens in another process.
+// it stands and rewritten. One that does not end gives nothing.
 func withoutRules(t *testing.T, list []sample) map[string]string {
+	var errands []errand
+	for _, s := range list {
+		errands = append(errands, s.errand(bare), s.errand(rewritten))
+	}
 	out := map[string]string{}
-	for len(list) > 0 {
-		done := runRefused(t, list, out)
-		if done < len(list) {
-			out[list[done].name+" bare"] += "" // it hangs
-			done++
-		}
-		list = list[done:]
+	for i, o := range apart(t, errands) {
+		out[errands[i].Name+" "+string(errands[i].Way)] = string(o.Text)
 	}
 	return out
-}
-
-// patience is how long a program may take in the interpreter.
-const patience = 20 * time.Second
-
-// runRefused gives the number of programs that another process came through.
-func runRefused(t *testing.T, list []sample, out map[string]string) (done int) {
-	executable, err := os.Executable()
-	if err != nil {
-		t.Fatal(err)
-	}
-	var names []string
-	for _, s := range list {
-		names = append(names, s.name)
-	}
-	cmd := exec.Command(executable, "-test.run=^TestRefusedProgram$")
-	cmd.Env = append(os.Environ(), "RIMLIGHT_REFUSED="+strings.Join(names, " "))
-	pipe, err := cmd.StdoutPipe()
-	if err != nil {
-		t.Fatal(err)
-	}
-	if err := cmd.Start(); err != nil {
-		t.Fatal(err)
-	}
-	alarm := time.AfterFunc(patience, func() { _ = cmd.Process.Kill() })
-	lines := bufio.NewScanner(pipe)
-	lines.Buffer(nil, 1<<20)
-	for lines.Scan() {
-		var r refusedOutcome
-		if json.Unmarshal(lines.Bytes(), &r) != nil {
-			continue // what the test binary says
-		}
-		alarm.Reset(patience)
-		if r.Done {
-			done++
-			continue
-		}
-		out[r.Name] = r.Text
-	}
-	alarm.Stop()
-	_ = cmd.Wait() // a program may have ended it
-	return done
-}
-
-type refusedOutcome struct {
-	Name, Text string
-	Done       bool
-}
-
-// TestRefusedProgram is the other process of runRefused.
-func TestRefusedProgram(t *testing.T) {
-	wanted := os.Getenv("RIMLIGHT_REFUSED")
-	if wanted == "" {
-		t.Skip("serves another test")
-	}
-	byName := map[string]sample{}
-	for _, s := range corpus(t) {
-		byName[s.name] = s
-	}
-	show := json.NewEncoder(os.Stdout)
-	for _, name := range strings.Fields(wanted) {
-		for _, way := range []string{"bare", "rewritten"} {
-			if err := show.Encode(refusedOutcome{Name: name + " " + way, Text: refusedOutput(byName[name], way)}); err != nil {
-				t.Fatal(err)
-			}
-		}
-		if err := show.Encode(refusedOutcome{Name: name, Done: true}); err != nil {
-			t.Fatal(err)
-		}
-	}
-}
-
-func refusedOutput(s sample, way string) (text string) {
-	defer func() {
-		if r := recover(); r != nil {
-			text = fmt.Sprint("LOST ", r)
-		}
-	}()
-	c := typed(s)
-	p := &Program{file: s.name}
-	c.stepRules()
-	for _, d := range c.steps {
-		p.Steps = append(p.Steps, c.step(d))
-	}
-	if way == "rewritten" {
-		c.lint()
-		normalise(c)
-	}
-	p.src, p.tree = c.src, c.tree
-	return p.outcome()
 }

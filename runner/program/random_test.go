@@ -120,7 +120,7 @@ var statements = []string{
 	"{ var ss []Shape; for i := 0; i < 3; i++ { ss = append(ss, Sq{S: $f}); q := Sq{S: float64(i)}; ss = append(ss, q, mkS(i, $f)); q.S = 9 }; ^f = clamp(tot(ss, 1)) }",
 	"{ var ps []*P; for i := 0; i < 4; i++ { q := $P; if i == 2 { continue }; ps = append(ps, &q); q.X += $f }; for _, q := range ps { ^f = clamp(^f + q.X) } }",
 	"{ var fs []func() int; for i := 0; i < 3; i++ { n := $i; fs = append(fs, func() int { n++; return n }) }; ^i = fs[0]() + fs[0]() + fs[2]() }",
-	"for i, r := range $t { ^i += i * int(r) }", "^i = 1 << ix($i, 5) | $i >> ix($i, 4)", "{ var b strings.Builder; fmt.Fprintf(&b, \"%d %.3g\", $i, $f); ^i += b.Len() }",
+	"for i, r := range $t { ^i += i * int(r) }", "^i = 1 << ix($i, 5) | $i >> ix($i, 4)", "{ var b strings.Builder; fmt.Fprintf(&b, \"%d %.3g\", $i, float64($f)); ^i += b.Len() }",
 	"{ var keys []string; for k := range #m { keys = append(keys, k) }; sort.Strings(keys); for i, k := range keys { ^f = clamp(^f + #m[k]*float64(i)) } }",
 	"for _, r := range $t { ^i += int(r) }", "for i := 0; i < 3; { i++; %1 }", "{ next, n := counted($i); ^i = next()*n + next() }",
 	"{ len := $i; sort := len + 1; ^i = sort }", "{ f := func(x float64) (r float64, ok bool) { if x > 1 { r = x; return }; g := func() { r = 3 }; g(); return r + 1, true }; x, ok := f($f); if ok { ^f = x } }",
@@ -142,6 +142,7 @@ type randomWriter struct {
 	count  int
 	inCase int
 	loops  int
+	binds  bool // a function variable is assigned to; what it gets may not call it
 }
 
 // randomProgram is a program that the rules accept, nearly always, to stand
@@ -171,6 +172,9 @@ func (w *randomWriter) pick(list []string) string { return list[w.r.IntN(len(lis
 
 func (w *randomWriter) variable(k kind, assigned bool) string {
 	var names []string
+	if k == "F" && w.binds && !assigned {
+		return ""
+	}
 	for _, s := range w.scopes {
 		for _, v := range s {
 			if v.kind == k && !(assigned && v.fixed) {
@@ -317,7 +321,9 @@ func (w *randomWriter) statement(depth int) string {
 		if strings.Contains(form, "for ") {
 			w.loops++
 		}
+		w.binds = strings.HasPrefix(form, "^F =")
 		out, ok := w.fill(form, min(depth, 2))
+		w.binds = false
 		if strings.Contains(form, "for ") {
 			w.loops--
 		}
