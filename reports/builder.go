@@ -80,6 +80,7 @@ type stepView struct {
 	Where    string
 	Log      string
 	Elements *elementsView
+	Checks   []verdictView // the runner's own
 }
 
 type argView struct {
@@ -97,8 +98,10 @@ type resultView struct {
 type elementsView struct {
 	Summary string
 	Failed  []elementView // the first few
-	Rows    []elementView
-	Note    string
+
+	MoreFailed string
+	Rows       []elementView
+	Note       string
 }
 
 type elementView struct {
@@ -148,6 +151,9 @@ func (b *builder) step(i, level int, code []template.HTML, lines string) stepVie
 		v.Results = append(v.Results, view)
 	}
 	v.Elements = b.elements(s)
+	for _, c := range s.Checks {
+		v.Checks = append(v.Checks, verdictViews([]verdict{{Check: c}})...)
+	}
 	return v
 }
 
@@ -207,13 +213,14 @@ func (b *builder) elements(s Step) *elementsView {
 	v := &elementsView{}
 	counts := map[State]int{}
 	slowest := 0
+	const shownFailures = 10
 	for i, e := range s.Elements {
 		counts[e.State]++
 		if e.Took > s.Elements[slowest].Took {
 			slowest = i
 		}
 		view := elementView{called(i), class(e.State), sentence(e.Why), clip(e.Err, 500), label(e.Key), label(e.Hash), duration(e.Took), e.State}
-		if e.State == Failed && len(v.Failed) < 5 {
+		if e.State == Failed && len(v.Failed) < shownFailures {
 			v.Failed = append(v.Failed, view)
 		}
 		if i < 4*shownRows {
@@ -229,6 +236,9 @@ func (b *builder) elements(s Step) *elementsView {
 	v.Summary = count(len(s.Elements), "element") + ": " + strings.Join(parts, ", ")
 	if e := s.Elements[slowest]; e.Took > 0 {
 		v.Summary += fmt.Sprintf("; the slowest (%s) took %s", called(slowest), duration(e.Took))
+	}
+	if n := counts[Failed] - len(v.Failed); n > 0 {
+		v.MoreFailed = count(n, "more element") + " failed, too."
 	}
 	if n := len(s.Elements); n > len(v.Rows) {
 		v.Note = fmt.Sprintf("The first %d of %d elements are listed.", len(v.Rows), n)

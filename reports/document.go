@@ -3,7 +3,11 @@
 // It reads nothing and computes nothing: a [Document] in, bytes out.
 package reports
 
-import "time"
+import (
+	"time"
+
+	"rimlight/steps/check"
+)
 
 // A Document is everything that a report shows. It is filled from a run's
 // record and the result store; rendering needs nothing else.
@@ -103,6 +107,7 @@ type Step struct {
 	Took      time.Duration // computing time, when it was computed (also shown when reused)
 	When      time.Time     // when it was computed
 	Elements  []Element     // of a fan-out
+	Checks    []check.Check // the runner's own verdicts on it
 }
 
 // An Element is one element of a fan-out.

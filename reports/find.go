@@ -24,6 +24,9 @@ type verdict struct {
 func verdicts(d Document) []verdict {
 	var out []verdict
 	for _, s := range d.Steps {
+		for _, c := range s.Checks {
+			out = append(out, verdict{c, s.Name})
+		}
 		for _, r := range s.Results {
 			switch v := r.Value.(type) {
 			case check.Check:

@@ -131,33 +131,6 @@ func verdict(outcome *engine.Outcome, steps []reports.Step) reports.Outcome {
 	return reports.Done
 }
 
-// checks are all checks among the results of steps.
-func checks(steps []reports.Step) (passed int, failed []check.Check) {
-	for _, s := range steps {
-		for _, r := range s.Results {
-			for _, c := range checksIn(r) {
-				if c.Passed {
-					passed++
-				} else {
-					failed = append(failed, c)
-				}
-			}
-		}
-	}
-	return passed, failed
-}
-
-// checksIn are the checks that a result consists of, if it does.
-func checksIn(r reports.Result) []check.Check {
-	switch v := r.Value.(type) {
-	case check.Check:
-		return []check.Check{v}
-	case []check.Check:
-		return v
-	}
-	return nil
-}
-
 func inputOf(ctx context.Context, e *engine.Engine, i int, in engine.Input) reports.Input {
 	spec := e.Plan.Inputs[i]
 	out := reports.Input{Name: in.Name, Layout: spec.Layout, About: spec.About, Type: spec.Type, State: reports.State(in.State), Why: in.Why, Took: in.Took}
@@ -217,6 +190,7 @@ func stepOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcom
 		}
 		out.Results = append(out.Results, r)
 	}
+	out.Checks = gapChecks(s)
 	for n, el := range s.Elements {
 		out.Elements = append(out.Elements, elementOf(n, el))
 	}

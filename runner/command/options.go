@@ -20,6 +20,7 @@ type options struct {
 	on         string
 	quiet      bool
 	json       bool
+	noGaps     bool
 	why        string   // of run and check
 	again      []string // of run
 	limits     worker.Options
@@ -35,6 +36,7 @@ func (o *options) flags(c *cobra.Command) {
 	f.IntVar(&o.jobs, "jobs", runtime.NumCPU(), "worker processes at a time")
 	f.StringVar(&o.on, "on", "local", "where to compute: local")
 	o.limitFlags(f)
+	f.BoolVar(&o.noGaps, "no-gaps", false, "fail a step when one of its elements fails, instead of leaving a flagged gap")
 	f.BoolVar(&o.quiet, "quiet", false, "say nothing but errors")
 	f.BoolVar(&o.json, "json", false, "events for programs on standard output, one JSON object per line")
 }

@@ -202,14 +202,12 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 		r.Steps = append(r.Steps, rs)
 	}
 	for _, s := range doc.Steps {
-		for _, res := range s.Results {
-			for _, c := range checksIn(res) {
-				rc := record.Check{Step: s.Name, Name: c.Name, Unit: c.Unit, Limit: c.Limit, Passed: c.Passed}
-				if !math.IsNaN(c.Value) && !math.IsInf(c.Value, 0) {
-					rc.Value = &c.Value
-				}
-				r.Checks = append(r.Checks, rc)
+		for _, c := range checksOf(s) {
+			rc := record.Check{Step: s.Name, Name: c.Name, Unit: c.Unit, Limit: c.Limit, Passed: c.Passed}
+			if !math.IsNaN(c.Value) && !math.IsInf(c.Value, 0) {
+				rc.Value = &c.Value
 			}
+			r.Checks = append(r.Checks, rc)
 		}
 	}
 	return r

@@ -106,5 +106,5 @@ func newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Engine, *rec
 		before = nil // an unreadable record explains nothing, but stops nothing
 	}
 	host, _ := os.Hostname()
-	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Limits: o.limits, Confinement: o.confined, Before: before.KeyText}, before, nil
+	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Limits: o.limits, Confinement: o.confined, NoGaps: o.noGaps, Before: before.KeyText}, before, nil
 }

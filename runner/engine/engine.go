@@ -50,6 +50,10 @@ type Engine struct {
 	// Elsewhere, when set, may take the work of steps.
 	Elsewhere Elsewhere
 
+	// NoGaps makes a fan-out fail when one of its elements does, instead of
+	// leaving a gap in its results.
+	NoGaps bool
+
 	// Observe is told what happens, one event at a time.
 	Observe func(Event)
 
@@ -119,7 +123,8 @@ type File struct {
 }
 
 // A Step is a step with its results; of a fan-out, the results are the
-// collected ones, and Elements has the single computations.
+// collected ones, and Elements has the single computations. Elements that failed
+// may have left gaps in the results of a step that did not; see [Step.Gaps].
 type Step struct {
 	Computation
 	Name     string

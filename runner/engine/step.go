@@ -1,6 +1,7 @@
 package engine
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -44,7 +45,7 @@ func (e *Engine) step(ctx context.Context, i int) {
 			done++
 		}
 	}
-	e.observe(Event{Step: out.Name, State: out.State, Why: out.Why, Err: out.Err, Took: out.Took, Done: done, Total: total})
+	e.observe(Event{Step: out.Name, State: out.State, Why: out.Why, Err: cmp.Or(out.Err, out.GapText()), Took: out.Took, Done: done, Total: total})
 }
 
 // hashes are the content hashes of a step's arguments, as its key wants them;
@@ -219,6 +220,9 @@ func (e *Engine) fanOut(ctx context.Context, i int) error {
 		return err
 	}
 	comps, todo := e.lookUpElements(spec, items)
+	if before := &e.outcome.Steps[i]; before.Finished() { // it is being mended
+		todo = carry(before.Elements, comps, todo)
+	}
 	why := reasons(comps, todo)
 	var results []Value
 	// Twice, because a damaged result of an element may be noticed only when
@@ -229,56 +233,36 @@ func (e *Engine) fanOut(ctx context.Context, i int) error {
 				return err
 			}
 		}
-		if !allFinished(comps) {
+		if ctx.Err() != nil {
 			break
 		}
-		if results, err = e.gather(spec, comps); !damaged(err) || attempt > 0 {
+		if err = e.fillGaps(spec, items, comps); err == nil {
+			results, err = e.gather(spec, comps)
+		}
+		if !damaged(err) || attempt > 0 {
 			break
 		}
 		e.note("step %s: %v; it was computed again", spec.Name, err)
+		before := comps
 		comps, todo = e.lookUpElements(spec, items)
+		todo = carry(before, comps, todo)
 		why = reasons(comps, todo)
-	}
-	if err != nil {
-		return err
 	}
 	c := Computation{State: Reused, Results: results}
 	if why != "" {
 		c.State, c.Why = Computed, why
 	}
-	failed, first := 0, ""
 	for n := range comps {
-		el := &comps[n]
-		c.Took += el.Took
-		if el.When.After(c.When) {
-			c.When = el.When
-		}
-		if el.State == Failed {
-			if failed++; first == "" {
-				first = fmt.Sprintf("element %d: %s", n+1, el.Err)
-			}
+		c.Took += comps[n].Took
+		if comps[n].When.After(c.When) {
+			c.When = comps[n].When
 		}
 	}
 	if ctx.Err() != nil {
-		c.State = NotReached
-		e.settle(i, c, comps)
-		return ctx.Err()
-	}
-	if failed > 0 {
-		e.settle(i, c, comps)
-		return fmt.Errorf("%d of %d elements failed; %s", failed, len(comps), first)
+		c.State, err = NotReached, ctx.Err()
 	}
 	e.settle(i, c, comps)
-	return nil
-}
-
-func allFinished(comps []Computation) bool {
-	for n := range comps {
-		if !comps[n].Finished() {
-			return false
-		}
-	}
-	return true
+	return err
 }
 
 // lookUpElements looks up every element of a fan-out; todo lists those that
@@ -327,28 +311,21 @@ func (e *Engine) items(ctx context.Context, each plan.Arg) ([]Value, error) {
 	return items, err
 }
 
-// maxDeaths is how many elements of a fan-out may cost their worker its life
-// before the rest is left alone: each may take its full limit of time.
-const maxDeaths = 4
-
-// fatal reports whether an error is that a worker had to be stopped or died.
-func fatal(err error) bool {
-	var late *worker.TimeLimitError
-	var lost *worker.LostError
-	var fault *Fault
-	return errors.As(err, &late) || errors.As(err, &lost) || errors.As(err, &fault) && fault.Fatal
-}
-
 // missingHere computes the elements listed in todo with a pool of workers.
 func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int) error {
 	args, err := e.arguments(ctx, spec)
 	if err != nil {
 		return err
 	}
-	var next, done, deaths atomic.Int64
+	var next, done atomic.Int64
+	var mu sync.Mutex // guards patient
+	patient := patience{total: len(comps)}
 	for n := range comps {
 		if comps[n].State != NotReached {
 			done.Add(1)
+		}
+		if comps[n].Finished() {
+			patient.good++
 		}
 	}
 	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: int(done.Load()), Total: len(comps)})
@@ -372,6 +349,9 @@ func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value
 				finish := func(err error) {
 					if err != nil {
 						comps[n].fail(err)
+						if !own(err) { // a full disk, say: the step fails
+							next.Store(int64(len(todo)))
+						}
 					}
 					if e.ended != nil {
 						e.ended(n, err)
@@ -390,11 +370,19 @@ func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value
 					if ctx.Err() != nil {
 						return
 					}
-					if fatal(err) && deaths.Add(1) == maxDeaths {
-						next.Store(int64(len(todo)))
-					}
 					finish(err)
 				}
+				mu.Lock()
+				switch {
+				case err == nil:
+					patient.good++
+				case fatal(err):
+					patient.deaths++
+				}
+				if patient.out() {
+					next.Store(int64(len(todo)))
+				}
+				mu.Unlock()
 			}
 		})
 	}

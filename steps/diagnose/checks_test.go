@@ -122,3 +122,24 @@ func TestFitChecks(t *testing.T) {
 		t.Error(got)
 	}
 }
+
+// TestChecksWithGap holds that a channel of which nothing is known but that it
+// is missing counts as unmeasured, and in nothing else.
+func TestChecksWithGap(t *testing.T) {
+	s := points(80, 0, 2, 1.05)
+	all := SpectrumChecks(s)
+	nan := math.NaN()
+	s.Points[40] = spectrum.Point{Channel: s.Points[40].Channel, Depth: nan, DepthErr: nan, Chi2: nan, Scatter: nan, Flag: "no result"}
+	got := SpectrumChecks(s)
+	if verdicts(got) != "PPP" || got[0].Value != 79.0/80 || math.Abs(got[1].Value-2.0/79) > 1e-15 || got[2].Value != all[2].Value {
+		t.Errorf("with a gap the checks are %+v", got)
+	}
+	white, channel := curve(series(t, "white"), 1e-4), curve(series(t, "ar1"), 1e-4)
+	gap := fit.CurveFit{Channel: channel.Channel, Level: nan, Mid: nan}
+	with, without := ResidualChecks(white, []fit.CurveFit{channel, gap}), ResidualChecks(white, []fit.CurveFit{channel})
+	for i := range without {
+		if with[i] != without[i] {
+			t.Errorf("check %+v, without the gap %+v", with[i], without[i])
+		}
+	}
+}

@@ -34,7 +34,7 @@ func Map(cube lightcurve.Cube) (Figure, error) {
 
 // Detrended draws the same as [Map] after division by the trend that was fitted to
 // each channel, so that the transit and what depends on wavelength show. fits are
-// found by their channel; a channel without a fit is grey. It is an error when
+// found by their channel; a channel without a fit, or with an empty one, is grey. It is an error when
 // the times of a fit are not those of the cube in number, and where [Map] gives
 // one.
 func Detrended(cube lightcurve.Cube, fits []fit.CurveFit) (Figure, error) {
@@ -49,7 +49,7 @@ func Detrended(cube lightcurve.Cube, fits []fit.CurveFit) (Figure, error) {
 	rows := make([]mapRow, len(cube.Channels))
 	for j, channel := range cube.Channels {
 		k, ok := byChannel[channel]
-		if !ok {
+		if !ok || len(fits[k].Time) == 0 {
 			rows[j] = mapRow{channel: channel, flux: make([]float64, len(cube.Time)), masked: len(cube.Time), level: nan}
 			for i := range rows[j].flux {
 				rows[j].flux[i] = nan
