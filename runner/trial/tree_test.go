@@ -1,0 +1,100 @@
+package trial
+
+import (
+	"fmt"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"regexp"
+	"sort"
+	"strings"
+	"testing"
+
+	"rimlight/runner/store"
+)
+
+// A tree is everything that a run is to give, by name: the objects, the records
+// without times, the tables, and the report without times. Objects are named by
+// their content, and have that content where the store verifies.
+type tree map[string]string
+
+// treeOf collects what a run gave that has completed. It runs the recipe once
+// more, with everything known, so that the reports of all trees are of such a
+// run.
+func treeOf(b *bench) tree {
+	b.t.Helper()
+	b.run(0)
+	b.verify(0)
+	out := tree{}
+	for _, dir := range []string{"objects", "records"} {
+		for _, path := range filesBelow(b.t, filepath.Join(b.store, dir)) {
+			out[dir+"/"+filepath.Base(path)] = "there"
+		}
+	}
+	s, err := store.Open(b.store)
+	if err != nil {
+		b.t.Fatal(err)
+	}
+	keys, err := s.Keys()
+	if err != nil {
+		b.t.Fatal(err)
+	}
+	for _, k := range keys {
+		r, ok, err := s.Record(k)
+		if !ok {
+			b.t.Fatalf("record %s: %v", k.Short(), err)
+		}
+		out["records/"+k.String()] = fmt.Sprint(r.Text, r.Results, r.Log, r.Notes)
+	}
+	for _, name := range []string{"spectrum.csv", "spectrum.ecsv", "report.html"} {
+		text, err := os.ReadFile(filepath.Join(b.out, name))
+		if err != nil {
+			b.t.Fatal(err)
+		}
+		out[name] = times.ReplaceAllString(string(text), "·")
+	}
+	return out
+}
+
+// times are what differs between the reports of two runs: when they were, how
+// long things took, and what took longest.
+var times = regexp.MustCompile(`\d{4}-\d\d-\d\dT\d\d:\d\d:\d\dZ|(&lt; )?[0-9.]+ m?s\b|the slowest \([^)]*\)`)
+
+// equal demands that two trees are the same.
+func (got tree) equal(t testing.TB, want tree) {
+	t.Helper()
+	var differ []string
+	for name, text := range want {
+		if got[name] != text {
+			differ = append(differ, name)
+		}
+	}
+	for name := range got {
+		if _, ok := want[name]; !ok {
+			differ = append(differ, name+" (not in an undisturbed run's)")
+		}
+	}
+	sort.Strings(differ)
+	if len(differ) > 0 {
+		t.Errorf("%d of %d parts of the tree differ from an undisturbed run's: %s", len(differ), len(want), strings.Join(differ[:min(len(differ), 10)], ", "))
+	}
+}
+
+// filesBelow lists the files below a folder, in order; none if it is not there.
+func filesBelow(t testing.TB, dir string) []string {
+	t.Helper()
+	var out []string
+	err := filepath.WalkDir(dir, func(path string, d fs.DirEntry, err error) error {
+		if err == nil && !d.IsDir() {
+			out = append(out, path)
+		}
+		if os.IsNotExist(err) {
+			return nil // or it goes while this looks
+		}
+		return err
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return out
+}
