@@ -2,9 +2,11 @@ package surface
 
 import (
 	"math"
+	"math/rand/v2"
 	"reflect"
 	"slices"
 
+	"rimlight/steps/chain"
 	"rimlight/steps/check"
 	"rimlight/steps/diagnose"
 	"rimlight/steps/figure"
@@ -156,6 +158,7 @@ func newSamples() *samples {
 		return times.Scale(-1 / p[1]).Exp().Scale(p[0]).Shift(1)
 	}
 	names := []string{"hook", "hookTime"}
+	draws, weighted, column := newDraws(rand.New(rand.NewPCG(1, 2)))
 	hook := fit.Priors{
 		{Name: "hook", Kind: fit.Normal, A: 0, B: 0.01},
 		{Name: "hookTime", Kind: fit.LogUniform, A: 0.002, B: 0.2, Unit: "d"},
@@ -176,6 +179,23 @@ func newSamples() *samples {
 		"limb.FromRoot":   {{limb.SquareRoot, limb.Power2}, {0.2, 0.7}, {0.3, 0.6}},
 		"limb.ToSquare":   {{limb.Logarithmic, limb.Power2}, {0.4, 0.7}, {0.3, 0.6}},
 		"limb.FromHalf":   {{}, {0.4, 0.7}, {0.1, 0.3}},
+
+		"chain.RHat":                {{column}, {1, 2, 4}},
+		"chain.BulkESS":             {{column}, {1, 2, 4}},
+		"chain.TailESS":             {{column}, {1, 2, 4}},
+		"chain.MeanESS":             {{column}, {1, 2, 4}},
+		"chain.MeanError":           {{column}, {1, 2, 4}},
+		"chain.SDError":             {{column}, {1, 2, 4}},
+		"chain.AutocorrelationTime": {{column}, {1, 2, 4}},
+		"chain.EnergyFraction":      {{column}, {1, 2, 4}},
+		"chain.QuantileESS":         {{column}, {1, 2, 4}, {0.05, 0.5}},
+		"chain.QuantileError":       {{column}, {1, 2, 4}, {0.05, 0.5}},
+		"chain.ParetoSmooth":        {{column}},
+		"chain.WeightESS":           {{column}},
+		"chain.WeightedQuantile":    {{column}, {column}, {0.5, 0.975}},
+		"chain.Resample":            {{weighted}, {1, 50}},
+		"chain.Draws.Column":        {{draws}, {"a", "b"}},
+		"chain.Weighted.Column":     {{weighted}, {"a", "b"}},
 
 		"lightcurve.Exclude":     {{}, {scenario.Start, scenario.Start + 0.1}, {scenario.MidTransit, scenario.MidTransit + 1}},
 		"lightcurve.SkipStart":   {{}, {0.0, 10.0, 60.0}},
@@ -199,11 +219,28 @@ func newSamples() *samples {
 		diagnose.FitChecks("white light", posterior), []check.Check{},
 		[]spectrum.Note{{Name: "title", Text: "An invented planet"}, {Name: "by", Text: "no one"}},
 		fitsFile, series, spectrum.CSV(spec),
+		draws, []chain.Draws{draws, draws}, weighted,
 		times, times.Sin(), vector.Of(white.Flux), times.Less(0.1), vector.Used(white.Mask),
 	} {
 		s.add(reflect.ValueOf(v), 0)
 	}
 	return s
+}
+
+// newDraws makes two chains of two parameters, weighted draws of the same, and a
+// column that can be cut in up to four chains.
+func newDraws(rng *rand.Rand) (chain.Draws, chain.Weighted, []float64) {
+	d := chain.Draws{Names: []string{"a", "b"}, Units: []string{"d", ""}, Chains: 2, Length: 24}
+	w := chain.Weighted{Names: d.Names, Units: d.Units}
+	var column []float64
+	for range d.Chains * d.Length {
+		a, b := rng.NormFloat64(), rng.NormFloat64()
+		d.X, w.X = append(d.X, a, a+b), append(w.X, a, a+b)
+		d.LogDensity, w.LogWeight = append(d.LogDensity, -a*a-b*b), append(w.LogWeight, a)
+		d.Energy, d.Divergent, d.Steps = append(d.Energy, a*a+b*b), append(d.Divergent, a > 2), append(d.Steps, 7)
+		column = append(column, b)
+	}
+	return d, w, column
 }
 
 // add keeps v and the values of composed types inside it, a few of each type.

@@ -29,6 +29,7 @@ var Packages = []Package{
 	{"strings", "strings"},
 	{"utf8", "unicode/utf8"},
 
+	{"chain", stepLibrary + "chain"},
 	{"check", stepLibrary + "check"},
 	{"diagnose", stepLibrary + "diagnose"},
 	{"figure", stepLibrary + "figure"},
