@@ -109,6 +109,27 @@ type elementView struct {
 	State                                   State
 }
 
+// Body is the rows of the table of elements, see [gridView.Body].
+func (v *elementsView) Body() template.HTML {
+	var out strings.Builder
+	text := template.HTMLEscapeString
+	hash := func(h string) string {
+		if h == "" {
+			return ""
+		}
+		return `<code class="hash" title="` + text(h) + `">` + text(h) + "</code>"
+	}
+	for _, r := range v.Rows {
+		why := r.Why
+		if r.Err != "" {
+			why += " " + r.Err
+		}
+		fmt.Fprintf(&out, "\n"+`<tr class="%s"><th scope="row">%s</th><td>%s</td><td>%s</td><td class="right">%s</td><td>%s</td><td>%s</td></tr>`,
+			text(r.Class), text(r.Label), text(string(r.State)), text(why), text(r.Took), hash(r.Key), hash(r.Hash))
+	}
+	return template.HTML(out.String())
+}
+
 // class is a state as the name of a style class.
 func class(s State) string { return slug(string(s)) }
 

@@ -49,6 +49,41 @@ type rowView struct {
 // Left is the number of columns that a row's own cells leave.
 func (g *gridView) Left(r rowView) int { return len(g.Columns) - len(r.Cells) }
 
+// Body is the rows of the table. A report can have tens of thousands of cells,
+// of which the template would take one step each.
+func (g *gridView) Body() template.HTML {
+	var out strings.Builder
+	for _, r := range g.Rows {
+		openTag(&out, "\n<tr", r.Class)
+		for i, c := range r.Cells {
+			if g.Named && i == 0 {
+				out.WriteString(`<th scope="row">` + template.HTMLEscapeString(c) + "</th>")
+				continue
+			}
+			class := ""
+			if g.Columns[i].Number {
+				class = "right"
+			}
+			openTag(&out, "<td", class)
+			out.WriteString(template.HTMLEscapeString(c) + "</td>")
+		}
+		if r.Rest != "" {
+			fmt.Fprintf(&out, `<td colspan="%d">%s</td>`, g.Left(r), template.HTMLEscapeString(r.Rest))
+		}
+		out.WriteString("</tr>")
+	}
+	return template.HTML(out.String())
+}
+
+// openTag writes the start of an element, with its class, if it has one.
+func openTag(out *strings.Builder, tag, class string) {
+	out.WriteString(tag)
+	if class != "" {
+		out.WriteString(` class="` + template.HTMLEscapeString(class) + `"`)
+	}
+	out.WriteByte('>')
+}
+
 // A fileView is something that the reader can save.
 type fileView struct {
 	Name string

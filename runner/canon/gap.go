@@ -96,7 +96,7 @@ func tellingFields(layout string, data []byte) (map[layoutField][]byte, error) {
 		layouts[f.name] = f.layout
 	}
 	out := map[layoutField][]byte{}
-	r := reader{data}
+	r := reader{data: data}
 	err := r.eachEntry(func(key any) error {
 		start := r.data
 		if err := r.skip(1); err != nil {

@@ -21,7 +21,7 @@ func TestMain(m *testing.M) {
 }
 
 // rimlight is the program as a process of its own.
-func rimlight(t *testing.T, args ...string) *exec.Cmd {
+func rimlight(t testing.TB, args ...string) *exec.Cmd {
 	t.Helper()
 	exe, err := os.Executable()
 	if err != nil {

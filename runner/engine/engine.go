@@ -1,6 +1,7 @@
 package engine
 
 import (
+	"cmp"
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
@@ -224,11 +225,6 @@ func (e *Engine) note(format string, args ...any) {
 // lookUp fills c from the store when the result of its key is known and whole.
 // Otherwise it says why the result has to be computed.
 func (e *Engine) lookUp(c *Computation, name string, element int) bool {
-	before := plan.KeyText("")
-	if e.Before != nil {
-		before = e.Before(name, element)
-	}
-	c.Why = c.Text.Why(before)
 	if e.Again != nil && e.Again(name) {
 		c.Why = "asked for again"
 		return false
@@ -238,9 +234,11 @@ func (e *Engine) lookUp(c *Computation, name string, element int) bool {
 		e.note("%s: its record in the store is of no use (%v); it was computed again", name, err)
 	}
 	if !ok {
-		if c.Why == "" {
-			c.Why = "not in the store"
+		before := plan.KeyText("")
+		if e.Before != nil {
+			before = e.Before(name, element)
 		}
+		c.Why = cmp.Or(c.Text.Why(before), "not in the store")
 		return false
 	}
 	values := make([]Value, len(r.Results))

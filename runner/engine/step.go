@@ -269,14 +269,34 @@ func (e *Engine) fanOut(ctx context.Context, i int) error {
 // are not known.
 func (e *Engine) lookUpElements(spec *plan.Step, items []Value) (comps []Computation, todo []int) {
 	comps = make([]Computation, len(items))
-	for n, item := range items {
-		comps[n] = Computation{State: NotReached, Text: plan.StepKey(spec, e.hashes(spec, item), e.Library, e.Build)}
-		if !e.lookUp(&comps[n], spec.Name, n) {
+	known := make([]bool, len(items))
+	atOnce(len(items), func(n int) {
+		comps[n] = Computation{State: NotReached, Text: plan.StepKey(spec, e.hashes(spec, items[n]), e.Library, e.Build)}
+		known[n] = e.lookUp(&comps[n], spec.Name, n)
+		comps[n].Seed = e.seed(spec, comps[n].Text)
+	})
+	for n := range comps {
+		if !known[n] {
 			todo = append(todo, n)
 		}
-		comps[n].Seed = e.seed(spec, comps[n].Text)
 	}
 	return comps, todo
+}
+
+// atOnce calls do with all numbers below n, several at a time: most of their
+// time, lookups wait for the disk.
+func atOnce(n int, do func(n int)) {
+	const most = 8
+	var next atomic.Int64
+	var all sync.WaitGroup
+	for range min(n, most) {
+		all.Go(func() {
+			for k := int(next.Add(1)) - 1; k < n; k = int(next.Add(1)) - 1 {
+				do(k)
+			}
+		})
+	}
+	all.Wait()
 }
 
 // gather puts together, result by result, what the elements gave.

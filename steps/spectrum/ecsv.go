@@ -5,8 +5,6 @@ import (
 	"fmt"
 	"strconv"
 	"strings"
-
-	"rimlight/steps/table"
 )
 
 // A Note is a named text in the header of a written spectrum, such as the title
@@ -61,10 +59,15 @@ func ECSV(s Spectrum, notes []Note) ([]byte, error) {
 	out.WriteString("# schema: astropy-2.0\n")
 	out.WriteString(strings.Join(names, ",") + "\n")
 	sigma := s.Errors()
+	if shared {
+		out.Grow(len(s.Points) * len(s.Points) * 24)
+	}
 	for i := range s.Points {
 		for k, f := range all {
 			if k == last && shared {
-				out.WriteString(`"` + jsonRow(s.Cov[i]) + `",`)
+				out.WriteByte('"')
+				out.Write(appendRow(out.AvailableBuffer(), s.Cov[i]))
+				out.WriteString(`",`)
 			}
 			cell := f.cell(&s.Points[i], sigma[i])
 			if f.text != nil {
@@ -113,22 +116,20 @@ func (s Spectrum) correlated() bool {
 	return found
 }
 
-// jsonRow writes numbers as a JSON array; what is not finite becomes null.
-func jsonRow(row []float64) string {
-	var out strings.Builder
-	out.WriteByte('[')
+// appendRow appends numbers as a JSON array; what is not finite becomes null.
+func appendRow(dst []byte, row []float64) []byte {
+	dst = append(dst, '[')
 	for j, x := range row {
 		if j > 0 {
-			out.WriteByte(',')
+			dst = append(dst, ',')
 		}
 		if finite(x) {
-			out.WriteString(table.FormatNumber(x))
+			dst = strconv.AppendFloat(dst, x, 'g', -1, 64)
 		} else {
-			out.WriteString("null")
+			dst = append(dst, "null"...)
 		}
 	}
-	out.WriteByte(']')
-	return out.String()
+	return append(dst, ']')
 }
 
 // quoted encloses text in quotes for a data line. Line breaks become spaces:
