@@ -17,11 +17,12 @@ its steps, what each takes from where, and whether its result is known or would
 be computed, and why.` + exitHelp,
 		Args: cobra.ExactArgs(1),
 		RunE: func(c *cobra.Command, args []string) error {
+			go a.library()
 			p, code, err := prepare(c.Context(), args[0], &o)
 			if err != nil {
 				return a.wrong(err, &o)
 			}
-			e, _, err := newEngine(p, code, &o)
+			e, _, err := a.newEngine(p, code, &o)
 			if err != nil {
 				return err
 			}

@@ -8,6 +8,7 @@ import (
 	"io"
 	"os"
 	"os/signal"
+	"sync"
 	"syscall"
 
 	"github.com/spf13/cobra"
@@ -55,6 +56,10 @@ type app struct {
 	args           []string
 	stdout, stderr io.Writer
 	terminal       bool // stderr is a terminal
+
+	// What takes a while, and is begun while a worker looks at the recipe.
+	executable func() string // SHA-256 of the program, in hex, "" when it can't be read
+	library    func() (*plan.Library, error)
 }
 
 // Run carries out one command line, without the program's name, and returns
@@ -62,7 +67,8 @@ type app struct {
 func Run(args []string, stdout, stderr io.Writer) int {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	defer stop()
-	a := &app{args: args, stdout: stdout, stderr: stderr, terminal: isTerminal(stderr)}
+	a := &app{args: args, stdout: stdout, stderr: stderr, terminal: isTerminal(stderr),
+		executable: sync.OnceValue(executableHash), library: sync.OnceValues(plan.OpenLibrary)}
 	root := a.root()
 	root.SetArgs(args)
 	root.SetOut(stdout)

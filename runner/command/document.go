@@ -11,6 +11,8 @@ import (
 	"reflect"
 	"runtime"
 	"strings"
+	"sync"
+	"sync/atomic"
 	"time"
 
 	"rimlight/reports"
@@ -80,13 +82,17 @@ func decode(sealed []byte) any {
 func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Outcome, started time.Time) reports.Document {
 	p := e.Plan
 	d := reports.Document{Title: p.Recipe.Title, Source: p.Recipe.Source, File: filepath.Base(p.Recipe.File), Started: started,
-		Command: "rimlight " + strings.Join(a.args, " "), Host: host(e.Build)}
-	for i, in := range outcome.Inputs {
-		d.Inputs = append(d.Inputs, inputOf(ctx, e, i, in))
-	}
+		Command: "rimlight " + strings.Join(a.args, " ")}
+	d.Inputs, d.Steps = make([]reports.Input, len(outcome.Inputs)), make([]reports.Step, len(p.Steps))
+	parallel(len(d.Inputs)+len(d.Steps), func(i int) {
+		if k := i - len(d.Inputs); k >= 0 {
+			d.Steps[k] = stepOf(ctx, e, k, outcome)
+		} else {
+			d.Inputs[i] = inputOf(ctx, e, i, outcome.Inputs[i])
+		}
+	})
 	used := map[string]bool{}
 	for i := range p.Steps {
-		d.Steps = append(d.Steps, stepOf(ctx, e, i, outcome))
 		for _, pkg := range e.Library.Reached(p.Steps[i].Packages) {
 			if !used[pkg] {
 				used[pkg] = true
@@ -104,10 +110,26 @@ func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Out
 	for _, m := range e.Build.Modules {
 		d.Modules = append(d.Modules, reports.Module(m))
 	}
+	d.Host = host(e.Build, a.executable())
 	d.Host.Confinement = confinement(e.Confinement)
 	d.Outcome = verdict(outcome, d.Steps)
 	d.Ended = time.Now().UTC()
 	return d
+}
+
+// parallel calls do with all numbers below n, as many at a time as there are
+// processors.
+func parallel(n int, do func(i int)) {
+	var next atomic.Int64
+	var all sync.WaitGroup
+	for range min(n, runtime.GOMAXPROCS(0)) {
+		all.Go(func() {
+			for i := int(next.Add(1)) - 1; i < n; i = int(next.Add(1)) - 1 {
+				do(i)
+			}
+		})
+	}
+	all.Wait()
 }
 
 // verdict is how a run ended as a whole.
@@ -209,9 +231,9 @@ func elementOf(n int, c engine.Computation) reports.Element {
 }
 
 // host is the machine and program that this is.
-func host(b plan.Build) reports.Host {
+func host(b plan.Build, executable string) reports.Host {
 	return reports.Host{OS: runtime.GOOS, Arch: b.Arch, CPUs: runtime.NumCPU(), GoVersion: b.Go, Version: b.Version, Revision: b.Revision,
-		Executable: executableHash(), Settings: b.Settings}
+		Executable: executable, Settings: b.Settings}
 }
 
 // executableHash is the SHA-256 of the running program, in hex, "" when it

@@ -10,6 +10,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"sync"
 	"time"
 
 	"rimlight/reports"
@@ -47,7 +48,7 @@ func (o outputs) names() []string {
 // writeOutputs writes report, tables and record into dir. Each file is
 // complete or not there, and files of an earlier run that this one has no
 // counterpart of are taken away, so that what lies together belongs together.
-func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *engine.Outcome, before *record.Record) (outputs, error) {
+func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *engine.Outcome, before func() *record.Record) (outputs, error) {
 	var out outputs
 	out.notes = outcome.Notes
 	passed, failed := checks(doc.Steps)
@@ -55,14 +56,20 @@ func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *e
 	for _, c := range failed {
 		out.failed = append(out.failed, describe(c))
 	}
-	files := map[string][]byte{csvFile: nil, ecsvFile: nil}
-	if s, ok := lastSpectrum(doc); ok {
-		ecsv, err := spectrum.ECSV(s, []spectrum.Note{{Name: "title", Text: doc.Title}})
-		if err != nil {
-			return out, fmt.Errorf("the spectrum could not be written: %w", err)
-		}
-		files[csvFile], files[ecsvFile] = spectrum.CSV(s), ecsv
+	var page bytes.Buffer
+	var tables spectrumTables
+	var pageErr, tablesErr error
+	var both sync.WaitGroup
+	both.Go(func() { pageErr = reports.Render(&page, doc) })
+	both.Go(func() { tables, tablesErr = tablesOf(doc) })
+	both.Wait()
+	if tablesErr != nil {
+		return out, fmt.Errorf("the spectrum could not be written: %w", tablesErr)
 	}
+	if pageErr != nil {
+		return out, fmt.Errorf("the report could not be rendered: %w", pageErr)
+	}
+	files := map[string][]byte{csvFile: tables.csv, ecsvFile: tables.ecsv}
 	for _, name := range []string{csvFile, ecsvFile} {
 		path := filepath.Join(dir, name)
 		if files[name] == nil {
@@ -74,10 +81,6 @@ func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *e
 		if err := out.write(dir, name, files[name]); err != nil {
 			return out, err
 		}
-	}
-	var page bytes.Buffer
-	if err := reports.Render(&page, doc); err != nil {
-		return out, fmt.Errorf("the report could not be rendered: %w", err)
 	}
 	if err := out.write(dir, reportFile, page.Bytes()); err != nil {
 		return out, err
@@ -133,6 +136,18 @@ func (o *outputs) write(dir, name string, data []byte) error {
 	return nil
 }
 
+// spectrumTables are the files of a spectrum; both nil when there is none.
+type spectrumTables struct{ csv, ecsv []byte }
+
+func tablesOf(doc reports.Document) (spectrumTables, error) {
+	s, ok := lastSpectrum(doc)
+	if !ok {
+		return spectrumTables{}, nil
+	}
+	ecsv, err := spectrum.ECSV(s, []spectrum.Note{{Name: "title", Text: doc.Title}})
+	return spectrumTables{spectrum.CSV(s), ecsv}, err
+}
+
 // lastSpectrum is the spectrum that the recipe ends in: the last result of
 // that type.
 func lastSpectrum(doc reports.Document) (spectrum.Spectrum, bool) {
@@ -147,7 +162,7 @@ func lastSpectrum(doc reports.Document) (spectrum.Spectrum, bool) {
 }
 
 // recordOf is the content of run.json.
-func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, files []record.File, before *record.Record) *record.Record {
+func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, files []record.File, before func() *record.Record) *record.Record {
 	sum := sha256.Sum256(doc.Source)
 	r := &record.Record{Format: record.Format, Title: doc.Title, Recipe: record.File{Name: doc.File, Size: int64(len(doc.Source)), SHA256: hex.EncodeToString(sum[:])},
 		Outcome: string(doc.Outcome), Started: doc.Started, Ended: doc.Ended, Command: []string{doc.Command}, Outputs: files, Notes: outcome.Notes,
@@ -172,7 +187,7 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 			ri.Files = append(ri.Files, record.File(f))
 		}
 		if ri.KeyText == "" {
-			ri.KeyText = before.KeyText(in.Name, -1)
+			ri.KeyText = before().KeyText(in.Name, -1)
 		}
 		r.Inputs = append(r.Inputs, ri)
 	}
@@ -185,17 +200,17 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 		for n, el := range s.Elements {
 			c := computation(el, names)
 			if !el.Finished() {
-				c.KeyText = before.KeyText(s.Name, n)
+				c.KeyText = before().KeyText(s.Name, n)
 			}
 			rs.Elements = append(rs.Elements, c)
 		}
 		// What was not reached keeps the key of the run before, so that the
 		// next run can still say what changed.
 		if !s.Finished() {
-			rs.KeyText = before.KeyText(s.Name, -1)
+			rs.KeyText = before().KeyText(s.Name, -1)
 			if len(rs.Elements) == 0 {
-				for n := 0; before.KeyText(s.Name, n) != ""; n++ {
-					rs.Elements = append(rs.Elements, record.Computation{State: string(engine.NotReached), KeyText: before.KeyText(s.Name, n)})
+				for n := 0; before().KeyText(s.Name, n) != ""; n++ {
+					rs.Elements = append(rs.Elements, record.Computation{State: string(engine.NotReached), KeyText: before().KeyText(s.Name, n)})
 				}
 			}
 		}

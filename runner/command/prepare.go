@@ -2,11 +2,11 @@ package command
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"os"
 	"path/filepath"
 	"strings"
+	"sync"
 
 	"rimlight/runner/diag"
 	"rimlight/runner/engine"
@@ -91,20 +91,28 @@ func readRecipe(file string) ([]byte, error) {
 }
 
 // newEngine sets up what carries out a plan. The record is that of the run
-// before, if any.
-func newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Engine, *record.Record, error) {
+// before; nil, if there is none.
+func (a *app) newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Engine, func() *record.Record, error) {
 	s, err := store.Open(o.store)
 	if err != nil {
 		return nil, nil, err
 	}
-	lib, err := plan.OpenLibrary()
+	lib, err := a.library()
 	if err != nil {
 		return nil, nil, err
 	}
-	before, err := record.Read(filepath.Join(o.out, recordFile))
-	if err != nil && !errors.Is(err, os.ErrNotExist) {
-		before = nil // an unreadable record explains nothing, but stops nothing
+	// It is read when something has to be explained: when all is known, nothing
+	// has. An unreadable record explains nothing, but stops nothing.
+	before := sync.OnceValue(func() *record.Record {
+		r, err := record.Read(filepath.Join(o.out, recordFile))
+		if err != nil {
+			return nil
+		}
+		return r
+	})
+	if o.why != "" {
+		before() // this run's own record will take its place
 	}
 	host, _ := os.Hostname()
-	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Limits: o.limits, Confinement: o.confined, NoGaps: o.noGaps, Before: before.KeyText}, before, nil
+	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Limits: o.limits, Confinement: o.confined, NoGaps: o.noGaps, Before: func(step string, element int) plan.KeyText { return before().KeyText(step, element) }}, before, nil
 }

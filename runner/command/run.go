@@ -41,11 +41,13 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 // run carries out a recipe from start to report.
 func (a *app) run(ctx context.Context, file string, o *options) error {
 	started := time.Now().UTC()
+	go a.library()
+	go a.executable()
 	p, code, err := prepare(ctx, file, o)
 	if err != nil {
 		return a.wrong(err, o)
 	}
-	e, before, err := newEngine(p, code, o)
+	e, before, err := a.newEngine(p, code, o)
 	if err != nil {
 		return err
 	}
