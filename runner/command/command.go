@@ -105,6 +105,6 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 		SilenceUsage:  true,
 	}
 	root.CompletionOptions.HiddenDefaultCmd = true
-	root.AddCommand(a.runCommand(), a.checkCommand(), a.demoCommand(), a.storeCommand())
+	root.AddCommand(a.runCommand(), a.checkCommand(), a.demoCommand(), a.storeCommand(), a.chunkCommand())
 	return root
 }

@@ -6,6 +6,7 @@ import (
 	"io"
 	"os"
 	"slices"
+	"strings"
 	"time"
 
 	"github.com/schollz/progressbar/v3"
@@ -39,10 +40,11 @@ type display struct {
 	bar   *progressbar.ProgressBar
 	of    string // the step that the bar is of
 	tenth map[string]int
+	where map[string]string // that a step was last said to be computed
 }
 
 func (a *app) display(p *plan.Plan, o *options) *display {
-	return &display{app: a, opts: o, total: len(p.Inputs) + len(p.Steps), tenth: map[string]int{}}
+	return &display{app: a, opts: o, total: len(p.Inputs) + len(p.Steps), tenth: map[string]int{}, where: map[string]string{}}
 }
 
 // event is called for one event at a time.
@@ -60,8 +62,19 @@ func (d *display) event(ev engine.Event) {
 	switch {
 	case ev.State == "" && ev.Total > 0:
 		d.progress(ev)
+	case ev.State == "":
+		d.elsewhere(ev)
 	case ev.State != "":
 		d.finished(ev)
+	}
+}
+
+// elsewhere shows where a plain step is computed.
+func (d *display) elsewhere(ev engine.Event) {
+	if ev.Where != d.where[ev.Step] {
+		d.dropBar()
+		d.where[ev.Step] = ev.Where
+		fmt.Fprintf(d.app.stderr, "         %-18s %s\n", ev.Step, ev.Where)
 	}
 }
 
@@ -75,8 +88,13 @@ func (d *display) progress(ev engine.Event) {
 				progressbar.OptionSetWidth(30), progressbar.OptionShowCount(), progressbar.OptionSetPredictTime(true), progressbar.OptionClearOnFinish(),
 				progressbar.OptionThrottle(100*time.Millisecond))
 		}
+		d.bar.Describe(fmt.Sprintf("%-18s", strings.TrimSpace(ev.Step+" "+ev.Where)))
 		d.bar.Set(ev.Done)
 		return
+	}
+	if ev.Where != d.where[ev.Step] {
+		d.where[ev.Step] = ev.Where
+		fmt.Fprintf(d.app.stderr, "         %-18s %d of %d  %s\n", ev.Step, ev.Done, ev.Total, ev.Where)
 	}
 	if t := 10 * ev.Done / ev.Total; t > d.tenth[ev.Step] && ev.Done < ev.Total {
 		d.tenth[ev.Step] = t
@@ -131,6 +149,9 @@ func (d *display) json(ev engine.Event) {
 	m := map[string]any{"event": kind, "name": ev.Step, "state": state, "finished": d.done, "of": d.total}
 	if ev.Absent {
 		m["absent"] = true
+	}
+	if ev.Where != "" {
+		m["where"] = ev.Where
 	}
 	if ev.Why != "" {
 		m["why"] = ev.Why

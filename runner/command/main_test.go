@@ -3,6 +3,7 @@ package command
 import (
 	"os"
 	"os/exec"
+	"path/filepath"
 	"testing"
 
 	"rimlight/runner/worker"
@@ -14,7 +15,7 @@ func TestMain(m *testing.M) {
 	if worker.Requested() {
 		os.Exit(worker.Main())
 	}
-	if os.Args[0] == "rimlight" {
+	if filepath.Base(os.Args[0]) == "rimlight" {
 		os.Exit(Run(os.Args[1:], os.Stdout, os.Stderr))
 	}
 	os.Exit(m.Run())

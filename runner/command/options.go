@@ -7,8 +7,10 @@ import (
 	"strings"
 
 	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
 
 	"rimlight/runner/confine"
+	"rimlight/runner/slurm"
 	"rimlight/runner/worker"
 )
 
@@ -18,6 +20,8 @@ type options struct {
 	out, store string
 	jobs       int
 	on         string
+	slurm      slurm.Options
+	given      *pflag.FlagSet
 	quiet      bool
 	json       bool
 	noGaps     bool
@@ -29,12 +33,14 @@ type options struct {
 
 func (o *options) flags(c *cobra.Command) {
 	f := c.Flags()
+	o.given = f
 	f.StringArrayVar(&o.in, "in", nil, "read an input from another file: `NAME=PATH` (CSV: NAME=PATH;CHANNELS-PATH)")
 	f.StringArrayVar(&o.set, "set", nil, "give a setting another value: `NAME=VALUE`")
 	f.StringVar(&o.out, "out", "", "write the report and its tables into `DIR` (default: beside the recipe, its name with .out)")
 	f.StringVar(&o.store, "store", "", "keep results in the store `DIR` (default: rimlight.store beside the recipe)")
 	f.IntVar(&o.jobs, "jobs", runtime.NumCPU(), "worker processes at a time")
-	f.StringVar(&o.on, "on", "local", "where to compute: local")
+	f.StringVar(&o.on, "on", local, "where to compute: local, or slurm (a cluster that shares the folders of store and report)")
+	o.slurmFlags(f)
 	o.limitFlags(f)
 	f.BoolVar(&o.noGaps, "no-gaps", false, "fail a step when one of its elements fails, instead of leaving a flagged gap")
 	f.BoolVar(&o.quiet, "quiet", false, "say nothing but errors")
@@ -43,8 +49,8 @@ func (o *options) flags(c *cobra.Command) {
 
 // resolve checks the flags and fills in what depends on the recipe's place.
 func (o *options) resolve(recipe string) error {
-	if o.on != "local" {
-		return fmt.Errorf("--on %s: this version computes on the local machine only; expected local", o.on)
+	if err := o.checkPlace(); err != nil {
+		return err
 	}
 	if o.jobs < 1 {
 		return fmt.Errorf("--jobs %d: expected at least 1", o.jobs)

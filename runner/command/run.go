@@ -57,10 +57,15 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 	if err := o.askAgain(p, e); err != nil {
 		return err
 	}
+	end, err := o.place(ctx, e)
+	if err != nil {
+		return err
+	}
 	a.showConfinement(o)
 	show := a.display(p, o)
 	e.Observe = show.event
 	outcome := e.Run(ctx)
+	outcome.Notes = append(outcome.Notes, end()...)
 	show.close()
 
 	// What follows is done even after an interruption: what was finished is

@@ -80,11 +80,14 @@ func (e *Engine) adopt(w Work) (*plan.Step, error) {
 		switch {
 		case a.Source == plan.FromElement:
 			spec.Each = i
+		case a.Sealed != nil:
+			arg.Value = a.Sealed
 		case a.Value != nil:
 			v, err := known(e.Store, *a.Value)
 			if err != nil {
 				return nil, &Fault{Text: "argument " + a.Name + ": " + err.Error(), Unreadable: true}
 			}
+			arg.Source = plan.FromInput
 			arg.Input = len(e.outcome.Inputs)
 			e.outcome.Inputs = append(e.outcome.Inputs, Input{Name: a.Name, Computation: Computation{State: Reused, Results: []Value{v}}})
 		}

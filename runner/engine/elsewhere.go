@@ -21,9 +21,10 @@ type Elsewhere interface {
 
 	// Do does the work and tells of each unit, by its index, how it ended: with a
 	// record in the store, or with an error, which may be a [*Fault] or
-	// [ErrUntried]. The error is why the work as a whole could not be done; a
-	// *Fault, if it is the doing of the work.
-	Do(ctx context.Context, w Work, ended func(unit int, err error)) error
+	// [ErrUntried]. It tells when Where has something else to say. Both are told
+	// from one goroutine. The error is why the work as a whole could not be done.
+	// When ctx ends, what was finished is told of before Do returns.
+	Do(ctx context.Context, w Work, ended func(unit int, err error), moved func()) error
 
 	// Where says in a few words where the work of a step is done, for people.
 	Where(step string) string
@@ -45,9 +46,13 @@ type Work struct {
 type Argument struct {
 	Name   string
 	Type   string
-	Source plan.Source   // FromInput for the value below, FromElement or FromSeed
-	Value  *store.Result `json:",omitempty"`
+	Source plan.Source
+	Value  *store.Result `json:",omitempty"` // an input, or a result of an earlier step
+	Sealed ready         `json:",omitempty"` // a setting or priors, in their envelope
 }
+
+// A ready value is in its envelope already.
+type ready []byte
 
 // A Unit is one computation of a step: the step, or one element of a fan-out.
 type Unit struct {
@@ -199,7 +204,7 @@ func mean(comps []Computation, list []int) time.Duration {
 // away has the elements listed in todo computed elsewhere. A plain step has one
 // computation and no items.
 func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int, each time.Duration) error {
-	w, err := e.work(ctx, spec, each)
+	w, err := e.work(spec, each)
 	if err != nil {
 		return err
 	}
@@ -250,7 +255,7 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 			}
 			done++
 			show()
-		})
+		}, show)
 		if err != nil || len(again) == 0 || ctx.Err() != nil {
 			return err
 		}
@@ -262,34 +267,27 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 }
 
 // work describes what a step computes with, for elsewhere.
-func (e *Engine) work(ctx context.Context, spec *plan.Step, each time.Duration) (Work, error) {
+func (e *Engine) work(spec *plan.Step, each time.Duration) (Work, error) {
 	w := Work{Step: spec.Name, Code: e.Code, Limits: e.Limits, Each: each}
 	for _, r := range spec.Results {
 		w.Results = append(w.Results, r.Name)
 	}
 	for _, a := range spec.Args {
-		arg := Argument{Name: a.Name, Type: a.Type, Source: plan.FromInput}
+		arg := Argument{Name: a.Name, Type: a.Type, Source: a.Source}
 		switch a.Source {
-		case plan.FromElement, plan.FromSeed:
-			arg.Source = a.Source
 		case plan.FromInput:
 			arg.Value = e.outcome.Inputs[a.Input].Results[0].named(a.Name)
 		case plan.FromResult:
 			arg.Value = e.result(a.Step, a.Result).named(a.Name)
-		default:
-			b, err := sealGo(a.Type, a.Value)
-			if err != nil {
+		case plan.FromSetting, plan.FromPriors:
+			var err error
+			if arg.Sealed, err = sealGo(a.Type, a.Value); err != nil {
 				return w, fmt.Errorf("argument %s: %w", a.Name, err)
 			}
-			v, err := putSealed(e.Store, b)
-			if err != nil {
-				return w, fmt.Errorf("argument %s: %w", a.Name, err)
-			}
-			arg.Value = v.named(a.Name)
 		}
 		w.Args = append(w.Args, arg)
 	}
-	return w, ctx.Err()
+	return w, nil
 }
 
 // named is a value as records name it.

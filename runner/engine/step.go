@@ -87,6 +87,9 @@ func (e *Engine) arguments(ctx context.Context, spec *plan.Step) ([][]byte, erro
 }
 
 func sealGo(typ string, v any) ([]byte, error) {
+	if b, ok := v.(ready); ok {
+		return b, nil
+	}
 	layout, err := canon.Layout(reflect.TypeOf(v))
 	if err != nil {
 		return nil, err

@@ -1,10 +1,13 @@
 package plan
 
 import (
+	"fmt"
 	"runtime"
 	"runtime/debug"
 	"sort"
 	"strings"
+
+	"golang.org/x/sys/cpu"
 
 	"rimlight/runner/canon"
 	"rimlight/runner/program"
@@ -80,4 +83,18 @@ func (b Build) lines() []string {
 		out = append(out, "module "+m.Path+" "+m.Version+" "+m.Sum)
 	}
 	return out
+}
+
+// Fingerprint lists all of the program, and of the processor it runs on, that
+// could make another machine compute other numbers. Where two are equal, equal
+// keys have equal results.
+func Fingerprint(lib *Library, build Build) KeyText {
+	lines := []string{keyVersion}
+	for _, p := range lib.Reached(lib.packages()) {
+		lines = append(lines, "library "+p+" "+lib.Hash(p))
+	}
+	lines = append(lines, build.lines()...)
+	// Package math rounds its exponential otherwise where there is none.
+	lines = append(lines, fmt.Sprintf("program fused-multiply-add %v", cpu.X86.HasAVX && cpu.X86.HasFMA))
+	return KeyText(strings.Join(lines, "\n") + "\n")
 }

@@ -8,7 +8,9 @@ import (
 	"go/scanner"
 	"go/token"
 	"io/fs"
+	"maps"
 	"path"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -130,6 +132,9 @@ func (l *Library) Reached(packages []string) []string {
 	sort.Strings(out)
 	return out
 }
+
+// packages lists all step packages.
+func (l *Library) packages() []string { return slices.Collect(maps.Keys(l.hash)) }
 
 // Hash is the SHA-256 of a package's sources, in hex, comments and formatting
 // left out. It is empty for a package that is not in the library.

@@ -63,6 +63,9 @@ func Open(dir string) (*Store, error) {
 	return s, checkMark(dir, string(mark))
 }
 
+// Dir is the folder of the store, an absolute path.
+func (s *Store) Dir() string { return s.dir }
+
 func checkMark(dir, mark string) error {
 	format, ok := strings.CutPrefix(mark, markText)
 	n, err := strconv.Atoi(strings.TrimSuffix(format, "\n"))
