@@ -213,11 +213,17 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 		total = 0
 	}
 	done := 0
+	patient := patience{total: len(comps)}
 	for n := range comps {
 		if comps[n].State != NotReached {
 			done++
 		}
+		if comps[n].Finished() {
+			patient.good++
+		}
 	}
+	enough, stop := context.WithCancel(ctx)
+	defer stop()
 	show := func() {
 		e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: done, Total: total, Where: e.Elsewhere.Where(spec.Name)})
 	}
@@ -233,7 +239,7 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 			w.Units = append(w.Units, u)
 		}
 		var again []int
-		err := e.Elsewhere.Do(ctx, w, func(unit int, err error) {
+		err := e.Elsewhere.Do(enough, w, func(unit int, err error) {
 			n := todo[unit]
 			c := &comps[n]
 			if err == nil {
@@ -253,10 +259,19 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 			if err != nil {
 				c.fail(err)
 			}
+			switch {
+			case err == nil:
+				patient.good++
+			case fatal(err):
+				patient.deaths++
+			}
+			if err != nil && !own(err) || patient.out() {
+				stop()
+			}
 			done++
 			show()
 		}, show)
-		if err != nil || len(again) == 0 || ctx.Err() != nil {
+		if err != nil || len(again) == 0 || enough.Err() != nil {
 			return err
 		}
 		if err := e.mendFor(ctx, spec, items, again); err != nil {
