@@ -283,13 +283,12 @@ func (b *builder) elementChannels(s Step) []lightcurve.Channel {
 	}
 	for _, r := range values {
 		var out []lightcurve.Channel
+		if l, ok := LightOf(r.Value); ok && (l.Kind == curvesLight || l.Kind == fitsLight) {
+			out = l.Channels
+		}
 		switch v := r.Value.(type) {
 		case []lightcurve.Channel:
 			out = v
-		case []lightcurve.Curve:
-			for _, c := range v {
-				out = append(out, c.Channel)
-			}
 		case []spectrum.Point:
 			for _, p := range v {
 				out = append(out, p.Channel)

@@ -139,20 +139,20 @@ func whitePosterior(d Document) (fit.Posterior, place, bool) {
 
 // lastCube finds the light curves that were fitted: the last result that is a
 // cube, or else the last input.
-func lastCube(d Document) (lightcurve.Cube, bool) {
+func lastCube(d Document) (Light, bool) {
 	for _, s := range slices.Backward(d.Steps) {
 		for _, r := range slices.Backward(s.Results) {
-			if c, ok := r.Value.(lightcurve.Cube); ok {
-				return c, true
+			if l, ok := LightOf(r.Value); ok && l.Kind == cubeLight {
+				return l, true
 			}
 		}
 	}
 	for _, in := range slices.Backward(d.Inputs) {
-		if c, ok := in.Value.(lightcurve.Cube); ok {
-			return c, true
+		if l, ok := LightOf(in.Value); ok && l.Kind == cubeLight {
+			return l, true
 		}
 	}
-	return lightcurve.Cube{}, false
+	return Light{}, false
 }
 
 // reasons names the mask flags, in the order of their bits.
@@ -199,14 +199,6 @@ func (m *maskCount) String() string {
 		out += ": " + strings.Join(parts, ", ")
 	}
 	return out
-}
-
-func maskOf(c lightcurve.Cube) maskCount {
-	var m maskCount
-	for _, mask := range c.Mask {
-		m.add(mask)
-	}
-	return m
 }
 
 // extent is the range of the finite values; ok is false when there are none.

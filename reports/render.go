@@ -12,8 +12,6 @@ import (
 	"slices"
 	"strings"
 	"time"
-
-	"rimlight/steps/lightcurve"
 )
 
 //go:embed assets/report.css
@@ -192,9 +190,9 @@ func inputSummary(in Input) dataView {
 	if total > 0 {
 		v.Content = size(total)
 	}
-	if c, ok := in.Value.(lightcurve.Cube); ok {
-		v.Content += fmt.Sprintf("; %s × %s", count(len(c.Time), "integration"), channelsText(c.Channels))
-		if t := timeText(c.Time); t != "" {
+	if l, ok := LightOf(in.Value); ok && l.Kind == cubeLight {
+		v.Content += fmt.Sprintf("; %s × %s", count(l.Integrations, "integration"), channelsText(l.Channels))
+		if t := l.time(); t != "" {
 			v.Content += "; " + t
 		}
 	}

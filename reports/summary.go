@@ -24,7 +24,7 @@ type Headline struct {
 func Headlines(d Document) []Headline {
 	out := spectrumHeadlines(d)
 	if c, ok := lastCube(d); ok {
-		if m := maskOf(c); m.all > 0 {
+		if m := c.masks(); m.all > 0 {
 			out = append(out, Headline{Label: "masked samples", Value: percent(m.masked, m.all), Note: m.String()})
 		}
 	}

@@ -79,22 +79,12 @@ func (b *builder) show(title string, value any) []block {
 		return []block{{Posterior: b.posterior(v)}}
 	case []fit.Posterior:
 		return b.posteriors(title, v)
-	case fit.CurveFit:
-		return []block{{Facts: curveFitFacts(v)}}
-	case []fit.CurveFit:
-		return []block{{Facts: curveFitsFacts(v)}}
 	case fit.Priors:
 		return []block{{Grid: b.numbered(priorsGrid(v))}}
 	case fit.Quantity:
 		return []block{{Text: quantityText(v)}}
 	case []fit.Quantity:
 		return []block{{Facts: eachFact(v, func(q fit.Quantity) fact { return fact{label(q.Name), quantityText(q)} })}}
-	case lightcurve.Cube:
-		return []block{{Facts: cubeFacts(v)}}
-	case lightcurve.Curve:
-		return []block{{Facts: curveFacts(v)}}
-	case []lightcurve.Curve:
-		return []block{{Facts: curvesFacts(v)}}
 	case []lightcurve.Channel:
 		return []block{{Text: channelsText(v)}}
 	case lightcurve.Channel:
@@ -104,6 +94,9 @@ func (b *builder) show(title string, value any) []block {
 			return []block{{Listing: listing(v)}}
 		}
 		return []block{{Text: v}}
+	}
+	if l, ok := LightOf(value); ok {
+		return []block{{Facts: l.facts()}}
 	}
 	return generic(value)
 }

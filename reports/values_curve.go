@@ -6,49 +6,10 @@ import (
 	"math"
 	"strings"
 
-	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
 	"rimlight/steps/table"
 )
-
-func cubeFacts(c lightcurve.Cube) []fact {
-	m := maskOf(c)
-	return facts(
-		"size", fmt.Sprintf("%s × %s", count(len(c.Time), "integration"), count(len(c.Channels), "channel")),
-		"time", timeText(c.Time),
-		"wavelengths", channelsText(c.Channels),
-		"masked", m.String(),
-		"auxiliaries", auxText(c.Aux),
-	)
-}
-
-func curveFacts(c lightcurve.Curve) []fact {
-	var m maskCount
-	m.add(c.Mask)
-	return facts(
-		"size", count(len(c.Time), "integration"),
-		"time", timeText(c.Time),
-		"channel", channelText(c.Channel),
-		"masked", m.String(),
-		"auxiliaries", auxText(c.Aux),
-	)
-}
-
-func curvesFacts(curves []lightcurve.Curve) []fact {
-	var m maskCount
-	var channels []lightcurve.Channel
-	for _, c := range curves {
-		m.add(c.Mask)
-		channels = append(channels, c.Channel)
-	}
-	out := facts("size", count(len(curves), "light curve"))
-	if len(curves) > 0 {
-		out[0].Text += " of " + count(len(curves[0].Time), "integration")
-		out = append(out, facts("time", timeText(curves[0].Time))...)
-	}
-	return append(out, facts("wavelengths", channelsText(channels), "masked", m.String())...)
-}
 
 // facts pairs names and texts, leaving out those without a text.
 func facts(pairs ...string) []fact {
@@ -59,14 +20,6 @@ func facts(pairs ...string) []fact {
 		}
 	}
 	return out
-}
-
-func timeText(t []float64) string {
-	lo, hi, ok := extent(t)
-	if !ok {
-		return ""
-	}
-	return fmt.Sprintf("%s to %s BJD_TDB, %s h", fixed(lo, 5), fixed(hi, 5), fixed((hi-lo)*24, 2))
 }
 
 func channelsText(channels []lightcurve.Channel) string {
@@ -83,83 +36,6 @@ func channelText(c lightcurve.Channel) string {
 		return "white light, " + s
 	}
 	return fmt.Sprintf("number %d, %s", c.Index, s)
-}
-
-func auxText(aux []lightcurve.Series) string {
-	var parts []string
-	for i, a := range aux {
-		if i == shownColumns {
-			parts = append(parts, fmt.Sprintf("… and %d more", len(aux)-i))
-			break
-		}
-		s := label(a.Name)
-		if a.Unit != "" {
-			s += " (" + label(a.Unit) + ")"
-		}
-		parts = append(parts, s)
-	}
-	return strings.Join(parts, ", ")
-}
-
-// scatter is the standard deviation of a fit's relative residuals, and its
-// ratio to the root mean square of the errors used; NaN with fewer than two
-// samples.
-func scatter(f fit.CurveFit) (sd, ratio float64, used int) {
-	n := min(len(f.Flux), len(f.Transit), len(f.Trend), len(f.Mask), len(f.Err))
-	var sum, sum2, err2 float64
-	for i := range n {
-		if f.Mask[i] != 0 {
-			continue
-		}
-		r := f.Flux[i]/f.Trend[i] - f.Transit[i]
-		sum += r
-		sum2 += r * r
-		err2 += f.Err[i] * f.Err[i]
-		used++
-	}
-	if used < 2 {
-		return math.NaN(), math.NaN(), used
-	}
-	k := float64(used)
-	sd = math.Sqrt(max(0, sum2-sum*sum/k) / (k - 1))
-	return sd, sd / math.Sqrt(err2/k), used
-}
-
-func curveFitFacts(f fit.CurveFit) []fact {
-	sd, ratio, used := scatter(f)
-	return facts(
-		"channel", channelText(f.Channel),
-		"time", timeText(f.Time),
-		"samples", fmt.Sprintf("%s of %s fitted", grouped(used), grouped(len(f.Time))),
-		"residual scatter", scatterText(sd, ratio),
-		"baseline flux", number(f.Level, 6),
-		"mid-transit time", fixed(f.Mid, 6)+" BJD_TDB",
-	)
-}
-
-func scatterText(sd, ratio float64) string {
-	if math.IsNaN(sd) {
-		return ""
-	}
-	return fmt.Sprintf("%s ppm, %s times the errors used", fixed(sd*1e6, 0), fixed(ratio, 2))
-}
-
-func curveFitsFacts(fits []fit.CurveFit) []fact {
-	var all, ratios []float64
-	var channels []lightcurve.Channel
-	for _, f := range fits {
-		sd, ratio, _ := scatter(f)
-		all, ratios = append(all, sd), append(ratios, ratio)
-		channels = append(channels, f.Channel)
-	}
-	out := facts("size", count(len(fits), "fit"), "wavelengths", channelsText(channels))
-	if lo, hi, ok := extent(all); ok {
-		out = append(out, facts(
-			"residual scatter", fmt.Sprintf("%s to %s ppm, median %s", fixed(lo*1e6, 0), fixed(hi*1e6, 0), fixed(median(all)*1e6, 0)),
-			"scatter / errors used", "median "+fixed(median(ratios), 2),
-		)...)
-	}
-	return out
 }
 
 // points shows depths that are not yet a spectrum. Where one follows, their

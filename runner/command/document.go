@@ -8,7 +8,6 @@ import (
 	"io"
 	"os"
 	"path/filepath"
-	"reflect"
 	"runtime"
 	"strings"
 	"sync"
@@ -16,67 +15,9 @@ import (
 	"time"
 
 	"rimlight/reports"
-	"rimlight/runner/canon"
 	"rimlight/runner/engine"
 	"rimlight/runner/plan"
-	"rimlight/steps/check"
-	"rimlight/steps/figure"
-	"rimlight/steps/fit"
-	"rimlight/steps/lightcurve"
-	"rimlight/steps/limbtable"
-	"rimlight/steps/spectrum"
-	"rimlight/steps/table"
 )
-
-// shown are the library's result types, by the Go type that recipes know them
-// by. Values of other types are decoded without their Go type.
-var shown = types(
-	check.Check{}, figure.Figure{}, fit.CurveFit{}, fit.Posterior{}, fit.Quantity{}, lightcurve.Channel{}, lightcurve.Cube{}, lightcurve.Curve{},
-	limbtable.Table{}, spectrum.Point{}, spectrum.Spectrum{}, table.Table{}, false, 0, 0.0, "",
-)
-
-func types(samples ...any) map[string]reflect.Type {
-	out := map[string]reflect.Type{}
-	for _, s := range samples {
-		t := reflect.TypeOf(s)
-		name := t.String()
-		if p := t.PkgPath(); p != "" {
-			name = p + "." + t.Name()
-		}
-		out[name] = t
-		out["[]"+name] = reflect.SliceOf(t)
-	}
-	return out
-}
-
-// maxShown is the largest value, in bytes, that is decoded without its Go
-// type: such values are shown as trees, which grow in memory.
-const maxShown = 4 << 20
-
-// decode turns a sealed value into Go for the report; nil when it is not to be
-// shown.
-func decode(sealed []byte) any {
-	typ, layout, data, err := canon.Open(sealed)
-	if err != nil {
-		return nil
-	}
-	if t, ok := shown[typ]; ok {
-		if want, err := canon.Layout(t); err == nil && want == layout {
-			v := reflect.New(t)
-			if canon.UnmarshalValue(data, v.Elem()) == nil {
-				return v.Elem().Interface()
-			}
-		}
-	}
-	if len(data) > maxShown {
-		return nil
-	}
-	v, err := canon.Tree(data, maxShown)
-	if err != nil {
-		return nil
-	}
-	return v
-}
 
 // document gathers what the report shows.
 func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Outcome, started time.Time) reports.Document {
@@ -165,9 +106,13 @@ func inputOf(ctx context.Context, e *engine.Engine, i int, in engine.Input) repo
 	if len(in.Results) == 1 {
 		out.Hash = in.Results[0].Hash.String()
 		if len(in.Files) > 0 {
-			if b, err := e.InputBytes(ctx, i); err == nil {
-				out.Value = decode(b)
-			}
+			out.Value = shownValue(in.Results[0].Type, -1, func(each func(i int, sealed []byte) error) error {
+				b, err := e.InputBytes(ctx, i)
+				if err != nil {
+					return err
+				}
+				return each(0, b)
+			})
 		}
 	}
 	return out
@@ -207,9 +152,7 @@ func stepOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcom
 	}
 	for n, v := range s.Results {
 		r := reports.Result{Name: spec.Results[n].Name, Type: v.Type, Hash: v.Hash.String(), Size: v.Size}
-		if b, err := e.Bytes(ctx, i, n); err == nil {
-			r.Value = decode(b)
-		}
+		r.Value = shownValue(v.Type, v.Len(), func(each func(i int, sealed []byte) error) error { return e.Parts(ctx, i, n, each) })
 		out.Results = append(out.Results, r)
 	}
 	out.Checks = gapChecks(s)

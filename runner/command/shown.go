@@ -1,0 +1,143 @@
+package command
+
+import (
+	"reflect"
+
+	"rimlight/reports"
+	"rimlight/runner/canon"
+	"rimlight/steps/check"
+	"rimlight/steps/figure"
+	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/limbtable"
+	"rimlight/steps/spectrum"
+	"rimlight/steps/table"
+)
+
+// shown are the library's result types, by the Go type that recipes know them
+// by. Values of other types are decoded without their Go type.
+var shown = types(
+	check.Check{}, figure.Figure{}, fit.CurveFit{}, fit.Posterior{}, fit.Quantity{}, lightcurve.Channel{}, lightcurve.Cube{}, lightcurve.Curve{},
+	limbtable.Table{}, spectrum.Point{}, spectrum.Spectrum{}, table.Table{}, false, 0, 0.0, "",
+)
+
+func types(samples ...any) map[string]reflect.Type {
+	out := map[string]reflect.Type{}
+	for _, s := range samples {
+		t := reflect.TypeOf(s)
+		name := t.String()
+		if p := t.PkgPath(); p != "" {
+			name = p + "." + t.Name()
+		}
+		out[name] = t
+		out["[]"+name] = reflect.SliceOf(t)
+	}
+	return out
+}
+
+// maxShown is the largest value, in bytes, that is decoded without its Go
+// type: such values are shown as trees, which grow in memory.
+const maxShown = 4 << 20
+
+// A reading hands over the parts of a result: the elements of a list, or else
+// the result as one part. It may begin again at part 0.
+type reading func(each func(i int, sealed []byte) error) error
+
+// shownValue turns a result into Go for the report; nil when it is not to be
+// shown. It has n parts, or is no list when n is negative. Of light curves and fits only the sum of what they hold stays in
+// memory. The result is read as a whole, also when little of it is shown, so
+// that damage to it is found.
+func shownValue(typ string, n int, read reading) any {
+	var out any
+	var err error
+	slice, known := shown[typ]
+	sum, isLight := reports.Lights(typ)
+	switch {
+	case n < 0:
+		err = read(func(_ int, sealed []byte) error { out = decode(sealed); return nil })
+	case isLight:
+		err = read(func(i int, sealed []byte) error {
+			if i == 0 {
+				sum, _ = reports.Lights(typ)
+			}
+			if one, ok := reports.LightOf(decode(sealed)); ok {
+				sum.Add(one)
+			}
+			return nil
+		})
+		out = sum
+	case known:
+		out, err = shownSlice(slice, n, read)
+	default:
+		out, err = shownTree(read)
+	}
+	if err != nil {
+		return nil
+	}
+	if l, ok := reports.LightOf(out); ok {
+		return l
+	}
+	return out
+}
+
+// shownSlice decodes a list of a type that is known here; nil when it has
+// another layout than it has here.
+func shownSlice(slice reflect.Type, n int, read reading) (any, error) {
+	list := reflect.MakeSlice(slice, n, n)
+	good := true
+	err := read(func(i int, sealed []byte) error {
+		one := decode(sealed)
+		if good = i < n && reflect.TypeOf(one) == slice.Elem() && (good || i == 0); good {
+			list.Index(i).Set(reflect.ValueOf(one))
+		}
+		return nil
+	})
+	if err != nil || !good {
+		return nil, err
+	}
+	return list.Interface(), nil
+}
+
+// shownTree decodes a list of a type that is not known here; nil when it is too
+// large.
+func shownTree(read reading) (any, error) {
+	var tree []any
+	size := 0
+	err := read(func(i int, sealed []byte) error {
+		if i == 0 {
+			tree, size = nil, 0
+		}
+		if size += len(sealed); size <= maxShown {
+			tree = append(tree, decode(sealed))
+		}
+		return nil
+	})
+	if err != nil || size > maxShown {
+		return nil, err
+	}
+	return tree, nil
+}
+
+// decode turns a sealed value into Go; nil when it is not to be shown.
+func decode(sealed []byte) any {
+	typ, layout, data, err := canon.Open(sealed)
+	if err != nil {
+		return nil
+	}
+	if t, ok := shown[typ]; ok {
+		if want, err := canon.Layout(t); err == nil && want == layout {
+			v := reflect.New(t)
+			if canon.UnmarshalValue(data, v.Elem()) == nil {
+				return v.Elem().Interface()
+			}
+		}
+	}
+	if len(data) > maxShown {
+		return nil
+	}
+	v, err := canon.Tree(data, maxShown)
+	if err != nil {
+		return nil
+	}
+	return v
+}

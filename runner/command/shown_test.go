@@ -1,0 +1,67 @@
+package command
+
+import (
+	"reflect"
+	"strings"
+	"testing"
+
+	"rimlight/reports"
+	"rimlight/runner/canon"
+	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
+	"rimlight/steps/spectrum"
+)
+
+// listOf seals the elements of a list, and gives its type, length and reading, which
+// begins twice, as it does when something has to be mended.
+func listOf[T any](t *testing.T, typ string, items ...T) (slice string, n int, read reading) {
+	t.Helper()
+	layout, err := canon.Layout(reflect.TypeFor[T]())
+	if err != nil {
+		t.Fatal(err)
+	}
+	return "[]" + typ, len(items), func(each func(i int, sealed []byte) error) error {
+		for attempt := range 2 {
+			for i, item := range items {
+				if attempt == 0 && i > len(items)/2 {
+					break
+				}
+				b, err := canon.Marshal(item)
+				if err != nil {
+					return err
+				}
+				if err := each(i, canon.Seal(typ, layout, b)); err != nil {
+					return err
+				}
+			}
+		}
+		return nil
+	}
+}
+
+func TestShownValue(t *testing.T) {
+	points := []spectrum.Point{{Depth: 0.01, Flag: "a"}, {Depth: 0.02}, {Depth: 0.03}}
+	typ, n, read := listOf(t, "rimlight/steps/spectrum.Point", points...)
+	if got := shownValue(typ, n, read); !reflect.DeepEqual(got, points) {
+		t.Errorf("points are shown as %+v", got)
+	}
+	typ, n, read = listOf(t, "rimlight/steps/spectrum.Point", struct{ Depth float64 }{1}, struct{ Depth float64 }{2})
+	if got := shownValue(typ, n, read); got != nil {
+		t.Errorf("points of another layout are shown as %+v", got)
+	}
+	fits := []fit.CurveFit{{Channel: lightcurve.Channel{Index: 4, Lo: 1, Hi: 2}, Time: []float64{1, 2}}, {Channel: lightcurve.Channel{Index: 5, Lo: 2, Hi: 3}}, {}}
+	typ, n, read = listOf(t, "rimlight/steps/fit.CurveFit", fits...)
+	want, _ := reports.LightOf(fits)
+	if got, ok := shownValue(typ, n, read).(reports.Light); !ok || got.Integrations != want.Integrations || !reflect.DeepEqual(got.Channels, want.Channels) || len(got.Scatter) != 3 {
+		t.Errorf("fits are shown as %+v, expected %+v", got, want)
+	}
+	typ, n, read = listOf(t, "main.pair", struct{ A, B int }{1, 2}, struct{ A, B int }{3, 4})
+	if got := shownValue(typ, n, read); !reflect.DeepEqual(got, []any{map[string]any{"A": int64(1), "B": int64(2)}, map[string]any{"A": int64(3), "B": int64(4)}}) {
+		t.Errorf("values of a recipe's own type are shown as %+v", got)
+	}
+	large := struct{ A string }{strings.Repeat("x", maxShown/2+1)}
+	typ, n, read = listOf(t, "main.text", large, large)
+	if got := shownValue(typ, n, read); got != nil {
+		t.Error("a large value of a recipe's own type is shown")
+	}
+}
