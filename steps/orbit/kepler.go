@@ -6,20 +6,20 @@ const (
 	// twoPiHigh + twoPiLow is 2π to twice the working precision.
 	twoPiHigh = 2 * math.Pi
 	twoPiLow  = 2.4492935982947064e-16
-	// keplerStep is the relative change of E below which one more step of third
-	// order leaves nothing but rounding: its cube is below 1e-18.
-	keplerStep = 1e-6
-	// keplerSteps bounds the loop; two or three steps are usual.
-	keplerSteps = 12
+	// seriesBelow is the eccentric anomaly below which E - sin E is summed as a
+	// series where e is large. There the slope of Kepler's equation is small and
+	// would multiply the rounding of sin E; above it does so by 2 at most.
+	seriesBelow = 1
+	// thirdOfBits brings the exponent of a float64 back to its bias after a
+	// division of the bits by three, with the fraction shifted so that the
+	// relative error of the cube root is at most 0.032, either way.
+	thirdOfBits = 0x2a9f780000000000
 )
 
 // EccentricAnomaly solves Kepler's equation M = E - e sin E for E, in radians.
-// E is in the same revolution as M. Its error is a few units in the last place
-// for 0 ≤ e ≤ 0.999 and |M| below 1e6; larger |M| lose the digits that the
-// revolutions take. Outside 0 ≤ e < 1, or when M is not finite, it returns
-// NaN. The first guess is that of Mikkola (1987, Celest. Mech. 40, 329),
-// refined by Halley's method on a form of the equation that does not cancel
-// for small E and e near 1.
+// E is in the same revolution as M. Its error is below 2 units in the last place
+// for 0 ≤ e ≤ 0.999 and |M| ≤ π; many revolutions away it is that of M. Outside
+// 0 ≤ e < 1, or when M is not finite, it returns NaN.
 func EccentricAnomaly(meanAnomaly, eccentricity float64) float64 {
 	e := eccentricity
 	if !(e >= 0 && e < 1) || math.IsNaN(meanAnomaly) || math.IsInf(meanAnomaly, 0) {
@@ -28,51 +28,112 @@ func EccentricAnomaly(meanAnomaly, eccentricity float64) float64 {
 	if e == 0 {
 		return meanAnomaly
 	}
+	k := newKepler(e)
 	turns := math.Round(meanAnomaly / twoPiHigh)
 	if turns == 0 {
-		return solveKepler(meanAnomaly, e)
+		anomaly, _, _ := k.solve(meanAnomaly)
+		return anomaly
 	}
 	reduced := math.FMA(-turns, twoPiHigh, meanAnomaly)
 	reduced = math.FMA(-turns, twoPiLow, reduced)
-	return meanAnomaly + e*math.Sin(solveKepler(reduced, e))
+	_, sin, _ := k.solve(reduced)
+	return math.FMA(e, sin, meanAnomaly)
 }
 
-// solveKepler is [EccentricAnomaly] for |m| ≤ π and 0 < e < 1.
-func solveKepler(m, e float64) float64 {
-	if m == 0 {
-		return 0
-	}
-	if m < 0 {
-		return -solveKepler(-m, e)
-	}
+// kepler is Kepler's equation for one eccentricity, 0 ≤ e < 1.
+type kepler struct {
+	e, rest            float64 // e and 1-e
+	scale, alpha, cube float64 // of the cubic equation of the first guess
+	fifth              float64 // coefficient of its correction
+}
+
+func newKepler(e float64) kepler {
 	scale := 1 / (4*e + 0.5)
 	alpha := (1 - e) * scale
-	beta := 0.5 * m * scale
-	root := math.Cbrt(beta + math.Sqrt(beta*beta+alpha*alpha*alpha))
-	s := root - alpha/root
-	s2 := s * s
-	s -= 0.078 * s2 * s2 * s / (1 + e)
-	anomaly := m + e*s*(3-4*s*s)
-	for range keplerSteps {
-		sin, cos := math.Sincos(anomaly)
-		residual := (1-e)*anomaly + e*arcMinusSine(anomaly, sin) - m
-		slope := 1 - e*cos
-		step := residual / slope
-		step = residual / (slope - 0.5*step*e*sin)
-		anomaly -= step
-		if math.Abs(step) <= keplerStep*anomaly {
-			break
-		}
-	}
-	return anomaly
+	return kepler{e: e, rest: 1 - e, scale: scale, alpha: alpha, cube: alpha * alpha * alpha, fifth: 0.078 / (1 + e)}
 }
 
-// arcMinusSine returns x - sin x, given sin x, without cancellation for small
-// x ≥ 0.
-func arcMinusSine(x, sin float64) float64 {
-	if x > 1 {
-		return x - sin
+// solve returns the eccentric anomaly at mean anomaly m, |m| ≤ π or a little
+// more, with its sine and cosine.
+//
+// The first guess is that of Mikkola (1987, Celest. Mech. 40, 329), good to 2
+// parts in 1000, with the root of his cubic equation written without
+// cancellation. Its residual is computed as if in twice the working precision.
+// What it takes to make that vanish is the root δ of
+//
+//	residual + (1 - e cos E) δ + e (sin E (1 - cos δ) + cos E (δ - sin δ)),
+//
+// where δ is so small that rounding does not matter any more: a power series of
+// fourth order in the Newton step, then one step of Newton's method. Sine and
+// cosine follow by the addition theorem.
+func (k *kepler) solve(m float64) (anomaly, sin, cos float64) {
+	size := math.Abs(m)
+	e := k.e
+
+	// s³ + 3α s - 2β = 0 for s = sin(E/3), nearly.
+	beta := 0.5 * size * k.scale
+	root := roughCbrt(beta + math.Sqrt(beta*beta+k.cube))
+	r2 := root * root
+	s := 2 * beta * r2 / (r2*(r2+k.alpha) + k.alpha*k.alpha)
+	s2 := s * s
+	s -= k.fifth * s2 * s2 * s
+	guess := size + e*s*(3-4*s*s)
+
+	sin, cos = math.Sincos(guess)
+	residual, slope := k.residual(size, guess, sin, cos)
+	inverse := 1 / slope
+	newton := -residual * inverse
+	a2, a3 := 0.5*e*sin*inverse, e*cos*inverse/6
+	delta := newton * (1 - newton*(a2-newton*(2*a2*a2-a3-newton*a2*(5*(a2*a2-a3)-1./12))))
+
+	square := delta * delta
+	versine := square * (1./2 - square*(1./24-square*(1./720)))     // 1 - cos δ
+	excess := delta * square * (1./6 - square*(1./120-square/5040)) // δ - sin δ
+	left := (residual + slope*delta) + e*(sin*versine+cos*excess)
+	last := -left * inverse * (1 - 2*a2*delta)
+	delta += last
+	turn := delta - excess // sin δ, nearly
+
+	anomaly = guess + delta
+	versine += last * turn
+	sin, cos = sin+(cos*turn-sin*versine), cos-(sin*turn+cos*versine)
+	if m < 0 {
+		return -anomaly, -sin, cos
 	}
+	return anomaly, sin, cos
+}
+
+// residual returns E - e sin E - m for E ≥ 0, given sin E and cos E, and its
+// derivative 1 - e cos E. The error of the first is e times that of sin E or, for
+// large e and E below seriesBelow, 1e-16 E³; that of the second is relative.
+func (k *kepler) residual(m, anomaly, sin, cos float64) (residual, slope float64) {
+	e := k.e
+	if e >= 0.5 && anomaly < seriesBelow {
+		linear := k.rest * anomaly
+		low := math.FMA(k.rest, anomaly, -linear)
+		return (linear - m) + (e*arcMinusSine(anomaly) + low), k.rest + e*(sin*sin/(1+cos))
+	}
+	high := anomaly - m
+	back := high - anomaly
+	low := (anomaly - (high - back)) - (m + back)
+	product := e * sin
+	productLow := math.FMA(e, sin, -product)
+	return (high - product) + (low - productLow), k.rest + e*(1-cos)
+}
+
+// arcMinusSine returns x - sin x for 0 ≤ x ≤ 1.
+func arcMinusSine(x float64) float64 {
 	y := x * x
-	return x * y / 6 * (1 - y/20*(1-y/42*(1-y/72*(1-y/110*(1-y/156*(1-y/210*(1-y/272)))))))
+	y2 := y * y
+	y4 := y2 * y2
+	low := (1./6 - y*(1./120)) + y2*(1./5040-y*(1./362880))
+	high := (1./39916800 - y*(1./6227020800)) + y2*(1./1307674368000-y*(1./355687428096000))
+	return x * y * (low + y4*(high+y4*(1./121645100408832000)))
+}
+
+// roughCbrt returns the cube root of x > 0 with a relative error of 3e-5 or less.
+func roughCbrt(x float64) float64 {
+	t := math.Float64frombits(math.Float64bits(x)/3 + thirdOfBits)
+	cube := t * t * t
+	return t * (cube + 2*x) / (2*cube + x) // Halley's method
 }

@@ -41,6 +41,7 @@ type Orbit struct {
 	Inclination  float64 // radians, 0 to π; π/2 is seen edge-on
 	Eccentricity float64 // 0 to 0.999; AxisRatio (1 - Eccentricity) > 1
 	Periastron   float64 // argument of periastron of the planet's path, radians; of no effect on a circular orbit
+	StarRadius   float64 // solar radii, ≥ 0: for the time that light takes across the orbit; 0 leaves it out
 }
 
 // Validate returns nil for an orbit that the rest of this package can handle,
@@ -63,6 +64,10 @@ func (o Orbit) Validate() error {
 	case o.AxisRatio*(1-o.Eccentricity) <= 1:
 		return fmt.Errorf("orbit: the planet meets the star at periastron: AxisRatio (1 - Eccentricity) is %g, must be above 1; lower Eccentricity or raise AxisRatio",
 			o.AxisRatio*(1-o.Eccentricity))
+	case !finite(o.StarRadius) || o.StarRadius < 0:
+		return fmt.Errorf("orbit: StarRadius is %g solar radii, must be finite and not negative", o.StarRadius)
+	case o.speed() > maxSpeed:
+		return fmt.Errorf("orbit: with StarRadius %g solar radii the planet moves at %.3g of the speed of light, must be below %g", o.StarRadius, o.speed(), maxSpeed)
 	}
 	return nil
 }
