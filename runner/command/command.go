@@ -10,6 +10,7 @@ import (
 	"os/signal"
 	"sync"
 	"syscall"
+	"time"
 
 	"github.com/spf13/cobra"
 
@@ -65,8 +66,15 @@ type app struct {
 // Run carries out one command line, without the program's name, and returns
 // the exit status.
 func Run(args []string, stdout, stderr io.Writer) int {
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
+	signals := []os.Signal{os.Interrupt, syscall.SIGTERM}
+	if !signal.Ignored(syscall.SIGHUP) { // as nohup has it
+		signals = append(signals, syscall.SIGHUP) // the terminal was closed
+	}
+	ctx, stop := signal.NotifyContext(context.Background(), signals...)
 	defer stop()
+	// Another Ctrl-C ends the program at once, but not one that came with the
+	// first, as from a program that sends it to the process and to its group.
+	defer context.AfterFunc(ctx, func() { time.AfterFunc(time.Second, func() { signal.Reset(os.Interrupt) }) })()
 	a := &app{args: args, stdout: stdout, stderr: stderr, terminal: isTerminal(stderr),
 		executable: sync.OnceValue(executableHash), library: sync.OnceValues(plan.OpenLibrary)}
 	root := a.root()

@@ -29,7 +29,7 @@ func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Out
 		if k := i - len(d.Inputs); k >= 0 {
 			d.Steps[k] = stepOf(ctx, e, k, outcome)
 		} else {
-			d.Inputs[i] = inputOf(ctx, e, i, outcome.Inputs[i])
+			d.Inputs[i] = inputOf(ctx, e, i, outcome)
 		}
 	})
 	used := map[string]bool{}
@@ -94,7 +94,8 @@ func verdict(outcome *engine.Outcome, steps []reports.Step) reports.Outcome {
 	return reports.Done
 }
 
-func inputOf(ctx context.Context, e *engine.Engine, i int, in engine.Input) reports.Input {
+func inputOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcome) reports.Input {
+	in := outcome.Inputs[i]
 	spec := e.Plan.Inputs[i]
 	out := reports.Input{Name: in.Name, Layout: spec.Layout, About: spec.About, Type: spec.Type, State: reports.State(in.State), Why: in.Why, Took: in.Took}
 	for _, f := range in.Files {
@@ -106,13 +107,19 @@ func inputOf(ctx context.Context, e *engine.Engine, i int, in engine.Input) repo
 	if len(in.Results) == 1 {
 		out.Hash = in.Results[0].Hash.String()
 		if len(in.Files) > 0 {
-			out.Value = shownValue(in.Results[0].Type, -1, func(each func(i int, sealed []byte) error) error {
+			var err error
+			out.Value, err = shownValue(in.Results[0].Type, -1, func(each func(i int, sealed []byte) error) error {
 				b, err := e.InputBytes(ctx, i)
 				if err != nil {
 					return err
 				}
 				return each(0, b)
 			})
+			if err != nil {
+				in := &outcome.Inputs[i]
+				in.State, in.Err = engine.Failed, fmt.Sprintf("it cannot be read from the store: %v", err)
+				out.State = reports.State(in.State)
+			}
 		}
 	}
 	return out
@@ -152,7 +159,12 @@ func stepOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcom
 	}
 	for n, v := range s.Results {
 		r := reports.Result{Name: spec.Results[n].Name, Type: v.Type, Hash: v.Hash.String(), Size: v.Size}
-		r.Value = shownValue(v.Type, v.Len(), func(each func(i int, sealed []byte) error) error { return e.Parts(ctx, i, n, each) })
+		var err error
+		r.Value, err = shownValue(v.Type, v.Len(), func(each func(i int, sealed []byte) error) error { return e.Parts(ctx, i, n, each) })
+		if err != nil { // the report cannot be what it should be
+			s.State, s.Err = engine.Failed, fmt.Sprintf("its result %s cannot be read: %v", r.Name, err)
+			out.State, out.Err = reports.State(s.State), s.Err
+		}
 		out.Results = append(out.Results, r)
 	}
 	out.Checks = gapChecks(s)

@@ -57,6 +57,11 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 	if err := o.askAgain(p, e); err != nil {
 		return err
 	}
+	release, notes, err := e.Store.Use(ctx)
+	if err != nil {
+		return err
+	}
+	defer release()
 	end, err := o.place(ctx, e)
 	if err != nil {
 		return err
@@ -65,12 +70,14 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 	show := a.display(p, o)
 	e.Observe = show.event
 	outcome := e.Run(ctx)
-	outcome.Notes = append(outcome.Notes, end()...)
+	notes = append(notes, end()...)
 	show.close()
 
 	// What follows is done even after an interruption: what was finished is
 	// kept, and the report says what is missing.
 	doc := document(context.WithoutCancel(ctx), a, e, outcome, started)
+	outcome.Notes = append(notes, e.Notes()...)
+	doc.Notes = outcome.Notes
 	written, err := writeOutputs(o.out, doc, e, outcome, before)
 	if err != nil {
 		return &exit{status: ExitFailed, cause: err}

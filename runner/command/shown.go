@@ -46,8 +46,8 @@ type reading func(each func(i int, sealed []byte) error) error
 // shownValue turns a result into Go for the report; nil when it is not to be
 // shown. It has n parts, or is no list when n is negative. Of light curves and fits only the sum of what they hold stays in
 // memory. The result is read as a whole, also when little of it is shown, so
-// that damage to it is found.
-func shownValue(typ string, n int, read reading) any {
+// that damage to it is found. The error is that of reading.
+func shownValue(typ string, n int, read reading) (any, error) {
 	var out any
 	var err error
 	slice, known := shown[typ]
@@ -72,12 +72,12 @@ func shownValue(typ string, n int, read reading) any {
 		out, err = shownTree(read)
 	}
 	if err != nil {
-		return nil
+		return nil, err
 	}
 	if l, ok := reports.LightOf(out); ok {
-		return l
+		return l, nil
 	}
-	return out
+	return out, nil
 }
 
 // shownSlice decodes a list of a type that is known here; nil when it has

@@ -42,26 +42,27 @@ func listOf[T any](t *testing.T, typ string, items ...T) (slice string, n int, r
 func TestShownValue(t *testing.T) {
 	points := []spectrum.Point{{Depth: 0.01, Flag: "a"}, {Depth: 0.02}, {Depth: 0.03}}
 	typ, n, read := listOf(t, "rimlight/steps/spectrum.Point", points...)
-	if got := shownValue(typ, n, read); !reflect.DeepEqual(got, points) {
+	if got, err := shownValue(typ, n, read); err != nil || !reflect.DeepEqual(got, points) {
 		t.Errorf("points are shown as %+v", got)
 	}
 	typ, n, read = listOf(t, "rimlight/steps/spectrum.Point", struct{ Depth float64 }{1}, struct{ Depth float64 }{2})
-	if got := shownValue(typ, n, read); got != nil {
+	if got, err := shownValue(typ, n, read); err != nil || got != nil {
 		t.Errorf("points of another layout are shown as %+v", got)
 	}
 	fits := []fit.CurveFit{{Channel: lightcurve.Channel{Index: 4, Lo: 1, Hi: 2}, Time: []float64{1, 2}}, {Channel: lightcurve.Channel{Index: 5, Lo: 2, Hi: 3}}, {}}
 	typ, n, read = listOf(t, "rimlight/steps/fit.CurveFit", fits...)
 	want, _ := reports.LightOf(fits)
-	if got, ok := shownValue(typ, n, read).(reports.Light); !ok || got.Integrations != want.Integrations || !reflect.DeepEqual(got.Channels, want.Channels) || len(got.Scatter) != 3 {
+	got, err := shownValue(typ, n, read)
+	if got, ok := got.(reports.Light); err != nil || !ok || got.Integrations != want.Integrations || !reflect.DeepEqual(got.Channels, want.Channels) || len(got.Scatter) != 3 {
 		t.Errorf("fits are shown as %+v, expected %+v", got, want)
 	}
 	typ, n, read = listOf(t, "main.pair", struct{ A, B int }{1, 2}, struct{ A, B int }{3, 4})
-	if got := shownValue(typ, n, read); !reflect.DeepEqual(got, []any{map[string]any{"A": int64(1), "B": int64(2)}, map[string]any{"A": int64(3), "B": int64(4)}}) {
+	if got, err := shownValue(typ, n, read); err != nil || !reflect.DeepEqual(got, []any{map[string]any{"A": int64(1), "B": int64(2)}, map[string]any{"A": int64(3), "B": int64(4)}}) {
 		t.Errorf("values of a recipe's own type are shown as %+v", got)
 	}
 	large := struct{ A string }{strings.Repeat("x", maxShown/2+1)}
 	typ, n, read = listOf(t, "main.text", large, large)
-	if got := shownValue(typ, n, read); got != nil {
+	if got, err := shownValue(typ, n, read); err != nil || got != nil {
 		t.Error("a large value of a recipe's own type is shown")
 	}
 }

@@ -1,7 +1,9 @@
 package command
 
 import (
+	"errors"
 	"fmt"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"sort"
@@ -42,26 +44,31 @@ type holding struct {
 	needed []string // reports, by their folders
 }
 
-// holdings lists what a store holds, oldest first.
-func holdings(s *store.Store, more []string) ([]holding, error) {
-	runs, err := s.Runs()
+// holdings lists what a store holds, oldest first. The flaws are why it may not
+// be known who needs it.
+func holdings(s *store.Store, more []string) (out []holding, flaws []error, err error) {
+	runs, flaws, err := s.Runs()
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	for _, m := range more {
 		if st, err := os.Stat(m); err == nil && st.IsDir() {
 			m = filepath.Join(m, recordFile)
 		}
 		if _, err := record.Read(m); err != nil {
-			return nil, err
+			return nil, nil, err
 		}
 		runs = append(runs, m)
 	}
 	needed := map[store.Key][]string{}
 	for _, run := range runs {
 		r, err := record.Read(run)
-		if err != nil {
+		if errors.Is(err, fs.ErrNotExist) {
 			continue // the report is gone, and needs nothing
+		}
+		if err != nil {
+			flaws = append(flaws, fmt.Errorf("what the report beside %s needs cannot be told: %w; run its recipe again, or delete the file if nobody needs the report", run, err))
+			continue
 		}
 		for _, k := range r.Keys() {
 			if list := needed[k]; len(list) == 0 || list[len(list)-1] != filepath.Dir(run) {
@@ -71,9 +78,8 @@ func holdings(s *store.Store, more []string) ([]holding, error) {
 	}
 	keys, err := s.Keys()
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	var out []holding
 	for _, k := range keys {
 		e, ok, _ := s.Entry(k)
 		if ok {
@@ -81,7 +87,7 @@ func holdings(s *store.Store, more []string) ([]holding, error) {
 		}
 	}
 	sort.SliceStable(out, func(i, j int) bool { return out[i].Written.Before(out[j].Written) })
-	return out, nil
+	return out, flaws, nil
 }
 
 func (a *app) storeListCommand() *cobra.Command {
@@ -95,9 +101,12 @@ func (a *app) storeListCommand() *cobra.Command {
 			if err != nil {
 				return err
 			}
-			list, err := holdings(s, nil)
+			list, flaws, err := holdings(s, nil)
 			if err != nil {
 				return err
+			}
+			for _, f := range flaws {
+				fmt.Fprintln(a.stderr, "note:", f)
 			}
 			type group struct {
 				name   string
@@ -231,7 +240,7 @@ func (a *app) storeTrimCommand() *cobra.Command {
 		Long: `Trim shows which results no report needs, and takes them out with --remove. A
 report is known to the store as long as its run.json is where the run wrote it;
 further ones are named with --keep. Results that a report needs stay, whatever
-their age and size. Do not trim while a run is going on.`,
+their age and size. While a run uses the store, nothing is taken out of it.`,
 		Example: "  rimlight store trim rimlight.store --older 30d\n  rimlight store trim rimlight.store --size 2GB --remove",
 		Args:    cobra.ExactArgs(1),
 		RunE: func(c *cobra.Command, args []string) error {
@@ -254,9 +263,22 @@ their age and size. Do not trim while a run is going on.`,
 }
 
 func (a *app) trim(s *store.Store, keep []string, age time.Duration, most int64, remove bool) error {
-	list, err := holdings(s, keep)
+	if remove {
+		release, err := s.Alone()
+		if err != nil {
+			return err
+		}
+		defer release()
+	}
+	list, flaws, err := holdings(s, keep)
 	if err != nil {
 		return err
+	}
+	for _, f := range flaws {
+		fmt.Fprintln(a.stderr, "rimlight:", f)
+	}
+	if remove && len(flaws) > 0 {
+		return &exit{status: ExitFailed, cause: errors.New("nothing was taken out, since it could be what a report needs")}
 	}
 	now := time.Now()
 	total := int64(0)
@@ -264,17 +286,24 @@ func (a *app) trim(s *store.Store, keep []string, age time.Duration, most int64,
 		total += h.Size
 	}
 	live := map[store.Hash]bool{}
-	count, freed := 0, int64(0)
+	var going []holding
+	freed := int64(0)
 	for _, h := range list {
 		stays := len(h.needed) > 0 || age > 0 && now.Sub(h.Written) < age || most > 0 && total-freed <= most
-		if stays {
-			for _, o := range engine.Live(s, h.Record) {
-				live[o] = true
-			}
+		if !stays {
+			going = append(going, h)
+			freed += h.Size
 			continue
 		}
-		count++
-		freed += h.Size
+		objects, err := engine.Live(s, h.Record)
+		if err != nil {
+			return err
+		}
+		for _, o := range objects {
+			live[o] = true
+		}
+	}
+	for _, h := range going {
 		fmt.Fprintf(a.stdout, "%-34s %s  %10s  %s\n", title(h.Record.Text), h.Record.Key.String()[:12], bytesText(h.Size), h.Written.Format("2006-01-02 15:04"))
 		if remove {
 			if err := s.Remove(h.Record.Key); err != nil {
@@ -290,7 +319,7 @@ func (a *app) trim(s *store.Store, keep []string, age time.Duration, most int64,
 	if remove {
 		verb = "taken out"
 	}
-	fmt.Fprintf(a.stdout, "%d results and %d files of %s %s\n", count, files, bytesText(size), verb)
+	fmt.Fprintf(a.stdout, "%d results and %d files of %s %s\n", len(going), files, bytesText(size), verb)
 	return nil
 }
 

@@ -12,6 +12,8 @@ import (
 	"os"
 	"path/filepath"
 	"reflect"
+	"slices"
+	"strings"
 	"sync"
 	"time"
 
@@ -178,9 +180,13 @@ func (e *Engine) Run(ctx context.Context) *Outcome {
 	}
 	all.Wait()
 	e.outcome.Interrupted = ctx.Err() != nil
-	e.outcome.Notes = e.notes
+	e.outcome.Notes = e.Notes()
 	e.outcome.Differs = e.differs
-	return e.outcome
+	// A copy, since results that are damaged when they are read for the report
+	// are computed again.
+	out := *e.outcome
+	out.Inputs, out.Steps = slices.Clone(out.Inputs), slices.Clone(out.Steps)
+	return &out
 }
 
 // ready waits for everything that step i needs and reports whether it is all
@@ -220,6 +226,21 @@ func (e *Engine) note(format string, args ...any) {
 	e.watch.Lock()
 	defer e.watch.Unlock()
 	e.notes = append(e.notes, fmt.Sprintf(format, args...))
+}
+
+// Notes tells what happened to the store: damage found and healed, and results
+// that came out differently. Reading results after Run can add to it.
+func (e *Engine) Notes() []string {
+	e.watch.Lock()
+	defer e.watch.Unlock()
+	out := slices.Clone(e.notes)
+	told := strings.Join(out, "\n")
+	for _, d := range e.Store.Damage() {
+		if !strings.Contains(told, d.Path) {
+			out = append(out, d.Error())
+		}
+	}
+	return out
 }
 
 // lookUp fills c from the store when the result of its key is known and whole.
@@ -377,6 +398,15 @@ func (c contextReader) Read(p []byte) (int, error) {
 		return 0, err
 	}
 	return c.r.Read(p)
+}
+
+// damages is one error for what is wrong with several objects of a value. The
+// store remembers each.
+func damages(flaws []error) error {
+	if len(flaws) == 1 {
+		return flaws[0]
+	}
+	return fmt.Errorf("%d kept results are damaged or missing, the first: %w", len(flaws), flaws[0])
 }
 
 // damaged reports whether reading a kept result failed for reasons that

@@ -3,17 +3,20 @@ package engine
 import "rimlight/runner/store"
 
 // Live gives the objects that a record holds on to: its results and, of lists,
-// their elements. Objects that are missing or damaged are left out.
-func Live(s *store.Store, r store.Record) []store.Hash {
-	var out []store.Hash
+// their elements. What is missing or damaged holds on to nothing; a list that
+// cannot be read for another reason is an error.
+func Live(s *store.Store, r store.Record) (out []store.Hash, err error) {
 	for _, res := range r.Results {
 		out = append(out, res.Hash)
 		if !isList(res.Layout) {
 			continue
 		}
 		b, err := s.Get(res.Hash)
-		if err != nil {
+		if damaged(err) {
 			continue
+		}
+		if err != nil {
+			return nil, err
 		}
 		parts, err := parseList(b)
 		if err != nil {
@@ -23,5 +26,5 @@ func Live(s *store.Store, r store.Record) []store.Hash {
 			out = append(out, p.hash)
 		}
 	}
-	return out
+	return out, nil
 }

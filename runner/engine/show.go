@@ -26,14 +26,23 @@ func (e *Engine) parts(v Value, each func(i int, sealed []byte) error) error {
 			return err
 		}
 	}
+	var flaws []error // all of them, so that they are mended together
 	for i, item := range items {
 		b, err := sealed(e.Store, item)
-		if err != nil {
+		switch {
+		case damaged(err):
+			flaws = append(flaws, err)
+		case err != nil:
+			return err
+		case len(flaws) == 0:
+			err = each(i, b)
+		}
+		if err != nil && len(flaws) == 0 {
 			return err
 		}
-		if err := each(i, b); err != nil {
-			return err
-		}
+	}
+	if len(flaws) > 0 {
+		return damages(flaws)
 	}
 	return nil
 }

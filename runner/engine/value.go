@@ -169,14 +169,20 @@ func sealed(s *store.Store, v Value) ([]byte, error) {
 		return s.Get(v.Hash)
 	}
 	items := make([][]byte, len(v.parts))
+	var flaws []error // all of them, so that they are mended together
 	for i, p := range v.parts {
 		b, err := s.Get(p.hash)
-		if err != nil {
+		if err == nil {
+			_, _, items[i], err = canon.Open(b)
+		}
+		if damaged(err) {
+			flaws = append(flaws, err)
+		} else if err != nil {
 			return nil, err
 		}
-		if _, _, items[i], err = canon.Open(b); err != nil {
-			return nil, err
-		}
+	}
+	if len(flaws) > 0 {
+		return nil, damages(flaws)
 	}
 	data, err := canon.Join(v.Layout[len("[]"):], items)
 	if err != nil {
@@ -244,14 +250,20 @@ func collect(s *store.Store, typ, layout string, items []Value) (Value, error) {
 		return v, err
 	}
 	data := make([][]byte, len(items))
+	var flaws []error // all of them, so that they are mended together
 	for i, v := range items {
 		b, err := sealed(s, v)
-		if err != nil {
+		if err == nil {
+			_, _, data[i], err = canon.Open(b)
+		}
+		if damaged(err) {
+			flaws = append(flaws, err)
+		} else if err != nil {
 			return Value{}, err
 		}
-		if _, _, data[i], err = canon.Open(b); err != nil {
-			return Value{}, err
-		}
+	}
+	if len(flaws) > 0 {
+		return Value{}, damages(flaws)
 	}
 	joined, err := canon.Join(layout, data)
 	if err != nil {

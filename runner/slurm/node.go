@@ -76,6 +76,14 @@ func (b *batch) carry(ctx context.Context, n int, who string, p *reporter, log i
 	if err != nil {
 		return err
 	}
+	release, notes, err := s.Use(ctx)
+	if err != nil {
+		return err
+	}
+	defer release()
+	for _, n := range notes {
+		fmt.Fprintf(log, "%s %s\n", stamp(), n)
+	}
 	probe, err := worker.Start(ctx, w.Limits.Checking())
 	if err != nil {
 		return err
@@ -98,6 +106,9 @@ func (b *batch) carry(ctx context.Context, n int, who string, p *reporter, log i
 		}
 		p.lines <- r
 	})
+	for _, n := range e.Notes() {
+		fmt.Fprintf(log, "%s %s\n", stamp(), n)
+	}
 	fmt.Fprintf(log, "%s %d of %d units have results\n", stamp(), done, len(w.Units))
 	return err
 }

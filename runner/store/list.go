@@ -74,7 +74,7 @@ func (s *Store) Remove(k Key) error {
 // a running process has just put, and whose record is yet to come, are safe as
 // long as the time lies before its start.
 func (s *Store) Sweep(keep map[Hash]bool, before time.Time, dry bool) (files int, bytes int64, err error) {
-	for _, dir := range []string{"objects", "tmp", "damaged"} {
+	for _, dir := range []string{"objects", "tmp", "damaged", using} {
 		err := filepath.WalkDir(filepath.Join(s.dir, dir), func(path string, d fs.DirEntry, err error) error {
 			if errors.Is(err, fs.ErrNotExist) {
 				return nil

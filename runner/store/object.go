@@ -6,6 +6,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"syscall"
 )
@@ -15,16 +16,16 @@ import (
 type DamagedError struct {
 	Hash   Hash
 	Path   string // where it was
-	Aside  string // where it is now; empty when it could not be moved
+	Aside  string // where it is now; empty when it was not moved
 	Reason string
 }
 
 func (e *DamagedError) Error() string {
 	s := fmt.Sprintf("the kept result %s is damaged: %s", e.Path, e.Reason)
 	if e.Aside != "" {
-		return s + "; it was set aside as " + e.Aside
+		s += "; it was set aside as " + e.Aside
 	}
-	return s + "; it could not be set aside"
+	return s
 }
 
 // Put keeps data and gives its name. When it returns without an error, the
@@ -42,6 +43,14 @@ func (s *Store) Put(data []byte) (Hash, error) {
 // calls, as it waits for the disk but once. Each object is kept or not; after
 // an error some may have been.
 func (s *Store) PutBatch(data [][]byte) ([]Hash, error) {
+	hashes, err := s.putBatch(data)
+	if errors.Is(err, fs.ErrNotExist) { // the store was deleted on the way
+		hashes, err = s.putBatch(data)
+	}
+	return hashes, err
+}
+
+func (s *Store) putBatch(data [][]byte) ([]Hash, error) {
 	hashes := make([]Hash, len(data))
 	var staged []string // temporary files
 	var missing []Hash  // the object in each
@@ -78,7 +87,7 @@ func (s *Store) PutBatch(data [][]byte) ([]Hash, error) {
 		}
 	}
 	for _, h := range missing {
-		if err := s.files.rename(staged[0], s.objectPath(h)); err != nil {
+		if err := s.rename(staged[0], s.objectPath(h)); err != nil {
 			return nil, s.explain(err)
 		}
 		staged = staged[1:]
@@ -129,7 +138,23 @@ func (s *Store) Get(h Hash) ([]byte, error) {
 			return data, err
 		}
 	}
-	return nil, &DamagedError{h, path, aside, flaw}
+	found := DamagedError{h, path, aside, flaw}
+	if aside == "" {
+		found.Reason += "; it could not be set aside"
+	} else {
+		s.mu.Lock()
+		s.damage = append(s.damage, found)
+		s.mu.Unlock()
+	}
+	return nil, &found
+}
+
+// Damage lists the damaged objects that were set aside since the store was
+// opened, also those that were found only because they were put again.
+func (s *Store) Damage() []DamagedError {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return slices.Clone(s.damage)
 }
 
 // readObject gives an object that is as it should be, or its flaw, or an error

@@ -229,6 +229,45 @@ func TestWriteFaults(t *testing.T) {
 	}
 }
 
+// TestLostAnswers has a network file system do what it is asked, and say that it
+// was done already, or that there is nothing to do it with.
+func TestLostAnswers(t *testing.T) {
+	s := open(t)
+	s.files.rename = func(from, to string) error {
+		if err := os.Rename(from, to); err != nil {
+			return err
+		}
+		return &os.LinkError{Op: "rename", Old: from, New: to, Err: syscall.ENOENT}
+	}
+	s.files.link = func(from, to string) error {
+		if err := os.Link(from, to); err != nil {
+			return err
+		}
+		return &os.LinkError{Op: "link", Old: from, New: to, Err: syscall.EEXIST}
+	}
+	h := put(t, s, "depth", "error")
+	if err := s.SetRecord(record("one", "depth", h[0])); err != nil {
+		t.Error(err)
+	}
+	for _, err := range s.SetRecords([]Record{record("two", "depth", h[0]), record("three", "depth", h[1])}) {
+		if err != nil {
+			t.Error(err)
+		}
+	}
+	if hints, errs, err := s.Verify(nil); len(hints)+len(errs) > 0 || err != nil {
+		t.Errorf("%v, %v, %v", hints, errs, err)
+	}
+	if n, left := len(tree(t, s, "records")), tree(t, s, "tmp"); n != 3 || len(left) > 0 {
+		t.Errorf("%d records, and left are %v", n, left)
+	}
+	s.files.rename = func(from, to string) error {
+		return &os.LinkError{Op: "rename", Old: from, New: to, Err: syscall.ENOENT}
+	}
+	if _, err := s.Put([]byte("new")); err == nil || !strings.Contains(err.Error(), "was deleted, or a part of it, while it was in use: run again") {
+		t.Errorf("with a file gone: %v", err)
+	}
+}
+
 // TestFullDisk fills a real file system.
 func TestFullDisk(t *testing.T) {
 	if os.Getuid() != 0 {

@@ -2,6 +2,7 @@ package store
 
 import (
 	"errors"
+	"fmt"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -20,24 +21,30 @@ func (s *Store) Register(recordFile string) error {
 	if old, err := s.files.read(name); err == nil && string(old) == path+"\n" {
 		return nil
 	}
-	return s.write(name, []byte(path+"\n"), 0o644, s.files.rename)
+	return s.write(name, []byte(path+"\n"), 0o644, s.rename)
 }
 
 // Runs lists the record files of registered runs, in order, also of those that
-// are no longer there.
-func (s *Store) Runs() ([]string, error) {
+// are no longer there. Registrations that are damaged are among the flaws: which
+// run they are of cannot be told.
+func (s *Store) Runs() (runs []string, flaws []error, err error) {
 	entries, err := os.ReadDir(filepath.Join(s.dir, "runs"))
 	if err != nil && !errors.Is(err, fs.ErrNotExist) {
-		return nil, err
+		return nil, nil, err
 	}
-	var out []string
 	for _, e := range entries {
-		b, err := s.files.read(filepath.Join(s.dir, "runs", e.Name()))
+		file := filepath.Join(s.dir, "runs", e.Name())
+		b, err := s.files.read(file)
 		if err != nil {
-			return nil, err
+			return nil, nil, err
 		}
-		out = append(out, strings.TrimSuffix(string(b), "\n"))
+		path := strings.TrimSuffix(string(b), "\n")
+		if string(b) != path+"\n" || HashOf([]byte(path)).Short() != e.Name() {
+			flaws = append(flaws, fmt.Errorf("%s is damaged: it should name the run.json of a report that needs results of this store; run the recipe of that report again, or delete the file if there is no such report", file))
+			continue
+		}
+		runs = append(runs, path)
 	}
-	sort.Strings(out)
-	return out, nil
+	sort.Strings(runs)
+	return runs, flaws, nil
 }

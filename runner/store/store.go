@@ -20,6 +20,7 @@ type Store struct {
 
 	mu      sync.Mutex
 	durable map[string]bool // folders whose own names this process has synced
+	damage  []DamagedError  // what was set aside
 }
 
 const (
@@ -29,7 +30,10 @@ const (
 	readmeFile = "README.txt"
 )
 
+// readme is part of the format: where the mark is damaged, it vouches for it.
+// A format with another number needs another text.
 const readme = `This folder keeps results of rimlight, so that they need not be computed again.
+It is a result store of format 1.
 
 Every file under objects/ is named by the SHA-256 of its content. Every file
 under records/ says which objects a computation gave, and what it depended on.
@@ -37,6 +41,8 @@ Reports do not need this folder. It may be deleted as a whole; what was in it
 is then computed again when it is needed. Single files must not be edited: that
 is noticed, and the file is set aside in damaged/, where it may be deleted.
 `
+
+var markContent = fmt.Sprintf("%s%d\n", markText, formatMade)
 
 // Open opens the store in a folder, which it makes if there is none. A folder
 // that holds something else, or a store of an unknown format, is refused. A
@@ -51,13 +57,15 @@ func Open(dir string) (*Store, error) {
 	}
 	s := &Store{dir: dir, now: time.Now, files: realFiles, durable: map[string]bool{}}
 	mark, err := os.ReadFile(filepath.Join(dir, markFile))
-	if errors.Is(err, fs.ErrNotExist) {
+	switch {
+	case err == nil && s.vouched():
+		return s, nil // and if the mark is damaged, Verify says so, and Use mends it
+	case errors.Is(err, fs.ErrNotExist):
 		if err := s.create(); err != nil {
 			return nil, err
 		}
 		return s, nil
-	}
-	if err != nil {
+	case err != nil:
 		return nil, fmt.Errorf("the result store %s cannot be opened: %w", dir, err)
 	}
 	return s, checkMark(dir, string(mark))
@@ -66,12 +74,52 @@ func Open(dir string) (*Store, error) {
 // Dir is the folder of the store, an absolute path.
 func (s *Store) Dir() string { return s.dir }
 
+// vouched reports whether the file for people says that this is a store of the
+// format that this program knows.
+func (s *Store) vouched() bool {
+	text, err := s.files.read(filepath.Join(s.dir, readmeFile))
+	return err == nil && string(text) == readme
+}
+
+// frame gives the flaws of the files that make the folder a store.
+func (s *Store) frame() []error {
+	var flaws []error
+	for _, f := range []struct{ name, text string }{{readmeFile, readme}, {markFile, markContent}} {
+		path := filepath.Join(s.dir, f.name)
+		text, err := s.files.read(path)
+		if err == nil && string(text) != f.text {
+			err = fmt.Errorf("%s is damaged: its %d bytes are not those of a store of format %d", path, len(text), formatMade)
+		}
+		if err != nil {
+			flaws = append(flaws, err)
+		}
+	}
+	return flaws
+}
+
+// mend writes the files again that make the folder a store, and says what was
+// wrong with them.
+func (s *Store) mend() (notes []string) {
+	flaws := s.frame()
+	if len(flaws) == 0 {
+		return nil
+	}
+	end := "; it was written again"
+	if err := s.begin(); err != nil {
+		end = "; it could not be written again: " + err.Error()
+	}
+	for _, f := range flaws {
+		notes = append(notes, f.Error()+end)
+	}
+	return notes
+}
+
 func checkMark(dir, mark string) error {
 	format, ok := strings.CutPrefix(mark, markText)
 	n, err := strconv.Atoi(strings.TrimSuffix(format, "\n"))
 	switch {
 	case !ok || err != nil:
-		return fmt.Errorf("the file %s should begin with %q, but holds %.60q: choose another folder with --store", filepath.Join(dir, markFile), markText, mark)
+		return fmt.Errorf("the file %s should begin with %q, but holds %.60q: choose another folder with --store, or, if this is a store and that file was damaged, write %q into it", filepath.Join(dir, markFile), markText, mark, markContent)
 	case n != formatMade:
 		return fmt.Errorf("the result store %s has format %d, but this program knows format %d only: choose another folder with --store, or use the program that made it", dir, n, formatMade)
 	}
@@ -84,6 +132,9 @@ func (s *Store) create() error {
 	entries, err := os.ReadDir(s.dir)
 	if err != nil && !errors.Is(err, fs.ErrNotExist) {
 		return fmt.Errorf("no result store can be made in %s: %w", s.dir, err)
+	}
+	if s.vouched() {
+		entries = nil // a store whose mark was lost, or is about to be made
 	}
 	for _, e := range entries {
 		if s.leftByCreate(e) {
@@ -100,21 +151,16 @@ func (s *Store) create() error {
 // leftByCreate reports whether an entry of the folder can be there because
 // somebody is making a store in it, or was stopped in that.
 func (s *Store) leftByCreate(e fs.DirEntry) bool {
-	path := filepath.Join(s.dir, e.Name())
-	switch e.Name() {
-	case readmeFile:
-		text, err := os.ReadFile(path)
-		return err == nil && string(text) == readme
-	case "tmp":
-		entries, err := os.ReadDir(path)
-		for _, e := range entries {
-			if !strings.HasPrefix(e.Name(), tmpPrefix) {
-				return false
-			}
-		}
-		return err == nil
+	if e.Name() != "tmp" {
+		return false
 	}
-	return false
+	staged, err := os.ReadDir(filepath.Join(s.dir, "tmp"))
+	for _, e := range staged {
+		if !strings.HasPrefix(e.Name(), tmpPrefix) {
+			return false
+		}
+	}
+	return err == nil
 }
 
 // begin makes the folder a store.
@@ -123,8 +169,8 @@ func (s *Store) begin() error {
 		return fmt.Errorf("no result store can be made in %s: %w", s.dir, err)
 	}
 	// the mark comes last: with it, the folder is a store
-	for _, f := range []struct{ name, text string }{{readmeFile, readme}, {markFile, fmt.Sprintf("%s%d\n", markText, formatMade)}} {
-		if err := s.write(filepath.Join(s.dir, f.name), []byte(f.text), 0o644, s.files.rename); err != nil {
+	for _, f := range []struct{ name, text string }{{readmeFile, readme}, {markFile, markContent}} {
+		if err := s.write(filepath.Join(s.dir, f.name), []byte(f.text), 0o644, s.rename); err != nil {
 			return err
 		}
 	}

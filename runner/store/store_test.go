@@ -78,6 +78,60 @@ func TestOpenRefuses(t *testing.T) {
 	}
 }
 
+// TestMark damages or removes the mark of a store, or the text beside it, and
+// holds that the store can still be opened, that verifying tells, and that its
+// use mends it; but not when both are damaged, or the mark is that of another
+// format.
+func TestMark(t *testing.T) {
+	for _, c := range []struct {
+		name, mark, text string
+		opens            bool
+	}{
+		{"sound", markContent, readme, true},
+		{"another digit", "rimlight result store, format 3\n", readme, true},
+		{"another letter", "rimlight result stoze, format 1\n", readme, true},
+		{"empty mark", "", readme, true},
+		{"no mark", "none", readme, true},
+		{"damaged text", markContent, readme[1:], true},
+		{"no text", markContent, "none", true},
+		{"both damaged", "rimlight result stoze, format 1\n", readme[1:], false},
+		{"another format", "rimlight result store, format 2\n", strings.Replace(readme, "format 1", "format 2", 1), false},
+		{"mark lost and text damaged", "none", readme[1:], false},
+	} {
+		s := open(t)
+		h := put(t, s, "depth")[0]
+		for name, text := range map[string]string{markFile: c.mark, readmeFile: c.text} {
+			path := filepath.Join(s.dir, name)
+			if text == "none" {
+				if err := os.Remove(path); err != nil {
+					t.Fatal(err)
+				}
+				continue
+			}
+			replace(t, path, []byte(text))
+		}
+		again, err := Open(s.dir)
+		if (err == nil) != c.opens {
+			t.Errorf("%s: %v", c.name, err)
+		}
+		if err != nil {
+			continue
+		}
+		_, errs, err := again.Verify(nil)
+		if sound := c.name == "sound" || c.name == "no mark"; err != nil || (len(errs) == 0) != sound {
+			t.Errorf("%s: verifying says %v, %v", c.name, errs, err)
+		}
+		release, notes, err := again.Use(t.Context())
+		if err != nil || len(notes) != len(errs) {
+			t.Errorf("%s: using it says %q, %v; verifying %v", c.name, notes, err, errs)
+		}
+		release()
+		if hints, errs, err := again.Verify(nil); len(hints)+len(errs) > 0 || err != nil || !again.Has(h) {
+			t.Errorf("%s: after that, verifying says %v, %v, %v", c.name, hints, errs, err)
+		}
+	}
+}
+
 // TestOpenAfterInterruption opens a folder in which somebody was stopped while
 // making a store.
 func TestOpenAfterInterruption(t *testing.T) {

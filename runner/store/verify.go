@@ -15,8 +15,8 @@ import (
 const leftOver = time.Hour
 
 // Verify reads and checks everything in the store, and changes nothing. Errors
-// are losses: damaged objects and records, and objects that a record names but
-// that are missing. Hints are worth knowing and do no harm: computations that
+// are losses: damaged files, and objects that a record names but that are
+// missing. Hints are worth knowing and do no harm: computations that
 // were not reproducible, files that were set aside or left in tmp/, and
 // files that do not belong here. Progress, which may be nil, is told how many
 // files of how many are done. The last error says why the store could not be
@@ -30,6 +30,11 @@ func (s *Store) Verify(progress func(done, total int)) (hints, errs []error, err
 	if err != nil {
 		return nil, nil, err
 	}
+	_, flaws, err := s.Runs()
+	if err != nil {
+		return nil, nil, err
+	}
+	errs = append(s.frame(), flaws...)
 	done, total := 0, len(objects)+len(records)
 	tick := func() {
 		if done++; progress != nil {
@@ -118,7 +123,7 @@ func (s *Store) verifyRecord(path string) (hints, errs []error) {
 
 // leftovers are the files that were set aside or never finished.
 func (s *Store) leftovers() (hints []error, err error) {
-	for _, place := range [][2]string{{"damaged", "was set aside as damaged"}, {"tmp", "was left by a run that was stopped"}} {
+	for _, place := range [][2]string{{"damaged", "was set aside as damaged"}, {"tmp", "was left by a run that was stopped"}, {using, "was left by a run that was stopped"}} {
 		dir, about := place[0], place[1]
 		entries, err := os.ReadDir(filepath.Join(s.dir, dir))
 		if err != nil && !errors.Is(err, fs.ErrNotExist) {
@@ -126,7 +131,7 @@ func (s *Store) leftovers() (hints []error, err error) {
 		}
 		for _, e := range entries {
 			st, err := e.Info()
-			if err != nil || dir == "tmp" && s.now().Sub(st.ModTime()) < leftOver {
+			if err != nil || dir != "damaged" && s.now().Sub(st.ModTime()) < leftOver {
 				continue // gone, or perhaps being written
 			}
 			hints = append(hints, fmt.Errorf("%s %s; it can be deleted", filepath.Join(s.dir, dir, e.Name()), about))

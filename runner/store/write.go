@@ -122,6 +122,20 @@ func (s *Store) flush(paths []string) error {
 	return nil
 }
 
+// rename gives a finished file its name. A network file system may do it, lose
+// the answer, ask again and then find no such file: what counts is whether
+// the new name has the file that had the old one.
+func (s *Store) rename(from, to string) error {
+	was, _ := os.Stat(from)
+	err := s.files.rename(from, to)
+	if errors.Is(err, fs.ErrNotExist) && was != nil {
+		if is, e := os.Stat(to); e == nil && os.SameFile(was, is) {
+			return nil
+		}
+	}
+	return err
+}
+
 // exclusively names a finished file unless the name is taken: the error is
 // then fs.ErrExist. Of several processes, one succeeds. Where the file system
 // has no hard links, the last one does.
@@ -134,7 +148,7 @@ func (s *Store) exclusively(from, to string) error {
 	if _, e := os.Lstat(to); e == nil {
 		return fs.ErrExist
 	}
-	return s.files.rename(from, to)
+	return s.rename(from, to)
 }
 
 // folder makes sure that a folder is there and will be there after a loss of
@@ -188,6 +202,9 @@ func (s *Store) explain(err error) error {
 		return fmt.Errorf("the result store %s is full: make room on its disk, or choose another folder with --store (%w)", s.dir, err)
 	case errors.Is(err, fs.ErrPermission) || errors.Is(err, syscall.EROFS):
 		return fmt.Errorf("the result store %s cannot be written to: choose another folder with --store (%w)", s.dir, err)
+	}
+	if errors.Is(err, fs.ErrNotExist) {
+		return fmt.Errorf("the result store %s was deleted, or a part of it, while it was in use: run again (%w)", s.dir, err)
 	}
 	return fmt.Errorf("the result store %s failed: %w", s.dir, err)
 }
