@@ -131,9 +131,8 @@ func (c *curve) flux(since float64) float64 {
 	if !front || z >= 1+c.radius {
 		return 1
 	}
-	var d deficits
-	d.cover(c.radius, z, false)
-	return 1 - c.law.weigh(&d.value)
+	flux, _, _, _, _ := c.law.gradient(c.radius, z)
+	return flux
 }
 
 // gradient returns the flux at a time since mid-transit and stores its

@@ -4,51 +4,89 @@ import "math"
 
 const (
 	// agmTolerance ends the arithmetic-geometric mean, which converges
-	// quadratically: the remaining error is its square, below rounding.
-	agmTolerance = 1e-8
+	// quadratically: what remains is its square over 16, below rounding.
+	agmTolerance = 5e-8
 	// agmSteps bounds the mean; moduli down to 1e-16 take 9 steps.
 	agmSteps = 16
+	// leastSquare bounds from below the squared modulus that divides terms of
+	// its fourth power.
+	leastSquare = 1e-14
 )
 
-// elliptic returns, for 0 < kc ≤ 1 and p > 0, with Δ = √(cos²x + kc² sin²x) and
-// integrals over x from 0 to π/2,
+// integrals are the three complete elliptic integrals of one separation. With
+// 0 < kc ≤ 1, k2 = 1 - kc², q > 0 and Δ = √(cos²x + kc² sin²x), over x from 0 to
+// π/2,
 //
-//	third = ∫ (a cos²x + b sin²x) / ((cos²x + p sin²x) Δ) dx,
+//	third = ∫ (a cos²x + b q sin²x) / ((cos²x + q² sin²x) Δ) dx,
 //	cosine = ∫ cos²x/Δ dx,
-//	sine = ∫ sin²x/Δ dx.
+//	sine = ∫ sin²x/Δ dx,
+//	margin = cosine - kc² sine.
 //
-// These are cel(kc,p,a,b), cel(kc,1,1,0) and cel(kc,1,0,1) of Bulirsch (1969),
-// computed with one arithmetic-geometric mean.
-func elliptic(kc, p, a, b float64) (third, cosine, sine float64) {
-	m, e := 1.0, kc
-	p = math.Sqrt(p)
-	b /= p
-	ca, cb := 1.0, 0.0
-	sa, sb := 0.0, 1.0
+// These are cel(kc,q²,a,bq), cel(kc,1,1,0), cel(kc,1,0,1) and cel(kc,1,1,-kc²) of
+// Bulirsch (1969); the last keeps its digits where it vanishes, at k = 0.
+type integrals struct {
+	kc, k2, q, a, b             float64
+	third, cosine, sine, margin float64
+}
+
+// mean is the state of an arithmetic-geometric mean.
+type mean struct {
+	m, kc, diff, e, q, a, b float64 // diff = m - kc
+	sum, scale              float64
+	done                    bool
+}
+
+// solve computes a number of integrals, up to lanes, from their kc, k2, q, a and
+// b. One arithmetic-geometric mean serves the three of a separation: the last two
+// follow from the sum of its squared differences (Abramowitz & Stegun 1964,
+// 17.6), less its first term and divided by it, k².
+// A mean is a chain in which each operation waits for the one before, so the
+// means of several separations are taken side by side.
+func solve(all []integrals) {
+	var means [lanes]mean
+	for i := range all {
+		t := &all[i]
+		means[i] = mean{m: 1, kc: t.kc, diff: t.k2 / (1 + t.kc), e: t.kc, q: t.q, a: t.a, b: t.b, scale: 0.5}
+	}
 	for range agmSteps {
-		invP, invM := 1/p, 1/m
-		f := a
-		a += b * invP
-		g := e * invP
-		b = 2 * (b + f*g)
-		p += g
-		ratio := e * invM
-		f = ca
-		ca += cb * invM
-		cb = 2 * (cb + f*ratio)
-		f = sa
-		sa += sb * invM
-		sb = 2 * (sb + f*ratio)
-		g = m
-		m += kc
-		if math.Abs(g-kc) <= g*agmTolerance {
+		rest := false
+		for i := range means[:len(all)] {
+			t := &means[i]
+			if t.done {
+				continue
+			}
+			inverse := 1 / t.q
+			a := t.a
+			t.a += t.b * inverse
+			g := t.e * inverse
+			t.b = 2 * (t.b + a*g)
+			t.q += g
+			t.sum += t.scale * t.diff * t.diff
+			t.scale *= 0.5
+			limit := t.m * agmTolerance
+			t.m += t.kc
+			if t.diff <= limit {
+				t.done = true
+				continue
+			}
+			root := math.Sqrt(t.e)
+			t.kc = root + root
+			t.e = t.kc * t.m
+			t.diff = t.m - t.kc
+			rest = true
+		}
+		if !rest {
 			break
 		}
-		kc = 2 * math.Sqrt(e)
-		e = kc * m
 	}
-	h := 0.5 * math.Pi / m
-	third = h * (b + a*m) / (m + p)
-	h /= m + m
-	return third, h * (cb + ca*m), h * (sb + sa*m)
+	for i := range all {
+		t, out := &means[i], &all[i]
+		inverse := 0.5 * math.Pi / (t.m * (t.m + t.q))
+		out.third = inverse * (t.b + t.a*t.m)
+		first := 0.5 * inverse * (t.m + t.q) / t.scale // K
+		rest := t.sum / max(out.k2, leastSquare)
+		out.sine = first * (0.5 + 0.5*rest)
+		out.cosine = first - out.sine
+		out.margin = first * (0.5*out.k2 - (1-0.5*out.k2)*rest)
+	}
 }
