@@ -9,6 +9,7 @@ import (
 
 	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
+	"rimlight/steps/limb"
 	"rimlight/steps/spectrum"
 	"rimlight/steps/systematics"
 	"rimlight/steps/transit"
@@ -69,7 +70,7 @@ func modelCurve(t testing.TB, setup fit.Setup) lightcurve.Curve {
 	for i := range c.Mask {
 		c.Time = append(c.Time, setup.MidTransit+0.25*(float64(i)/500-0.5))
 	}
-	p := transit.Params{RadiusRatio: 0.1, U1: 0.3, U2: 0.2}
+	p := transit.Params{RadiusRatio: 0.1, Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{0.3, 0.2}}}
 	p.Orbit.Period, p.Orbit.MidTransit, p.Orbit.AxisRatio, p.Orbit.Inclination = setup.Period, setup.MidTransit, setup.AxisRatio, setup.Inclination*math.Pi/180
 	flux, err := transit.Curve(c.Time, p)
 	if err != nil {

@@ -215,7 +215,7 @@ func newSamples() *samples {
 		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
 		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, setup, settling, whitePriors, channelPriors,
 		posterior, whiteFit, curveFits, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},
-		transit.Params{Orbit: path, RadiusRatio: 0.12, U1: 0.3, U2: 0.2, Exposure: 280},
+		transit.Params{Orbit: path, RadiusRatio: 0.12, Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{0.3, 0.2}}, Exposure: 280},
 		diagnose.FitChecks("white light", posterior), []check.Check{},
 		[]spectrum.Note{{Name: "title", Text: "An invented planet"}, {Name: "by", Text: "no one"}},
 		fitsFile, series, spectrum.CSV(spec),

@@ -165,9 +165,9 @@ func (s *space) take(white Posterior, own *function) error {
 	}
 	// The channel's own limb darkening starts from u1 and u2, whatever the white
 	// fit used.
-	p := s.physical(&s.value)
+	u := s.physical(&s.value).Law.Coefficients
 	s.name[slotLimb1], s.name[slotLimb2] = "u1", "u2"
-	s.value[slotLimb1], s.value[slotLimb2] = p.U1, p.U2
+	s.value[slotLimb1], s.value[slotLimb2] = u[0], u[1]
 	return nil
 }
 

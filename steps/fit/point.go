@@ -24,15 +24,14 @@ func (s *solution) point(curve lightcurve.Curve, white Posterior) (spectrum.Poin
 		Channel: curve.Channel,
 		Depth:   r * r, DepthErr: 2 * r * rErr,
 		RadiusRatio: r, RadiusRatioErr: rErr,
-		Limb: []float64{params.U1, params.U2},
+		Limb: params.Law.Coefficients,
 		Chi2: s.chi2, Dof: s.dof,
 		Used: len(m.used), Masked: len(curve.Time) - len(m.used),
 		Scatter: s.scatter(),
 	}
 	for a := range 2 {
 		u := s.quantity("", "", "", func(v *[slots]float64) float64 {
-			p := m.space.physical(v)
-			return [2]float64{p.U1, p.U2}[a]
+			return m.space.physical(v).Law.Coefficients[a]
 		})
 		out.LimbErr = append(out.LimbErr, u.Err)
 	}

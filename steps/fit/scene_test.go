@@ -6,11 +6,17 @@ import (
 	"testing"
 
 	"rimlight/steps/lightcurve"
+	"rimlight/steps/limb"
 	"rimlight/steps/orbit"
 	"rimlight/steps/spectrum"
 	"rimlight/steps/systematics"
 	"rimlight/steps/transit"
 )
+
+// quadratic is a quadratic limb-darkening law.
+func quadratic(u1, u2 float64) limb.Law {
+	return limb.Law{Name: limb.Quadratic, Coefficients: []float64{u1, u2}}
+}
 
 // A scene is simulated data with what went into them. Its transits come from
 // the same code as the fit's, so that tests of the fit test the fit alone.
@@ -44,7 +50,7 @@ func newScene(t testing.TB, seed uint64, n, m int) scene {
 		f := (float64(j) + 0.5) / float64(m)
 		k := 0.11 + 0.002*math.Sin(9*f) + 0.002*(1-f)
 		u1, u2 := 0.45-0.37*f, 0.22-0.12*f
-		flux, err := transit.Curve(s.cube.Time, transit.Params{Orbit: s.orbit, RadiusRatio: k, U1: u1, U2: u2})
+		flux, err := transit.Curve(s.cube.Time, transit.Params{Orbit: s.orbit, RadiusRatio: k, Law: quadratic(u1, u2)})
 		if err != nil {
 			t.Fatal(err)
 		}

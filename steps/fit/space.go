@@ -59,7 +59,7 @@ func (s *space) rename(slot int, name string) {
 		b := p.Orbit.ImpactParameter()
 		s.value[slotShape] = max(b*b, leastShape)
 	case "q1", "q2":
-		q1, q2, err := limb.ToSquare(limb.Quadratic, p.U1, p.U2)
+		q1, q2, err := limb.ToSquare(limb.Quadratic, p.Law.Coefficients[0], p.Law.Coefficients[1])
 		if err != nil { // the start is nowhere near a star
 			q1, q2 = 0, 0.5
 		}
@@ -270,7 +270,7 @@ func (s *space) physical(v *[slots]float64) transit.Params {
 			Period: v[slotPeriod], MidTransit: s.reference + v[slotMid], AxisRatio: v[slotAxis],
 			Inclination: math.Acos(cosI), Eccentricity: e, Periastron: v[slotPeriastron],
 		},
-		RadiusRatio: v[slotRadius], U1: u1, U2: u2, Exposure: s.exposure,
+		RadiusRatio: v[slotRadius], Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{u1, u2}}, Exposure: s.exposure,
 	}
 }
 

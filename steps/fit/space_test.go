@@ -14,7 +14,7 @@ func TestChain(t *testing.T) {
 	setup := Setup{Period: 3, MidTransit: 100, AxisRatio: 9, Inclination: 87, Eccentricity: 0.3, Periastron: 40, RadiusRatio: 0.1}
 	arguments := func(p transit.Params) [9]float64 {
 		o := p.Orbit
-		return [9]float64{o.Period, o.MidTransit, o.AxisRatio, o.Inclination, o.Eccentricity, o.Periastron, p.RadiusRatio, p.U1, p.U2}
+		return [9]float64{o.Period, o.MidTransit, o.AxisRatio, o.Inclination, o.Eccentricity, o.Periastron, p.RadiusRatio, p.Law.Coefficients[0], p.Law.Coefficients[1]}
 	}
 	for _, names := range [][]string{{"inclination", "u1"}, {"impact", "u1"}, {"inclination", "q1"}, {"impact", "q1"}} {
 		s := newSpace(setup)
@@ -47,7 +47,7 @@ func TestRename(t *testing.T) {
 	s.rename(slotShape, "impact")
 	s.rename(slotLimb1, "q1")
 	after := s.physical(&s.value)
-	if math.Abs(after.Orbit.Inclination-before.Orbit.Inclination) > 1e-12 || math.Abs(after.U1-0.4) > 1e-12 || math.Abs(after.U2-0.2) > 1e-12 {
+	if math.Abs(after.Orbit.Inclination-before.Orbit.Inclination) > 1e-12 || math.Abs(after.Law.Coefficients[0]-0.4) > 1e-12 || math.Abs(after.Law.Coefficients[1]-0.2) > 1e-12 {
 		t.Errorf("%+v became %+v", before, after)
 	}
 	for slot, x := range s.value {

@@ -16,7 +16,7 @@ import (
 func quiet(t testing.TB, s scene, radius, u1, u2 float64) lightcurve.Curve {
 	t.Helper()
 	c := lightcurve.Curves(s.cube)[0]
-	flux, err := transit.Curve(c.Time, transit.Params{Orbit: s.orbit, RadiusRatio: radius, U1: u1, U2: u2})
+	flux, err := transit.Curve(c.Time, transit.Params{Orbit: s.orbit, RadiusRatio: radius, Law: quadratic(u1, u2)})
 	if err != nil {
 		t.Fatal(err)
 	}

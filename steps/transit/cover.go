@@ -16,10 +16,11 @@ const (
 	lanes = 16
 )
 
-// deficits are the integrals of 1, μ and μ² = 1-ρ² over the covered part of the
-// stellar disc, divided by π, and their derivatives by r and z.
+// deficits are the integrals of the terms of the intensity, 1, μ, μ² = 1-ρ² and
+// those of a profile, over the covered part of the stellar disc, divided by π, and
+// their derivatives by r and z.
 type deficits struct {
-	value, byR, byZ [3]float64
+	value, byR, byZ [terms]float64
 }
 
 // linear is how the integral of μ and its derivatives follow from complete
@@ -29,41 +30,58 @@ type deficits struct {
 //	byR = front (C + s S)
 //	byZ = -front/3 (M + t S)
 type linear struct {
-	lane                int // of the separation within its block
 	step                float64
 	third, cosine, sine float64
 	front, s, t         float64
 }
 
+// add completes d.
+func (l *linear) add(t *integrals, d *deficits) {
+	// Rounding may leave less than nothing covered.
+	d.value[1] = max(0, l.step+l.third*t.third+l.cosine*t.cosine+l.sine*t.sine)
+	d.byR[1] = l.front * (t.cosine + l.s*t.sine)
+	d.byZ[1] = -l.front / 3 * (t.margin + l.t*t.sine)
+}
+
 // block is up to lanes separations, for one radius.
 type block struct {
 	covered [lanes]deficits
-	n       int // separations that need elliptic integrals
 	needs   [lanes]integrals
 	linear  [lanes]linear
+	lane    [lanes]int // the element of covered that these two are for
+	edge    edge
 }
 
-// cover sets the block's covered[i] for a radius r ≥ 0 and each separation
-// z[i] ≥ 0, at most lanes of them.
-func (b *block) cover(r float64, z []float64) {
-	b.n = 0
+// cover sets the block's covered[i], as far as the profile needs it, for a radius
+// r ≥ 0 and each separation z[i] ≥ 0, at most lanes of them.
+func (b *block) cover(p *profile, r float64, z []float64) {
+	n := 0
 	for i, separation := range z {
-		b.place(i, r, separation)
+		if b.covered[i].place(p, r, separation, &b.edge, &b.linear[n], &b.needs[n]) {
+			b.lane[n] = i
+			n++
+		}
 	}
-	solve(b.needs[:b.n])
-	for i := range b.linear[:b.n] {
-		l, t := &b.linear[i], &b.needs[i]
-		d := &b.covered[l.lane]
-		// Rounding may leave less than nothing covered.
-		d.value[1] = max(0, l.step+l.third*t.third+l.cosine*t.cosine+l.sine*t.sine)
-		d.byR[1] = l.front * (t.cosine + l.s*t.sine)
-		d.byZ[1] = -l.front / 3 * (t.margin + l.t*t.sine)
+	solve(b.needs[:n])
+	for k, lane := range b.lane[:n] {
+		b.linear[k].add(&b.needs[k], &b.covered[lane])
+	}
+}
+
+// cover is that of a block for one separation; e may be nil for a profile of
+// closed terms.
+func (d *deficits) cover(p *profile, r, z float64, e *edge) {
+	var l linear
+	var t [1]integrals
+	if d.place(p, r, z, e, &l, &t[0]) {
+		solve(t[:])
+		l.add(&t[0], d)
 	}
 }
 
 // place works out all of a separation that takes no elliptic integrals, and
-// notes those that it needs.
-func (b *block) place(lane int, r, z float64) {
+// reports whether it needs some, which it then prepares.
+func (d *deficits) place(p *profile, r, z float64, e *edge, l *linear, t *integrals) bool {
 	if r > largestRadius {
 		z, r = max(z-r+largestRadius, 0), largestRadius
 	}
@@ -84,22 +102,35 @@ func (b *block) place(lane int, r, z float64) {
 	if r < 0.5 {
 		beyond = (z - 1) + r
 	}
-	d := &b.covered[lane]
 	switch {
 	case outer <= 0 || r < smallest:
 		*d = deficits{} // nothing is covered
+		return false
 	case inner <= 0:
-		*d = deficits{value: [3]float64{1, 2. / 3, 0.5}}
-	default:
-		l, t := &b.linear[b.n], &b.needs[b.n]
-		b.n++
-		l.lane = lane
-		if beyond <= 0 {
-			d.inside(r, z, outer*inner, -beyond, l, t)
-		} else {
-			d.limb(r, z, outer*inner, beyond, l, t)
-		}
+		ma, mb := p.moments()
+		*d = deficits{value: [terms]float64{1, 2. / 3, 0.5, 2 * ma, 2 * mb}}
+		return false
 	}
+	w := outer * inner // 1-(z-r)²
+	if beyond <= 0 {
+		opr := -beyond * (1 + z + r) // 1-(z+r)²
+		d.inside(r, z, w, opr, l, t)
+		if p.shape != none {
+			if !e.around(p.nodes, r, z, opr) {
+				e.graded(p.nodes, opr, 4*z*r, 0, 1)
+			}
+			e.integrate(p, r, z, d)
+		}
+		return true
+	}
+	excess := beyond * (1 + z + r) // (z+r)²-1
+	d.limb(r, z, w, excess, l, t)
+	if p.shape != none {
+		quarter := 0.25 / (z * r)
+		e.graded(p.nodes, 0, w, excess*quarter, w*quarter)
+		e.integrate(p, r, z, d)
+	}
+	return true
 }
 
 // offset returns z - r, kept away from 0, where the integral of the third kind
@@ -117,8 +148,8 @@ func offset(r, z float64) (diff, step float64) {
 }
 
 // inside is for a planet whose disc lies within the star's: w = 1-(z-r)² > 0 and
-// gap = 1-z-r ≥ 0.
-func (d *deficits) inside(r, z, w, gap float64, l *linear, t *integrals) {
+// opr = 1-(z+r)² ≥ 0.
+func (d *deficits) inside(r, z, w, opr float64, l *linear, t *integrals) {
 	r2, z2 := r*r, z*z
 	d.value[0], d.value[2] = r2, r2*(1-0.5*r2-z2)
 	d.byR[0], d.byR[2] = 2*r, 2*r*(1-z2-r2)
@@ -126,8 +157,8 @@ func (d *deficits) inside(r, z, w, gap float64, l *linear, t *integrals) {
 
 	sum := z + r
 	root, inverse := math.Sqrt(w), 1/(sum*w)
-	opr := max(gap*(1+sum), smallestModulus*smallestModulus) // 1-(z+r)²
-	kc2 := min(1, opr*sum*inverse)                           // 1 is passed by rounding at z = 0
+	opr = max(opr, smallestModulus*smallestModulus)
+	kc2 := min(1, opr*sum*inverse) // 1 is passed by rounding at z = 0
 	diff, step := offset(r, z)
 	mu := 3 * diff * inverse
 	t.kc = math.Sqrt(kc2)
@@ -145,10 +176,9 @@ func (d *deficits) inside(r, z, w, gap float64, l *linear, t *integrals) {
 }
 
 // limb is for a planet whose edge crosses the star's: w = 1-(z-r)² > 0 and
-// beyond = z+r-1 > 0.
-func (d *deficits) limb(r, z, w, beyond float64, l *linear, t *integrals) {
+// excess = (z+r)²-1 > 0.
+func (d *deficits) limb(r, z, w, excess float64, l *linear, t *integrals) {
 	diff, sum, product := z-r, z+r, z*r
-	excess := beyond * (1 + sum) // (z+r)²-1
 	// The edges cross at angle half from the centre line, seen from the planet,
 	// and star, seen from the star; kite is four times the area of the triangle
 	// between the centres and a crossing.

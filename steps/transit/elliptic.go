@@ -25,33 +25,30 @@ const (
 // These are cel(kc,q²,a,bq), cel(kc,1,1,0), cel(kc,1,0,1) and cel(kc,1,1,-kc²) of
 // Bulirsch (1969); the last keeps its digits where it vanishes, at k = 0.
 type integrals struct {
-	kc, k2, q, a, b             float64
+	kc, k2, q, a, b             float64 // kc, q, a and b serve the mean
 	third, cosine, sine, margin float64
+
+	// The arithmetic-geometric mean of m and kc, both doubled in each step.
+	m, diff, e float64 // diff = m - kc, e = m kc before doubling
+	sum, scale float64
+	done       bool
 }
 
-// mean is the state of an arithmetic-geometric mean.
-type mean struct {
-	m, kc, diff, e, q, a, b float64 // diff = m - kc
-	sum, scale              float64
-	done                    bool
-}
-
-// solve computes a number of integrals, up to lanes, from their kc, k2, q, a and
-// b. One arithmetic-geometric mean serves the three of a separation: the last two
-// follow from the sum of its squared differences (Abramowitz & Stegun 1964,
-// 17.6), less its first term and divided by it, k².
-// A mean is a chain in which each operation waits for the one before, so the
-// means of several separations are taken side by side.
+// solve computes integrals from their kc, k2, q, a and b. One arithmetic-geometric
+// mean serves the three of a separation: the last two follow from the sum of its
+// squared differences (Abramowitz & Stegun 1964, 17.6), less its first term and
+// divided by it, k². A mean is a chain in which each operation waits for the one
+// before, so the means of all are taken side by side.
 func solve(all []integrals) {
-	var means [lanes]mean
 	for i := range all {
 		t := &all[i]
-		means[i] = mean{m: 1, kc: t.kc, diff: t.k2 / (1 + t.kc), e: t.kc, q: t.q, a: t.a, b: t.b, scale: 0.5}
+		t.m, t.e, t.diff = 1, t.kc, t.k2/(1+t.kc)
+		t.sum, t.scale, t.done = 0, 0.5, false
 	}
 	for range agmSteps {
 		rest := false
-		for i := range means[:len(all)] {
-			t := &means[i]
+		for i := range all {
+			t := &all[i]
 			if t.done {
 				continue
 			}
@@ -80,13 +77,13 @@ func solve(all []integrals) {
 		}
 	}
 	for i := range all {
-		t, out := &means[i], &all[i]
+		t := &all[i]
 		inverse := 0.5 * math.Pi / (t.m * (t.m + t.q))
-		out.third = inverse * (t.b + t.a*t.m)
+		t.third = inverse * (t.b + t.a*t.m)
 		first := 0.5 * inverse * (t.m + t.q) / t.scale // K
-		rest := t.sum / max(out.k2, leastSquare)
-		out.sine = first * (0.5 + 0.5*rest)
-		out.cosine = first - out.sine
-		out.margin = first * (0.5*out.k2 - (1-0.5*out.k2)*rest)
+		rest := t.sum / max(t.k2, leastSquare)
+		t.sine = first * (0.5 + 0.5*rest)
+		t.cosine = first - t.sine
+		t.margin = first * (0.5*t.k2 - (1-0.5*t.k2)*rest)
 	}
 }

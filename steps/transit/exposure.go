@@ -7,10 +7,8 @@ import (
 )
 
 const (
-	// secondsPerDay is exact.
-	secondsPerDay = 86400
-	// maxNodes is the largest number of nodes on one piece of a transit.
-	maxNodes = 16
+	// mostNodes is the largest number of nodes on one piece of a transit.
+	mostNodes = 16
 	// averageTolerance is what the predicted error of an average may reach. The
 	// prediction is for the flux; derivatives are larger and lose as much more.
 	averageTolerance = 2e-10
@@ -23,8 +21,8 @@ const (
 type rule struct{ nodes, weights []float64 }
 
 // rules holds the rule of n nodes at index n.
-var rules = func() (all [maxNodes + 1]rule) {
-	for n := 1; n <= maxNodes; n++ {
+var rules = func() (all [mostNodes + 1]rule) {
+	for n := 1; n <= mostNodes; n++ {
 		all[n] = rule{make([]float64, n), make([]float64, n)}
 		quad.Legendre{}.FixedLocations(all[n].nodes, all[n].weights, -1, 1)
 	}
@@ -71,13 +69,9 @@ func (c *curve) split() {
 	c.from, c.to = k.First, k.Fourth
 }
 
-// average returns the mean flux over the exposure centred on a time since
-// mid-transit. If g is not nil it adds the mean derivatives to it.
-func (c *curve) average(since, elapsed float64, g *[arguments]float64) float64 {
-	if len(c.pieces) == 0 {
-		return 1
-	}
-	deficit := 0.0
+// average adds the samples to the result for time i that make up the mean over
+// the exposure centred on a time since mid-transit.
+func (c *curve) average(i int, since, elapsed float64) {
 	// An exposure near half a period from mid-transit may reach the transits
 	// before and after.
 	for turn := -1.0; turn <= 1; turn++ {
@@ -86,20 +80,19 @@ func (c *curve) average(since, elapsed float64, g *[arguments]float64) float64 {
 		if to <= c.from || from >= c.to {
 			continue
 		}
-		for i := range c.pieces {
-			p := &c.pieces[i]
+		for k := range c.pieces {
+			p := &c.pieces[k]
 			if a, b := math.Max(from, p.from), math.Min(to, p.to); a < b {
-				deficit += c.integrate(p, a, b, elapsed-middle, g)
+				c.integrate(i, p, a, b, elapsed-middle)
 			}
 		}
 	}
-	return 1 - deficit
 }
 
-// integrate returns the integral of the deficit from a to b, within piece p,
-// divided by the exposure, and adds that of the derivatives to g.
-// offset + time since mid-transit is the time since Orbit.MidTransit.
-func (c *curve) integrate(p *piece, a, b, offset float64, g *[arguments]float64) float64 {
+// integrate adds the samples whose weighted sum is the integral from a to b,
+// within piece p, divided by the exposure. offset + time since mid-transit is the
+// time since Orbit.MidTransit.
+func (c *curve) integrate(i int, p *piece, a, b, offset float64) {
 	near, far, sign := a-p.contact, b-p.contact, 1.0
 	if p.contact == p.to {
 		near, far, sign = p.to-b, p.to-a, -1
@@ -116,24 +109,14 @@ func (c *curve) integrate(p *piece, a, b, offset float64, g *[arguments]float64)
 	}
 	r := &rules[c.nodes(nearest, length)]
 	centre, half := (near+far)/2, (far-near)/2
-	sum := 0.0
 	for k, x := range r.nodes {
 		at, weight := centre+half*x, half*r.weights[k]/c.exposure
 		if !smooth {
 			at, weight = at*at, 2*at*weight
 		}
 		at = p.contact + sign*at
-		if g == nil {
-			sum += weight * (1 - c.flux(at))
-			continue
-		}
-		var one [arguments]float64
-		sum += weight * (1 - c.gradient(at, offset+at, &one))
-		for j := range g {
-			g[j] += weight * one[j]
-		}
+		c.sample(i, at, offset+at, weight)
 	}
-	return sum
 }
 
 // nodes returns how many nodes integrate a function with a singular point at
@@ -144,13 +127,13 @@ func (c *curve) integrate(p *piece, a, b, offset float64, g *[arguments]float64)
 // with its share of the exposure.
 func (c *curve) nodes(nearest, length float64) int {
 	if !(nearest > 1) {
-		return maxNodes
+		return mostNodes
 	}
 	share := math.Min(1, c.radius*c.radius) * length / c.exposure
 	rho := nearest + math.Sqrt((nearest-1)*(nearest+1))
 	rho *= rho
 	n := 1
-	for bound := share / rho; bound > averageTolerance && n < maxNodes; n++ {
+	for bound := share / rho; bound > averageTolerance && n < mostNodes; n++ {
 		bound /= rho
 	}
 	return n

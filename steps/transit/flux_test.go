@@ -8,6 +8,8 @@ import (
 	"strconv"
 	"strings"
 	"testing"
+
+	"rimlight/steps/limb"
 )
 
 const (
@@ -66,104 +68,85 @@ func number(t *testing.T, s string) float64 {
 	return base + sign*math.Ldexp(1, -n)
 }
 
-func TestQuadraticTable(t *testing.T) {
-	worst := 0.0
-	for _, row := range table(t, "transit/flux_cases.csv") {
-		r, z := number(t, row["r_expr"]), number(t, row["z_expr"])
-		u1, u2 := number(t, row["u1"]), number(t, row["u2"])
-		want := number(t, row["flux"])
-		tolerance := fluxTolerance
-		if r > 10 {
-			tolerance *= r / 10
-		}
-		got := Quadratic(r, z, u1, u2)
-		diff := math.Abs(got - want)
-		if row["exact"] == "1" {
-			worst = math.Max(worst, diff)
-		}
-		if !(diff <= tolerance) {
-			t.Errorf("%s, %s: r = %s, z = %s: flux %.17g, want %s, off by %.1e", row["note"], row["law"], row["r_expr"], row["z_expr"], got, row["flux"], got-want)
+// tabled returns the law of a row.
+func tabled(t *testing.T, row map[string]string) limb.Law {
+	t.Helper()
+	law := limb.Law{Name: row["law"]}
+	for _, name := range []string{"u1", "u2", "u3", "u4"} {
+		if row[name] != "" {
+			law.Coefficients = append(law.Coefficients, number(t, row[name]))
 		}
 	}
-	t.Logf("largest error %.1e", worst)
+	return law
 }
 
-func TestQuadraticGradientTable(t *testing.T) {
-	worst := 0.0
-	for _, row := range table(t, "transit/flux_derivatives.csv") {
-		r, z := number(t, row["r"]), number(t, row["z"])
-		flux, dr, dz, du1, du2 := QuadraticGradient(r, z, number(t, row["u1"]), number(t, row["u2"]))
-		for i, got := range []float64{flux, dr, dz, du1, du2} {
-			name := []string{"flux", "dr", "dz", "du1", "du2"}[i]
-			if row[name] == "" {
-				continue
-			}
-			want := number(t, row[name])
-			diff := math.Abs(got-want) / math.Max(1, math.Abs(want))
-			worst = math.Max(worst, diff)
-			if !(diff <= gradientTolerance) {
-				t.Errorf("%s, r = %g, z = %g: %s is %.17g, want %s", row["law"], r, z, name, got, row[name])
-			}
-		}
-	}
-	t.Logf("largest error %.1e", worst)
+// closedLaw reports whether the flux of a law is a closed expression.
+func closedLaw(name string) bool {
+	return name == limb.Uniform || name == limb.Linear || name == limb.Quadratic
 }
 
-// bruteForce integrates the covered light over the radius ρ of the star, the
-// fraction of each ring covered by the planet being known; Simpson's rule with
-// substitutions that take the square roots out of both ends.
-func bruteForce(r, z, u1, u2 float64) float64 {
-	covered := func(rho float64) float64 { // half-angle of the ring
-		if rho+z <= r {
-			return math.Pi
-		}
-		if rho >= z+r || rho <= z-r {
-			return 0
-		}
-		// tan²(angle/2) keeps digits at both ends.
-		return 2 * math.Atan(math.Sqrt((r-rho+z)*(r+rho-z)/((rho+z-r)*(rho+z+r))))
-	}
-	integrand := func(rho float64) float64 {
-		mu := math.Sqrt(math.Max(0, (1-rho)*(1+rho)))
-		return 2 * rho * covered(rho) * (1 - u1*(1-mu) - u2*(1-mu)*(1-mu))
-	}
-	edges := []float64{0, math.Min(1, math.Abs(z-r)), math.Min(1, z+r), 1}
-	sum := 0.0
-	const n = 1500
-	for i := 1; i < len(edges); i++ {
-		a, b := edges[i-1], edges[i]
-		if b <= a {
-			continue
-		}
-		for k := 0; k <= n; k++ {
-			weight := 2.0
-			if k == 0 || k == n {
-				weight = 1
-			} else if k%2 == 1 {
-				weight = 4
+func TestFluxTable(t *testing.T) {
+	for _, stated := range []float64{DefaultTolerance, 1e-10, LeastTolerance} {
+		worst := map[string]float64{}
+		for _, row := range table(t, "transit/flux_cases.csv") {
+			r, z, law := number(t, row["r_expr"]), number(t, row["z_expr"]), tabled(t, row)
+			want := number(t, row["flux"])
+			tolerance := stated
+			if closedLaw(law.Name) {
+				tolerance = fluxTolerance
 			}
-			s, c := math.Sincos(math.Pi * float64(k) / n / 2)
-			rho := a + (b-a)*s*s
-			sum += weight / 3 * integrand(rho) * (b - a) * 2 * s * c * math.Pi / 2 / n
+			if r > 10 {
+				tolerance *= r / 10
+			}
+			flux, err := Flux(r, []float64{z}, law, stated)
+			if err != nil {
+				t.Fatal(err)
+			}
+			diff := math.Abs(flux[0] - want)
+			if row["exact"] == "1" && r <= 10 {
+				worst[law.Name] = math.Max(worst[law.Name], diff)
+			}
+			if !(diff <= tolerance) {
+				t.Errorf("%s, %s: r = %s, z = %s: flux %.17g, want %s, off by %.1e", row["note"], row["law"], row["r_expr"], row["z_expr"], flux[0], row["flux"], flux[0]-want)
+			}
+		}
+		for name, diff := range worst {
+			t.Logf("tolerance %g, %s: largest error %.1e", stated, name, diff)
 		}
 	}
-	return 1 - sum/(math.Pi*(1-u1/3-u2/6))
 }
 
-func TestQuadraticRandom(t *testing.T) {
-	random := rand.New(rand.NewPCG(7, 1))
-	worst := 0.0
-	for range 1500 {
-		r := math.Exp(random.Float64()*7 - 5.5) // 0.004 to 4.5
-		z := random.Float64() * (1 + r)
-		u1, u2 := random.Float64()*2-0.5, random.Float64()*1.5-1
-		got, want := Quadratic(r, z, u1, u2), bruteForce(r, z, u1, u2)
-		worst = math.Max(worst, math.Abs(got-want))
-		if !(math.Abs(got-want) < 1e-9) {
-			t.Errorf("Quadratic(%g, %g, %g, %g) = %.12g, want %.12g", r, z, u1, u2, got, want)
+func TestGradientTable(t *testing.T) {
+	for _, stated := range []float64{DefaultTolerance, 1e-10, LeastTolerance} {
+		worst := map[string]float64{}
+		for _, row := range table(t, "transit/flux_derivatives.csv") {
+			r, z, law := number(t, row["r"]), number(t, row["z"]), tabled(t, row)
+			tolerance := stated
+			if closedLaw(law.Name) {
+				tolerance = gradientTolerance
+			}
+			g, err := FluxGradient(r, []float64{z}, law, stated)
+			if err != nil {
+				t.Fatal(err)
+			}
+			got := []float64{g.Flux[0], g.ByRadius[0], g.BySeparation[0]}
+			for _, by := range g.ByCoefficient {
+				got = append(got, by[0])
+			}
+			for i, got := range got {
+				name := []string{"flux", "dr", "dz", "du1", "du2", "du3", "du4"}[i]
+				want := number(t, row[name])
+				diff := math.Abs(got-want) / math.Max(1, math.Abs(want))
+				worst[law.Name] = math.Max(worst[law.Name], diff)
+				if !(diff <= tolerance) {
+					t.Errorf("%s, r = %g, z = %g: %s is %.17g, want %s", row["law"], r, z, name, got, row[name])
+				}
+			}
+		}
+		for name, diff := range worst {
+			t.Logf("tolerance %g, %s: largest error %.1e", stated, name, diff)
 		}
 	}
-	t.Logf("largest difference %.1e", worst)
 }
 
 func TestQuadraticGradientDifferences(t *testing.T) {
@@ -293,3 +276,33 @@ func benchmarkGradient(b *testing.B, z float64) {
 func BenchmarkQuadraticGradientInside(b *testing.B)  { benchmarkGradient(b, 0.3) }
 func BenchmarkQuadraticGradientLimb(b *testing.B)    { benchmarkGradient(b, 0.97) }
 func BenchmarkQuadraticGradientOutside(b *testing.B) { benchmarkGradient(b, 1.3) }
+
+// benchmarkFlux reports the time of one of 4096 separations between two limits.
+func benchmarkFlux(b *testing.B, law limb.Law, from, to float64) {
+	z := make([]float64, 4096)
+	for i := range z {
+		z[i] = from + (to-from)*float64(i)/float64(len(z))
+	}
+	var g Gradient
+	for b.Loop() {
+		if err := FluxGradientInto(&g, 0.1, z, law, 0); err != nil {
+			b.Fatal(err)
+		}
+	}
+	b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N*len(z)), "ns/sample")
+}
+
+func BenchmarkFluxGradient(b *testing.B) {
+	for _, law := range []limb.Law{
+		quadratic(0.4, 0.3),
+		{Name: limb.FourParameter, Coefficients: []float64{0.5, -0.2, 0.6, -0.3}},
+		{Name: limb.SquareRoot, Coefficients: []float64{0.2, 0.5}},
+		{Name: limb.Logarithmic, Coefficients: []float64{0.6, 0.25}},
+		{Name: limb.Power2, Coefficients: []float64{0.75, 0.625}},
+	} {
+		b.Run(law.Name+"/transit", func(b *testing.B) { benchmarkFlux(b, law, 0.3, 1.1) })
+		b.Run(law.Name+"/inside", func(b *testing.B) { benchmarkFlux(b, law, 0.2, 0.85) })
+		b.Run(law.Name+"/limb", func(b *testing.B) { benchmarkFlux(b, law, 0.9, 1.1) })
+		b.Run(law.Name+"/outside", func(b *testing.B) { benchmarkFlux(b, law, 1.1001, 3) })
+	}
+}

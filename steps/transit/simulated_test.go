@@ -4,6 +4,7 @@ import (
 	"math"
 	"testing"
 
+	"rimlight/steps/limb"
 	"rimlight/steps/orbit"
 	"rimlight/steps/simulate"
 	"rimlight/steps/transit"
@@ -36,7 +37,7 @@ func TestAgreesWithSimulation(t *testing.T) {
 					Period: s.Period, MidTransit: s.MidTransit, AxisRatio: s.AxisRatio, Inclination: s.Inclination * deg,
 					Eccentricity: s.Eccentricity, Periastron: s.Periastron * deg,
 				},
-				RadiusRatio: math.Sqrt(truth.Depth[k]), U1: truth.U1[k], U2: truth.U2[k], Exposure: s.Exposure,
+				RadiusRatio: math.Sqrt(truth.Depth[k]), Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{truth.U1[k], truth.U2[k]}}, Exposure: s.Exposure,
 			})
 			if err != nil {
 				t.Fatal(err)

@@ -11,6 +11,10 @@ func init() {
 	Table["rimlight/steps/transit/transit"] = map[string]reflect.Value{
 		"Curve":             reflect.ValueOf(transit.Curve),
 		"CurveGradient":     reflect.ValueOf(transit.CurveGradient),
+		"Flux":              reflect.ValueOf(transit.Flux),
+		"FluxGradient":      reflect.ValueOf(transit.FluxGradient),
+		"FluxGradientInto":  reflect.ValueOf(transit.FluxGradientInto),
+		"Gradient":          reflect.ValueOf((*transit.Gradient)(nil)),
 		"Params":            reflect.ValueOf((*transit.Params)(nil)),
 		"Quadratic":         reflect.ValueOf(transit.Quadratic),
 		"QuadraticGradient": reflect.ValueOf(transit.QuadraticGradient),
