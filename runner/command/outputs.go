@@ -10,6 +10,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"strings"
 	"sync"
 	"time"
 
@@ -166,7 +167,7 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 	sum := sha256.Sum256(doc.Source)
 	r := &record.Record{Format: record.Format, Title: doc.Title, Recipe: record.File{Name: doc.File, Size: int64(len(doc.Source)), SHA256: hex.EncodeToString(sum[:])},
 		Outcome: string(doc.Outcome), Started: doc.Started, Ended: doc.Ended, Command: []string{doc.Command}, Outputs: files, Notes: outcome.Notes,
-		Host:    record.Host{Name: e.Host, OS: doc.Host.OS, Arch: doc.Host.Arch, CPUs: doc.Host.CPUs},
+		Host:    record.Host{Name: machine(e.Host), OS: doc.Host.OS, Arch: doc.Host.Arch, CPUs: doc.Host.CPUs},
 		Program: record.Program{Version: doc.Host.Version, Revision: doc.Host.Revision, SHA256: doc.Host.Executable, Go: doc.Host.GoVersion, Settings: doc.Host.Settings}}
 	for _, l := range e.Confinement {
 		r.Host.Confinement = append(r.Host.Confinement, record.Layer(l))
@@ -228,8 +229,18 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 	return r
 }
 
+// machine is where somebody computed: run.json goes out with the report, which
+// need not tell who that was.
+func machine(who string) string {
+	_, host, ok := strings.Cut(who, "@")
+	if !ok {
+		return who
+	}
+	return host
+}
+
 func computation(c engine.Computation, names []string) record.Computation {
-	out := record.Computation{State: string(c.State), Why: c.Why, Error: c.Err, KeyText: c.Text, Seed: c.Seed, Seconds: c.Took.Round(time.Microsecond).Seconds(), Host: c.Host}
+	out := record.Computation{State: string(c.State), Why: c.Why, Error: c.Err, KeyText: c.Text, Seed: c.Seed, Seconds: c.Took.Round(time.Microsecond).Seconds(), Host: machine(c.Host)}
 	if c.Text != "" {
 		out.Key = c.Text.Key().String()
 	}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"os"
+	"os/user"
 	"path/filepath"
 	"strings"
 	"sync"
@@ -113,6 +114,14 @@ func (a *app) newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Eng
 	if o.why != "" {
 		before() // this run's own record will take its place
 	}
+	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: who(), Limits: o.limits, Confinement: o.confined, NoGaps: o.noGaps, Before: func(step string, element int) plan.KeyText { return before().KeyText(step, element) }}, before, nil
+}
+
+// who is who computes, for records: user@machine.
+func who() string {
 	host, _ := os.Hostname()
-	return &engine.Engine{Plan: p, Store: s, Library: lib, Build: plan.ReadBuild(), Code: code, Jobs: o.jobs, Host: host, Limits: o.limits, Confinement: o.confined, NoGaps: o.noGaps, Before: func(step string, element int) plan.KeyText { return before().KeyText(step, element) }}, before, nil
+	if u, err := user.Current(); err == nil && u.Username != "" {
+		return u.Username + "@" + host
+	}
+	return host
 }

@@ -44,9 +44,10 @@ const maxShown = 4 << 20
 type reading func(each func(i int, sealed []byte) error) error
 
 // shownValue turns a result into Go for the report; nil when it is not to be
-// shown. It has n parts, or is no list when n is negative. Of light curves and fits only the sum of what they hold stays in
-// memory. The result is read as a whole, also when little of it is shown, so
-// that damage to it is found. The error is that of reading.
+// shown. It has n parts, or is no list when n is negative. Of light curves and
+// fits only the sum of what they hold stays in memory. The result is read as a
+// whole, also when little of it is shown, so that damage to it is found. The
+// error is that of reading.
 func shownValue(typ string, n int, read reading) (any, error) {
 	var out any
 	var err error

@@ -34,7 +34,7 @@ type Engine struct {
 	Build   plan.Build
 	Code    worker.Code
 	Jobs    int            // worker processes at a time, at least 1
-	Host    string         // name of this machine, for records
+	Host    string         // who computes, user@machine, for records
 	Limits  worker.Options // what a step may use up
 
 	// Confinement is what the worker that checked the recipe said about its own,

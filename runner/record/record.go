@@ -172,21 +172,39 @@ func (r *Record) Bytes() ([]byte, error) {
 // Keys are the keys of everything that the recorded run computed or used.
 func (r *Record) Keys() []store.Key {
 	var out []store.Key
-	add := func(c Computation) {
+	r.each(func(c Computation) {
 		if k, err := store.ParseKey(c.Key); err == nil {
 			out = append(out, k)
 		}
-	}
+	})
+	return out
+}
+
+// Hashes are the hashes of all results of the recorded run, also of those that
+// were put together from others and have no key of their own.
+func (r *Record) Hashes() []store.Hash {
+	var out []store.Hash
+	r.each(func(c Computation) {
+		for _, res := range c.Results {
+			if h, err := store.ParseHash(res.Hash); err == nil {
+				out = append(out, h)
+			}
+		}
+	})
+	return out
+}
+
+// each goes through all computations.
+func (r *Record) each(do func(c Computation)) {
 	for _, in := range r.Inputs {
-		add(in.Computation)
+		do(in.Computation)
 	}
 	for _, s := range r.Steps {
-		add(s.Computation)
+		do(s.Computation)
 		for _, e := range s.Elements {
-			add(e)
+			do(e)
 		}
 	}
-	return out
 }
 
 // KeyText is the text of the key that a step, an input (element -1) or an

@@ -183,6 +183,16 @@ func (s *Store) Has(h Hash) bool {
 	return err == nil
 }
 
+// Size is how many bytes an object takes; false if there is no object of this
+// name. It does not read it.
+func (s *Store) Size(h Hash) (int64, bool) {
+	st, err := os.Lstat(s.objectPath(h))
+	if err != nil {
+		return 0, false
+	}
+	return st.Size(), true
+}
+
 // setAside moves a flawed file to damaged/ and gives its path there. It is not
 // deleted, since it may tell what went wrong. If the file turns out to be good
 // because another process has replaced it meanwhile, it is moved back, and the
