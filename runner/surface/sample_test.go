@@ -16,6 +16,7 @@ import (
 	"rimlight/steps/limb"
 	"rimlight/steps/limbtable"
 	"rimlight/steps/orbit"
+	"rimlight/steps/sample"
 	"rimlight/steps/simulate"
 	"rimlight/steps/spectrum"
 	"rimlight/steps/systematics"
@@ -46,9 +47,24 @@ func (s *samples) of(target string, parameter int, t reflect.Type) []reflect.Val
 }
 
 // asksForMuch reports whether a call is meant to take long: a simulation takes
-// as long as the number of its samples and their parts has it.
+// as long as the number of its samples and their parts has it, a sampler as long as
+// it may evaluate its target.
 func asksForMuch(args []reflect.Value) bool {
+	const evaluations = 1e5
+	starts := 1.0
 	for _, a := range args {
+		switch s := a.Interface().(type) {
+		case [][]float64:
+			starts = float64(len(s))
+		case sample.NUTSSettings:
+			return s.Evaluations == 0 || float64(s.Evaluations)*starts > evaluations
+		case sample.EnsembleSettings:
+			return s.WarmUp == 0 || s.Draws == 0 || (float64(s.WarmUp)+float64(s.Draws)*float64(max(1, s.Thin)))*starts > evaluations
+		case sample.NestedSettings:
+			return s.Evaluations == 0 || s.Evaluations > evaluations
+		case sample.StudentT, int:
+			continue
+		}
 		if s, ok := a.Interface().(simulate.Scenario); ok && s.Validate() == nil {
 			parts := 1 + min(100, 40*s.AxisRatio/s.Period*s.Exposure/86400/math.Sqrt(max(s.Depth, 1e-6))*4)
 			return float64(s.Integrations)*float64(s.Channels)*parts > 2e5
@@ -158,6 +174,19 @@ func newSamples() *samples {
 		return times.Scale(-1 / p[1]).Exp().Scale(p[0]).Shift(1)
 	}
 	names := []string{"hook", "hookTime"}
+	parameters := []sample.Parameter{{Name: "a", Lo: 0, Hi: 1}, {Name: "b", Unit: "d"}}
+	target := func(x, gradient []float64) float64 {
+		if len(x) < 2 || len(gradient) < 2 {
+			return 0
+		}
+		gradient[0], gradient[1] = 1, -x[1]
+		return x[0] - x[1]*x[1]/2
+	}
+	density := func(x []float64) float64 { return target(x, make([]float64, len(x))) }
+	prior := func(u []float64) []float64 { return u }
+	proposal := sample.StudentT{Mean: []float64{0.5, 0}, Scale: [][]float64{{0.1, 0}, {0, 1}}, Degrees: 5}
+	starts, err := sample.Around(parameters, proposal.Mean, []float64{0.1, 1}, 8, 1)
+	must(err)
 	draws, weighted, column := newDraws(rand.New(rand.NewPCG(1, 2)))
 	hook := fit.Priors{
 		{Name: "hook", Kind: fit.Normal, A: 0, B: 0.01},
@@ -179,6 +208,12 @@ func newSamples() *samples {
 		"limb.FromRoot":   {{limb.SquareRoot, limb.Power2}, {0.2, 0.7}, {0.3, 0.6}},
 		"limb.ToSquare":   {{limb.Logarithmic, limb.Power2}, {0.4, 0.7}, {0.3, 0.6}},
 		"limb.FromHalf":   {{}, {0.4, 0.7}, {0.1, 0.3}},
+
+		"sample.NUTS":       {{parameters}, {target}, {starts[:2]}, {sample.NUTSSettings{Seed: 1, WarmUp: 30, Draws: 20, Evaluations: 20000}}},
+		"sample.Ensemble":   {{parameters}, {density}, {starts}, {sample.EnsembleSettings{Seed: 1, WarmUp: 10, Draws: 20, Differential: 0.3}}},
+		"sample.Nested":     {{parameters}, {prior}, {density}, {sample.NestedSettings{Seed: 1, Live: 25, Evaluations: 20000}}},
+		"sample.Importance": {{parameters}, {density}, {proposal}, {100}},
+		"sample.Around":     {{parameters}, {proposal.Mean}, {[]float64{0.1, 2}}, {2, 10}},
 
 		"chain.RHat":                {{column}, {1, 2, 4}},
 		"chain.BulkESS":             {{column}, {1, 2, 4}},
@@ -219,7 +254,7 @@ func newSamples() *samples {
 		diagnose.FitChecks("white light", posterior), []check.Check{},
 		[]spectrum.Note{{Name: "title", Text: "An invented planet"}, {Name: "by", Text: "no one"}},
 		fitsFile, series, spectrum.CSV(spec),
-		draws, []chain.Draws{draws, draws}, weighted,
+		draws, []chain.Draws{draws, draws}, weighted, sample.Evidence{LogZ: -3, Err: 0.1, Live: 25, RankP: 0.3},
 		times, times.Sin(), vector.Of(white.Flux), times.Less(0.1), vector.Used(white.Mask),
 	} {
 		s.add(reflect.ValueOf(v), 0)

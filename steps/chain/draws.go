@@ -19,6 +19,7 @@ type Draws struct {
 	Units      []string  // FITS-standard unit string of each; may be empty
 	Chains     int       // how many
 	Length     int       // draws of each chain
+	Group      int       // chains that R-hat takes together, walkers of an ensemble, a divisor of Chains; 0 for 1
 	X          []float64 // parameter p of draw i of chain c is X[(c*Length+i)*len(Names)+p]
 	LogDensity []float64 // natural logarithm of the target's density, up to a constant
 	Energy     []float64 // the Hamiltonian at the start of the trajectory; of Hamiltonian samplers
@@ -39,6 +40,8 @@ func (d Draws) Check() error {
 		return errors.New("draws without parameters; expected at least one name")
 	case d.Chains < 1 || d.Length < 1:
 		return fmt.Errorf("draws of %d chains of length %d; expected at least 1 of each", d.Chains, d.Length)
+	case d.Group < 0 || d.Group > 0 && d.Chains%d.Group != 0:
+		return fmt.Errorf("draws of %d chains in groups of %d; expected a divisor", d.Chains, d.Group)
 	case d.Chains > MostNumbers || d.Length > MostNumbers || p > MostNumbers || d.Chains*d.Length > MostNumbers/p:
 		return fmt.Errorf("draws of %d chains of length %d and %d parameters; expected at most %d numbers altogether", d.Chains, d.Length, p, MostNumbers)
 	case len(d.X) != d.Chains*d.Length*p:
@@ -93,7 +96,8 @@ func column(x []float64, stride, p int) []float64 {
 
 // Join puts the chains of several sets of draws side by side, as if one call had
 // made them all. What only some of them have is dropped. Errors: no set; a shape
-// that does not fit; other parameters, units or lengths than those of the first.
+// that does not fit; other parameters, units, groups or lengths than those of the
+// first.
 func Join(sets ...Draws) (Draws, error) {
 	if len(sets) == 0 {
 		return Draws{}, errors.New("nothing to join; expected at least one set of draws")
@@ -103,14 +107,14 @@ func Join(sets ...Draws) (Draws, error) {
 		if err := d.Check(); err != nil {
 			return Draws{}, fmt.Errorf("set %d: %w", i+1, err)
 		}
-		if !slices.Equal(d.Names, sets[0].Names) || !slices.Equal(d.Units, sets[0].Units) || d.Length != sets[0].Length {
-			return Draws{}, fmt.Errorf("set %d has other parameters, units or chains of another length than the first; expected the same", i+1)
+		if !slices.Equal(d.Names, sets[0].Names) || !slices.Equal(d.Units, sets[0].Units) || d.Length != sets[0].Length || d.Group != sets[0].Group {
+			return Draws{}, fmt.Errorf("set %d has other parameters, units, groups or chains of another length than the first; expected the same", i+1)
 		}
 		if numbers += len(d.X); numbers > MostNumbers {
 			return Draws{}, fmt.Errorf("the sets have more than %d numbers altogether", MostNumbers)
 		}
 	}
-	out := Draws{Names: slices.Clone(sets[0].Names), Units: slices.Clone(sets[0].Units), Length: sets[0].Length}
+	out := Draws{Names: slices.Clone(sets[0].Names), Units: slices.Clone(sets[0].Units), Length: sets[0].Length, Group: sets[0].Group}
 	for _, d := range sets {
 		out.Chains += d.Chains
 		out.X = append(out.X, d.X...)

@@ -123,6 +123,33 @@ func TestRHatSees(t *testing.T) {
 	}
 }
 
+// Of many short chains, groups are compared.
+func TestNestedRHat(t *testing.T) {
+	const chains, n = 32, 40
+	x := autoregressive(5, 0.8, chains, n)
+	alone, err := RHat(x, chains)
+	if err != nil {
+		t.Fatal(err)
+	}
+	grouped, err := NestedRHat(x, chains, 8)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i := range 8 * n {
+		x[i]++
+	}
+	apart, err := NestedRHat(x, chains, 8)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if alone < 1.05 || grouped > 1.03 || apart < 1.1 {
+		t.Errorf("R-hat of 32 chains %.3f, of 4 groups %.3f, with one apart %.3f", alone, grouped, apart)
+	}
+	if _, err := NestedRHat(x, chains, 5); err == nil {
+		t.Error("groups of 5 of 32 were accepted")
+	}
+}
+
 func TestRefused(t *testing.T) {
 	good := autoregressive(1, 0, 1, 20)
 	bad := slices.Clone(good)

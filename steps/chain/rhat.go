@@ -15,14 +15,47 @@ import (
 //
 // Errors: chains of fewer than 8 draws or of different lengths; draws that are
 // not finite, or all equal.
-func RHat(x []float64, chains int) (float64, error) {
+func RHat(x []float64, chains int) (float64, error) { return NestedRHat(x, chains, 1) }
+
+// NestedRHat is [RHat] for many chains: group of them, one after another, are taken
+// together and compared with other groups (Margossian et al. 2024), since R-hat of
+// chains which are each worth few draws is great even if they have met. Errors: a
+// group that does not divide the number of chains; those of RHat.
+func NestedRHat(x []float64, chains, group int) (float64, error) {
+	const what = "potential scale reduction R-hat"
 	if err := checkColumn(x, chains); err != nil {
-		return 0, fmt.Errorf("potential scale reduction R-hat: %w", err)
+		return 0, fmt.Errorf("%s: %w", what, err)
 	}
-	folded := fold(x)
-	x, count := split(x, chains)
-	folded, _ = split(folded, chains)
-	return math.Max(scaleReduction(rankNormalise(x), count), scaleReduction(rankNormalise(folded), count)), nil
+	if group < 1 || chains%group != 0 {
+		return 0, fmt.Errorf("%s: groups of %d of %d chains; expected a number that divides that of the chains", what, group, chains)
+	}
+	halves, count := split(x, chains)
+	return nestedRHat(x, rankNormalise(halves), chains, count, group), nil
+}
+
+// nestedRHat takes the draws, and the normal scores of their halves.
+func nestedRHat(x, scores []float64, chains, count, group int) float64 {
+	folded, _ := split(fold(x), chains)
+	location := scaleReduction(pool(scores, count, group), count/group)
+	return math.Max(location, scaleReduction(pool(rankNormalise(folded), count, group), count/group))
+}
+
+// pool puts the first halves of each group of chains together, and the second ones.
+func pool(halves []float64, count, group int) []float64 {
+	if group == 1 {
+		return halves
+	}
+	n := len(halves) / count
+	out := make([]float64, 0, len(halves))
+	for from := 0; from < count; from += 2 * group {
+		for half := range 2 {
+			for c := range group {
+				at := (from + 2*c + half) * n
+				out = append(out, halves[at:at+n]...)
+			}
+		}
+	}
+	return out
 }
 
 // scaleReduction is the R-hat of Gelman & Rubin (1992), infinite for chains that

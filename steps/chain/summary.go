@@ -66,16 +66,15 @@ func Summaries(d Draws) ([]Summary, error) {
 			s.RHat, s.BulkESS, s.TailESS, s.MeanError, s.MedianError, s.SDError = nan, nan, nan, nan, nan, nan
 			continue
 		}
-		s.diagnose(x, sorted, d.Chains)
+		s.diagnose(x, sorted, d.Chains, max(1, d.Group))
 	}
 	return out, nil
 }
 
-func (s *Summary) diagnose(x, sorted []float64, chains int) {
+func (s *Summary) diagnose(x, sorted []float64, chains, group int) {
 	halves, count := split(x, chains)
 	scores := rankNormalise(halves)
-	folded, _ := split(fold(x), chains)
-	s.RHat = math.Max(scaleReduction(scores, count), scaleReduction(rankNormalise(folded), count))
+	s.RHat = nestedRHat(x, scores, chains, count, group)
 	s.BulkESS = effectiveSize(scores, count)
 	s.TailESS = math.Min(quantileSize(x, sorted, chains, tailProbability), quantileSize(x, sorted, chains, 1-tailProbability))
 	s.MeanError = s.SD / math.Sqrt(effectiveSize(halves, count))

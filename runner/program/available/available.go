@@ -38,6 +38,7 @@ var Packages = []Package{
 	{"limb", stepLibrary + "limb"},
 	{"limbtable", stepLibrary + "limbtable"},
 	{"orbit", stepLibrary + "orbit"},
+	{"sample", stepLibrary + "sample"},
 	{"simulate", stepLibrary + "simulate"},
 	{"spectrum", stepLibrary + "spectrum"},
 	{"systematics", stepLibrary + "systematics"},
