@@ -62,12 +62,11 @@ func asksForMuch(args []reflect.Value) bool {
 			return s.WarmUp == 0 || s.Draws == 0 || (float64(s.WarmUp)+float64(s.Draws)*float64(max(1, s.Thin)))*starts > evaluations
 		case sample.NestedSettings:
 			return s.Evaluations == 0 || s.Evaluations > evaluations
-		case sample.StudentT, int:
-			continue
-		}
-		if s, ok := a.Interface().(simulate.Scenario); ok && s.Validate() == nil {
-			parts := 1 + min(100, 40*s.AxisRatio/s.Period*s.Exposure/86400/math.Sqrt(max(s.Depth, 1e-6))*4)
-			return float64(s.Integrations)*float64(s.Channels)*parts > 2e5
+		case simulate.Scenario:
+			if s.Validate() == nil {
+				parts := 1 + min(100, 40*s.AxisRatio/s.Period*s.Exposure/86400/math.Sqrt(max(s.Depth, 1e-6))*4)
+				return float64(s.Integrations)*float64(s.Channels)*parts > 2e5
+			}
 		}
 	}
 	return false
@@ -216,6 +215,7 @@ func newSamples() *samples {
 		"sample.Around":     {{parameters}, {proposal.Mean}, {[]float64{0.1, 2}}, {2, 10}},
 
 		"chain.RHat":                {{column}, {1, 2, 4}},
+		"chain.NestedRHat":          {{column}, {2, 4}, {1, 2}},
 		"chain.BulkESS":             {{column}, {1, 2, 4}},
 		"chain.TailESS":             {{column}, {1, 2, 4}},
 		"chain.MeanESS":             {{column}, {1, 2, 4}},

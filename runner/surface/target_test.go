@@ -79,6 +79,7 @@ func (t target) call(args []reflect.Value) []reflect.Value {
 // others get eight. It is for the running time alone.
 var rare = []string{
 	"fit.White", "fit.WhiteOrbit", "fit.Channel", "fit.WhiteWith", "fit.ChannelWith", "fit.Function", "simulate.Make", "figure.",
+	"sample.NUTS", "sample.Ensemble", "sample.Nested",
 }
 
 func (t target) weight() int {

@@ -20,6 +20,7 @@ func init() {
 		"MeanESS":             reflect.ValueOf(chain.MeanESS),
 		"MeanError":           reflect.ValueOf(chain.MeanError),
 		"MostParetoK":         reflect.ValueOf(chain.MostParetoK),
+		"NestedRHat":          reflect.ValueOf(chain.NestedRHat),
 		"ParetoSmooth":        reflect.ValueOf(chain.ParetoSmooth),
 		"QuantileESS":         reflect.ValueOf(chain.QuantileESS),
 		"QuantileError":       reflect.ValueOf(chain.QuantileError),
