@@ -22,7 +22,7 @@ import (
 // document gathers what the report shows.
 func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Outcome, started time.Time) reports.Document {
 	p := e.Plan
-	d := reports.Document{Title: p.Recipe.Title, Source: p.Recipe.Source, File: filepath.Base(p.Recipe.File), Started: started,
+	d := reports.Document{Title: p.Recipe.Title, Source: p.Recipe.Source, File: filepath.Base(p.Recipe.File), Started: started.UTC(),
 		Command: "rimlight " + strings.Join(a.args, " ")}
 	d.Inputs, d.Steps = make([]reports.Input, len(outcome.Inputs)), make([]reports.Step, len(p.Steps))
 	parallel(len(d.Inputs)+len(d.Steps), func(i int) {
@@ -54,7 +54,7 @@ func document(ctx context.Context, a *app, e *engine.Engine, outcome *engine.Out
 	d.Host = host(e.Build, a.executable())
 	d.Host.Confinement = confinement(e.Confinement)
 	d.Outcome = verdict(outcome, d.Steps)
-	d.Ended = time.Now().UTC()
+	d.Ended = d.Started.Add(time.Since(started)) // also when the clock was set meanwhile
 	return d
 }
 

@@ -4,11 +4,8 @@ import (
 	"bytes"
 	"crypto/sha256"
 	"encoding/hex"
-	"errors"
 	"fmt"
-	"io/fs"
 	"math"
-	"os"
 	"path/filepath"
 	"strings"
 	"sync"
@@ -70,30 +67,22 @@ func writeOutputs(dir string, doc reports.Document, e *engine.Engine, outcome *e
 	if pageErr != nil {
 		return out, fmt.Errorf("the report could not be rendered: %w", pageErr)
 	}
-	files := map[string][]byte{csvFile: tables.csv, ecsvFile: tables.ecsv}
-	for _, name := range []string{csvFile, ecsvFile} {
-		path := filepath.Join(dir, name)
-		if files[name] == nil {
-			if err := os.Remove(path); err != nil && !errors.Is(err, fs.ErrNotExist) {
-				return out, err
-			}
-			continue
-		}
-		if err := out.write(dir, name, files[name]); err != nil {
-			return out, err
+	files := []outFile{{csvFile, tables.csv}, {ecsvFile, tables.ecsv}, {reportFile, page.Bytes()}}
+	for _, f := range files {
+		if f.data != nil {
+			out.files = append(out.files, f.identity())
 		}
 	}
-	if err := out.write(dir, reportFile, page.Bytes()); err != nil {
-		return out, err
-	}
-	out.report = filepath.Join(dir, reportFile)
 	b, err := recordOf(doc, e, outcome, out.files, before).Bytes()
 	if err != nil {
 		return out, err
 	}
-	if err := out.write(dir, recordFile, b); err != nil {
+	last := outFile{recordFile, b}
+	if err := replaceFiles(dir, append(files, last)); err != nil {
 		return out, err
 	}
+	out.report = filepath.Join(dir, reportFile)
+	out.files = append(out.files, last.identity())
 	// So that trimming the store spares what this report needs.
 	if err := e.Store.Register(filepath.Join(dir, recordFile)); err != nil {
 		out.notes = append(out.notes, fmt.Sprintf("the store will not know that this report needs it: %v", err))
@@ -110,31 +99,6 @@ func spaced(unit string) string {
 		return ""
 	}
 	return " " + unit
-}
-
-// write replaces a file as a whole.
-func (o *outputs) write(dir, name string, data []byte) error {
-	tmp, err := os.CreateTemp(dir, "."+name+"-*")
-	if err != nil {
-		return fmt.Errorf("cannot write into %s: %w", dir, err)
-	}
-	defer os.Remove(tmp.Name())
-	_, err = tmp.Write(data)
-	if err == nil {
-		err = tmp.Chmod(0o644)
-	}
-	if e := tmp.Close(); err == nil {
-		err = e
-	}
-	if err == nil {
-		err = os.Rename(tmp.Name(), filepath.Join(dir, name))
-	}
-	if err != nil {
-		return fmt.Errorf("%s: %w", filepath.Join(dir, name), err)
-	}
-	sum := sha256.Sum256(data)
-	o.files = append(o.files, record.File{Name: name, Size: int64(len(data)), SHA256: hex.EncodeToString(sum[:])})
-	return nil
 }
 
 // spectrumTables are the files of a spectrum; both nil when there is none.

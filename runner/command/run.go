@@ -40,7 +40,7 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 
 // run carries out a recipe from start to report.
 func (a *app) run(ctx context.Context, file string, o *options) error {
-	started := time.Now().UTC()
+	started := time.Now()
 	go a.library()
 	go a.executable()
 	p, code, err := prepare(ctx, file, o)
@@ -51,8 +51,8 @@ func (a *app) run(ctx context.Context, file string, o *options) error {
 	if err != nil {
 		return err
 	}
-	if err := os.MkdirAll(o.out, 0o777); err != nil {
-		return fmt.Errorf("no folder for the report: %w", err)
+	if err := prepareFolder(o.out); err != nil {
+		return err
 	}
 	if err := o.askAgain(p, e); err != nil {
 		return err
