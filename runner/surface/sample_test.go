@@ -153,6 +153,9 @@ func newSamples() *samples {
 	series, channels, err := lightcurve.WriteCSV(cube)
 	must(err)
 	path := orbit.Orbit{Period: 3.2, MidTransit: 2460512.35, AxisRatio: 9.5, Inclination: 1.53, Eccentricity: 0.1, Periastron: 1}
+	elements, err := path.Elements(orbit.Basis{Size: orbit.ByDuration, Tilt: orbit.ByImpact, Shape: orbit.ByRoot}, 0.1)
+	must(err)
+	ephemeris := orbit.Ephemeris{MidTransit: 2460512.35, Period: 3.2, MidTransitErr: 3e-4, PeriodErr: 1e-6, Covariance: -1e-11}
 	columns := lightcurve.Columns{
 		{Role: "TIME", Unit: "d", Offset: 2400000.5},
 		{Role: "FLUX_ERR", Name: ""},
@@ -201,6 +204,16 @@ func newSamples() *samples {
 		"fit.ChannelWith": {{curves[0], curves[1]}, {posterior}, {setup}, {channelWith}, {names}, {ramp}},
 		"fit.Function":    {{white}, {systematics.Trend{}, setup.Trend}, {hook}, {names}, {ramp}},
 
+		"orbit.FitEphemeris":           {{[]int{0, 3, 10}}, {[]float64{100.2, 109.8, 132.3}}, {[]float64{0.001, 0.002, 0.001}}},
+		"orbit.Ephemeris.Timings":      {{ephemeris}, {[]float64{2460512.4, 2460525.1}}, {[]float64{0.001, 0}}},
+		"orbit.Ephemeris.Move":         {{ephemeris}, {7, -20}},
+		"orbit.Ephemeris.Predict":      {{ephemeris}, {7, -20}},
+		"orbit.Ephemeris.Number":       {{ephemeris}, {2460512.4}},
+		"orbit.Orbit.Visit":            {{path}, {3, -1}, {0.01}},
+		"orbit.Orbit.Eclipse":          {{path}, {0.1}},
+		"orbit.Orbit.Elements":         {{path}, {orbit.Basis{}, elements.Basis}, {0.1}},
+		"orbit.Orbit.DurationGradient": {{path}, {0.1}},
+
 		"limb.Count":      {{limb.Power2, limb.FourParameter}},
 		"limb.New":        {{limb.Power2, limb.SquareRoot}, {[]float64{0.6, 0.7}}},
 		"limb.FromSquare": {{limb.Quadratic, limb.Power2}, {0.2, 0.7}, {0.3, 0.6}},
@@ -247,6 +260,7 @@ func newSamples() *samples {
 	}}
 	for _, v := range []any{
 		limb.Law{Name: limb.Power2, Coefficients: []float64{0.6, 0.7}}, limb.Law{Name: limb.FourParameter, Coefficients: []float64{0.5, 0.3, -0.4, 0.2}},
+		elements, ephemeris,
 		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
 		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, setup, settling, whitePriors, channelPriors,
 		posterior, whiteFit, curveFits, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},

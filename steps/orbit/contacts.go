@@ -146,18 +146,11 @@ func root(f func(float64) float64, a, b float64) float64 {
 			}
 			fa *= shrink
 		}
-		if math.Abs(x-b) <= 1e-16 && math.Abs(fx) <= math.Abs(fb) {
-			return x
-		}
+		done := math.Abs(x-b) <= 2e-16*math.Abs(x)
 		b, fb = x, fx
+		if done {
+			break
+		}
 	}
 	return b
-}
-
-// Duration returns the time from first to fourth contact and from second to
-// third contact, in days, for a planet of the given radius in stellar radii,
-// ≥ 0; each is 0 if there are no such contacts. Exact, see [Path.Contacts].
-func (o Orbit) Duration(radiusRatio float64) (t14, t23 float64) {
-	c := o.Path().Contacts(radiusRatio)
-	return c.Fourth - c.First, c.Third - c.Second
 }

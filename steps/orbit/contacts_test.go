@@ -50,7 +50,7 @@ func TestContacts(t *testing.T) {
 		near("second contact", contact[1], c.T2, tolerance)
 		near("third contact", contact[2], c.T3, tolerance)
 		near("fourth contact", contact[3], &c.T4, tolerance)
-		near("smallest separation", closest, &c.TMin, 1e-7) // a minimum: the square root of the precision
+		near("smallest separation", closest, &c.TMin, tolerance)
 		near("impact parameter", o.ImpactParameter(), &c.Btra, 1e-14*o.AxisRatio)
 		t14, t23 := o.Duration(r)
 		near("T14", t14, &c.T14, tolerance)
@@ -77,6 +77,42 @@ func TestDurationsCircular(t *testing.T) {
 		}
 		if math.Abs(t23-want) > tolerance {
 			t.Errorf("P = %g, a/R = %g, k = %g, b = %g: T23 = %.16g, expected %.16g", period, a, r, b, t23, want)
+		}
+	}
+}
+
+// TestSolarSystem checks durations of transits of Earth and Jupiter.
+func TestSolarSystem(t *testing.T) {
+	b, err := os.ReadFile("../../testdata/geometry/solar_system_transits.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var file map[string]json.RawMessage
+	if err := json.Unmarshal(b, &file); err != nil {
+		t.Fatal(err)
+	}
+	for name, published := range map[string]float64{"earth": 13.0, "jupiter": 29.6, "jupiter_mean_radius": 29.6} {
+		var c struct {
+			Period    string `json:"P_days"`
+			AxisRatio string `json:"a_over_R"`
+			K         string
+			T14       string `json:"T14_h"`
+			T23       string `json:"T23_h"`
+			Point     string `json:"T0_point_planet_h"`
+		}
+		if err := json.Unmarshal(file[name], &c); err != nil {
+			t.Fatal(err)
+		}
+		o := Orbit{Period: number(t, c.Period), AxisRatio: number(t, c.AxisRatio), Inclination: math.Pi / 2}
+		t14, t23 := o.Duration(number(t, c.K))
+		point, _ := o.Duration(0)
+		for i, pair := range [][2]float64{{24 * t14, number(t, c.T14)}, {24 * t23, number(t, c.T23)}, {24 * point, number(t, c.Point)}} {
+			if math.Abs(pair[0]/pair[1]-1) > 1e-11 { // digits of the table
+				t.Errorf("%s: duration %d is %.14g h, expected %.14g", name, i, pair[0], pair[1])
+			}
+		}
+		if math.Abs(24*point-published) > 0.05 {
+			t.Errorf("%s: a planet without size takes %g h, published is %g", name, 24*point, published)
 		}
 	}
 }

@@ -106,3 +106,11 @@ func StellarDensity(period, axisRatio float64) float64 {
 	seconds := period * secondsPerDay
 	return 3 * math.Pi / (gravity * seconds * seconds) * axisRatio * axisRatio * axisRatio
 }
+
+// AxisRatio returns the ratio of semi-major axis to stellar radius from the
+// orbital period in days and the mean density of the star, kg m-3: the inverse of
+// [StellarDensity].
+func AxisRatio(period, density float64) float64 {
+	seconds := period * secondsPerDay
+	return math.Cbrt(gravity * seconds * seconds / (3 * math.Pi) * density)
+}

@@ -9,10 +9,18 @@ import (
 
 func init() {
 	Table["rimlight/steps/orbit/orbit"] = map[string]reflect.Value{
+		"AxisRatio":        reflect.ValueOf(orbit.AxisRatio),
+		"Basis":            reflect.ValueOf((*orbit.Basis)(nil)),
+		"Chain":            reflect.ValueOf(orbit.Chain),
 		"Contacts":         reflect.ValueOf((*orbit.Contacts)(nil)),
 		"EccentricAnomaly": reflect.ValueOf(orbit.EccentricAnomaly),
+		"Eclipse":          reflect.ValueOf((*orbit.Eclipse)(nil)),
+		"Elements":         reflect.ValueOf((*orbit.Elements)(nil)),
+		"Ephemeris":        reflect.ValueOf((*orbit.Ephemeris)(nil)),
+		"FitEphemeris":     reflect.ValueOf(orbit.FitEphemeris),
 		"Orbit":            reflect.ValueOf((*orbit.Orbit)(nil)),
 		"Path":             reflect.ValueOf((*orbit.Path)(nil)),
 		"StellarDensity":   reflect.ValueOf(orbit.StellarDensity),
+		"Timing":           reflect.ValueOf((*orbit.Timing)(nil)),
 	}
 }
