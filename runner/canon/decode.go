@@ -3,6 +3,7 @@ package canon
 import (
 	"bytes"
 	"fmt"
+	"io"
 	"reflect"
 	"strconv"
 )
@@ -33,9 +34,44 @@ func UnmarshalValue(data []byte, v reflect.Value) error {
 	if err != nil {
 		return err
 	}
+	return p.readInto(&reader{data: data}, v)
+}
+
+// ReadSealed reads a value in its envelope (see [Seal]) from src, up to its
+// end, into v, which must be settable. It is [Open] and [UnmarshalValue], piece
+// by piece, so that it takes little memory besides the value. At most limit
+// bytes are read, and lengths that the bytes announce are held against it.
+func ReadSealed(src io.Reader, limit int64, v reflect.Value) error {
+	if !v.CanSet() {
+		return errorf("cannot decode into a value that cannot be set")
+	}
+	p, err := planOf(v.Type())
+	if err != nil {
+		return err
+	}
+	r := readerOf(src, limit)
+	err = p.readSealed(r, v)
+	if r.err != nil {
+		return r.err
+	}
+	return err
+}
+
+func (p *plan) readSealed(r *reader, v reflect.Value) error {
+	_, layout, err := r.envelope()
+	if err != nil {
+		return err
+	}
+	if layout != p.layout {
+		return errorf("the value has the layout %s, expected %s", layout, p.layout)
+	}
+	return p.readInto(r, v)
+}
+
+// readInto decodes all that there is to read.
+func (p *plan) readInto(r *reader, v reflect.Value) error {
 	fresh := reflect.New(v.Type()).Elem()
-	r := reader{data}
-	if err := p.read(&r, fresh); err != nil {
+	if err := p.read(r, fresh); err != nil {
 		return err
 	}
 	if err := r.done(); err != nil {
@@ -47,6 +83,7 @@ func UnmarshalValue(data []byte, v reflect.Value) error {
 
 // read decodes the next item into v, which is zero.
 func (p *plan) read(r *reader, v reflect.Value) error {
+	r.fill()
 	switch p.form {
 	case truth:
 		b, err := r.truth()
@@ -132,20 +169,43 @@ func (p *plan) readTyped(r *reader, v reflect.Value) error {
 	if len(r.data) > 0 && r.data[0]&0xe0 != majorTag {
 		return errorf("expected %s, found %s", p.what(), r.found())
 	}
-	k, raw, err := r.typed()
+	k, n, err := r.typedHeads()
 	if err != nil {
 		return err
 	}
 	if k.tag != p.number.tag {
 		return errorf("expected %s, found an array of %s", p.what(), k.kind)
 	}
-	if n := len(raw) / k.width; p.length >= 0 && n != p.length {
+	if p.length >= 0 && n != p.length {
 		return errorf("expected %d numbers, found %d", p.length, n)
 	}
-	if len(raw) == 0 {
+	if n == 0 {
 		return nil
 	}
-	setNumbers(v, numbers(p.number, raw))
+	if n*k.width <= len(r.data) || p.length >= 0 {
+		raw, err := r.take(uint64(n * k.width))
+		if err == nil {
+			err = checkNumbers(k, raw, 0)
+		}
+		if err == nil {
+			setNumbers(v, numbers(p.number, raw))
+		}
+		return err
+	}
+	v.Set(reflect.MakeSlice(v.Type(), n, n))
+	for i := 0; i < n; {
+		if r.fill(); len(r.data) < k.width {
+			return errorf("the bytes end in the middle of the value")
+		}
+		m := min(n-i, len(r.data)/k.width)
+		raw := r.data[:m*k.width]
+		if err := checkNumbers(k, raw, i); err != nil {
+			return err
+		}
+		fillNumbers(v.Slice(i, i+m), p.number, raw)
+		r.data = r.data[len(raw):]
+		i += m
+	}
 	return nil
 }
 
@@ -175,18 +235,19 @@ func (p *plan) readMapping(r *reader, v reflect.Value) error {
 	}
 	t := v.Type()
 	v.Set(reflect.MakeMap(t))
-	var last []byte
+	var last, now encoder // the bytes of the key before, and of this one
 	for i := range n {
-		start := r.data
 		key := reflect.New(t.Key()).Elem()
 		if err := p.key.read(r, key); err != nil {
 			return within("[key]", err)
 		}
-		encoded := start[:len(start)-len(r.data)]
-		if i > 0 && bytes.Compare(last, encoded) >= 0 {
+		last, now = now, encoder{buf: last.buf[:0]}
+		if err := now.value(p.key, key); err != nil {
+			return within(keyStep(key), err)
+		}
+		if i > 0 && bytes.Compare(last.buf, now.buf) >= 0 {
 			return within(keyStep(key), errorf("the key is repeated or not in sorted order"))
 		}
-		last = encoded
 		value := reflect.New(t.Elem()).Elem()
 		if err := p.elem.read(r, value); err != nil {
 			return within(keyStep(key), err)
@@ -206,7 +267,7 @@ func (p *plan) readRecord(r *reader, v reflect.Value) error {
 		if i >= n {
 			return within("."+f.name, errorf("the field is missing"))
 		}
-		if !bytes.HasPrefix(r.data, f.key) {
+		if r.fill(); !bytes.HasPrefix(r.data, f.key) {
 			return p.strange(r, i)
 		}
 		r.data = r.data[len(f.key):]

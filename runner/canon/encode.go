@@ -3,6 +3,7 @@ package canon
 import (
 	"bytes"
 	"encoding/binary"
+	"io"
 	"reflect"
 	"sort"
 	"unicode/utf8"
@@ -31,14 +32,37 @@ func Marshal(v any) ([]byte, error) { return MarshalValue(reflect.ValueOf(v)) }
 
 // MarshalValue is [Marshal] of the value that v holds.
 func MarshalValue(v reflect.Value) ([]byte, error) {
-	if !v.IsValid() {
-		return nil, errorf("there is no value, and no type")
-	}
-	p, err := planOf(v.Type())
+	p, err := planOfValue(v)
 	if err != nil {
 		return nil, err
 	}
-	return p.append(make([]byte, 0, p.size(v)), v)
+	e := encoder{buf: make([]byte, 0, p.size(v))}
+	if err := e.value(p, v); err != nil {
+		return nil, err
+	}
+	return e.buf, nil
+}
+
+// WriteValue writes what [MarshalValue] gives, piece by piece, so that it takes
+// little memory besides the value. After an error some of it may have been
+// written.
+func WriteValue(w io.Writer, v reflect.Value) error {
+	p, err := planOfValue(v)
+	if err != nil {
+		return err
+	}
+	e := encoder{w: w}
+	if err := e.value(p, v); err != nil {
+		return err
+	}
+	return e.flush()
+}
+
+func planOfValue(v reflect.Value) (*plan, error) {
+	if !v.IsValid() {
+		return nil, errorf("there is no value, and no type")
+	}
+	return planOf(v.Type())
 }
 
 // size is at least the length of v's encoding, but for mappings, which are
@@ -66,78 +90,145 @@ func (p *plan) size(v reflect.Value) int {
 	return 9
 }
 
-func (p *plan) append(dst []byte, v reflect.Value) ([]byte, error) {
+// An encoder collects encoded bytes. With a writer, it passes them on as soon
+// as there are a piece of them.
+type encoder struct {
+	buf []byte
+	w   io.Writer
+}
+
+// piece is how many bytes are read or written at a time.
+const piece = 256 << 10
+
+// flush passes on what there is, if there is a writer.
+func (e *encoder) flush() error {
+	if e.w == nil || len(e.buf) == 0 {
+		return nil
+	}
+	_, err := e.w.Write(e.buf)
+	e.buf = e.buf[:0]
+	return err
+}
+
+// room passes on what there is if it is a piece.
+func (e *encoder) room() error {
+	if len(e.buf) < piece {
+		return nil
+	}
+	return e.flush()
+}
+
+func (e *encoder) value(p *plan, v reflect.Value) error {
 	switch p.form {
 	case truth:
 		if v.Bool() {
-			return append(dst, simpleTrue), nil
+			e.buf = append(e.buf, simpleTrue)
+		} else {
+			e.buf = append(e.buf, simpleFalse)
 		}
-		return append(dst, simpleFalse), nil
 	case signed:
-		return appendSigned(dst, v.Int()), nil
+		e.buf = appendSigned(e.buf, v.Int())
 	case natural:
-		return appendHead(dst, majorNatural, v.Uint()), nil
+		e.buf = appendHead(e.buf, majorNatural, v.Uint())
 	case float:
-		return appendFloat(dst, v.Float()), nil
+		e.buf = appendFloat(e.buf, v.Float())
 	case text:
-		s := v.String()
-		if !utf8.ValidString(s) {
-			return nil, errorf("text that is not valid UTF-8 cannot be encoded: %.60q", s)
-		}
-		return appendText(dst, s), nil
+		return e.text(v.String())
 	case typed:
-		dst = appendTyped(dst, p.number, v.Len())
-		return appendNumbers(dst, p.number, v), nil
+		return e.typed(p, v)
 	case list:
-		return p.appendList(dst, v)
+		return e.list(p, v)
 	case mapping:
-		return p.appendMapping(dst, v)
+		return e.mapping(p, v)
+	case record:
+		return e.record(p, v)
 	}
-	return p.appendRecord(dst, v)
+	return nil
 }
 
-func (p *plan) appendList(dst []byte, v reflect.Value) (_ []byte, err error) {
-	dst = appendHead(dst, majorArray, uint64(v.Len()))
-	for i := range v.Len() {
-		if dst, err = p.elem.append(dst, v.Index(i)); err != nil {
-			return nil, within(index(i), err)
+func (e *encoder) text(s string) error {
+	if !utf8.ValidString(s) {
+		return errorf("text that is not valid UTF-8 cannot be encoded: %.60q", s)
+	}
+	e.buf = appendHead(e.buf, majorText, uint64(len(s)))
+	for e.w != nil && len(s) > piece {
+		e.buf = append(e.buf, s[:piece]...)
+		s = s[piece:]
+		if err := e.flush(); err != nil {
+			return err
 		}
 	}
-	return dst, nil
+	e.buf = append(e.buf, s...)
+	return nil
 }
 
-func (p *plan) appendRecord(dst []byte, v reflect.Value) (_ []byte, err error) {
-	dst = appendHead(dst, majorMap, uint64(len(p.fields)))
+func (e *encoder) typed(p *plan, v reflect.Value) error {
+	n := v.Len()
+	e.buf = appendTyped(e.buf, p.number, n)
+	if e.w == nil || n <= piece/8 || v.Kind() == reflect.Array {
+		e.buf = appendNumbers(e.buf, p.number, v)
+		return e.room()
+	}
+	for i := 0; i < n; i += piece / 8 {
+		e.buf = appendNumbers(e.buf, p.number, v.Slice(i, min(n, i+piece/8)))
+		if err := e.room(); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (e *encoder) list(p *plan, v reflect.Value) error {
+	e.buf = appendHead(e.buf, majorArray, uint64(v.Len()))
+	for i := range v.Len() {
+		if err := e.value(p.elem, v.Index(i)); err != nil {
+			return within(index(i), err)
+		}
+		if err := e.room(); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (e *encoder) record(p *plan, v reflect.Value) error {
+	e.buf = appendHead(e.buf, majorMap, uint64(len(p.fields)))
 	for i := range p.fields {
 		f := &p.fields[i]
-		dst = append(dst, f.key...)
-		if dst, err = f.plan.append(dst, v.Field(f.index)); err != nil {
-			return nil, within("."+f.name, err)
+		e.buf = append(e.buf, f.key...)
+		if err := e.value(f.plan, v.Field(f.index)); err != nil {
+			return within("."+f.name, err)
 		}
 	}
-	return dst, nil
+	return nil
 }
 
-func (p *plan) appendMapping(dst []byte, v reflect.Value) ([]byte, error) {
-	type entry struct{ key, value []byte }
+func (e *encoder) mapping(p *plan, v reflect.Value) error {
+	type entry struct {
+		key   []byte
+		value reflect.Value
+		name  reflect.Value
+	}
 	entries := make([]entry, 0, v.Len())
 	for it := v.MapRange(); it.Next(); {
-		key, err := p.key.append(nil, it.Key())
-		if err != nil {
-			return nil, within("[key]", err)
+		var key encoder
+		if err := key.value(p.key, it.Key()); err != nil {
+			return within("[key]", err)
 		}
-		value, err := p.elem.append(nil, it.Value())
-		if err != nil {
-			return nil, within(keyStep(it.Key()), err)
-		}
-		entries = append(entries, entry{key, value})
+		entries = append(entries, entry{key.buf, it.Value(), it.Key()})
 	}
 	sort.Slice(entries, func(i, j int) bool { return bytes.Compare(entries[i].key, entries[j].key) < 0 })
-	dst = appendHead(dst, majorMap, uint64(len(entries)))
-	for _, e := range entries {
-		dst = append(append(dst, e.key...), e.value...)
+	e.buf = appendHead(e.buf, majorMap, uint64(len(entries)))
+	for _, en := range entries {
+		e.buf = append(e.buf, en.key...)
+		if err := e.value(p.elem, en.value); err != nil {
+			return within(keyStep(en.name), err)
+		}
+		if err := e.room(); err != nil {
+			return err
+		}
 	}
-	return dst, nil
+	return nil
 }
 
 func appendSigned(dst []byte, x int64) []byte {

@@ -33,34 +33,44 @@ func Seal(typ, layout string, value []byte) []byte {
 // yet to be decoded: [Unmarshal], [Split] and [Tree] check it. An envelope of
 // another version is refused.
 func Open(data []byte) (typ, layout string, value []byte, err error) {
-	r := reader{data}
+	r := reader{data: data}
+	if typ, layout, err = r.envelope(); err != nil {
+		return "", "", nil, err
+	}
+	return typ, layout, r.data, nil
+}
+
+// envelope takes off everything of an envelope that comes before the value.
+func (r *reader) envelope() (typ, layout string, err error) {
+	r.fill()
 	for _, want := range []struct {
 		major byte
 		arg   uint64
 	}{{majorTag, selfDescribed}, {majorArray, 5}} {
 		if major, arg, err := r.head(); err != nil || major != want.major || arg != want.arg {
-			return "", "", nil, errorf("the bytes are no value of rimlight's")
+			return "", "", errorf("the bytes are no value of rimlight's")
 		}
 	}
 	if name, err := r.text("a name"); err != nil || string(name) != envelopeName {
-		return "", "", nil, errorf("the bytes are no value of rimlight's")
+		return "", "", errorf("the bytes are no value of rimlight's")
 	}
 	version, err := r.expect(majorNatural, "a version")
 	if err != nil {
-		return "", "", nil, within("envelope", err)
+		return "", "", within("envelope", err)
 	}
 	if version != envelopeVersion {
-		return "", "", nil, errorf("the value's envelope has version %d, but this program knows version %d only", version, envelopeVersion)
+		return "", "", errorf("the value's envelope has version %d, but this program knows version %d only", version, envelopeVersion)
 	}
 	for _, part := range []*string{&typ, &layout} {
+		r.fill()
 		b, err := r.text("the name or layout of a type")
 		if err != nil {
-			return "", "", nil, within("envelope", err)
+			return "", "", within("envelope", err)
 		}
 		*part = string(b)
 	}
-	if len(r.data) == 0 {
-		return "", "", nil, errorf("the envelope holds no value")
+	if r.fill(); len(r.data) == 0 {
+		return "", "", errorf("the envelope holds no value")
 	}
-	return typ, layout, r.data, nil
+	return typ, layout, nil
 }

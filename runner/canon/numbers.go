@@ -227,21 +227,21 @@ func float32s(raw []byte) []float32 {
 }
 
 // checkNumbers looks for numbers that are never encoded: NaNs other than the
-// one.
-func checkNumbers(k numberKind, raw []byte) error {
+// one. The first number is the one at index first.
+func checkNumbers(k numberKind, raw []byte, first int) error {
 	switch k.kind {
 	case reflect.Float64:
 		for i := 0; i < len(raw); i += 8 {
 			bits := binary.LittleEndian.Uint64(raw[i:])
 			if x := math.Float64frombits(bits); x != x && bits != nan64 {
-				return within(index(i/8), errorf("NaN with the bits %#x, expected %#x", bits, nan64))
+				return within(index(first+i/8), errorf("NaN with the bits %#x, expected %#x", bits, nan64))
 			}
 		}
 	case reflect.Float32:
 		for i := 0; i < len(raw); i += 4 {
 			bits := binary.LittleEndian.Uint32(raw[i:])
 			if x := math.Float32frombits(bits); x != x && bits != nan32 {
-				return within(index(i/4), errorf("NaN with the bits %#x, expected %#x", bits, nan32))
+				return within(index(first+i/4), errorf("NaN with the bits %#x, expected %#x", bits, nan32))
 			}
 		}
 	}
@@ -258,4 +258,24 @@ func integers[T integer](raw []byte, width int) []T {
 		out[i] = T(u)
 	}
 	return out
+}
+
+// fillNumbers sets the elements of a slice to the numbers of a part of a
+// checked typed array.
+func fillNumbers(v reflect.Value, k numberKind, raw []byte) {
+	if k.kind == reflect.Float64 && v.Type().Elem() == scalarTypes[reflect.Float64] {
+		out := v.Convert(reflect.TypeFor[[]float64]()).Interface().([]float64)
+		for i := range out {
+			out[i] = math.Float64frombits(binary.LittleEndian.Uint64(raw[8*i:]))
+		}
+		return
+	}
+	from := reflect.ValueOf(numbers(k, raw))
+	if from.Type().Elem() == v.Type().Elem() {
+		reflect.Copy(v, from)
+		return
+	}
+	for i := range from.Len() {
+		v.Index(i).Set(from.Index(i).Convert(v.Type().Elem()))
+	}
 }

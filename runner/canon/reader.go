@@ -2,17 +2,64 @@ package canon
 
 import (
 	"encoding/binary"
+	"io"
 	"math"
 	"unicode/utf8"
 )
 
-// A reader takes canonical items off the front of encoded bytes.
+// A reader takes canonical items off the front of encoded bytes. These lie in
+// data, all of them or, with a source, the next few.
 type reader struct {
 	data []byte
+	src  io.Reader
+	left int    // bytes that may yet come from the source
+	buf  []byte // what data is a part of, with a source
+	err  error  // of the source
 }
+
+// lookAhead is more than the longest head or name of a field takes.
+const lookAhead = 2 * maxLayout
+
+// readerOf gives a reader of at most limit bytes from a source.
+func readerOf(src io.Reader, limit int64) *reader {
+	limit = min(limit, math.MaxInt)
+	return &reader{src: src, left: int(limit), buf: make([]byte, min(limit, piece))}
+}
+
+// fill sees to it that lookAhead bytes lie ready, or all that there are.
+func (r *reader) fill() {
+	if r.left > 0 && len(r.data) < lookAhead {
+		r.refill()
+	}
+}
+
+func (r *reader) refill() {
+	n := copy(r.buf, r.data)
+	for r.left > 0 && n < min(lookAhead, len(r.buf)) {
+		m, err := r.src.Read(r.buf[n:min(len(r.buf), n+r.left)])
+		n += m
+		r.left -= m
+		if err != nil {
+			r.end(err)
+		}
+	}
+	r.data = r.buf[:n]
+}
+
+// end notes that the source has no more to give.
+func (r *reader) end(err error) {
+	r.left = 0
+	if err != io.EOF && err != io.ErrUnexpectedEOF {
+		r.err = err
+	}
+}
+
+// rest is how many bytes follow, at most.
+func (r *reader) rest() int { return len(r.data) + r.left }
 
 // done is an error if anything is left.
 func (r *reader) done() error {
+	r.fill()
 	if len(r.data) > 0 {
 		return errorf("%d bytes follow the end of the value", len(r.data))
 	}
@@ -67,19 +114,38 @@ func (r *reader) count(major byte, what string, min int) (int, error) {
 	if err != nil {
 		return 0, err
 	}
-	if n > uint64(len(r.data)/max(1, min)) {
-		return 0, errorf("%s of %d elements, but only %d bytes follow", what, n, len(r.data))
+	if n > uint64(r.rest()/max(1, min)) {
+		return 0, errorf("%s of %d elements, but only %d bytes follow", what, n, r.rest())
 	}
 	return int(n), nil
 }
 
-// take takes off n bytes.
+// take takes off n bytes, which stay as they are until the next fill.
 func (r *reader) take(n uint64) ([]byte, error) {
+	if n > uint64(r.rest()) {
+		return nil, errorf("an item of %d bytes, but only %d follow", n, r.rest())
+	}
 	if n > uint64(len(r.data)) {
-		return nil, errorf("an item of %d bytes, but only %d follow", n, len(r.data))
+		return r.gather(int(n))
 	}
 	b := r.data[:n]
 	r.data = r.data[n:]
+	return b, nil
+}
+
+// gather takes off n bytes that do not lie ready.
+func (r *reader) gather(n int) ([]byte, error) {
+	b := make([]byte, 0, min(n, piece))
+	for len(b) < n {
+		if len(r.data) == 0 {
+			if r.refill(); len(r.data) == 0 {
+				return nil, errorf("the bytes end in the middle of the value")
+			}
+		}
+		m := min(n-len(b), len(r.data))
+		b = append(b, r.data[:m]...)
+		r.data = r.data[m:]
+	}
 	return b, nil
 }
 
@@ -133,26 +199,38 @@ func (r *reader) float(what string) (float64, error) {
 
 // typed takes off a typed array and gives its numbers, checked but not decoded.
 func (r *reader) typed() (numberKind, []byte, error) {
-	tag, err := r.expect(majorTag, "an array of numbers")
+	k, n, err := r.typedHeads()
 	if err != nil {
 		return numberKind{}, nil, err
+	}
+	raw, err := r.take(uint64(n * k.width))
+	if err == nil {
+		err = checkNumbers(k, raw, 0)
+	}
+	return k, raw, err
+}
+
+// typedHeads takes off the heads of a typed array and gives how many numbers
+// follow.
+func (r *reader) typedHeads() (numberKind, int, error) {
+	tag, err := r.expect(majorTag, "an array of numbers")
+	if err != nil {
+		return numberKind{}, 0, err
 	}
 	k, ok := numberTagged(tag)
 	if !ok {
-		return numberKind{}, nil, errorf("the tag %d has no meaning here", tag)
+		return numberKind{}, 0, errorf("the tag %d has no meaning here", tag)
 	}
 	n, err := r.expect(majorBytes, "the bytes of an array of "+k.kind.String())
-	if err != nil {
-		return numberKind{}, nil, err
+	switch {
+	case err != nil:
+		return numberKind{}, 0, err
+	case n%uint64(k.width) != 0:
+		return numberKind{}, 0, errorf("an array of %s of %d bytes, expected a multiple of %d", k.kind, n, k.width)
+	case n > uint64(r.rest()):
+		return numberKind{}, 0, errorf("an item of %d bytes, but only %d follow", n, r.rest())
 	}
-	if n%uint64(k.width) != 0 {
-		return numberKind{}, nil, errorf("an array of %s of %d bytes, expected a multiple of %d", k.kind, n, k.width)
-	}
-	raw, err := r.take(n)
-	if err == nil {
-		err = checkNumbers(k, raw)
-	}
-	return k, raw, err
+	return k, int(n) / k.width, nil
 }
 
 // found says in words what the next item is.
@@ -172,7 +250,7 @@ func (r *reader) found() string {
 	case majorMap:
 		return "a map"
 	case majorTag:
-		rest := reader{r.data}
+		rest := reader{data: r.data}
 		if _, tag, err := rest.head(); err == nil {
 			if k, ok := numberTagged(tag); ok {
 				return "an array of " + k.kind.String()

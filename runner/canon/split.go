@@ -12,7 +12,7 @@ import (
 // are typed arrays, are encoded afresh. The items are checked to be
 // canonical, but not to have the layout.
 func Split(elem string, data []byte) ([][]byte, error) {
-	r := reader{data}
+	r := reader{data: data}
 	if k, ok := numberNamed(elem); ok {
 		return splitTyped(k, &r)
 	}
@@ -36,7 +36,7 @@ func Split(elem string, data []byte) ([][]byte, error) {
 // layout elem, as far as its head tells: the elements are not looked at. It is
 // for deciding whether to call [Split], which takes memory for each element.
 func Len(elem string, data []byte) (int, error) {
-	r := reader{data}
+	r := reader{data: data}
 	if _, ok := numberNamed(elem); ok {
 		k, raw, err := r.typed()
 		if err != nil {
@@ -57,7 +57,7 @@ func Join(elem string, items [][]byte) ([]byte, error) {
 	size := headSize(uint64(len(items)))
 	for i, item := range items {
 		size += len(item)
-		r := reader{item}
+		r := reader{data: item}
 		err := r.skip(1)
 		if err == nil {
 			err = r.done()
@@ -106,9 +106,11 @@ func splitTyped(k numberKind, r *reader) ([][]byte, error) {
 	buf := make([]byte, 0, n*(1+k.width)) // no number takes more; items must not move
 	for i := range items {
 		start := len(buf)
-		if buf, err = p.append(buf, slice.Index(i)); err != nil {
+		e := encoder{buf: buf}
+		if err := e.value(p, slice.Index(i)); err != nil {
 			return nil, within(index(i), err)
 		}
+		buf = e.buf
 		items[i] = buf[start:len(buf):len(buf)]
 	}
 	return items, nil

@@ -11,7 +11,7 @@ const treeOverhead = 64
 // decimal if they are integers. What would take more than about limit bytes of
 // memory is refused.
 func Tree(data []byte, limit int) (any, error) {
-	t := treeReader{reader{data}, limit}
+	t := treeReader{reader{data: data}, limit}
 	v, err := t.value(1)
 	if err != nil {
 		return nil, err
