@@ -73,6 +73,17 @@ func Join(elem string, items [][]byte) ([]byte, error) {
 	return dst, nil
 }
 
+// ListHead gives the bytes that an encoded slice of n values, which are not
+// numbers, begins with. Those of the values follow.
+func ListHead(n int) []byte { return appendHead(nil, majorArray, uint64(n)) }
+
+// IsNumber reports whether a layout is that of a number, of which slices are
+// typed arrays.
+func IsNumber(layout string) bool {
+	_, ok := numberNamed(layout)
+	return ok
+}
+
 // numberNamed gives the kind of number of a layout, if it is one.
 func numberNamed(layout string) (numberKind, bool) {
 	for _, k := range numberKinds {

@@ -29,15 +29,20 @@ func (s *size) Set(text string) error {
 	return nil
 }
 
-func (s *size) String() string { return strings.ReplaceAll(worker.Size(int64(*s)), " ", "") }
+func (s *size) String() string {
+	if *s == 0 {
+		return "as needed"
+	}
+	return strings.ReplaceAll(worker.Size(int64(*s)), " ", "")
+}
 
 func (s *size) Type() string { return "size" }
 
 // limitFlags adds the flags that say what steps may use up.
 func (o *options) limitFlags(f *pflag.FlagSet) {
-	o.limits = worker.Options{StepTime: worker.DefaultStepTime, Memory: worker.DefaultMemory}
+	o.limits = worker.Options{StepTime: worker.DefaultStepTime}
 	f.DurationVar(&o.limits.StepTime, worker.TimeFlag, worker.DefaultStepTime, "longest `DURATION` that a step, or one element of a fan-out, may take")
-	f.Var((*size)(&o.limits.Memory), worker.MemoryFlag, "largest `SIZE` of memory that a worker process may use")
+	f.Var((*size)(&o.limits.Memory), worker.MemoryFlag, "largest `SIZE` of memory that a worker process may use; as needed is "+worker.Size(worker.DefaultMemory)+" and six times the arguments of the step, up to three quarters of the machine's memory")
 	f.BoolVar(&o.limits.Require, worker.RequireFlag, false, "refuse to run steps unless every layer of confinement is active")
 }
 
@@ -46,7 +51,7 @@ func (o *options) checkLimits() error {
 	if o.limits.StepTime < 100*time.Millisecond {
 		return fmt.Errorf("--%s %v: expected at least 100ms", worker.TimeFlag, o.limits.StepTime)
 	}
-	if o.limits.Memory < confine.MinMemory {
+	if o.limits.Memory != 0 && o.limits.Memory < confine.MinMemory {
 		return fmt.Errorf("--%s %s: expected at least %s", worker.MemoryFlag, worker.Size(o.limits.Memory), worker.Size(confine.MinMemory))
 	}
 	return nil

@@ -19,7 +19,7 @@ func (e *Engine) Carry(ctx context.Context, w Work, ended func(unit int, err err
 	if err != nil {
 		return faultOf(err, "")
 	}
-	e.slots = make(chan struct{}, max(1, e.Jobs))
+	e.slots, e.turn = make(chan struct{}, max(1, e.Jobs)), make(chan struct{}, 1)
 	comps, items := make([]Computation, len(w.Units)), []Value(nil)
 	var todo []int
 	for n, u := range w.Units {
@@ -106,7 +106,12 @@ func (e *Engine) carryOne(ctx context.Context, spec *plan.Step, c *Computation) 
 	if err != nil {
 		return err
 	}
-	p := pool{e: e, spec: spec, args: args}
+	h := hold{e, massive(args)}
+	if !h.take(ctx) {
+		return ctx.Err()
+	}
+	defer h.give()
+	p := pool{e: e, spec: spec, args: args, hold: h}
 	defer p.close()
 	return p.compute(ctx, c, nil)
 }

@@ -332,18 +332,11 @@ func (e *Engine) arrived(c *Computation) error {
 // mendFor reads all that the listed elements are computed with, and mends what
 // is damaged.
 func (e *Engine) mendFor(ctx context.Context, spec *plan.Step, items []Value, list []int) error {
-	if _, err := e.arguments(ctx, spec); err != nil {
+	if err := e.verifyArguments(ctx, spec); err != nil || items == nil {
 		return err
 	}
-	if items == nil {
-		return nil
-	}
-	if !e.acquire(ctx) {
-		return ctx.Err()
-	}
-	defer e.release()
 	for _, n := range list {
-		if _, err := e.itemBytes(ctx, spec.Args[spec.Each], items, n); err != nil {
+		if err := e.verify(ctx, spec.Args[spec.Each], func() Value { return items[n] }); err != nil {
 			return err
 		}
 	}

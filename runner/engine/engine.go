@@ -62,9 +62,10 @@ type Engine struct {
 
 	outcome *Outcome
 	slots   chan struct{}
-	watch   sync.Mutex   // guards Observe
-	heal    []sync.Mutex // one per step: a step is healed by one caller at a time
-	state   sync.RWMutex // guards outcome.Steps, which mending may rewrite
+	turn    chan struct{} // taken by whoever handles mass data
+	watch   sync.Mutex    // guards Observe
+	heal    []sync.Mutex  // one per step: a step is healed by one caller at a time
+	state   sync.RWMutex  // guards outcome.Steps, which mending may rewrite
 	notes   []string
 	differs []string
 
@@ -154,7 +155,7 @@ type Event struct {
 // taking place at all; failures of steps are in the outcome.
 func (e *Engine) Run(ctx context.Context) *Outcome {
 	e.outcome = &Outcome{Inputs: make([]Input, len(e.Plan.Inputs)), Steps: make([]Step, len(e.Plan.Steps))}
-	e.slots = make(chan struct{}, max(1, e.Jobs))
+	e.slots, e.turn = make(chan struct{}, max(1, e.Jobs)), make(chan struct{}, 1)
 	e.heal = make([]sync.Mutex, len(e.Plan.Steps))
 	var all sync.WaitGroup
 	for i := range e.outcome.Inputs {
@@ -319,15 +320,16 @@ func (e *Engine) readInput(ctx context.Context, in *Input, spec *plan.Input) err
 	if e.lookUp(&in.Computation, in.Name, -1) {
 		return nil
 	}
-	if !e.acquire(ctx) {
-		return ctx.Err()
-	}
-	defer e.release()
-	e.observe(Event{Step: in.Name, Input: true, Why: in.Why})
 	total := int64(0)
 	for _, n := range sizes {
 		total += n
 	}
+	h := hold{e, total > massData}
+	if !h.take(ctx) {
+		return ctx.Err()
+	}
+	defer h.give()
+	e.observe(Event{Step: in.Name, Input: true, Why: in.Why})
 	w, err := worker.Start(ctx, e.Limits.Reading(total), files...)
 	if err != nil {
 		return err
@@ -337,19 +339,22 @@ func (e *Engine) readInput(ctx context.Context, in *Input, spec *plan.Input) err
 	for _, c := range spec.Columns {
 		columns = append(columns, lightcurve.Column{Role: c.Role, HDU: c.HDU, Name: c.Name, Unit: c.Unit, Offset: c.Offset})
 	}
-	v, err := w.Read(spec.Layout, columns, names, sizes)
+	t := &tray{store: e.Store}
+	v, err := w.Read(spec.Layout, columns, names, sizes, t)
 	if err != nil {
+		t.clear()
 		return fmt.Errorf("%s: %w", spec.Paths[0], err)
 	}
 	for i, s := range v.SHA256 {
 		if s != sums[i] {
+			t.clear()
 			return fmt.Errorf("%s changed while it was being read: run again when it is complete", spec.Paths[i])
 		}
 	}
 	for _, n := range v.Notes {
 		v.Log += n + "\n"
 	}
-	return e.keepOne(keeping{c: &in.Computation, name: in.Name, results: []string{in.Name}, values: v})
+	return e.keepOne(keeping{c: &in.Computation, name: in.Name, results: []string{in.Name}, values: v, tray: t})
 }
 
 // digest gives the size of what r holds, and its SHA-256 in hex.

@@ -3,6 +3,7 @@ package engine
 import (
 	"errors"
 	"fmt"
+	"sync"
 	"time"
 
 	"rimlight/runner/store"
@@ -15,6 +16,7 @@ type keeping struct {
 	name    string   // of the step or input
 	results []string // names of the results
 	values  worker.Values
+	tray    *tray
 	done    func(error) // told when it is kept, or why it could not be
 }
 
@@ -29,15 +31,15 @@ const (
 // the channel is closed.
 func (e *Engine) keeper(arriving <-chan keeping) {
 	for k := range arriving {
-		batch, size := []keeping{k}, k.size()
+		batch := []keeping{k}
 	more:
-		for len(batch) < maxTogether && size < maxTogetherBytes {
+		for len(batch) < maxTogether {
 			select {
 			case k, ok := <-arriving:
 				if !ok {
 					break more
 				}
-				batch, size = append(batch, k), size+k.size()
+				batch = append(batch, k)
 			default:
 				break more
 			}
@@ -46,24 +48,48 @@ func (e *Engine) keeper(arriving <-chan keeping) {
 	}
 }
 
-func (k keeping) size() int {
-	n := 0
-	for _, b := range k.values.Sealed {
-		n += len(b)
+// A waiting counts the bytes in memory that wait to be kept.
+type waiting struct {
+	mu    sync.Mutex
+	less  *sync.Cond
+	bytes int
+}
+
+func newWaiting() *waiting {
+	w := &waiting{}
+	w.less = sync.NewCond(&w.mu)
+	return w
+}
+
+// add waits until there is room for n bytes more.
+func (w *waiting) add(n int) {
+	w.mu.Lock()
+	defer w.mu.Unlock()
+	for w.bytes > 0 && w.bytes+n > maxTogetherBytes {
+		w.less.Wait()
 	}
-	return n
+	w.bytes += n
+}
+
+// done says that n bytes were kept.
+func (w *waiting) done(n int) {
+	w.mu.Lock()
+	defer w.mu.Unlock()
+	w.bytes -= n
+	w.less.Broadcast()
 }
 
 // keep stores what computations gave, all results first, all records last, and
 // tells each how it went.
 func (e *Engine) keep(batch []keeping) {
 	when := time.Now().UTC()
-	var objects [][]byte
+	var drafts []*store.Draft
 	var records []store.Record
 	var good []keeping
 	for _, k := range batch {
-		values, obj, err := k.arrange()
+		values, err := k.arrange()
 		if err != nil {
+			k.tray.clear()
 			k.done(err)
 			continue
 		}
@@ -72,9 +98,10 @@ func (e *Engine) keep(batch []keeping) {
 			r.Results = append(r.Results, store.Result{Name: k.results[i], Type: v.Type, Layout: v.Layout, Hash: v.Hash, Size: v.Size})
 		}
 		k.c.Results = values
-		objects, records, good = append(objects, obj...), append(records, r), append(good, k)
+		drafts, records, good = append(drafts, k.tray.drafts...), append(records, r), append(good, k)
+		k.tray.drafts = nil
 	}
-	if _, err := e.Store.PutBatch(objects); err != nil {
+	if err := e.Store.PutDrafts(drafts); err != nil {
 		for _, k := range good {
 			k.done(err)
 		}
@@ -111,18 +138,11 @@ func (e *Engine) keepOne(k keeping) error {
 	return err
 }
 
-func (k keeping) arrange() (values []Value, objects [][]byte, err error) {
-	if len(k.values.Sealed) != len(k.results) {
-		return nil, nil, fmt.Errorf("the worker gave %d results, expected %d", len(k.values.Sealed), len(k.results))
+func (k keeping) arrange() ([]Value, error) {
+	if len(k.values.Results) != len(k.results) {
+		return nil, fmt.Errorf("the worker gave %d results, expected %d", len(k.values.Results), len(k.results))
 	}
-	for _, b := range k.values.Sealed {
-		v, obj, err := arrange(b)
-		if err != nil {
-			return nil, nil, err
-		}
-		values, objects = append(values, v), append(objects, obj...)
-	}
-	return values, objects, nil
+	return k.tray.values(k.values.Results)
 }
 
 // firstInForce takes up the results that a computation gave the first time, in

@@ -1,6 +1,9 @@
 package engine
 
-import "rimlight/runner/store"
+import (
+	"rimlight/runner/store"
+	"rimlight/runner/worker"
+)
 
 // Live gives the objects that a record holds on to: its results and, of lists,
 // their elements. What is missing or damaged holds on to nothing; a list that
@@ -8,7 +11,7 @@ import "rimlight/runner/store"
 func Live(s *store.Store, r store.Record) (out []store.Hash, err error) {
 	for _, res := range r.Results {
 		out = append(out, res.Hash)
-		if !isList(res.Layout) {
+		if !worker.IsList(res.Layout) {
 			continue
 		}
 		b, err := s.Get(res.Hash)

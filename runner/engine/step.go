@@ -6,10 +6,10 @@ import (
 	"errors"
 	"fmt"
 	"reflect"
+	"slices"
 	"sync"
 	"sync/atomic"
 
-	"rimlight/runner/canon"
 	"rimlight/runner/plan"
 	"rimlight/runner/worker"
 	"rimlight/steps/lightcurve"
@@ -65,58 +65,6 @@ func (e *Engine) hashes(spec *plan.Step, element Value) []string {
 	return out
 }
 
-// arguments reads what a step is to be called with. The element's place, and
-// the seed's, stay empty.
-func (e *Engine) arguments(ctx context.Context, spec *plan.Step) ([][]byte, error) {
-	out := make([][]byte, len(spec.Args))
-	for i, a := range spec.Args {
-		var err error
-		switch a.Source {
-		case plan.FromSetting, plan.FromPriors:
-			out[i], err = sealGo(a.Type, a.Value)
-		case plan.FromInput:
-			out[i], err = e.inputBytes(ctx, a.Input)
-		case plan.FromResult:
-			out[i], err = e.resultBytes(ctx, a.Step, a.Result)
-		}
-		if err != nil {
-			return nil, fmt.Errorf("argument %s: %w", a.Name, err)
-		}
-	}
-	return out, nil
-}
-
-func sealGo(typ string, v any) ([]byte, error) {
-	if b, ok := v.(ready); ok {
-		return b, nil
-	}
-	layout, err := canon.Layout(reflect.TypeOf(v))
-	if err != nil {
-		return nil, err
-	}
-	b, err := canon.Marshal(v)
-	if err != nil {
-		return nil, err
-	}
-	return canon.Seal(typ, layout, b), nil
-}
-
-// inputBytes reads an input as kept, and reads the raw file again when the
-// kept form turns out to be damaged.
-func (e *Engine) inputBytes(ctx context.Context, i int) ([]byte, error) {
-	in := &e.outcome.Inputs[i]
-	b, err := sealed(e.Store, in.Results[0])
-	if !damaged(err) || e.foreign {
-		return b, err
-	}
-	e.note("input %s: %v; it was read again", in.Name, err)
-	again := Input{Name: in.Name}
-	if err := e.readInput(ctx, &again, &e.Plan.Inputs[i]); err != nil {
-		return nil, err
-	}
-	return sealed(e.Store, again.Results[0])
-}
-
 // result is a result of a step that is done.
 func (e *Engine) result(step, result int) Value {
 	e.state.RLock()
@@ -129,19 +77,6 @@ func (e *Engine) settle(step int, c Computation, elements []Computation) {
 	e.state.Lock()
 	defer e.state.Unlock()
 	e.outcome.Steps[step].Computation, e.outcome.Steps[step].Elements = c, elements
-}
-
-// resultBytes reads a kept result, and computes it again when it turns out to
-// be damaged.
-func (e *Engine) resultBytes(ctx context.Context, step, result int) ([]byte, error) {
-	b, err := sealed(e.Store, e.result(step, result))
-	if !damaged(err) {
-		return b, err
-	}
-	if err := e.mend(ctx, step, err); err != nil {
-		return nil, err
-	}
-	return sealed(e.Store, e.result(step, result))
 }
 
 // mend computes again whatever of a step's results is missing from the store.
@@ -161,12 +96,22 @@ func (e *Engine) mend(ctx context.Context, step int, cause error) error {
 // Bytes reads result number result of a step, in its envelope, mending the
 // store when it is damaged. It may be called after Run.
 func (e *Engine) Bytes(ctx context.Context, step, result int) ([]byte, error) {
-	return e.resultBytes(ctx, step, result)
+	return e.bytes(ctx, plan.Arg{Source: plan.FromResult, Step: step, Result: result})
 }
 
 // InputBytes reads an input as read, in its envelope, likewise.
 func (e *Engine) InputBytes(ctx context.Context, input int) ([]byte, error) {
-	return e.inputBytes(ctx, input)
+	return e.bytes(ctx, plan.Arg{Source: plan.FromInput, Input: input})
+}
+
+func (e *Engine) bytes(ctx context.Context, a plan.Arg) ([]byte, error) {
+	b, err := sealed(e.Store, e.argument(a))
+	if damaged(err) {
+		if err = e.mendArgument(ctx, a, err); err == nil {
+			b, err = sealed(e.Store, e.argument(a))
+		}
+	}
+	return b, err
 }
 
 // plain looks up or computes a step that is no fan-out.
@@ -193,12 +138,13 @@ func (e *Engine) compute(ctx context.Context, spec *plan.Step, c *Computation) e
 	if err != nil {
 		return err
 	}
-	if !e.acquire(ctx) {
+	h := hold{e, massive(args)}
+	if !h.take(ctx) {
 		return ctx.Err()
 	}
-	defer e.release()
+	defer h.give()
 	e.observe(Event{Step: spec.Name, Why: c.Why})
-	p := pool{e: e, spec: spec, args: args}
+	p := pool{e: e, spec: spec, args: args, hold: h}
 	defer p.close()
 	return p.compute(ctx, c, nil)
 }
@@ -352,16 +298,20 @@ func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value
 		}
 	}
 	e.observe(Event{Step: spec.Name, Why: comps[todo[0]].Why, Done: int(done.Load()), Total: len(comps)})
-	arriving := make(chan keeping, maxTogether)
+	arriving, room := make(chan keeping, maxTogether), newWaiting()
 	var kept, all sync.WaitGroup
 	kept.Go(func() { e.keeper(arriving) })
-	for range min(cap(e.slots), len(todo)) {
+	workers, h := min(cap(e.slots), len(todo)), hold{e, massive(args)}
+	if h.mass {
+		workers = 1
+	}
+	for range workers {
 		all.Go(func() {
-			if !e.acquire(ctx) {
+			if !h.take(ctx) {
 				return
 			}
-			defer e.release()
-			p := pool{e: e, spec: spec, args: args}
+			defer h.give()
+			p := pool{e: e, spec: spec, args: args, hold: h}
 			defer p.close()
 			for {
 				k := int(next.Add(1)) - 1
@@ -382,13 +332,15 @@ func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value
 					e.observe(Event{Step: spec.Name, Done: int(done.Add(1)), Total: len(comps), Took: comps[n].Took})
 				}
 				p.later = func(k keeping) {
-					k.done = finish
+					size := k.tray.size
+					room.add(size)
+					k.done = func(err error) {
+						room.done(size)
+						finish(err)
+					}
 					arriving <- k
 				}
-				item, err := e.itemBytes(ctx, spec.Args[spec.Each], items, n)
-				if err == nil {
-					err = p.compute(ctx, &comps[n], item)
-				}
+				err := p.compute(ctx, &comps[n], &items[n])
 				if err != nil {
 					if ctx.Err() != nil {
 						return
@@ -413,22 +365,6 @@ func (e *Engine) missingHere(ctx context.Context, spec *plan.Step, items []Value
 	close(arriving)
 	kept.Wait()
 	return nil
-}
-
-// itemBytes reads one element of a collection. The caller holds a worker slot,
-// which is lent to the step that has to be computed again, if any.
-func (e *Engine) itemBytes(ctx context.Context, each plan.Arg, items []Value, n int) ([]byte, error) {
-	b, err := sealed(e.Store, items[n])
-	if damaged(err) {
-		e.release()
-		mended := e.mend(ctx, each.Step, err)
-		e.slots <- struct{}{}
-		if mended != nil {
-			return nil, mended
-		}
-		b, err = sealed(e.Store, items[n])
-	}
-	return b, err
 }
 
 // reasons says why elements were computed, in the order of first appearance.
@@ -459,8 +395,10 @@ func reasons(comps []Computation, todo []int) string {
 type pool struct {
 	e    *Engine
 	spec *plan.Step
-	args [][]byte
+	args []worker.Arg
+	hold hold
 	w    *worker.Worker
+	size int64 // bytes of arguments that the limits of w are meant for
 
 	// later, when set, takes what a computation gave to be kept, so that the
 	// next one need not wait for the disk.
@@ -476,34 +414,53 @@ func (p *pool) close() {
 
 // compute runs the step once, on the given element for a fan-out, and keeps
 // what it gives. When the worker dies of something that may not have been the
-// step's doing, another one gets a second try.
-func (p *pool) compute(ctx context.Context, c *Computation, element []byte) error {
-	args := make([][]byte, len(p.args))
-	copy(args, p.args)
+// step's doing, another one gets a second try; so it does when an argument was
+// damaged, which is mended first.
+func (p *pool) compute(ctx context.Context, c *Computation, element *Value) error {
+	args := slices.Clone(p.args)
 	for i, a := range p.spec.Args {
 		switch a.Source {
 		case plan.FromElement:
-			args[i] = element
+			args[i] = p.e.kept(func() Value { return *element })
 		case plan.FromSeed:
-			var err error
-			if args[i], err = sealGo("uint64", c.Text.Seed()); err != nil {
+			b, err := sealGo("uint64", c.Text.Seed())
+			if err != nil {
 				return err
 			}
+			args[i] = worker.Bytes(b)
 		}
 	}
+	t := &tray{store: p.e.Store}
 	var v worker.Values
 	var err error
-	for range 2 {
-		if v, err = p.call(ctx, args); err == nil {
+	mended := map[int]bool{} // arguments, by their number
+	for tries := 0; ; {
+		v, err = p.call(ctx, args, t)
+		if err == nil {
 			break
 		}
+		t.clear()
+		var failure *worker.Failure
 		var lost *worker.LostError
-		if fatal(err) {
+		var arg *worker.ArgError
+		if !errors.As(err, &failure) {
 			p.close()
 		}
-		if !errors.As(err, &lost) || !lost.Outside() || ctx.Err() != nil {
-			break
+		if errors.As(err, &lost) && lost.Outside() && ctx.Err() == nil && tries == 0 {
+			tries++
+			continue
 		}
+		if errors.As(err, &arg) {
+			a := p.spec.Args[arg.Arg]
+			if damaged(err) && ctx.Err() == nil && !mended[arg.Arg] {
+				mended[arg.Arg] = true
+				if err = p.hold.lend(func() error { return p.e.mendArgument(ctx, a, arg.Err) }); err == nil {
+					continue
+				}
+			}
+			err = fmt.Errorf("argument %s: %w", a.Name, err)
+		}
+		break
 	}
 	c.Log = v.Log
 	if err != nil {
@@ -513,7 +470,7 @@ func (p *pool) compute(ctx context.Context, c *Computation, element []byte) erro
 	for i, r := range p.spec.Results {
 		names[i] = r.Name
 	}
-	k := keeping{c: c, name: p.spec.Name, results: names, values: v}
+	k := keeping{c: c, name: p.spec.Name, results: names, values: v, tray: t}
 	if p.later == nil {
 		return p.e.keepOne(k)
 	}
@@ -521,12 +478,17 @@ func (p *pool) compute(ctx context.Context, c *Computation, element []byte) erro
 	return nil
 }
 
-func (p *pool) call(ctx context.Context, args [][]byte) (worker.Values, error) {
-	if p.w != nil && p.w.Spent() {
+func (p *pool) call(ctx context.Context, args []worker.Arg, t *tray) (worker.Values, error) {
+	size := int64(0)
+	for _, a := range args {
+		size += a.Size
+	}
+	if p.w != nil && (p.w.Spent() || size > 2*p.size) {
 		p.close()
 	}
 	if p.w == nil {
-		w, err := worker.Start(ctx, p.e.Limits)
+		p.size = size
+		w, err := worker.Start(ctx, p.e.Limits.For(size))
 		if err != nil {
 			return worker.Values{}, err
 		}
@@ -535,5 +497,5 @@ func (p *pool) call(ctx context.Context, args [][]byte) (worker.Values, error) {
 			return worker.Values{}, err
 		}
 	}
-	return p.w.Call(p.spec.Name, args)
+	return p.w.Call(p.spec.Name, args, t)
 }

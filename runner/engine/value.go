@@ -4,11 +4,13 @@ import (
 	"bufio"
 	"bytes"
 	"fmt"
+	"io"
 	"strconv"
 	"strings"
 
 	"rimlight/runner/canon"
 	"rimlight/runner/store"
+	"rimlight/runner/worker"
 )
 
 // A Value is a result in the store: its Go type, the layout of its bytes, and
@@ -33,21 +35,11 @@ type part struct {
 
 // Len is the number of elements of a list, -1 for a value that is none.
 func (v Value) Len() int {
-	if !isList(v.Layout) {
+	if !worker.IsList(v.Layout) {
 		return -1
 	}
 	return len(v.parts)
 }
-
-// isList reports whether values of the layout are kept as lists.
-func isList(layout string) bool {
-	elem, ok := strings.CutPrefix(layout, "[]")
-	return ok && (strings.HasPrefix(elem, "struct") || elem == "string")
-}
-
-// maxElements is how many elements a list may have, and a collection that a
-// step runs over: each of them is a file in the store.
-const maxElements = 100000
 
 // split takes a slice apart into the bytes of its elements.
 func split(elem string, data []byte) ([][]byte, error) {
@@ -55,9 +47,9 @@ func split(elem string, data []byte) ([][]byte, error) {
 	if err != nil {
 		return nil, err
 	}
-	if n > maxElements {
+	if n > worker.MaxElements {
 		return nil, fmt.Errorf("a slice of %d elements of type %s: a step runs over at most %d, and no longer slice of structures or texts is kept; use slices of numbers for mass data",
-			n, elem, maxElements)
+			n, elem, worker.MaxElements)
 	}
 	return canon.Split(elem, data)
 }
@@ -71,7 +63,7 @@ func arrange(sealed []byte) (Value, [][]byte, error) {
 	if err != nil {
 		return Value{}, nil, err
 	}
-	if !isList(layout) {
+	if !worker.IsList(layout) {
 		return Value{Type: typ, Layout: layout, Hash: store.HashOf(sealed), Size: int64(len(sealed))}, [][]byte{sealed}, nil
 	}
 	elem := layout[len("[]"):]
@@ -117,7 +109,7 @@ func listOf(typ, layout string, parts []part) (Value, []byte) {
 // the elements is read; elements are read when they are needed.
 func known(s *store.Store, r store.Result) (Value, error) {
 	v := Value{Type: r.Type, Layout: r.Layout, Hash: r.Hash, Size: r.Size}
-	if !isList(r.Layout) {
+	if !worker.IsList(r.Layout) {
 		if !s.Has(r.Hash) {
 			return Value{}, fmt.Errorf("object %s is missing", r.Hash.Short())
 		}
@@ -163,39 +155,97 @@ func parseList(b []byte) ([]part, error) {
 	return parts, sc.Err()
 }
 
-// sealed reads a value's bytes, in their envelope, verified.
-func sealed(s *store.Store, v Value) ([]byte, error) {
-	if !isList(v.Layout) {
-		return s.Get(v.Hash)
+// sealedSize is at least the number of bytes of a value in its envelope.
+func (v Value) sealedSize() int64 {
+	if !worker.IsList(v.Layout) {
+		return v.Size
 	}
-	items := make([][]byte, len(v.parts))
-	var flaws []error // all of them, so that they are mended together
+	return v.Size + int64(len(canon.Seal(v.Type, v.Layout, nil))) + 9
+}
+
+// write writes a value, in its envelope, as it is read and verified. After an
+// error what was written is of no use.
+func (v Value) write(w io.Writer, s *store.Store) error {
+	if !worker.IsList(v.Layout) {
+		return s.Copy(w, v.Hash)
+	}
+	items := make([]Value, len(v.parts))
 	for i, p := range v.parts {
-		b, err := s.Get(p.hash)
-		if err == nil {
-			_, _, items[i], err = canon.Open(b)
-		}
-		if damaged(err) {
-			flaws = append(flaws, err)
-		} else if err != nil {
-			return nil, err
+		items[i] = Value{Layout: v.Layout[len("[]"):], Hash: p.hash}
+	}
+	return writeJoined(w, s, v.Type, v.Layout, items)
+}
+
+// writeJoined writes the slice of some values, none of which is a number, in
+// its envelope.
+func writeJoined(w io.Writer, s *store.Store, typ, layout string, items []Value) error {
+	if _, err := w.Write(append(canon.Seal(typ, layout, nil), canon.ListHead(len(items))...)); err != nil {
+		return err
+	}
+	var flaws []error // all of them, so that they are mended together
+	for _, v := range items {
+		o := opener{w: w}
+		err := v.write(&o, s)
+		switch {
+		case damaged(err):
+			flaws, w = append(flaws, err), io.Discard
+		case err != nil:
+			return err
+		case o.head != nil:
+			return fmt.Errorf("object %s holds no value", v.Hash.Short())
 		}
 	}
 	if len(flaws) > 0 {
-		return nil, damages(flaws)
+		return damages(flaws)
 	}
-	data, err := canon.Join(v.Layout[len("[]"):], items)
-	if err != nil {
+	return nil
+}
+
+// An opener passes on what is in an envelope.
+type opener struct {
+	w    io.Writer
+	open bool
+	head []byte // what came of the envelope so far
+}
+
+func (o *opener) Write(b []byte) (int, error) {
+	n := len(b)
+	if !o.open {
+		o.head = append(o.head, b...)
+		_, _, content, err := canon.Open(o.head)
+		if err != nil && len(o.head) < maxEnvelope {
+			return n, nil // it may come
+		}
+		if err != nil {
+			return 0, err
+		}
+		b, o.open, o.head = content, true, nil
+	}
+	_, err := o.w.Write(b)
+	return n, err
+}
+
+// maxEnvelope is more bytes than an envelope takes.
+const maxEnvelope = 1 << 20
+
+// sealed reads a value's bytes, in their envelope, verified.
+func sealed(s *store.Store, v Value) ([]byte, error) {
+	if !worker.IsList(v.Layout) {
+		return s.Get(v.Hash)
+	}
+	var b bytes.Buffer
+	b.Grow(int(v.sealedSize()))
+	if err := v.write(&b, s); err != nil {
 		return nil, err
 	}
-	return canon.Seal(v.Type, v.Layout, data), nil
+	return b.Bytes(), nil
 }
 
 // elements are the elements of a collection, each as a value of its own. The
 // elements of a slice of numbers, which is one object, are taken out and kept.
 func elements(s *store.Store, v Value) ([]Value, error) {
 	typ, elem := strings.TrimPrefix(v.Type, "[]"), strings.TrimPrefix(v.Layout, "[]")
-	if isList(v.Layout) {
+	if worker.IsList(v.Layout) {
 		out := make([]Value, len(v.parts))
 		for i, p := range v.parts {
 			out[i] = Value{Type: typ, Layout: elem, Hash: p.hash, Size: p.size}
@@ -215,7 +265,7 @@ func elements(s *store.Store, v Value) ([]Value, error) {
 		return nil, err
 	}
 	out := make([]Value, len(items))
-	if isList(elem) {
+	if worker.IsList(elem) {
 		for i, item := range items {
 			if out[i], err = putSealed(s, canon.Seal(typ, elem, item)); err != nil {
 				return nil, err
@@ -223,16 +273,19 @@ func elements(s *store.Store, v Value) ([]Value, error) {
 		}
 		return out, nil
 	}
-	objects := make([][]byte, len(items))
-	for i, item := range items {
-		objects[i] = canon.Seal(typ, elem, item)
-	}
-	hashes, err := s.PutBatch(objects)
-	if err != nil {
-		return nil, err
-	}
-	for i, b := range objects {
-		out[i] = Value{Type: typ, Layout: elem, Hash: hashes[i], Size: int64(len(b))}
+	for first := 0; first < len(items); {
+		var objects [][]byte
+		for n := 0; first+len(objects) < len(items) && n < maxTogetherBytes; n += len(objects[len(objects)-1]) {
+			objects = append(objects, canon.Seal(typ, elem, items[first+len(objects)]))
+		}
+		hashes, err := s.PutBatch(objects)
+		if err != nil {
+			return nil, err
+		}
+		for i, b := range objects {
+			out[first+i] = Value{Type: typ, Layout: elem, Hash: hashes[i], Size: int64(len(b))}
+		}
+		first += len(objects)
 	}
 	return out, nil
 }
@@ -240,7 +293,7 @@ func elements(s *store.Store, v Value) ([]Value, error) {
 // collect puts the results of a fan-out together, in the order of elements.
 func collect(s *store.Store, typ, layout string, items []Value) (Value, error) {
 	typ, whole := "[]"+typ, "[]"+layout
-	if isList(whole) {
+	if worker.IsList(whole) {
 		parts := make([]part, len(items))
 		for i, v := range items {
 			parts[i] = part{v.Hash, v.Size}
@@ -248,6 +301,15 @@ func collect(s *store.Store, typ, layout string, items []Value) (Value, error) {
 		v, list := listOf(typ, whole, parts)
 		_, err := s.Put(list)
 		return v, err
+	}
+	if !canon.IsNumber(layout) {
+		d := s.NewDraft()
+		if err := writeJoined(d, s, typ, whole, items); err != nil {
+			d.Discard()
+			return Value{}, err
+		}
+		v := Value{Type: typ, Layout: whole, Hash: d.Hash(), Size: d.Size()}
+		return v, s.PutDrafts([]*store.Draft{d})
 	}
 	data := make([][]byte, len(items))
 	var flaws []error // all of them, so that they are mended together

@@ -82,7 +82,7 @@ type Layer struct {
 // Limits are what one step was allowed to use up.
 type Limits struct {
 	StepSeconds float64 `json:"step_seconds"`
-	StepMemory  int64   `json:"step_memory"` // bytes
+	StepMemory  int64   `json:"step_memory"` // bytes, 0 for as much as the arguments asked for
 }
 
 // A Package is a step-library package with the hash of its sources.

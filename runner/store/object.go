@@ -1,8 +1,11 @@
 package store
 
 import (
+	"bytes"
+	"crypto/sha256"
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -43,15 +46,29 @@ func (s *Store) Put(data []byte) (Hash, error) {
 // calls, as it waits for the disk but once. Each object is kept or not; after
 // an error some may have been.
 func (s *Store) PutBatch(data [][]byte) ([]Hash, error) {
-	hashes, err := s.putBatch(data)
-	if errors.Is(err, fs.ErrNotExist) { // the store was deleted on the way
-		hashes, err = s.putBatch(data)
+	drafts := make([]*Draft, len(data))
+	hashes := make([]Hash, len(data))
+	for i, b := range data {
+		hashes[i] = HashOf(b)
+		drafts[i] = &Draft{store: s, hash: hashes[i], size: int64(len(b)), data: b, done: true}
 	}
-	return hashes, err
+	return hashes, s.PutDrafts(drafts)
 }
 
-func (s *Store) putBatch(data [][]byte) ([]Hash, error) {
-	hashes := make([]Hash, len(data))
+// PutDrafts is [Store.PutBatch] for objects that were written piece by piece.
+// The drafts are used up, also after an error.
+func (s *Store) PutDrafts(drafts []*Draft) error {
+	err := s.putDrafts(drafts)
+	if errors.Is(err, fs.ErrNotExist) { // the store was deleted on the way
+		err = s.putDrafts(drafts)
+	}
+	for _, d := range drafts {
+		d.Discard()
+	}
+	return err
+}
+
+func (s *Store) putDrafts(drafts []*Draft) error {
 	var staged []string // temporary files
 	var missing []Hash  // the object in each
 	defer func() {
@@ -59,9 +76,10 @@ func (s *Store) putBatch(data [][]byte) ([]Hash, error) {
 			os.Remove(tmp) // if that fails, a file remains in tmp, which does no harm
 		}
 	}()
+	hashes := make([]Hash, len(drafts))
 	seen := map[Hash]bool{}
-	for i, b := range data {
-		h := HashOf(b)
+	for i, d := range drafts {
+		h := d.Hash()
 		hashes[i] = h
 		if seen[h] {
 			continue
@@ -70,30 +88,30 @@ func (s *Store) putBatch(data [][]byte) ([]Hash, error) {
 		if s.intact(h) {
 			continue
 		}
-		tmp, err := s.stage(b, 0o444, len(data) == 1)
+		tmp, err := d.stage(len(drafts) == 1)
 		if err != nil {
-			return nil, err
+			return err
 		}
 		staged, missing = append(staged, tmp), append(missing, h)
 	}
 	for _, h := range missing {
 		if err := s.folder(filepath.Dir(s.objectPath(h))); err != nil {
-			return nil, err
+			return err
 		}
 	}
-	if len(data) > 1 {
+	if len(drafts) > 1 {
 		if err := s.flush(staged); err != nil {
-			return nil, err
+			return err
 		}
 	}
 	for _, h := range missing {
 		if err := s.rename(staged[0], s.objectPath(h)); err != nil {
-			return nil, s.explain(err)
+			return s.explain(err)
 		}
 		staged = staged[1:]
 	}
 	// also of objects that were there: who put them may not have come so far
-	return hashes, s.syncFolders(hashes)
+	return s.syncFolders(hashes)
 }
 
 func (s *Store) syncFolders(objects []Hash) error {
@@ -115,29 +133,40 @@ func (s *Store) syncFolders(objects []Hash) error {
 
 // intact reports whether an object is there and not damaged. A damaged one is
 // set aside.
-func (s *Store) intact(h Hash) bool {
-	if !s.Has(h) {
-		return false
-	}
-	_, err := s.Get(h)
-	return err == nil
-}
+func (s *Store) intact(h Hash) bool { return s.Has(h) && s.Copy(io.Discard, h) == nil }
 
 // Get reads an object and verifies it. A damaged one is set aside and gives a
 // [*DamagedError], one that is not there an error that is fs.ErrNotExist.
 func (s *Store) Get(h Hash) ([]byte, error) {
+	var b bytes.Buffer
+	if st, err := os.Stat(s.objectPath(h)); err == nil {
+		b.Grow(int(st.Size()) + bytes.MinRead)
+	}
+	err := s.Copy(&b, h)
+	var moved *DamagedError
+	if errors.As(err, &moved) && moved.Aside == "" { // another process was quicker
+		b.Reset()
+		err = s.Copy(&b, h)
+	}
+	if err != nil {
+		return nil, err
+	}
+	return b.Bytes(), nil
+}
+
+// Copy writes an object to w as it is read. That it is damaged turns out at the
+// end, and gives the error that [Store.Get] gives: what was written is then of
+// no use.
+func (s *Store) Copy(w io.Writer, h Hash) error {
 	path := s.objectPath(h)
-	data, flaw, err := s.readObject(h)
+	flaw, err := s.readObject(w, h)
 	if err != nil || flaw == "" {
-		return data, err
+		return err
 	}
-	aside, err := s.setAside(path, func(data []byte) bool { return HashOf(data) == h })
-	if err == nil && aside == "" || errors.Is(err, fs.ErrNotExist) { // another process was quicker
-		data, again, err := s.readObject(h)
-		if err != nil || again == "" {
-			return data, err
-		}
-	}
+	aside, err := s.setAside(path, func(path string) bool {
+		flaw, err := s.readFile(io.Discard, path, h)
+		return flaw == "" && err == nil
+	})
 	found := DamagedError{h, path, aside, flaw}
 	if aside == "" {
 		found.Reason += "; it could not be set aside"
@@ -146,7 +175,7 @@ func (s *Store) Get(h Hash) ([]byte, error) {
 		s.damage = append(s.damage, found)
 		s.mu.Unlock()
 	}
-	return nil, &found
+	return &found
 }
 
 // Damage lists the damaged objects that were set aside since the store was
@@ -157,25 +186,62 @@ func (s *Store) Damage() []DamagedError {
 	return slices.Clone(s.damage)
 }
 
-// readObject gives an object that is as it should be, or its flaw, or an error
-// that says nothing about the object.
-func (s *Store) readObject(h Hash) (data []byte, flaw string, err error) {
-	data, err = s.files.read(s.objectPath(h))
-	if errors.Is(err, syscall.ESTALE) { // replaced, on a network file system
-		data, err = s.files.read(s.objectPath(h))
-	}
+// readObject copies an object and gives its flaw, or an error that says nothing
+// about the object.
+func (s *Store) readObject(w io.Writer, h Hash) (flaw string, err error) {
+	flaw, err = s.readFile(w, s.objectPath(h), h)
 	switch {
 	case errors.Is(err, fs.ErrNotExist):
-		return nil, "", fmt.Errorf("the kept result %s is missing from %s: %w", h.Short(), s.dir, fs.ErrNotExist)
+		return "", fmt.Errorf("the kept result %s is missing from %s: %w", h.Short(), s.dir, fs.ErrNotExist)
 	case errors.Is(err, syscall.EIO) || errors.Is(err, syscall.EISDIR):
-		return nil, err.Error(), nil
+		return err.Error(), nil
 	case err != nil:
-		return nil, "", fmt.Errorf("the kept result %s cannot be read: %w", h.Short(), err)
-	case HashOf(data) != h:
-		return nil, fmt.Sprintf("its %d bytes have the SHA-256 %s", len(data), HashOf(data)), nil
+		var to *writeError
+		if errors.As(err, &to) {
+			return "", to.error
+		}
+		return "", fmt.Errorf("the kept result %s cannot be read: %w", h.Short(), err)
 	}
-	return data, "", nil
+	return flaw, nil
 }
+
+// readFile copies a file that should hold an object and gives its flaw.
+func (s *Store) readFile(w io.Writer, path string, h Hash) (flaw string, err error) {
+	f, err := s.files.open(path)
+	if errors.Is(err, syscall.ESTALE) { // replaced, on a network file system
+		f, err = s.files.open(path)
+	}
+	if err != nil {
+		return "", err
+	}
+	defer f.Close() // opened for reading: nothing can be lost
+	sum, size := sha256.New(), 0
+	buf := make([]byte, copySize)
+	for {
+		n, err := f.Read(buf)
+		sum.Write(buf[:n])
+		size += n
+		if _, err := w.Write(buf[:n]); err != nil {
+			return "", &writeError{err}
+		}
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			return "", err
+		}
+	}
+	if got := Hash(sum.Sum(nil)); got != h {
+		return fmt.Sprintf("its %d bytes have the SHA-256 %s", size, got), nil
+	}
+	return "", nil
+}
+
+// copySize is how many bytes of an object are read at a time.
+const copySize = 128 << 10
+
+// A writeError is the fault of what an object is copied to.
+type writeError struct{ error }
 
 // Has reports whether there is an object of this name. It does not read it.
 func (s *Store) Has(h Hash) bool {
@@ -197,7 +263,7 @@ func (s *Store) Size(h Hash) (int64, bool) {
 // deleted, since it may tell what went wrong. If the file turns out to be good
 // because another process has replaced it meanwhile, it is moved back, and the
 // path is empty.
-func (s *Store) setAside(path string, good func(data []byte) bool) (string, error) {
+func (s *Store) setAside(path string, good func(path string) bool) (string, error) {
 	dir := filepath.Join(s.dir, "damaged")
 	if err := os.MkdirAll(dir, 0o777); err != nil {
 		return "", err
@@ -210,7 +276,7 @@ func (s *Store) setAside(path string, good func(data []byte) bool) (string, erro
 		if err := s.files.rename(path, to); err != nil {
 			return "", err
 		}
-		if data, err := s.files.read(to); err == nil && good(data) {
+		if good(to) {
 			return "", s.files.rename(to, path)
 		}
 		return to, nil

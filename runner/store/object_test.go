@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -123,12 +124,12 @@ func TestDamageMended(t *testing.T) {
 		t.Fatal(err)
 	}
 	first := true
-	s.files.read = func(path string) ([]byte, error) {
+	s.files.open = func(path string) (io.ReadCloser, error) {
 		if first {
 			first = false
-			return []byte("damaged"), nil
+			return io.NopCloser(strings.NewReader("damaged")), nil
 		}
-		return os.ReadFile(path)
+		return os.Open(path)
 	}
 	if got, err := s.Get(h); err != nil || !bytes.Equal(got, want) {
 		t.Errorf("%q, %v", got, err)
@@ -138,13 +139,11 @@ func TestDamageMended(t *testing.T) {
 	}
 
 	// another process sets it aside first
-	s.files.read = func(path string) ([]byte, error) {
-		b, err := os.ReadFile(path)
-		if path == s.objectPath(h) && err == nil {
-			b = []byte("damaged")
-			err = os.Remove(path)
+	s.files.open = func(path string) (io.ReadCloser, error) {
+		if err := os.Remove(path); err != nil {
+			return nil, err
 		}
-		return b, err
+		return io.NopCloser(strings.NewReader("damaged")), nil
 	}
 	if _, err := s.Get(h); !errors.Is(err, fs.ErrNotExist) {
 		t.Errorf("%v is not fs.ErrNotExist", err)
@@ -158,7 +157,9 @@ func TestReadErrors(t *testing.T) {
 		t.Fatal(err)
 	}
 	fault := error(syscall.EACCES)
-	s.files.read = func(path string) ([]byte, error) { return nil, &fs.PathError{Op: "read", Path: path, Err: fault} }
+	s.files.open = func(path string) (io.ReadCloser, error) {
+		return nil, &fs.PathError{Op: "read", Path: path, Err: fault}
+	}
 	var d *DamagedError
 	if _, err := s.Get(h); !errors.Is(err, fs.ErrPermission) || errors.As(err, &d) || !s.Has(h) {
 		t.Errorf("an object that may not be read: %v", err)

@@ -92,10 +92,13 @@ func (s *Store) Record(k Key) (Record, bool, error) {
 	return r, true, nil
 }
 
-// isRecord tells whether bytes are a record of the key without a flaw.
-func isRecord(k Key) func(data []byte) bool {
-	return func(data []byte) bool {
-		_, err := decodeRecord(k, data)
+// isRecord tells whether a file is a record of the key without a flaw.
+func (s *Store) isRecord(k Key) func(path string) bool {
+	return func(path string) bool {
+		data, err := s.files.read(path)
+		if err == nil {
+			_, err = decodeRecord(k, data)
+		}
 		return err == nil
 	}
 }
@@ -124,7 +127,7 @@ func (s *Store) SetRecord(r Record) error {
 		first, ok, flaw := s.Record(r.Key)
 		switch {
 		case flaw != nil:
-			if _, err := s.setAside(s.recordPath(r.Key), isRecord(r.Key)); err != nil && !errors.Is(err, fs.ErrNotExist) {
+			if _, err := s.setAside(s.recordPath(r.Key), s.isRecord(r.Key)); err != nil && !errors.Is(err, fs.ErrNotExist) {
 				return s.explain(err)
 			}
 			continue

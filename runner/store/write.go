@@ -3,6 +3,7 @@ package store
 import (
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -11,14 +12,15 @@ import (
 
 // files are the ways to the disk, so that tests can make them fail.
 type files struct {
-	read   func(path string) ([]byte, error)
+	open   func(path string) (io.ReadCloser, error) // an object
+	read   func(path string) ([]byte, error)        // anything else
 	write  func(f *os.File, data []byte) (int, error)
 	sync   func(f *os.File) error
 	rename func(from, to string) error
 	link   func(from, to string) error
 }
 
-var realFiles = files{os.ReadFile, (*os.File).Write, (*os.File).Sync, os.Rename, os.Link}
+var realFiles = files{func(path string) (io.ReadCloser, error) { return os.Open(path) }, os.ReadFile, (*os.File).Write, (*os.File).Sync, os.Rename, os.Link}
 
 // tmpPrefix begins the names of temporary files.
 const tmpPrefix = "new-"
@@ -44,18 +46,33 @@ func (s *Store) write(path string, data []byte, mode fs.FileMode, move func(from
 // stage writes a temporary file and gives its path. Without sync, it has yet to
 // be brought to disk.
 func (s *Store) stage(data []byte, mode fs.FileMode, sync bool) (path string, err error) {
+	f, err := s.temporary()
+	if err != nil {
+		return "", err
+	}
+	_, err = s.files.write(f, data)
+	return s.finish(f, err, int64(len(data)), mode, sync)
+}
+
+// temporary makes a temporary file.
+func (s *Store) temporary() (*os.File, error) {
 	dir := filepath.Join(s.dir, "tmp")
 	f, err := os.CreateTemp(dir, tmpPrefix+"*")
 	if errors.Is(err, fs.ErrNotExist) { // somebody tidied up
 		if err := s.restore(); err != nil {
-			return "", err
+			return nil, err
 		}
 		f, err = os.CreateTemp(dir, tmpPrefix+"*")
 	}
-	if err != nil {
-		return "", s.explain(err)
+	return f, s.explain(err)
+}
+
+// finish closes a temporary file that was written to, with that outcome, and
+// gives its path. After an error it is gone.
+func (s *Store) finish(f *os.File, err error, size int64, mode fs.FileMode, sync bool) (path string, _ error) {
+	if err == nil {
+		err = s.seal(f, size, mode, sync)
 	}
-	err = s.fill(f, data, mode, sync)
 	if e := f.Close(); err == nil {
 		err = e
 	}
@@ -79,16 +96,13 @@ func (s *Store) restore() error {
 	return s.begin()
 }
 
-func (s *Store) fill(f *os.File, data []byte, mode fs.FileMode, sync bool) error {
-	if _, err := s.files.write(f, data); err != nil {
-		return err
-	}
+func (s *Store) seal(f *os.File, size int64, mode fs.FileMode, sync bool) error {
 	st, err := f.Stat()
 	if err != nil {
 		return err
 	}
-	if st.Size() != int64(len(data)) {
-		return fmt.Errorf("%s has %d bytes after %d were written", f.Name(), st.Size(), len(data))
+	if st.Size() != size {
+		return fmt.Errorf("%s has %d bytes after %d were written", f.Name(), st.Size(), size)
 	}
 	if err := f.Chmod(mode); err != nil {
 		return err

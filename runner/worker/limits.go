@@ -12,14 +12,16 @@ import (
 // Options are the limits that a worker lives under.
 type Options struct {
 	StepTime time.Duration // longest that one question may take, by the clock on the wall
-	Memory   int64         // bytes, at least confine.MinMemory
+	Memory   int64         // bytes, at least confine.MinMemory; 0 for as much as what is handled asks for
 	Require  bool          // do not work unless every layer of confinement is active
+
+	given int64 // bytes of arguments, or of files
 }
 
 // Limits where nobody asks for others.
 const (
 	DefaultStepTime = 30 * time.Minute
-	DefaultMemory   = 2 << 30
+	DefaultMemory   = 2 << 30 // beside what the arguments ask for
 )
 
 // Names of the flags that set the options, for messages.
@@ -37,11 +39,24 @@ const (
 	readPerSecond = 1 << 20 // bytes of files that are read in a second on the slowest of machines
 	readMemory    = 512 << 20
 	readExpansion = 16 // bytes of memory for each byte of a file: numbers of one digit grow most
+	stepExpansion = 6  // bytes of memory for each byte of arguments: these, as much of results, and work space
 )
+
+// For are the options for a worker that takes in arguments of so many bytes:
+// where nobody has set its memory, it may use DefaultMemory and six times the
+// arguments, but no more than three quarters of the machine's.
+func (o Options) For(arguments int64) Options {
+	o = o.filled()
+	o.given = arguments
+	if o.Memory == 0 {
+		o.Memory = max(DefaultMemory, min(DefaultMemory+stepExpansion*min(arguments, 1<<50), machineMemory()/4*3))
+	}
+	return o
+}
 
 // Checking are the options for a worker that checks code.
 func (o Options) Checking() Options {
-	o = o.filled()
+	o = o.For(0)
 	o.StepTime, o.Memory = min(o.StepTime, checkTime), min(o.Memory, checkMemory)
 	return o
 }
@@ -49,7 +64,8 @@ func (o Options) Checking() Options {
 // Reading are the options for a worker that reads files of the given size, in
 // bytes, together.
 func (o Options) Reading(size int64) Options {
-	o = o.filled()
+	o = o.For(size * readExpansion / stepExpansion)
+	o.given = size
 	o.StepTime = min(o.StepTime, readTime+time.Duration(size/readPerSecond)*time.Second)
 	if size < o.Memory/readExpansion {
 		o.Memory = min(o.Memory, readMemory+readExpansion*size)
@@ -57,19 +73,18 @@ func (o Options) Reading(size int64) Options {
 	return o
 }
 
-// filled has the defaults in the place of zeros.
+// filled has the default in the place of no time.
 func (o Options) filled() Options {
 	if o.StepTime == 0 {
 		o.StepTime = DefaultStepTime
 	}
-	if o.Memory == 0 {
-		o.Memory = DefaultMemory
-	}
 	return o
 }
 
-// results is how many bytes the results of one step may have.
-func (o Options) results() int64 { return o.Memory / 4 }
+// results is how many bytes the results of one step may have. They take disk
+// rather than memory: encoded, they can be larger than in the worker, where
+// slices may share what is in them.
+func (o Options) results() int64 { return o.Memory/4 + 4*min(o.given, 1<<50) }
 
 // limits are what the worker is told to live under. The processor time is for
 // the whole life of a worker, which goes on until its questions have taken the

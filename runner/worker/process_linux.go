@@ -17,6 +17,15 @@ func peakMemory(state *os.ProcessState) int64 {
 	return 0
 }
 
+// machineMemory is the memory of the machine in bytes.
+func machineMemory() int64 {
+	var info syscall.Sysinfo_t
+	if err := syscall.Sysinfo(&info); err != nil {
+		return 0
+	}
+	return int64(info.Totalram) * int64(info.Unit)
+}
+
 // executable is the running program, even when its file was replaced since.
 func executable() (string, error) { return "/proc/self/exe", nil }
 

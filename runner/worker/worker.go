@@ -1,11 +1,13 @@
 package worker
 
 import (
+	"bufio"
 	"context"
 	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"os/exec"
 	"sync"
@@ -26,16 +28,19 @@ const Name = "rimlight-worker"
 // A Worker is a running worker process. Its methods may not be called
 // concurrently, but Close may be called at any time.
 type Worker struct {
-	cmd     *exec.Cmd
-	options Options
-	layers  confine.Report
-	spent   time.Duration
-	in      io.WriteCloser
-	out     *os.File
-	stderr  *ends
-	done    chan struct{}
-	close   sync.Once
-	state   *os.ProcessState
+	cmd       *exec.Cmd
+	options   Options
+	layers    confine.Report
+	spent     time.Duration
+	in        io.WriteCloser
+	questions *bufio.Writer // on in
+	answers   *bufio.Reader // on out
+	kept      map[int]bool  // common arguments that the worker has, by their number
+	out       *os.File
+	stderr    *ends
+	done      chan struct{}
+	close     sync.Once
+	state     *os.ProcessState
 }
 
 // A Failure is why a step gave no results.
@@ -53,13 +58,14 @@ func (f *Failure) Error() string {
 	return f.Pos.String() + ": " + f.Text
 }
 
-// Values is what a call or a read gave.
+// Values is what a call or a read gave, besides the objects that a [Receiver]
+// got.
 type Values struct {
-	Sealed [][]byte // each result in its typed envelope
-	Log    string   // what the step printed or the reader noted
-	Took   time.Duration
-	SHA256 []string // of the files that were read, hex
-	Notes  []string // what a reader had to say about its files
+	Results []Result
+	Log     string // what the step printed or the reader noted
+	Took    time.Duration
+	SHA256  []string // of the files that were read, hex
+	Notes   []string // what a reader had to say about its files
 }
 
 // maxText is how many bytes of a message from a worker are kept.
@@ -70,12 +76,12 @@ const maxText = 4096
 // descriptors. The worker is killed when ctx ends. Where a layer of confinement
 // is missing that the options require, the error is an *[UnconfinedError].
 func Start(ctx context.Context, o Options, files ...*os.File) (*Worker, error) {
-	o = o.filled()
+	o = o.For(0)
 	w, err := start(ctx, o, files)
 	if err != nil {
 		return nil, err
 	}
-	m, err := w.ask(askLimits, o.limits(len(files)))
+	m, err := w.ask(askLimits, o.limits(len(files)), nil, nil)
 	if err == nil {
 		err = json.Unmarshal(m.Head, &w.layers)
 	}
@@ -120,6 +126,7 @@ func start(ctx context.Context, o Options, files []*os.File) (*Worker, error) {
 	}
 	w.cmd.Stdout = pw
 	w.out = r
+	w.questions, w.answers, w.kept = bufio.NewWriterSize(w.in, 64<<10), bufio.NewReaderSize(r, 64<<10), map[int]bool{}
 	err = w.cmd.Start()
 	pw.Close()
 	if err != nil {
@@ -159,7 +166,7 @@ func (w *Worker) Spent() bool { return w.spent > w.options.StepTime }
 
 // Check asks for a look at the Go code of a recipe.
 func (w *Worker) Check(code Code) ([]program.Step, diag.List, error) {
-	m, err := w.ask(askCheck, code)
+	m, err := w.ask(askCheck, code, nil, nil)
 	if err != nil {
 		return nil, nil, err
 	}
@@ -175,25 +182,58 @@ func (w *Worker) Check(code Code) ([]program.Step, diag.List, error) {
 
 // Load makes the worker ready for calls of a recipe's steps.
 func (w *Worker) Load(code Code) error {
-	_, err := w.ask(askLoad, code)
+	_, err := w.ask(askLoad, code, nil, nil)
 	return err
 }
 
-// Call runs a step of the loaded recipe on arguments in their envelopes. A
-// failure of the step itself comes back as a *[Failure], a worker that took too
-// long and was stopped as a *[TimeLimitError], one that died as a *[LostError].
-func (w *Worker) Call(step string, args [][]byte) (Values, error) {
-	return w.values(w.ask(askCall, callHead{step}, args...))
+// Call runs a step of the loaded recipe. A failure of the step itself comes
+// back as a *[Failure], a worker that took too long and was stopped as a
+// *[TimeLimitError], one that died as a *[LostError], and an argument that could
+// not be had as an *[ArgError]. After an error, what the receiver got is of no
+// use.
+func (w *Worker) Call(step string, args []Arg, to Receiver) (Values, error) {
+	h := callHead{step, make([]argHead, len(args))}
+	room := int64(maxKept)
+	var send []numbered
+	for i, a := range args {
+		h.Args[i] = argHead{Limit: a.Size, Kept: w.kept[i], Keep: a.Common && a.Size <= room && !w.kept[i]}
+		if h.Args[i].Kept || h.Args[i].Keep {
+			room -= a.Size
+		}
+		if !h.Args[i].Kept {
+			send = append(send, numbered{a, i})
+		}
+	}
+	m, err := w.ask(askCall, h, send, to)
+	if err == nil {
+		for i, a := range h.Args {
+			if a.Keep {
+				w.kept[i] = true
+			}
+		}
+	}
+	return w.values(m, err)
 }
+
+// A numbered argument knows its place among the others.
+type numbered struct {
+	Arg
+	number int
+}
+
+// maxKept is how many bytes of common arguments a worker holds on to. Larger
+// ones are sent at each call.
+const maxKept = 16 << 20
 
 // Read reads the files that the worker was started with, in the given layout.
 // The names are for messages only.
-func (w *Worker) Read(layout string, columns lightcurve.Columns, names []string, sizes []int64) (Values, error) {
+func (w *Worker) Read(layout string, columns lightcurve.Columns, names []string, sizes []int64, to Receiver) (Values, error) {
 	h := readHead{Layout: layout, Names: names, Sizes: sizes}
 	for _, c := range columns {
 		h.Columns = append(h.Columns, columnHead(c))
 	}
-	return w.values(w.ask(askRead, h))
+	m, err := w.ask(askRead, h, nil, to)
+	return w.values(m, err)
 }
 
 func (w *Worker) values(m Message, err error) (Values, error) {
@@ -204,7 +244,7 @@ func (w *Worker) values(m Message, err error) (Values, error) {
 	if err := json.Unmarshal(m.Head, &h); err != nil {
 		return Values{}, fmt.Errorf("the worker's answer is malformed: %w", err)
 	}
-	v := Values{m.Blobs, plain(h.Log, 1<<20), time.Duration(h.Nanos), h.SHA256, h.Notes}
+	v := Values{h.Results, plain(h.Log, 1<<20), time.Duration(h.Nanos), h.SHA256, h.Notes}
 	for i, n := range v.Notes {
 		v.Notes[i] = plain(n, maxText)
 	}
@@ -215,8 +255,10 @@ func (w *Worker) values(m Message, err error) (Values, error) {
 	return v, nil
 }
 
-func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
-	q, err := message(kind, head, blobs...)
+// ask puts a question, with arguments, and gives the answer. Objects that come
+// before it go to the receiver.
+func (w *Worker) ask(kind string, head any, args []numbered, to Receiver) (Message, error) {
+	q, err := message(kind, head)
 	if err != nil {
 		return Message{}, err
 	}
@@ -228,7 +270,7 @@ func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
 		w.kill()
 		w.out.SetReadDeadline(time.Now().Add(time.Second)) // should anything else hold the pipe open
 	})
-	a, err := w.exchange(q)
+	a, err := w.exchange(q, args, to)
 	timer.Stop()
 	if limit == w.options.StepTime {
 		w.spent += time.Since(began)
@@ -241,6 +283,16 @@ func (w *Worker) ask(kind string, head any, blobs ...[]byte) (Message, error) {
 		}
 		return Message{}, &TimeLimitError{limit, flag}
 	case err != nil:
+		var arg *ArgError
+		var receiver *receiverError
+		switch {
+		case errors.As(err, &arg):
+			w.end()
+			return Message{}, arg
+		case errors.As(err, &receiver):
+			w.end()
+			return Message{}, receiver.error
+		}
 		return Message{}, w.lost(kind, err)
 	}
 	switch a.Kind {
@@ -264,13 +316,65 @@ func (w *Worker) limit(kind string) time.Duration {
 	return w.options.StepTime
 }
 
-func (w *Worker) exchange(q Message) (Message, error) {
-	if err := q.Write(w.in); err != nil {
+func (w *Worker) exchange(q Message, args []numbered, to Receiver) (Message, error) {
+	if err := w.put(q, args); err != nil {
 		return Message{}, err
 	}
-	// The lengths of the results come on top of the results.
-	return ReadMessage(w.out, w.options.results()+1<<20)
+	var body []byte
+	left, objects := w.options.results(), 0
+	for {
+		m, err := readMessage(w.answers, body)
+		if err != nil {
+			return Message{}, err
+		}
+		if m.Kind != more && m.Kind != last {
+			return m, nil
+		}
+		body = m.Body
+		if left -= int64(len(body)); left < 0 || to == nil {
+			return Message{}, fmt.Errorf("its results take more than %s", Size(w.options.results()))
+		}
+		if err := to.Part(body); err != nil {
+			return Message{}, &receiverError{err}
+		}
+		if m.Kind == more {
+			continue
+		}
+		if objects++; objects > maxObjects {
+			return Message{}, fmt.Errorf("more than %d parts of results", maxObjects)
+		}
+		if err := to.End(); err != nil {
+			return Message{}, &receiverError{err}
+		}
+	}
 }
+
+// maxObjects is how many objects the results of one call may consist of.
+const maxObjects = 1 << 20
+
+// put sends a question with its arguments.
+func (w *Worker) put(q Message, args []numbered) error {
+	if err := q.Write(w.questions); err != nil {
+		return err
+	}
+	for _, a := range args {
+		p := partWriter{w: w.questions, left: math.MaxInt64} // whether it is as long as it should be, the source knows
+		err := a.Write(&p)
+		if err == nil {
+			err = p.end()
+		}
+		if p.err != nil {
+			return p.err
+		}
+		if err != nil {
+			return &ArgError{a.number, err}
+		}
+	}
+	return w.questions.Flush()
+}
+
+// A receiverError is why a receiver took no more.
+type receiverError struct{ error }
 
 // lost says how a worker ended that gave no answer. One that goes on after a
 // malformed answer is ended.
@@ -287,12 +391,17 @@ func (w *Worker) lost(task string, err error) error {
 	if ended {
 		e.Cause, e.How = causeOf(w.state, w.stderr.String(), w.options)
 	} else {
-		w.kill()
-		<-w.done
+		w.end()
 		e.Cause, e.How = Malformed, err.Error()
 	}
 	e.Stderr = w.stderr.String()
 	return e
+}
+
+// end kills the process and waits until it is gone.
+func (w *Worker) end() {
+	w.kill()
+	<-w.done
 }
 
 // kill ends the process, unless it has ended.

@@ -2,6 +2,7 @@ package worker
 
 import (
 	"context"
+	"crypto/sha256"
 	"errors"
 	"fmt"
 	"os"
@@ -66,6 +67,14 @@ func Flood(x float64) (text string, err error) {
 	text = strings.Repeat("ab", int(x))
 	return
 }
+
+func Repeat(x float64) (list []string) {
+	text := strings.Repeat("ab", 10000000)
+	for i := 0; i < int(x); i++ {
+		list = append(list, text)
+	}
+	return
+}
 `
 
 func begin(t testing.TB, o Options, files ...*os.File) *Worker {
@@ -100,14 +109,42 @@ func sealed(t testing.TB, typ string, v any) []byte {
 	return canon.Seal(typ, layout, b)
 }
 
+// objects is a receiver that holds on to what it gets.
+type objects struct {
+	list [][]byte
+	now  []byte
+}
+
+func (o *objects) Part(b []byte) error {
+	o.now = append(o.now, b...)
+	return nil
+}
+
+func (o *objects) End() error {
+	o.list, o.now = append(o.list, o.now), nil
+	return nil
+}
+
+// discard is a receiver that does not.
+type discard struct{}
+
+func (discard) Part([]byte) error { return nil }
+func (discard) End() error        { return nil }
+
+func call(w *Worker, step string, args ...Arg) ([][]byte, Values, error) {
+	var o objects
+	v, err := w.Call(step, args, &o)
+	return o.list, v, err
+}
+
 func TestCall(t *testing.T) {
 	w := loaded(t, Options{})
-	v, err := w.Call("Double", [][]byte{sealed(t, "float64", 21.0)})
+	got, v, err := call(w, "Double", Bytes(sealed(t, "float64", 21.0)))
 	if err != nil {
 		t.Fatal(err)
 	}
-	if want := sealed(t, "float64", 42.0); len(v.Sealed) != 1 || string(v.Sealed[0]) != string(want) {
-		t.Errorf("got %x, want %x", v.Sealed, want)
+	if want := sealed(t, "float64", 42.0); len(got) != 1 || string(got[0]) != string(want) || !reflect.DeepEqual(v.Results, []Result{{"float64", "float64", 1}}) {
+		t.Errorf("got %x, %+v, want %x", got, v.Results, want)
 	}
 }
 
@@ -129,7 +166,7 @@ func TestEnds(t *testing.T) {
 			if racing && c.opts.Memory != 0 {
 				t.Skip("a small limit of memory")
 			}
-			_, err := loaded(t, c.opts).Call(c.step, [][]byte{sealed(t, "float64", 1.0)})
+			_, _, err := call(loaded(t, c.opts), c.step, Bytes(sealed(t, "float64", 1.0)))
 			var lost *LostError
 			if !errors.As(err, &lost) {
 				t.Fatalf("got %v", err)
@@ -144,7 +181,7 @@ func TestEnds(t *testing.T) {
 func TestTimeLimit(t *testing.T) {
 	w := loaded(t, Options{StepTime: 2 * time.Second})
 	began := time.Now()
-	_, err := w.Call("Spin", [][]byte{sealed(t, "float64", 1.0)})
+	_, _, err := call(w, "Spin", Bytes(sealed(t, "float64", 1.0)))
 	var late *TimeLimitError
 	if !errors.As(err, &late) || late.Limit != 2*time.Second || late.Flag != TimeFlag {
 		t.Fatalf("got %v", err)
@@ -173,7 +210,7 @@ func TestCheckingTooLarge(t *testing.T) {
 func TestKilledFromOutside(t *testing.T) {
 	w := loaded(t, Options{})
 	time.AfterFunc(300*time.Millisecond, func() { syscall.Kill(w.cmd.Process.Pid, syscall.SIGTERM) })
-	_, err := w.Call("Spin", [][]byte{sealed(t, "float64", 1.0)})
+	_, _, err := call(w, "Spin", Bytes(sealed(t, "float64", 1.0)))
 	var lost *LostError
 	if !errors.As(err, &lost) || lost.Cause != Killed || !lost.Outside() {
 		t.Errorf("got %v", err)
@@ -185,15 +222,14 @@ func TestResultsTooLarge(t *testing.T) {
 		t.Skip("a small limit of memory")
 	}
 	w := loaded(t, Options{Memory: 512 << 20})
-	_, err := w.Call("Flood", [][]byte{sealed(t, "float64", 30e6)})
+	_, err := w.Call("Flood", []Arg{Bytes(sealed(t, "float64", 60e6))}, discard{})
 	if err != nil {
-		t.Errorf("60 MB: %v", err)
+		t.Errorf("120 MB: %v", err)
 	}
 	var failed *Failure
-	_, err = w.Call("Flood", [][]byte{sealed(t, "float64", 68e6)})
-	var lost *LostError // its copies need more than there is, or else it is refused
-	if !errors.As(err, &failed) && !(errors.As(err, &lost) && lost.Cause == OutOfMemory) {
-		t.Errorf("136 MB: %v", err)
+	_, err = w.Call("Repeat", []Arg{Bytes(sealed(t, "float64", 30.0))}, discard{})
+	if !errors.As(err, &failed) || !strings.Contains(err.Error(), "the results take more than 128 MiB, a quarter of --step-memory and four times what the step was given; return less, or raise it") {
+		t.Errorf("600 MB in a list of one text: %v", err)
 	}
 }
 
@@ -215,7 +251,7 @@ func TestCallOfTheDead(t *testing.T) {
 	w := loaded(t, Options{})
 	syscall.Kill(w.cmd.Process.Pid, syscall.SIGTERM)
 	<-w.done
-	_, err := w.Call("Double", [][]byte{sealed(t, "float64", 1.0)})
+	_, _, err := call(w, "Double", Bytes(sealed(t, "float64", 1.0)))
 	var lost *LostError
 	if !errors.As(err, &lost) || lost.Cause != Killed {
 		t.Errorf("got %v", err)
@@ -245,7 +281,7 @@ func TestLimitsComeFirst(t *testing.T) {
 		t.Errorf("a question before the limits: %v", err)
 	}
 	w := begin(t, Options{})
-	if _, err := w.ask(askLimits, Options{}.filled().limits(0)); err == nil || !strings.Contains(err.Error(), "out of turn") {
+	if _, err := w.ask(askLimits, Options{}.For(0).limits(0), nil, nil); err == nil || !strings.Contains(err.Error(), "out of turn") {
 		t.Errorf("limits for the second time: %v", err)
 	}
 }
@@ -260,12 +296,16 @@ func TestRead(t *testing.T) {
 		t.Fatal(err)
 	}
 	defer f.Close()
-	v, err := begin(t, Options{}.Reading(5), f).Read("text", nil, []string{"text"}, []int64{5})
+	var got objects
+	v, err := begin(t, Options{}.Reading(5), f).Read("text", nil, []string{"text"}, []int64{5}, &got)
 	if err != nil {
 		t.Fatal(err)
 	}
-	if want := sealed(t, "string", "hello"); len(v.Sealed) != 1 || string(v.Sealed[0]) != string(want) {
-		t.Errorf("got %q, want %q", v.Sealed, want)
+	if want := sealed(t, "string", "hello"); len(got.list) != 1 || string(got.list[0]) != string(want) {
+		t.Errorf("got %q, want %q", got.list, want)
+	}
+	if want := fmt.Sprintf("%x", sha256.Sum256([]byte("hello"))); len(v.SHA256) != 1 || v.SHA256[0] != want {
+		t.Errorf("the file has the hash %v, want %s", v.SHA256, want)
 	}
 }
 
@@ -277,11 +317,20 @@ func TestOptions(t *testing.T) {
 	if r := o.Reading(0); r.Memory != readMemory || r.StepTime != readTime {
 		t.Errorf("reading nothing: %+v", r)
 	}
-	if r := o.Reading(1 << 40); r.Memory != DefaultMemory || r.StepTime != DefaultStepTime {
+	if r := o.Reading(1 << 40); r.Memory < DefaultMemory || r.Memory > max(DefaultMemory, machineMemory()) || r.StepTime != DefaultStepTime {
 		t.Errorf("reading a lot: %+v", r)
 	}
+	if f := o.For(0); f.Memory != DefaultMemory {
+		t.Errorf("for no arguments: %+v", f)
+	}
+	if f, most := o.For(100<<20), machineMemory()/4*3; f.Memory != max(DefaultMemory, min(DefaultMemory+600<<20, most)) {
+		t.Errorf("for 100 MiB of arguments: %+v", f)
+	}
+	if f := (Options{Memory: 1 << 30}).For(1 << 40); f.Memory != 1<<30 {
+		t.Errorf("a limit that was set: %+v", f)
+	}
 	o = Options{StepTime: time.Second, Memory: confine.MinMemory}
-	if c := o.Checking(); c != o {
+	if c := o.Checking(); c.StepTime != o.StepTime || c.Memory != o.Memory {
 		t.Errorf("strict limits were widened: %+v", c)
 	}
 }
@@ -332,10 +381,10 @@ func TestNoLeak(t *testing.T) {
 	}
 	w := loaded(t, Options{})
 	list := make([]float64, 1000)
-	args := [][]byte{sealed(t, "[]float64", list)}
+	args := []Arg{Bytes(sealed(t, "[]float64", list))}
 	call := func(n int) int {
 		for range n {
-			if _, err := w.Call("Sum", args); err != nil {
+			if _, err := w.Call("Sum", args, discard{}); err != nil {
 				t.Fatal(err)
 			}
 		}
@@ -362,7 +411,7 @@ func BenchmarkStart(b *testing.B) {
 
 // BenchmarkStartAndLoad is the time to the first answer of a step.
 func BenchmarkStartAndLoad(b *testing.B) {
-	args := [][]byte{sealed(b, "float64", 1.0)}
+	args := []Arg{Bytes(sealed(b, "float64", 1.0))}
 	for b.Loop() {
 		w, err := Start(context.Background(), Options{})
 		if err != nil {
@@ -371,7 +420,7 @@ func BenchmarkStartAndLoad(b *testing.B) {
 		if err := w.Load(code(ordinary)); err != nil {
 			b.Fatal(err)
 		}
-		if _, err := w.Call("Double", args); err != nil {
+		if _, err := w.Call("Double", args, discard{}); err != nil {
 			b.Fatal(err)
 		}
 		w.Close()
@@ -381,9 +430,9 @@ func BenchmarkStartAndLoad(b *testing.B) {
 // BenchmarkCall is what a call costs besides the step itself.
 func BenchmarkCall(b *testing.B) {
 	w := loaded(b, Options{})
-	args := [][]byte{sealed(b, "float64", 1.0)}
+	args := []Arg{Bytes(sealed(b, "float64", 1.0))}
 	for b.Loop() {
-		if _, err := w.Call("Double", args); err != nil {
+		if _, err := w.Call("Double", args, discard{}); err != nil {
 			b.Fatal(err)
 		}
 	}

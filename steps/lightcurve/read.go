@@ -10,14 +10,18 @@ import (
 // integration, units already converted.
 type listing struct {
 	time  []float64 // days, n rows
-	flux  []float64 // n rows of m
-	err   []float64 // n rows of m; nil when the file has none
+	flux  rows      // n of m
+	err   rows      // n of m; nil when the file has none
 	lo    []float64 // um, m
 	hi    []float64 // um, m
 	aux   []Series
 	row   func(i int) string // names a row for messages: "row 3", "line 12"
 	edges func(j int) string // names a row of the channel table
 }
+
+// rows calls do with rows of numbers, some at a time, in order; first is the
+// number of the first of them, from 0. The numbers are good only during the call.
+type rows func(do func(first int, values []float64)) error
 
 // cube checks a listing and turns it into a Cube: integrations in order of
 // time, channels in order of wavelength, unusable samples masked.
@@ -48,17 +52,25 @@ func (l listing) cube() (Cube, []string, error) {
 	for i, from := range times {
 		c.Time[i] = l.time[from]
 	}
-	for j, channel := range channels {
-		flux, sigma, mask := make([]float64, n), make([]float64, n), make([]Flag, n)
-		for i, from := range times {
-			at := from*m + channel.Index
-			flux[i] = l.flux[at]
-			if l.err != nil {
-				sigma[i] = l.err[at]
-			}
-			mask[i] = unusable(flux[i], sigma[i], l.err != nil)
+	for j := range channels {
+		c.Flux[j], c.Err[j], c.Mask[j] = make([]float64, n), make([]float64, n), make([]Flag, n)
+	}
+	place := make([]int, n) // of each row in the cube
+	for i, from := range times {
+		place[from] = i
+	}
+	if err := l.flux.spread(channels, place, c.Flux); err != nil {
+		return Cube{}, nil, err
+	}
+	if l.err != nil {
+		if err := l.err.spread(channels, place, c.Err); err != nil {
+			return Cube{}, nil, err
 		}
-		c.Flux[j], c.Err[j], c.Mask[j] = flux, sigma, mask
+	}
+	for j, mask := range c.Mask {
+		for i := range mask {
+			mask[i] = unusable(c.Flux[j][i], c.Err[j][i], l.err != nil)
+		}
 	}
 	for _, s := range l.aux {
 		value := make([]float64, n)
@@ -71,6 +83,20 @@ func (l listing) cube() (Cube, []string, error) {
 		warnings = append(warnings, "the file has no flux errors: they are set to zero until a step estimates them from the scatter")
 	}
 	return c, append(warnings, maskSummary(c)...), nil
+}
+
+// spread puts the numbers of rows where they belong in a cube: by channel, and
+// each row in its place.
+func (r rows) spread(channels []Channel, place []int, out [][]float64) error {
+	m := len(channels)
+	return r(func(first int, values []float64) {
+		for j, channel := range channels {
+			to := out[j]
+			for k, at := 0, channel.Index; at < len(values); k, at = k+1, at+m {
+				to[place[first+k]] = values[at]
+			}
+		}
+	})
 }
 
 // unusable returns why a sample is masked.

@@ -1,8 +1,10 @@
 package lightcurve
 
 import (
+	"bytes"
 	"errors"
 	"fmt"
+	"io"
 	"math"
 	"strconv"
 	"strings"
@@ -21,14 +23,19 @@ import (
 // Order, masks, warnings and errors are as with [ReadFITS]; errors name line
 // and column.
 func ReadCSV(series, channels []byte, cols Columns) (Cube, []string, error) {
+	return OpenCSV(bytes.NewReader(series), bytes.NewReader(channels), cols)
+}
+
+// OpenCSV is [ReadCSV] of files that need not be in memory.
+func OpenCSV(series, channels io.Reader, cols Columns) (Cube, []string, error) {
 	if err := cols.check(); err != nil {
 		return Cube{}, nil, err
 	}
-	edges, err := sheet.Read(channels, "channel CSV")
+	edges, err := sheet.Open(channels, "channel CSV")
 	if err != nil {
 		return Cube{}, nil, err
 	}
-	rows, err := sheet.Read(series, "light-curve CSV")
+	rows, err := sheet.Open(series, "light-curve CSV")
 	if err != nil {
 		return Cube{}, nil, err
 	}
@@ -105,11 +112,11 @@ func fill(s *sheet.Sheet, l *listing, cols Columns) (warnings []string, err erro
 	if err != nil {
 		return nil, err
 	}
-	l.flux = gather(s, fluxAt, flux.Offset)
+	l.flux = pick(s, fluxAt, flux.Offset)
 	errAt, err := numbered(s, fallback(sigma.Name, "err_"), m, used)
 	switch {
 	case err == nil:
-		l.err = gather(s, errAt, sigma.Offset)
+		l.err = pick(s, errAt, sigma.Offset)
 	case !errors.Is(err, errNone) || sigma.Name != "":
 		return nil, err
 	}
@@ -178,15 +185,18 @@ func numbered(s *sheet.Sheet, prefix string, m int, used []bool) ([]int, error) 
 	return at, nil
 }
 
-// gather copies columns into rows.
-func gather(s *sheet.Sheet, at []int, offset float64) []float64 {
-	out := make([]float64, 0, len(s.Line)*len(at))
-	for r := range s.Line {
-		row := s.Row(r)
-		for _, i := range at {
-			out = append(out, row[i])
+// pick gives some columns, with an offset added, as rows.
+func pick(s *sheet.Sheet, at []int, offset float64) rows {
+	return func(do func(first int, values []float64)) error {
+		values := make([]float64, len(at))
+		for r := range s.Line {
+			row := s.Row(r)
+			for k, i := range at {
+				values[k] = row[i]
+			}
+			addOffset(values, offset)
+			do(r, values)
 		}
+		return nil
 	}
-	addOffset(out, offset)
-	return out
 }

@@ -1,8 +1,10 @@
 package lightcurve
 
 import (
+	"bytes"
 	"errors"
 	"fmt"
+	"io"
 	"strings"
 
 	"rimlight/steps/fits"
@@ -27,21 +29,33 @@ import (
 // wrong shape, a time is not finite or occurs twice, or a channel's edges are not
 // 0 < WAVE_LO < WAVE_HI.
 func ReadFITS(data []byte, cols Columns) (Cube, []string, error) {
-	return readFITS(data, cols, "LIGHTCURVES")
+	return OpenFITS(bytes.NewReader(data), int64(len(data)), cols)
+}
+
+// OpenFITS is [ReadFITS] of a file of size bytes that need not be in memory:
+// fluxes and errors in columns of equal rows are read a few rows at a time.
+func OpenFITS(r io.ReaderAt, size int64, cols Columns) (Cube, []string, error) {
+	return readFITS(r, size, cols, "LIGHTCURVES")
 }
 
 // ReadFITSComparison reads the comparison star of a light-curve table: the
 // table COMPARISON with TIME, FLUX and FLUX_ERR on the channels of the table
 // CHANNELS of the same file. In all else it is as [ReadFITS].
 func ReadFITSComparison(data []byte, cols Columns) (Cube, []string, error) {
-	return readFITS(data, cols, "COMPARISON")
+	return OpenFITSComparison(bytes.NewReader(data), int64(len(data)), cols)
 }
 
-func readFITS(data []byte, cols Columns, table string) (Cube, []string, error) {
+// OpenFITSComparison is to [ReadFITSComparison] what [OpenFITS] is to
+// [ReadFITS].
+func OpenFITSComparison(r io.ReaderAt, size int64, cols Columns) (Cube, []string, error) {
+	return readFITS(r, size, cols, "COMPARISON")
+}
+
+func readFITS(r io.ReaderAt, size int64, cols Columns, table string) (Cube, []string, error) {
 	if err := cols.check(); err != nil {
 		return Cube{}, nil, err
 	}
-	f, err := fits.Read(data)
+	f, err := fits.Open(r, size)
 	if err != nil {
 		return Cube{}, nil, err
 	}
@@ -65,8 +79,8 @@ func readFITS(data []byte, cols Columns, table string) (Cube, []string, error) {
 
 // A block is a column or an image that serves as one: rows of equal width.
 type block struct {
-	label  string // for messages
-	values []float64
+	label  string    // for messages
+	values []float64 // nil when they are read later, by each
 	rows   int
 	width  int
 	unit   string
@@ -77,7 +91,7 @@ type block struct {
 // listFITS collects the columns of a light-curve table.
 func listFITS(f *fits.File, cols Columns, table string) (listing, []string, error) {
 	var l listing
-	time, err := findBlock(f, cols.role("TIME"), table)
+	time, err := readBlock(f, cols.role("TIME"), table)
 	if err != nil {
 		return l, nil, err
 	}
@@ -90,11 +104,11 @@ func listFITS(f *fits.File, cols Columns, table string) (listing, []string, erro
 	if err != nil {
 		return l, nil, err
 	}
-	lo, err := findBlock(f, cols.role("WAVE_LO"), "CHANNELS")
+	lo, err := readBlock(f, cols.role("WAVE_LO"), "CHANNELS")
 	if err != nil {
 		return l, nil, err
 	}
-	hi, err := findBlock(f, cols.role("WAVE_HI"), fallback(cols.role("WAVE_LO").HDU, "CHANNELS"))
+	hi, err := readBlock(f, cols.role("WAVE_HI"), fallback(cols.role("WAVE_LO").HDU, "CHANNELS"))
 	if err != nil {
 		return l, nil, err
 	}
@@ -114,13 +128,11 @@ func listFITS(f *fits.File, cols Columns, table string) (listing, []string, erro
 			return l, nil, fmt.Errorf("%s: %w", w.label, err)
 		}
 	}
-	addOffset(flux.values, cols.role("FLUX").Offset)
-	l = listing{time: time.values, flux: flux.values, lo: lo.values, hi: hi.values,
+	l = listing{time: time.values, flux: flux.each(cols.role("FLUX").Offset), lo: lo.values, hi: hi.values,
 		row:   func(i int) string { return fmt.Sprintf("%s: row %d", time.label, i+1) },
 		edges: func(j int) string { return fmt.Sprintf("%s: row %d", lo.label, j+1) }}
 	if sigma != nil {
-		addOffset(sigma.values, cols.role("FLUX_ERR").Offset)
-		l.err = sigma.values
+		l.err = sigma.each(cols.role("FLUX_ERR").Offset)
 		if flux.unit != "" && sigma.unit != "" && flux.unit != sigma.unit {
 			warnings = append(warnings, fmt.Sprintf("fluxes are in %s but their errors in %s: they are used as if the units were one", flux.unit, sigma.unit))
 		}
@@ -130,7 +142,19 @@ func listFITS(f *fits.File, cols Columns, table string) (listing, []string, erro
 	return l, append(warnings, notes...), err
 }
 
-// findBlock reads the column that has a role.
+// readBlock is findBlock, but reads the values in any case.
+func readBlock(f *fits.File, c Column, home string) (*block, error) {
+	b, err := findBlock(f, c, home)
+	if err == nil && b.values == nil && b.table != nil {
+		if err = b.readColumn(); err != nil {
+			err = fmt.Errorf("light-curve table, %s: %w", c.Role, err)
+		}
+	}
+	return b, err
+}
+
+// findBlock finds the column that has a role. Of a column with many numbers in
+// each row, the same number of them, the values are yet to be read.
 func findBlock(f *fits.File, c Column, home string) (*block, error) {
 	h, err := f.HDU(fallback(c.HDU, home))
 	if err != nil {
@@ -146,6 +170,10 @@ func findBlock(f *fits.File, c Column, home string) (*block, error) {
 		}
 		b.label = fmt.Sprintf("%s: column %s", h.Label(), column.Label())
 		b.index, b.unit, b.rows = column.Index, column.Unit, h.Table.Rows
+		if !column.Variable && column.Width > 1 && isNumber(column.Kind) {
+			b.width = column.Width
+			break
+		}
 		if err := b.readColumn(); err != nil {
 			return nil, fmt.Errorf("light-curve table, %s: %w", c.Role, err)
 		}
@@ -187,6 +215,34 @@ func (b *block) readColumn() error {
 		b.width = width
 	}
 	return nil
+}
+
+// each gives the rows of a block, with an offset added, a few at a time.
+func (b *block) each(offset float64) rows {
+	if b.values != nil || b.table == nil {
+		addOffset(b.values, offset)
+		return func(do func(first int, values []float64)) error {
+			do(0, b.values)
+			return nil
+		}
+	}
+	return func(do func(first int, values []float64)) error {
+		const together = 4 << 20 // bytes
+		step := max(1, together/8/max(1, b.width))
+		for first := 0; first < b.rows; first += step {
+			v, err := b.table.ValuesOf(b.index, first, min(b.rows, first+step))
+			if err != nil {
+				return err
+			}
+			values, err := v.Float64s()
+			if err != nil {
+				return fmt.Errorf("%s %w", b.label, err)
+			}
+			addOffset(values, offset)
+			do(first, values)
+		}
+		return nil
+	}
 }
 
 // findErrors reads FLUX_ERR, which may be missing unless the mapping names it.
@@ -276,7 +332,7 @@ func auxFITS(f *fits.File, cols Columns, home string, used []*block) ([]Series, 
 		if isRole(c.Role) || found[strings.ToUpper(c.Role)] {
 			continue
 		}
-		b, err := findBlock(f, c, home)
+		b, err := readBlock(f, c, home)
 		if err != nil {
 			return nil, nil, err
 		}

@@ -3,6 +3,7 @@
 package sheet
 
 import (
+	"bufio"
 	"bytes"
 	"encoding/csv"
 	"errors"
@@ -18,9 +19,9 @@ import (
 
 // A Sheet is a table of numbers with named columns.
 type Sheet struct {
-	Names []string // of the columns; no two are alike but for letter case
-	Line  []int    // number of the line that each row starts on, from 1
-	cells []float64
+	Names []string    // of the columns; no two are alike but for letter case
+	Line  []int       // number of the line that each row starts on, from 1
+	rows  [][]float64 // each with a cell for each name
 }
 
 // maxColumns is far above twice the channels of any spectrograph (fluxes and
@@ -35,8 +36,16 @@ const maxName = 200
 // alike. Names are UTF-8 text of up to 200 bytes. Errors start with what and name line and column. Memory stays within a
 // multiple of the file's size.
 func Read(data []byte, what string) (*Sheet, error) {
-	data = bytes.TrimPrefix(data, []byte("\xef\xbb\xbf")) // byte order mark
-	r := csv.NewReader(bytes.NewReader(data))
+	return Open(bytes.NewReader(data), what)
+}
+
+// Open is [Read] of a file that need not be in memory.
+func Open(file io.Reader, what string) (*Sheet, error) {
+	text := bufio.NewReaderSize(file, 64<<10)
+	if mark, _ := text.Peek(3); string(mark) == "\xef\xbb\xbf" { // byte order mark
+		text.Discard(3)
+	}
+	r := csv.NewReader(text)
 	r.Comment = '#'
 	r.FieldsPerRecord = -1
 	r.ReuseRecord = true
@@ -79,14 +88,16 @@ func Read(data []byte, what string) (*Sheet, error) {
 		if len(record) != len(s.Names) {
 			return nil, fmt.Errorf("%s: line %d has %d cells, but the header names %d columns", what, line, len(record), len(s.Names))
 		}
+		row := make([]float64, len(record))
 		for i, cell := range record {
 			x, err := parseCell(cell)
 			if err != nil {
 				line, column := r.FieldPos(i)
 				return nil, fmt.Errorf("%s: line %d, column %d (%.40s): %w", what, line, column, s.Names[i], err)
 			}
-			s.cells = append(s.cells, x)
+			row[i] = x
 		}
+		s.rows = append(s.rows, row)
 		s.Line = append(s.Line, line)
 	}
 }
@@ -131,16 +142,13 @@ func (s *Sheet) Find(name string) (int, error) {
 }
 
 // Row is a view of one row.
-func (s *Sheet) Row(r int) []float64 {
-	w := len(s.Names)
-	return s.cells[r*w : (r+1)*w : (r+1)*w]
-}
+func (s *Sheet) Row(r int) []float64 { return s.rows[r] }
 
 // Column copies the column at a place.
 func (s *Sheet) Column(i int) []float64 {
 	out := make([]float64, len(s.Line))
 	for r := range out {
-		out[r] = s.cells[r*len(s.Names)+i]
+		out[r] = s.rows[r][i]
 	}
 	return out
 }
