@@ -88,20 +88,7 @@ func (d *deficits) place(p *profile, r, z float64, e *edge, l *linear, t *integr
 	if z < smallest {
 		z = 0
 	}
-	// Distances of the planet's near and far edge from the star's, exact
-	// wherever they are small.
-	outer := (1 - z) + r // > 0 before fourth contact
-	if z > 2 {
-		outer = (r - z) + 1
-	}
-	inner := (1 - r) + z // ≤ 0 when the star is covered
-	if r > 2 {
-		inner = (z - r) + 1
-	}
-	beyond := (r - 1) + z // ≤ 0 when the planet is within the star's disc
-	if r < 0.5 {
-		beyond = (z - 1) + r
-	}
+	outer, inner, beyond := gaps(r, z)
 	switch {
 	case outer <= 0 || r < smallest:
 		*d = deficits{} // nothing is covered
@@ -131,6 +118,24 @@ func (d *deficits) place(p *profile, r, z float64, e *edge, l *linear, t *integr
 		e.integrate(p, r, z, d)
 	}
 	return true
+}
+
+// gaps returns the distances between the edges of planet and star, exact wherever
+// they are small: outer = 1-z+r, above 0 before fourth contact; inner = 1-r+z, 0
+// or less when the star is covered; beyond = z+r-1, 0 or less when the planet is
+// within the star's disc.
+func gaps(r, z float64) (outer, inner, beyond float64) {
+	outer, inner, beyond = (1-z)+r, (1-r)+z, (r-1)+z
+	if z > 2 {
+		outer = (r - z) + 1
+	}
+	if r > 2 {
+		inner = (z - r) + 1
+	}
+	if r < 0.5 {
+		beyond = (z - 1) + r
+	}
+	return outer, inner, beyond
 }
 
 // offset returns z - r, kept away from 0, where the integral of the third kind

@@ -15,8 +15,9 @@ const orbital = 6
 
 // Curve returns the relative flux at the given times, days on the scale of
 // Orbit.MidTransit, one value for each; times are the middles of the exposures.
-// The flux is 1 while the planet is behind the star. With an exposure the flux
-// is averaged over it with an error below 1e-8. Times may be in any order; in
+// The flux is 1 while no part of the star is covered, spots or not, and while the
+// planet is behind the star. With an exposure the flux is averaged over it with an
+// error below 1e-8. Times may be in any order; in
 // increasing order those out of transit are passed over at once. It returns an
 // error for invalid parameters or a time that is not finite.
 func Curve(times []float64, p Params) ([]float64, error) {
@@ -35,7 +36,7 @@ func CurveGradient(times []float64, p Params) (flux []float64, grad [][]float64,
 	if err != nil {
 		return nil, nil, err
 	}
-	n, arguments := len(times), orbital+2+c.profile.count
+	n, arguments := len(times), len(p.Arguments())
 	all := make([]float64, arguments*n)
 	c.out.grad = make([][]float64, arguments)
 	for k := range c.out.grad {
@@ -49,14 +50,17 @@ func CurveGradient(times []float64, p Params) (flux []float64, grad [][]float64,
 type curve struct {
 	path     *orbit.Path
 	profile  profile
-	radius   float64
+	radius   float64 // the larger one of two limbs
 	period   float64
 	from, to float64 // days since mid-transit outside of which there is no transit
 	exposure float64 // days
 	pieces   []piece // of the transit, for averages over exposures
 	share    float64 // of the star in all the light
-	out      result
-	wait     queue
+	face     *face   // of a planet of two limbs or a star with spots, or nil
+
+	eccentricity, sinW, cosW float64
+	out                      result
+	wait                     queue
 }
 
 // result is a light curve, with derivatives if grad is not nil.
@@ -90,7 +94,15 @@ func newCurve(times []float64, p Params) (*curve, error) {
 		path: p.Orbit.Path(), profile: profile, radius: p.RadiusRatio, period: p.Orbit.Period,
 		exposure: p.Exposure / secondsPerDay, share: 1 / (1 + p.Companion),
 	}
-	c.from, c.to = c.path.Window(1 + p.RadiusRatio)
+	if p.Evening != 0 || len(p.Spots) > 0 {
+		if c.face, err = newFace(&c.profile, p); err != nil {
+			return nil, err
+		}
+		c.radius = max(p.RadiusRatio, p.Evening)
+		c.eccentricity = p.Orbit.Eccentricity
+		c.sinW, c.cosW = math.Sincos(p.Orbit.Periastron)
+	}
+	c.from, c.to = c.path.Window(1 + c.radius)
 	if c.exposure > 0 {
 		c.split()
 	}
@@ -133,6 +145,10 @@ func (c *curve) run(times []float64) {
 // sample adds a sample at a time since mid-transit to the result for time i, with
 // a weight; elapsed is the time since Orbit.MidTransit.
 func (c *curve) sample(i int, since, elapsed, weight float64) {
+	if c.face != nil {
+		c.look(i, since, elapsed, weight)
+		return
+	}
 	q := &c.wait
 	var z float64
 	var front bool

@@ -82,7 +82,12 @@ func (c *curve) average(i int, since, elapsed float64) {
 		}
 		for k := range c.pieces {
 			p := &c.pieces[k]
-			if a, b := math.Max(from, p.from), math.Min(to, p.to); a < b {
+			a, b := math.Max(from, p.from), math.Min(to, p.to)
+			switch {
+			case a >= b:
+			case c.face != nil:
+				c.refine(i, a, b, elapsed-middle)
+			default:
 				c.integrate(i, p, a, b, elapsed-middle)
 			}
 		}

@@ -76,6 +76,9 @@ func newProfile(law limb.Law, tolerance float64) (profile, error) {
 		p.slopes = [limb.Most][terms]float64{{-1, 0, 0, 1}, {-1, 1}, {-1, 0, 0, 0, 1}, {-1, 0, 1}}
 	}
 	p.weights[0] = 1
+	if p.shape == none {
+		p.nodes = finest() // which only outlines other than circles use
+	}
 	for i, u := range u {
 		for k, slope := range p.slopes[i] {
 			p.weights[k] += u * slope

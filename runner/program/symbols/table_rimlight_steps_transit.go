@@ -11,12 +11,19 @@ func init() {
 	Table["rimlight/steps/transit/transit"] = map[string]reflect.Value{
 		"Curve":             reflect.ValueOf(transit.Curve),
 		"CurveGradient":     reflect.ValueOf(transit.CurveGradient),
+		"Eclipse":           reflect.ValueOf(transit.Eclipse),
+		"EclipseGradient":   reflect.ValueOf(transit.EclipseGradient),
+		"EclipseParams":     reflect.ValueOf((*transit.EclipseParams)(nil)),
 		"Flux":              reflect.ValueOf(transit.Flux),
 		"FluxGradient":      reflect.ValueOf(transit.FluxGradient),
 		"FluxGradientInto":  reflect.ValueOf(transit.FluxGradientInto),
 		"Gradient":          reflect.ValueOf((*transit.Gradient)(nil)),
+		"Halves":            reflect.ValueOf((*transit.Halves)(nil)),
+		"HalvesFlux":        reflect.ValueOf(transit.HalvesFlux),
+		"HalvesGradient":    reflect.ValueOf((*transit.HalvesGradient)(nil)),
 		"Params":            reflect.ValueOf((*transit.Params)(nil)),
 		"Quadratic":         reflect.ValueOf(transit.Quadratic),
 		"QuadraticGradient": reflect.ValueOf(transit.QuadraticGradient),
+		"Spot":              reflect.ValueOf((*transit.Spot)(nil)),
 	}
 }
