@@ -29,7 +29,7 @@ type Draws struct {
 	Acceptance  []float64 // of each chain: share of moves accepted, or mean acceptance statistic
 	StepSize    []float64 // of each chain, of Hamiltonian samplers
 	Evaluations int       // of the target, warm-up included
-	Undefined   int       // evaluations that gave NaN or +Inf, which were taken for zero density
+	Undefined   int       // of those after the warm-up, which gave NaN or +Inf and were taken for zero density
 }
 
 // Check reports the first thing about the shape of d that does not fit.

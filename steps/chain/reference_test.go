@@ -16,7 +16,7 @@ import (
 func columns(t *testing.T, file string) map[string][]float64 {
 	t.Helper()
 	out := map[string][]float64{}
-	rows := table(t, file)
+	rows := rowsOf(t, file)
 	for k, name := range rows[0][1:] {
 		name = name[:strings.LastIndex(name, "_")]
 		for _, row := range rows[1:] {
@@ -26,7 +26,7 @@ func columns(t *testing.T, file string) map[string][]float64 {
 	return out
 }
 
-func table(t *testing.T, file string) [][]string {
+func rowsOf(t *testing.T, file string) [][]string {
 	t.Helper()
 	f, err := os.Open(filepath.Join("../../testdata/chain", file))
 	if err != nil {
@@ -158,7 +158,7 @@ func TestErrors(t *testing.T) {
 }
 
 func TestParetoReference(t *testing.T) {
-	for _, row := range table(t, "psis_khat.csv")[1:] {
+	for _, row := range rowsOf(t, "psis_khat.csv")[1:] {
 		name, s := row[0], int(parse(t, row[1]))
 		wantK, wantScale := parse(t, row[5]), parse(t, row[6])
 		var lambda, k, scale float64

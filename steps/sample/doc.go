@@ -16,8 +16,8 @@
 //
 // A target gets a slice which is its own until it returns. It must depend on
 // nothing but this, and what stands fixed around it. -Inf is a density of zero.
-// NaN and +Inf are taken for it too, but counted, which fails a check: a target
-// says itself where it has no density. Within limits, it is never called with
+// NaN and +Inf are taken for it too, but counted after the warm-up, which fails a
+// check: a target says itself where it has no density. Within limits, it is never called with
 // parameters beyond them.
 //
 // # Random numbers

@@ -88,6 +88,7 @@ func Ensemble(parameters []Parameter, f func(x []float64) float64, start [][]flo
 		}
 	}
 	clear(e.accepted)
+	e.evaluator.undefined = 0 // far from the posterior, it means nothing
 	for i := range s.Draws {
 		for range s.Thin {
 			if err := e.step(); err != nil {

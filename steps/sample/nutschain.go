@@ -76,6 +76,7 @@ func (run *nutsChain) chain(start []float64, d *chain.Draws, s NUTSSettings) err
 	if err := run.warmUp(s); err != nil {
 		return fmt.Errorf("warm-up: %w after %d", err, run.evaluator.calls)
 	}
+	run.evaluator.undefined = 0 // far from the posterior, it means nothing
 	acceptance := 0.0
 	for i := range s.Draws {
 		if err := run.transition(); err != nil {

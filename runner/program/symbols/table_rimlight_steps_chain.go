@@ -29,6 +29,7 @@ func init() {
 		"SDError":             reflect.ValueOf(chain.SDError),
 		"Summaries":           reflect.ValueOf(chain.Summaries),
 		"Summary":             reflect.ValueOf((*chain.Summary)(nil)),
+		"Table":               reflect.ValueOf(chain.Table),
 		"TailESS":             reflect.ValueOf(chain.TailESS),
 		"WeightESS":           reflect.ValueOf(chain.WeightESS),
 		"Weighted":            reflect.ValueOf((*chain.Weighted)(nil)),
