@@ -4,6 +4,8 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"slices"
+	"strings"
 	"time"
 
 	"rimlight/runner/plan"
@@ -327,6 +329,21 @@ func (e *Engine) arrived(c *Computation) error {
 	}
 	c.State, c.Results, c.Log, c.Took, c.When, c.Host = Computed, values, r.Log, r.Took, r.When, r.Host
 	return nil
+}
+
+// hosts says where elements were computed, when it was at few places.
+func hosts(comps []Computation) string {
+	const most = 3
+	var names []string
+	for n := range comps {
+		if h := comps[n].Host; h != "" && !slices.Contains(names, h) {
+			names = append(names, h)
+		}
+		if len(names) > most {
+			return strings.Join(names[:most], "; ") + " and others"
+		}
+	}
+	return strings.Join(names, "; ")
 }
 
 // mendFor reads all that the listed elements are computed with, and mends what

@@ -207,6 +207,7 @@ func (e *Engine) fanOut(ctx context.Context, i int) error {
 			c.When = comps[n].When
 		}
 	}
+	c.Host = hosts(comps)
 	if ctx.Err() != nil {
 		c.State, err = NotReached, ctx.Err()
 	}
