@@ -74,6 +74,7 @@ type stepView struct {
 	Why      string
 	Took     string
 	When     string
+	Host     string
 	Key      string
 	Seed     string
 	Err      string
@@ -141,7 +142,7 @@ func (b *builder) step(i, level int, code []template.HTML, lines string) stepVie
 	v := stepView{
 		ID: stepID(s.Name), Number: i + 1, Name: label(s.Name), Level: min(max(level, 2), 6),
 		Each: label(s.Each), Doc: paragraphs(s.Doc), Code: code, Lines: lines,
-		Where: where(b.doc, s), State: s.State, Class: class(s.State), Why: sentence(s.Why), Took: duration(s.Took), When: utc(s.When), Key: label(s.Key),
+		Where: where(b.doc, s), State: s.State, Class: class(s.State), Why: sentence(s.Why), Took: duration(s.Took), When: utc(s.When), Host: sentence(s.Host), Key: label(s.Key),
 		Err: errText(s), Log: listing(s.Log),
 	}
 	b.contents = append(b.contents, entry{ID: v.ID, Text: v.Name, State: s.State})

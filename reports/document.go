@@ -106,6 +106,7 @@ type Step struct {
 	Seed      uint64        // random seed wired into it; 0 when it takes none
 	Took      time.Duration // computing time, when it was computed (also shown when reused)
 	When      time.Time     // when it was computed
+	Host      string        // where, when that was not the machine of the run
 	Elements  []Element     // of a fan-out
 	Checks    []check.Check // the runner's own verdicts on it
 }

@@ -132,6 +132,9 @@ func stepOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcom
 	if spec.Step.Each != nil {
 		out.Each = spec.Step.Each.Element + " in " + spec.Step.Each.Collection
 	}
+	if s.Host != e.Host {
+		out.Host = s.Host
+	}
 	if s.Text != "" {
 		out.Key = s.Text.Key().String()
 	}

@@ -35,7 +35,7 @@ func (o *options) slurmFlags(f *pflag.FlagSet) {
 	f.DurationVar(&s.Over, "slurm-over", slurm.DefaultOver, "steps of less computing time than this `DURATION` are computed here; 0: none is")
 	f.StringArrayVar(&s.Extra, "slurm-option", nil, "a further `OPTION` of sbatch, such as --slurm-option=--qos=short")
 	f.DurationVar(&s.Poll, "slurm-poll", slurm.DefaultPoll, "how often squeue is asked; a job's results are waited for twelve times as long after it ended")
-	f.Lookup("slurm-memory").DefValue = "0B"
+	f.Lookup("slurm-memory").DefValue = "" // said above
 }
 
 // checkPlace refuses places that are not known, and flags for another one.

@@ -27,8 +27,16 @@ func (a *app) runCommand() *cobra.Command {
 and run.json. Every finished result is kept in the store under a key made of
 all that can change it, and is used again as long as the key is the same.
 
+With --on slurm, long steps are computed by a Slurm cluster whose nodes see the
+folders of store and report under the same paths. The elements of a fan-out are
+submitted as job arrays, when all that the step needs is there; Ctrl-C cancels
+them, and a run takes over what an earlier one left in the queue. Computed here
+are steps of less computing time than --slurm-over, as far as that is known from
+the run before; plain steps of which it is not known; the first four elements of
+such a fan-out; and what --again asks for.
+
 A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
-		Example: "  rimlight run visit.md --in raw=visit2.fits --set clipSigma=4",
+		Example: "  rimlight run visit.md --in raw=visit2.fits --set clipSigma=4\n  rimlight run visit.md --on slurm --slurm-partition long --slurm-account transits",
 		Args:    cobra.ExactArgs(1),
 		RunE:    func(c *cobra.Command, args []string) error { return a.run(c.Context(), args[0], &o) },
 	}

@@ -320,7 +320,10 @@ func TestWrongCommands(t *testing.T) {
 		{[]string{"run", recipe, "--set", "count=many"}, "count"},
 		{[]string{"run", recipe, "--in", "raw=x.fits"}, "no input of this name"},
 		{[]string{"run", recipe, "--jobs", "0"}, "at least 1"},
-		{[]string{"run", recipe, "--on", "moon"}, "--on moon"},
+		{[]string{"run", recipe, "--on", "moon"}, "--on moon: expected local or slurm"},
+		{[]string{"run", recipe, "--slurm-account", "x"}, "--slurm-account: only with --on slurm"},
+		{[]string{"run", recipe, "--on", "slurm", "--slurm-cpus", "0"}, "--slurm-cpus 0"},
+		{[]string{"run", recipe, "--on", "slurm", "--slurm-option", "qos=x"}, "expected an option of sbatch"},
 		{[]string{"run", recipe, "--jbos", "2"}, "unknown flag"},
 		{[]string{"rnu", recipe}, "unknown command"},
 	} {
