@@ -11,6 +11,7 @@ import (
 
 	"rimlight/runner/confine"
 	"rimlight/runner/slurm"
+	"rimlight/runner/store"
 	"rimlight/runner/worker"
 )
 
@@ -18,6 +19,8 @@ import (
 type options struct {
 	in, set    []string
 	out, store string
+	reserve    size // of the store's disk
+	storeSize  size
 	jobs       int
 	on         string
 	slurm      slurm.Options
@@ -38,6 +41,9 @@ func (o *options) flags(c *cobra.Command) {
 	f.StringArrayVar(&o.set, "set", nil, "give a setting another value: `NAME=VALUE`")
 	f.StringVar(&o.out, "out", "", "write the report and its tables into `DIR` (default: beside the recipe, its name with .out)")
 	f.StringVar(&o.store, "store", "", "keep results in the store `DIR` (default: rimlight.store beside the recipe)")
+	o.reserve = store.DefaultReserve
+	f.Var(&o.reserve, "reserve", "stop when keeping a result would leave less than `SIZE` free on the disk of the store")
+	f.Var(&o.storeSize, "store-size", "stop when the results in the store would take up more than `SIZE`; 0 for no limit")
 	f.IntVar(&o.jobs, "jobs", runtime.NumCPU(), "worker processes at a time")
 	f.StringVar(&o.on, "on", local, "where to compute: local, or slurm (a cluster that shares the folders of store and report)")
 	o.slurmFlags(f)

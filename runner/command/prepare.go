@@ -98,6 +98,9 @@ func (a *app) newEngine(p *plan.Plan, code worker.Code, o *options) (*engine.Eng
 	if err != nil {
 		return nil, nil, err
 	}
+	if err := s.Limit(int64(o.reserve), int64(o.storeSize)); err != nil {
+		return nil, nil, err
+	}
 	lib, err := a.library()
 	if err != nil {
 		return nil, nil, err

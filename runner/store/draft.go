@@ -42,6 +42,9 @@ func (d *Draft) Write(p []byte) (int, error) {
 
 // flush moves what is in memory to the file.
 func (d *Draft) flush() error {
+	if err := d.store.room(d.size, int64(len(d.data))); err != nil {
+		return err
+	}
 	if d.file == nil {
 		f, err := d.store.temporary()
 		if err != nil {

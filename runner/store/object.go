@@ -77,6 +77,13 @@ func (s *Store) putDrafts(drafts []*Draft) error {
 		}
 	}()
 	hashes := make([]Hash, len(drafts))
+	total, unwritten := int64(0), int64(0)
+	for _, d := range drafts {
+		total += d.size
+		if d.file == nil {
+			unwritten += d.size
+		}
+	}
 	seen := map[Hash]bool{}
 	for i, d := range drafts {
 		h := d.Hash()
@@ -88,10 +95,16 @@ func (s *Store) putDrafts(drafts []*Draft) error {
 		if s.intact(h) {
 			continue
 		}
+		if len(staged) == 0 {
+			if err := s.room(total, unwritten); err != nil {
+				return err
+			}
+		}
 		tmp, err := d.stage(len(drafts) == 1)
 		if err != nil {
 			return err
 		}
+		s.used.Add(d.size)
 		staged, missing = append(staged, tmp), append(missing, h)
 	}
 	for _, h := range missing {

@@ -280,6 +280,9 @@ func TestFullDisk(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	if err := s.Limit(0, 0); err != nil {
+		t.Fatal(err)
+	}
 	var hashes []Hash
 	for i := 0; err == nil; i++ {
 		var h Hash

@@ -9,6 +9,7 @@ import (
 	"strconv"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"time"
 )
 
@@ -17,6 +18,9 @@ type Store struct {
 	dir   string
 	now   func() time.Time
 	files files
+
+	reserve, most int64        // see Limit
+	used          atomic.Int64 // bytes of objects, counted only against most
 
 	mu      sync.Mutex
 	durable map[string]bool // folders whose own names this process has synced
@@ -55,7 +59,7 @@ func Open(dir string) (*Store, error) {
 	if err != nil {
 		return nil, fmt.Errorf("the result store cannot be found: %w", err)
 	}
-	s := &Store{dir: dir, now: time.Now, files: realFiles, durable: map[string]bool{}}
+	s := &Store{dir: dir, now: time.Now, files: realFiles, reserve: DefaultReserve, durable: map[string]bool{}}
 	mark, err := os.ReadFile(filepath.Join(dir, markFile))
 	switch {
 	case err == nil && s.vouched():

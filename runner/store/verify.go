@@ -78,6 +78,14 @@ func (s *Store) list(kind string) ([]string, error) {
 	return paths, err
 }
 
+// ignoreMissing is for files that are deleted while somebody looks.
+func ignoreMissing(err error) error {
+	if errors.Is(err, fs.ErrNotExist) {
+		return nil
+	}
+	return err
+}
+
 func stray(path string) error {
 	return fmt.Errorf("%s does not belong into a result store", path)
 }

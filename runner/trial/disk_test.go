@@ -63,7 +63,7 @@ func remount(t testing.TB, dir, options string) {
 func TestFullDisk(t *testing.T) {
 	b := newBench(t)
 	mount(t, b.store, "-t", "tmpfs", "-o", "size=1200k", "tmpfs")
-	said := b.run(1)
+	said := b.run(1, "--reserve", "0")
 	says(t, said, "the result store "+b.store+" is full: make room on its disk, or choose another folder with --store")
 	b.verify(0)
 	if left := filesBelow(t, filepath.Join(b.store, "tmp")); len(left) > 0 {
@@ -73,9 +73,24 @@ func TestFullDisk(t *testing.T) {
 	if n := before["step Fit"]; n == 0 || n == elements {
 		t.Errorf("%d of %d elements were kept", n, elements)
 	}
-	remount(t, b.store, "size=64m")
+	remount(t, b.store, "size=640m")
 	b.holdReuse(before, b.events(0))
 	treeOf(b).equal(t, undisturbed(t))
+}
+
+// TestReserve has a store that is not to fill its disk, or to grow beyond a
+// size.
+func TestReserve(t *testing.T) {
+	b := newBench(t)
+	mount(t, b.store, "-t", "tmpfs", "-o", "size=64m", "tmpfs")
+	says(t, b.run(1, "--reserve", "66MB"), "the result store "+b.store+" is full: its disk has 66.0 MB free, of which 66.0 MB are to stay so (--reserve)")
+	if n := b.finished()["step Fit"]; n == 0 || n == elements {
+		t.Errorf("%d of %d elements were kept", n, elements)
+	}
+	says(t, b.run(1, "--reserve", "0", "--store-size", "150kB"), "may have 150.0 kB (--store-size)", "trim it, or allow it more")
+	b.verify(0)
+	b.run(0, "--reserve", "0")
+	b.run(0, "--reserve", "0", "--store-size", "1kB") // everything is known
 }
 
 // TestFullDiskOfReport lets the report fill its disk: the results are kept.

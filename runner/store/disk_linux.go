@@ -14,3 +14,13 @@ func syncAll(dir string) {
 		d.Close()
 	}
 }
+
+// free is how many bytes an ordinary user may still write to the disk of a
+// folder, and whether that is known.
+func free(dir string) (int64, bool) {
+	var st unix.Statfs_t
+	if err := unix.Statfs(dir, &st); err != nil || st.Blocks == 0 {
+		return 0, false
+	}
+	return int64(st.Bavail) * st.Bsize, true
+}
