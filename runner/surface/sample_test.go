@@ -240,6 +240,7 @@ func newSamples() *samples {
 		"chain.QuantileError":       {{column}, {1, 2, 4}, {0.05, 0.5}},
 		"chain.ParetoSmooth":        {{column}},
 		"chain.WeightESS":           {{column}},
+		"chain.LogMeanWeight":       {{column}},
 		"chain.WeightedQuantile":    {{column}, {column}, {0.5, 0.975}},
 		"chain.Resample":            {{weighted}, {1, 50}},
 		"chain.Draws.Column":        {{draws}, {"a", "b"}},

@@ -91,16 +91,7 @@ func quantileSize(x, sorted []float64, chains int, p float64) float64 {
 // their number.
 func effectiveSize(x []float64, chains int) float64 {
 	n := len(x) / chains
-	covariance := make([]float64, n) // mean over chains, of divisor n
-	means := make([]float64, chains)
-	auto := newAutocovariance(n)
-	for c := range chains {
-		var own []float64
-		own, means[c] = auto.of(x[c*n : (c+1)*n])
-		for t, v := range own {
-			covariance[t] += v / float64(chains)
-		}
-	}
+	covariance, means := autocovariance(x, chains)
 	total := float64(len(x))
 	variance := covariance[0] // of the posterior, as all chains see it
 	within := variance * float64(n) / float64(n-1)
@@ -126,42 +117,37 @@ func effectiveSize(x []float64, chains int) float64 {
 	return total / math.Max(time, 1/math.Log10(total))
 }
 
-// An autocovariance computes autocovariances of series of one length by fast
-// Fourier transform.
-type autocovariance struct {
-	fft      *fourier.FFT
-	padded   []float64
-	spectrum []complex128
-	n        int
-}
-
-func newAutocovariance(n int) *autocovariance {
+// autocovariance gives the autocovariances of chains at the lags 0 to n-1, with
+// the divisor n and averaged over chains, by fast Fourier transform; and the means
+// of the chains.
+func autocovariance(x []float64, chains int) (covariance, means []float64) {
+	n := len(x) / chains
 	size := 1
-	for size < 2*n {
+	for size < 2*n { // so that the end does not meet the beginning
 		size *= 2
 	}
-	return &autocovariance{fft: fourier.NewFFT(size), padded: make([]float64, size), spectrum: make([]complex128, size/2+1), n: n}
-}
-
-// of gives the autocovariances at the lags 0 to n-1, with the divisor n, which
-// hold until the next call, and the mean.
-func (a *autocovariance) of(x []float64) (covariance []float64, mean float64) {
-	for _, v := range x {
-		mean += v
+	fft := fourier.NewFFT(size)
+	padded := make([]float64, size)
+	spectrum, power := make([]complex128, size/2+1), make([]complex128, size/2+1)
+	means = make([]float64, chains)
+	for c := range chains {
+		own := x[c*n : (c+1)*n]
+		for _, v := range own {
+			means[c] += v
+		}
+		means[c] /= float64(n)
+		for i, v := range own {
+			padded[i] = v - means[c]
+		}
+		fft.Coefficients(spectrum, padded)
+		for k, z := range spectrum {
+			power[k] += complex(real(z)*real(z)+imag(z)*imag(z), 0)
+		}
 	}
-	mean /= float64(len(x))
-	clear(a.padded)
-	for i, v := range x {
-		a.padded[i] = v - mean
+	covariance = fft.Sequence(padded, power)[:n]
+	norm := 1 / (float64(size) * float64(n) * float64(chains))
+	for t := range covariance {
+		covariance[t] *= norm
 	}
-	a.fft.Coefficients(a.spectrum, a.padded)
-	for k, z := range a.spectrum {
-		a.spectrum[k] = complex(real(z)*real(z)+imag(z)*imag(z), 0)
-	}
-	a.fft.Sequence(a.padded, a.spectrum)
-	norm := 1 / (float64(len(a.padded)) * float64(a.n))
-	for t := range a.n {
-		a.padded[t] *= norm
-	}
-	return a.padded[:a.n], mean
+	return covariance, means
 }

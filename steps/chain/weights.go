@@ -71,6 +71,25 @@ func weightSize(weight []float64) float64 {
 	return 1 / squares
 }
 
+// LogMeanWeight is the natural logarithm of the mean of weights, and its standard
+// error: of the ratios of an unnormalised target to a proposal, the evidence. The
+// error is as honest as the effective sample size, √(1/ESS - 1/n) for n weights;
+// see [WeightESS], also for errors.
+func LogMeanWeight(logWeight []float64) (value, sd float64, err error) {
+	most, err := checkWeights(logWeight)
+	if err != nil {
+		return 0, 0, fmt.Errorf("mean weight: %w", err)
+	}
+	var sum, squares float64
+	for _, w := range logWeight {
+		v := math.Exp(w - most)
+		sum += v
+		squares += v * v
+	}
+	n := float64(len(logWeight))
+	return most + math.Log(sum/n), math.Sqrt(max(0, squares/sum/sum-1/n)), nil
+}
+
 // weights are the weights of those logarithms, with the sum 1.
 func weights(logWeight []float64) ([]float64, error) {
 	most, err := checkWeights(logWeight)

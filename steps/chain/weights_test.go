@@ -23,6 +23,15 @@ func TestWeightESS(t *testing.T) {
 	}
 }
 
+func TestLogMeanWeight(t *testing.T) {
+	value, sd, err := LogMeanWeight([]float64{math.Log(3e200), math.Log(1e200), math.Inf(-1), math.Inf(-1)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "mean", value, math.Log(1e200), 1e-14)
+	near(t, "error", sd, math.Sqrt(10.0/16-1.0/4), 1e-14)
+}
+
 func TestWeightedQuantile(t *testing.T) {
 	x, w := []float64{3, 1, 2, 99}, []float64{0, 0, 0, math.Inf(-1)}
 	for p, want := range map[float64]float64{0: 1, 1.0 / 6: 1, 0.5: 2, 2.0 / 3: 2.5, 1: 3} {

@@ -18,9 +18,9 @@ type StudentT struct {
 
 // Importance draws n times from a proposal, and weighs each draw by the ratio of
 // the target to it. The weights are smoothed ([chain.ParetoSmooth]); logRatio is
-// what they were before, for [chain.ImportanceChecks]. Draws outside the limits of
-// the parameters have no weight. f gives the logarithm of the density of the
-// target at x.
+// what they were before, for [chain.ImportanceChecks] and the evidence
+// ([chain.LogMeanWeight]). Draws outside the limits of the parameters have no
+// weight. f gives the logarithm of the density of the target at x.
 //
 // Errors: parameters without names or ranges; a nil target; a proposal whose
 // lengths differ from the parameters', whose numbers are not finite, or whose
@@ -51,6 +51,7 @@ func Importance(parameters []Parameter, f func(x []float64) float64, proposal St
 	logRatio = make([]float64, n)
 	e := newEvaluator(f, dim, n)
 	rng := rand.New(rand.NewPCG(seed, streamImportance))
+	constant := proposal.logDensity(factor)
 	z := make([]float64, dim)
 	for i := range n {
 		square := 0.0
@@ -73,12 +74,24 @@ func Importance(parameters []Parameter, f func(x []float64) float64, proposal St
 		if w.LogDensity[i], err = e.value(x, nil); err != nil {
 			return fail(err)
 		}
-		logRatio[i] = w.LogDensity[i] + (proposal.Degrees+float64(dim))/2*math.Log1p(square*stretch*stretch/proposal.Degrees)
+		logRatio[i] = w.LogDensity[i] - constant + (proposal.Degrees+float64(dim))/2*math.Log1p(square*stretch*stretch/proposal.Degrees)
 	}
 	if w.LogWeight, _, err = chain.ParetoSmooth(logRatio); err != nil {
 		return fail(fmt.Errorf("of %d draws: %w", n, err))
 	}
 	return w, logRatio, nil
+}
+
+// logDensity is the logarithm of the density at the mean.
+func (p StudentT) logDensity(factor metric) float64 {
+	n := float64(factor.n)
+	above, _ := math.Lgamma((p.Degrees + n) / 2)
+	below, _ := math.Lgamma(p.Degrees / 2)
+	log := above - below - n/2*math.Log(math.Pi*p.Degrees)
+	for k := range factor.n {
+		log -= math.Log(factor.factor[factor.diagonal(k)])
+	}
+	return log
 }
 
 // factor is the Cholesky factor of the scale.

@@ -29,6 +29,14 @@ func TestImportance(t *testing.T) {
 	for _, c := range check.Failed(chain.ImportanceChecks("", ratio)) {
 		t.Errorf("%s: %g; %s", c.Name, c.Value, c.Limit)
 	}
+	// The density is that of a normal distribution but for its constant.
+	want := 1.5*math.Log(2*math.Pi) + math.Log(1-0.9*0.9)
+	for _, sd := range target.sd {
+		want += math.Log(sd)
+	}
+	if z, sd, err := chain.LogMeanWeight(ratio); err != nil || math.Abs(z-want) > 4*sd || sd > 0.02 {
+		t.Errorf("evidence exp(%.4f ± %.4f), want exp(%.4f), %v", z, sd, want, err)
+	}
 	s, err := chain.WeightedSummaries(w)
 	if err != nil {
 		t.Fatal(err)

@@ -17,6 +17,7 @@ func init() {
 		"EnergyFraction":      reflect.ValueOf(chain.EnergyFraction),
 		"ImportanceChecks":    reflect.ValueOf(chain.ImportanceChecks),
 		"Join":                reflect.ValueOf(chain.Join),
+		"LogMeanWeight":       reflect.ValueOf(chain.LogMeanWeight),
 		"MeanESS":             reflect.ValueOf(chain.MeanESS),
 		"MeanError":           reflect.ValueOf(chain.MeanError),
 		"MostParetoK":         reflect.ValueOf(chain.MostParetoK),
