@@ -18,9 +18,11 @@ import (
 
 // inputTypes are the Go types that layouts read into.
 var inputTypes = map[string]reflect.Type{
-	"rimlight/steps/lightcurve.Cube": reflect.TypeFor[lightcurve.Cube](),
-	"rimlight/steps/limbtable.Table": reflect.TypeFor[limbtable.Table](),
-	"string":                         reflect.TypeFor[string](),
+	"rimlight/steps/lightcurve.Cube":       reflect.TypeFor[lightcurve.Cube](),
+	"rimlight/steps/limbtable.Table":       reflect.TypeFor[limbtable.Table](),
+	"rimlight/steps/limbtable.Intensities": reflect.TypeFor[limbtable.Intensities](),
+	"rimlight/steps/limbtable.Throughput":  reflect.TypeFor[limbtable.Throughput](),
+	"string":                               reflect.TypeFor[string](),
 }
 
 // step looks up or computes step i, whose needs are all there.

@@ -135,7 +135,7 @@ func (w *wiring) inputs() error {
 // withChannels adds the second file of a light-curve table in CSV, where only
 // the first was named: visit.csv has its channel edges in visit.channels.csv.
 func withChannels(layout string, paths []string) []string {
-	if len(paths) != 1 || layout == "text" || layout == "limb-darkening table" {
+	if len(paths) != 1 || recipe.FilesOf(layout) < 2 {
 		return paths
 	}
 	if ext := filepath.Ext(paths[0]); strings.EqualFold(ext, ".csv") {

@@ -14,6 +14,8 @@ var Layouts = []Layout{
 	{"light-curve table", "rimlight/steps/lightcurve.Cube", 2, "spectroscopic light curves: one FITS file, or a CSV file and one of its channels"},
 	{"comparison table", "rimlight/steps/lightcurve.Cube", 2, "a comparison star on the same channels, in the same layout or as the COMPARISON table of a FITS file"},
 	{"limb-darkening table", "rimlight/steps/limbtable.Table", 1, "limb-darkening coefficients by wavelength"},
+	{"intensity table", "rimlight/steps/limbtable.Intensities", 1, "intensities of a stellar model by wavelength and mu"},
+	{"throughput curve", "rimlight/steps/limbtable.Throughput", 1, "throughput of telescope and instrument by wavelength"},
 	{"text", "string", 1, "any other text file, whole"},
 }
 
@@ -22,6 +24,13 @@ var Layouts = []Layout{
 func TypeOf(layout string) string {
 	l, _ := layoutOf(layout)
 	return l.Type
+}
+
+// FilesOf gives the most files that one input of the named layout is read from, 0
+// for a name that is not in [Layouts].
+func FilesOf(layout string) int {
+	l, _ := layoutOf(layout)
+	return l.Files
 }
 
 func layoutOf(name string) (Layout, bool) {

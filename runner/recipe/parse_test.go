@@ -125,7 +125,8 @@ func itoa(n int) string {
 func TestLayouts(t *testing.T) {
 	for name, want := range map[string]string{
 		"light-curve table": "rimlight/steps/lightcurve.Cube", "comparison table": "rimlight/steps/lightcurve.Cube",
-		"limb-darkening table": "rimlight/steps/limbtable.Table", "text": "string", "image": "",
+		"limb-darkening table": "rimlight/steps/limbtable.Table", "intensity table": "rimlight/steps/limbtable.Intensities",
+		"throughput curve": "rimlight/steps/limbtable.Throughput", "text": "string", "image": "",
 	} {
 		if got := TypeOf(name); got != want {
 			t.Errorf("layout %s has the type %q, want %q", name, got, want)

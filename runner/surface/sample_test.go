@@ -80,6 +80,25 @@ wave_lo,wave_hi,u1,u2,u1_err,u2_err
 2.0,6.0,0.10,0.14,0.02,0.03
 `
 
+// intensityCSV and throughputCSV are a small stellar model and an instrument.
+const (
+	intensityCSV = `wave,mu,intensity
+0.9,0.1,4
+0.9,0.5,7
+0.9,0.8,9
+0.9,1,10
+3.1,0.1,2
+3.1,0.5,2.5
+3.1,0.8,2.9
+3.1,1,3
+`
+	throughputCSV = `wave,throughput
+0.5,0
+1.5,0.3
+4,0.1
+`
+)
+
 // newSamples reduces a small simulated observation and gathers everything that
 // was passed on the way. It panics when a step of that fails.
 func newSamples() *samples {
@@ -162,6 +181,14 @@ func newSamples() *samples {
 		{Role: "drift", Name: "X"},
 	}
 
+	intensities, err := limbtable.ReadIntensities([]byte(intensityCSV))
+	must(err)
+	throughput, err := limbtable.ReadThroughput([]byte(throughputCSV))
+	must(err)
+	profile, err := limbtable.Band(intensities, throughput, 1, 3, limbtable.Photons)
+	must(err)
+	choice := limbtable.Choice{Law: limb.Power2, Grid: limbtable.GridRadius, Points: 50, MuCut: 0.2, Weight: limbtable.WeightArea}
+	channelsOf := []lightcurve.Channel{{Index: 0, Lo: 1, Hi: 1.5}, {Index: 1, Lo: 1.5, Hi: 3}}
 	var limbFITS fits.Writer
 	must(limbFITS.Table("LIMB", []fits.NewColumn{
 		{Name: "WAVE_LO", Unit: "um", Values: []float64{0.5, 1}}, {Name: "WAVE_HI", Unit: "um", Values: []float64{1, 6}},
@@ -257,11 +284,16 @@ func newSamples() *samples {
 		"lightcurve.ReadFITSComparison": {{withComparison}},
 		"lightcurve.ReadCSV":            {{series}, {channels}},
 		"limbtable.Read":                {{[]byte(limbCSV), limbFITS.Bytes()}},
+		"limbtable.ReadIntensities":     {{[]byte(intensityCSV)}},
+		"limbtable.ReadThroughput":      {{[]byte(throughputCSV)}},
+		"limbtable.Band":                {{intensities}, {throughput, limbtable.Throughput{}}, {1.0, 1.5}, {2.0, 3.0}, {limbtable.Photons, limbtable.Energy}},
+		"limbtable.FitLaw":              {{profile}, {limbtable.Choice{}, choice}},
+		"limbtable.Coefficients":        {{intensities}, {throughput}, {channelsOf}, {limbtable.Photons}, {limbtable.Choice{}, choice}},
 		"spectrum.ReadCSV":              {{spectrum.CSV(spec)}},
 	}}
 	for _, v := range []any{
 		limb.Law{Name: limb.Power2, Coefficients: []float64{0.6, 0.7}}, limb.Law{Name: limb.FourParameter, Coefficients: []float64{0.5, 0.3, -0.4, 0.2}},
-		elements, ephemeris,
+		elements, ephemeris, intensities, throughput, profile, choice,
 		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
 		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, setup, settling, whitePriors, channelPriors,
 		posterior, whiteFit, curveFits, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},

@@ -353,7 +353,7 @@ func readLayout(layout string, columns lightcurve.Columns, files []file) (typ st
 		table(lightcurve.OpenFITS)
 	case "comparison table":
 		table(lightcurve.OpenFITSComparison)
-	case "limb-darkening table", "text":
+	case "limb-darkening table", "intensity table", "throughput curve", "text":
 		if err = one(); err != nil {
 			return
 		}
@@ -361,16 +361,23 @@ func readLayout(layout string, columns lightcurve.Columns, files []file) (typ st
 		if b, err = first.bytes(); err != nil {
 			return
 		}
-		if layout == "text" {
+		switch layout {
+		case "limb-darkening table":
+			typ = "rimlight/steps/limbtable.Table"
+			value, err = limbtable.Read(b)
+		case "intensity table":
+			typ = "rimlight/steps/limbtable.Intensities"
+			value, err = limbtable.ReadIntensities(b)
+		case "throughput curve":
+			typ = "rimlight/steps/limbtable.Throughput"
+			value, err = limbtable.ReadThroughput(b)
+		case "text":
 			typ = "string"
 			if !utf8.Valid(b) {
 				err = errors.New("the file is not text in UTF-8")
 			}
 			value = string(b)
-			return
 		}
-		typ = "rimlight/steps/limbtable.Table"
-		value, err = limbtable.Read(b)
 	default:
 		err = fmt.Errorf("layout %q is not known", layout)
 	}

@@ -9,7 +9,17 @@ import (
 
 func init() {
 	Table["rimlight/steps/limbtable/limbtable"] = map[string]reflect.Value{
-		"Read":  reflect.ValueOf(limbtable.Read),
-		"Table": reflect.ValueOf((*limbtable.Table)(nil)),
+		"Band":            reflect.ValueOf(limbtable.Band),
+		"Choice":          reflect.ValueOf((*limbtable.Choice)(nil)),
+		"Coefficients":    reflect.ValueOf(limbtable.Coefficients),
+		"FitLaw":          reflect.ValueOf(limbtable.FitLaw),
+		"Fitted":          reflect.ValueOf((*limbtable.Fitted)(nil)),
+		"Intensities":     reflect.ValueOf((*limbtable.Intensities)(nil)),
+		"Profile":         reflect.ValueOf((*limbtable.Profile)(nil)),
+		"Read":            reflect.ValueOf(limbtable.Read),
+		"ReadIntensities": reflect.ValueOf(limbtable.ReadIntensities),
+		"ReadThroughput":  reflect.ValueOf(limbtable.ReadThroughput),
+		"Table":           reflect.ValueOf((*limbtable.Table)(nil)),
+		"Throughput":      reflect.ValueOf((*limbtable.Throughput)(nil)),
 	}
 }
