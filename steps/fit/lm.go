@@ -40,7 +40,12 @@ type leastSquares struct {
 	lo, hi    []float64 // the box, lo <= hi; infinite where there is no limit
 	tolerance float64   // relative change of the sum that ends the search; 0 means defaultTolerance
 	absolute  float64   // change of the sum that ends it as well
+	rough     bool      // end without the last, undamped step
 	steps     int       // limit of iterations; 0 means defaultSteps
+
+	// together says that derivatives cost little beside the residuals, so that both
+	// are computed at once for a step that is tried.
+	together bool
 }
 
 // A minimum is where a search ended.
@@ -86,6 +91,10 @@ func (p *leastSquares) solve(start []float64) minimum {
 	}
 	m.sum = floats.Dot(m.res, m.res)
 	trial, trialRes := make([]float64, n), make([]float64, p.rows)
+	var trialJac [][]float64
+	if p.together {
+		trialJac = columns(n, p.rows)
+	}
 	damping, growth := firstDamping, 2.0
 	work := columns(n, p.rows)
 	for m.steps = 1; m.steps <= limit; m.steps++ {
@@ -107,7 +116,7 @@ func (p *leastSquares) solve(start []float64) minimum {
 				return m
 			}
 			sum := math.Inf(1)
-			if ok && promised > 0 && p.residuals(trial, trialRes, nil) {
+			if ok && promised > 0 && p.residuals(trial, trialRes, trialJac) {
 				sum = floats.Dot(trialRes, trialRes)
 			}
 			if gain := m.sum - sum; gain > 0 {
@@ -115,7 +124,10 @@ func (p *leastSquares) solve(start []float64) minimum {
 				damping = max(leastDamping, damping*max(quickest, 1-math.Pow(2*ratio-1, 3)))
 				growth = 2
 				copy(m.x, trial)
-				if !p.residuals(m.x, m.res, m.jac) {
+				if p.together {
+					m.res, trialRes = trialRes, m.res
+					m.jac, trialJac = trialJac, m.jac
+				} else if !p.residuals(m.x, m.res, m.jac) {
 					m.status = statusStalled
 					return m
 				}
@@ -149,6 +161,9 @@ func (p *leastSquares) solve(start []float64) minimum {
 // what the damping of the last steps left; it is kept if it does no harm.
 func (p *leastSquares) finish(m *minimum, q *triangle, trial, trialRes []float64) {
 	m.status = statusConverged
+	if p.rough {
+		return
+	}
 	step, ok := q.dampedStep(leastDamping)
 	if !ok {
 		return

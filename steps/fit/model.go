@@ -12,9 +12,13 @@ import (
 	"rimlight/steps/transit"
 )
 
-// smallChi2 is a change of chi-square not worth another iteration: it goes with a
-// change of 3e-4 standard deviations in a parameter, before the last step.
-const smallChi2 = 1e-7
+const (
+	// smallChi2 is a change of chi-square not worth another iteration: it goes with
+	// a change of 3e-4 standard deviations in a parameter, before the last step.
+	smallChi2 = 1e-7
+	// roughChi2 is one that tells minima apart.
+	roughChi2 = 1e-2
+)
 
 // A model is a light curve, the usable samples only, with what is to be fitted
 // to it: transit times trend. The trend is a linear combination of terms, times
@@ -140,7 +144,7 @@ func (m *model) limits(k int) (lo, hi float64) {
 
 // problem poses the fit as a least-squares problem.
 func (m *model) problem() *leastSquares {
-	p := &leastSquares{rows: m.rows(), residuals: m.residuals, absolute: smallChi2}
+	p := &leastSquares{rows: m.rows(), residuals: m.residuals, absolute: smallChi2, together: m.own == nil}
 	for k := range m.size() {
 		lo, hi := m.limits(k)
 		p.lo, p.hi = append(p.lo, lo), append(p.hi, hi)

@@ -33,7 +33,8 @@ type solution struct {
 	warnings   []string
 }
 
-// best fits the model from each start and returns the best minimum.
+// best fits the model from each start, roughly if there are several, and returns
+// the best minimum.
 func (m *model) best(starts [][slots]float64) (minimum, error) {
 	var best minimum
 	found := false
@@ -50,7 +51,11 @@ func (m *model) best(starts [][slots]float64) (minimum, error) {
 		if m.own != nil {
 			x = append(x, m.own.at()...)
 		}
-		got := m.problem().solve(append(x, coefficients...))
+		p := m.problem()
+		if len(starts) > 1 {
+			p.absolute, p.rough = roughChi2, true
+		}
+		got := p.solve(append(x, coefficients...))
 		if got.status != statusInvalid && (!found || got.sum < best.sum*(1-1e-9)) {
 			best, found = got, true
 		}
@@ -59,6 +64,10 @@ func (m *model) best(starts [][slots]float64) (minimum, error) {
 		return minimum{}, m.own.err
 	}
 	switch {
+	case found && len(starts) > 1 && best.status == statusConverged:
+		got := m.problem().solve(best.x)
+		got.steps += best.steps
+		return got, nil
 	case found:
 		return best, nil
 	case m.err != nil:

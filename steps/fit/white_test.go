@@ -254,3 +254,34 @@ func TestWhiteIsReproducible(t *testing.T) {
 		t.Error("the input was modified")
 	}
 }
+
+// BenchmarkWhite fits 6000 samples: with nine free parameters, which are time,
+// shape and depth of the transit, its limb darkening, and a constant, a slope and
+// a regressor; and with twelve, a settling detector and another regressor more.
+func BenchmarkWhite(b *testing.B) {
+	s := newScene(b, 27, 6000, 1)
+	curve := lightcurve.Curves(s.cube)[0]
+	settling := s.setup()
+	nine := settling
+	nine.Trend.Settling, nine.Trend.Regressors = false, []string{"X"}
+	for _, c := range []struct {
+		name   string
+		setup  Setup
+		priors Priors
+	}{
+		{"9", nine, whitePriors()[:6]},
+		{"12", settling, whitePriors()},
+	} {
+		b.Run(c.name, func(b *testing.B) {
+			for b.Loop() {
+				p, _, err := White(curve, c.setup, c.priors)
+				if err != nil || p.Status != statusConverged {
+					b.Fatal(p.Status, err)
+				}
+				if len(p.Names) < 9 {
+					b.Fatal(p.Names)
+				}
+			}
+		})
+	}
+}
