@@ -78,8 +78,12 @@ func bruteForce(law limb.Law, r, z float64) (flux, dr, dz float64, by [limb.Most
 	}
 	start := 0.0
 	square := 0.0
+	beyond := (r - 1) + z
+	if r < 0.5 {
+		beyond = (z - 1) + r
+	}
 	if z > 0 {
-		square = (z + r - 1) * (z + r + 1) / (4 * z * r)
+		square = beyond * (z + r + 1) / (4 * z * r)
 	}
 	if square > 0 {
 		start = 2 * math.Asin(math.Sqrt(min(square, 1)))
@@ -89,7 +93,7 @@ func bruteForce(law limb.Law, r, z float64) (flux, dr, dz float64, by [limb.Most
 		for _, n := range steep {
 			d := span * (p[0] + (p[1]-p[0])*n.low)
 			s := math.Sin(d / 2)
-			mu2 := (1-z-r)*(1+z+r) + 4*z*r*s*s
+			mu2 := -beyond*(1+z+r) + 4*z*r*s*s
 			if square > 0 {
 				mu2 = 4 * z * r * s * math.Sin(start+d/2)
 			}

@@ -131,6 +131,41 @@ func TestCurveIsQuadratic(t *testing.T) {
 	}
 }
 
+// TestCurveAnyOrder holds a curve in the order of time, which passes over what is
+// out of transit, against the same times in another order.
+func TestCurveAnyOrder(t *testing.T) {
+	random := rand.New(rand.NewPCG(8, 4))
+	for k := range 60 {
+		p := randomParams(random)
+		p.Orbit.MidTransit += 2460000
+		if k%2 == 1 {
+			p.Exposure = 0.01 * p.Orbit.Period * secondsPerDay
+		}
+		times := make([]float64, 400)
+		for i := range times {
+			times[i] = p.Orbit.MidTransit + p.Orbit.Period*(7*random.Float64()-3)
+		}
+		mixed, err := Curve(times, p)
+		if err != nil {
+			t.Fatal(err)
+		}
+		byTime := map[float64]float64{}
+		for i, at := range times {
+			byTime[at] = mixed[i]
+		}
+		slices.Sort(times)
+		sorted, err := Curve(times, p)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for i, at := range times {
+			if sorted[i] != byTime[at] {
+				t.Fatalf("%+v, t = %.9g: %.17g in order, %.17g out of it", p, at, sorted[i], byTime[at])
+			}
+		}
+	}
+}
+
 // TestCurveGradientDifferences compares averaged derivatives with differences of
 // averaged fluxes.
 func TestCurveGradientDifferences(t *testing.T) {

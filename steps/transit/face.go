@@ -179,9 +179,10 @@ func (c *curve) refine(i int, a, b, offset float64) {
 
 // halve calls use with the points and weights of an integral from a to b, which
 // is halved until the integral of value over a piece and over its halves agree
-// to a tolerance.
+// to a tolerance, at most 500 times.
 func halve(a, b, tolerance float64, value func(x float64) float64, use func(x, weight float64)) {
 	const points, deepest = 8, 24
+	left := 500
 	r := &rules[points]
 	each := func(a, b float64, use func(x, weight float64)) {
 		for k, x := range r.nodes {
@@ -196,7 +197,8 @@ func halve(a, b, tolerance float64, value func(x float64) float64, use func(x, w
 	descend = func(a, b, whole float64, depth int) {
 		middle := (a + b) / 2
 		low, high := sum(a, middle), sum(middle, b)
-		if math.Abs(low+high-whole) > tolerance && depth < deepest {
+		if math.Abs(low+high-whole) > tolerance && depth < deepest && left > 0 {
+			left--
 			descend(a, middle, low, depth+1)
 			descend(middle, b, high, depth+1)
 			return

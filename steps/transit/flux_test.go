@@ -306,3 +306,54 @@ func BenchmarkFluxGradient(b *testing.B) {
 		b.Run(law.Name+"/outside", func(b *testing.B) { benchmarkFlux(b, law, 1.1001, 3) })
 	}
 }
+
+// TestAllocations holds that a result that is used again costs no memory.
+func TestAllocations(t *testing.T) {
+	z := []float64{0.1, 0.5, 0.95, 1.3}
+	for _, law := range []limb.Law{quadratic(0.4, 0.3), {Name: limb.FourParameter, Coefficients: []float64{0.5, -0.2, 0.6, -0.3}}} {
+		var g Gradient
+		if n := testing.AllocsPerRun(20, func() {
+			if err := FluxGradientInto(&g, 0.1, z, law, 0); err != nil {
+				t.Fatal(err)
+			}
+		}); n != 0 {
+			t.Errorf("%s: %g allocations", law.Name, n)
+		}
+	}
+}
+
+// TestHardTable has fluxes and derivatives next to the seams of the domain.
+func TestHardTable(t *testing.T) {
+	for _, stated := range []float64{DefaultTolerance, LeastTolerance} {
+		worst := map[string][2]float64{}
+		for _, row := range table(t, "transit/flux_hard.csv") {
+			r, z, law := number(t, row["r"]), number(t, row["z"]), tabled(t, row)
+			g, err := FluxGradient(r, []float64{z}, law, stated)
+			if err != nil {
+				t.Fatal(err)
+			}
+			off := math.Abs(1 - g.Flux[0] - number(t, row["deficit"]))
+			columns := map[string]float64{"dr": g.ByRadius[0], "dz": g.BySeparation[0]}
+			for k, by := range g.ByCoefficient {
+				columns["du"+strconv.Itoa(k+1)] = by[0]
+			}
+			offBy := 0.0
+			for name, got := range columns {
+				want := number(t, row[name])
+				offBy = max(offBy, math.Abs(got-want)/max(1, math.Abs(want)))
+			}
+			was := worst[law.Name]
+			worst[law.Name] = [2]float64{max(was[0], off), max(was[1], offBy)}
+			limit, limitBy := stated, stated
+			if closedLaw(law.Name) {
+				limit, limitBy = fluxTolerance, gradientTolerance
+			}
+			if !(off <= limit && offBy <= limitBy) {
+				t.Errorf("%s, r = %g, z = %.17g: off by %.1e, derivatives by %.1e", row["law"], r, z, off, offBy)
+			}
+		}
+		for _, name := range limb.Names() {
+			t.Logf("tolerance %g, %s: largest error %.1e, of derivatives %.1e", stated, name, worst[name][0], worst[name][1])
+		}
+	}
+}

@@ -11,9 +11,6 @@ import (
 // μ², whose integrals are closed, and two more, whose integrals are quadratures.
 const terms = 5
 
-// closed is the number of the first ones.
-const closed = 3
-
 // shape says which two functions the last two terms are.
 type shape int
 
