@@ -11,8 +11,6 @@ import (
 	"strings"
 	"time"
 
-	"github.com/spf13/cobra"
-
 	"rimlight/runner/engine"
 	"rimlight/runner/record"
 	"rimlight/runner/store"
@@ -112,14 +110,13 @@ func (a *app) keepNamed(ctx context.Context, inv *inventory, dir, name string) e
 // look up in the store. What comes after a result that is not known has no key
 // yet, so none that could be kept.
 func (a *app) keepRecipe(ctx context.Context, inv *inventory, dir, file string) error {
-	var o options
-	o.flags(&cobra.Command{}) // for the defaults
+	o := defaults()
 	o.store = dir
-	p, code, err := prepare(ctx, file, &o)
+	p, code, err := prepare(ctx, file, o)
 	if err != nil {
 		return fmt.Errorf("--keep %s: %w", file, err)
 	}
-	e, _, err := a.newEngine(p, code, &o)
+	e, _, err := a.newEngine(p, code, o)
 	if err != nil {
 		return err
 	}

@@ -53,6 +53,13 @@ func (o *options) flags(c *cobra.Command) {
 	f.BoolVar(&o.json, "json", false, "events for programs on standard output, one JSON object per line")
 }
 
+// defaults are the options without a flag given.
+func defaults() *options {
+	var o options
+	o.flags(&cobra.Command{})
+	return &o
+}
+
 // resolve checks the flags and fills in what depends on the recipe's place.
 func (o *options) resolve(recipe string) error {
 	if err := o.checkPlace(); err != nil {
