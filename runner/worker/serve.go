@@ -34,7 +34,6 @@ func Main() int {
 	// Nothing that runs here may write into the stream of answers by chance.
 	out := os.Stdout
 	os.Stdout = os.Stderr
-	tuneCollector()
 	if err := serve(os.Stdin, out); err != nil {
 		fmt.Fprintln(os.Stderr, err)
 		return 1
@@ -92,6 +91,7 @@ func (s *server) serve(q Message) (Message, error) {
 			return Message{}, err
 		}
 		s.confined, s.results = true, h.Results
+		tuneCollector(h.Memory)
 		return message(answer, report)
 	case askCheck:
 		var h Code
