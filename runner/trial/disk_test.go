@@ -10,14 +10,6 @@ import (
 	"testing"
 )
 
-// undisturbed is the tree of a run that nobody disturbs.
-func undisturbed(t testing.TB) tree {
-	t.Helper()
-	b := newBench(t)
-	b.run(0)
-	return treeOf(b)
-}
-
 // asRoot skips a test that only root can do, or fails it where everything is to
 // be done.
 func asRoot(t testing.TB) {

@@ -3,6 +3,7 @@ package trial
 import (
 	"fmt"
 	"io/fs"
+	"maps"
 	"os"
 	"path/filepath"
 	"regexp"
@@ -56,6 +57,19 @@ func treeOf(b *bench) tree {
 	return out
 }
 
+// undisturbed is the tree of a run that nobody disturbs.
+func undisturbed(t testing.TB) tree {
+	t.Helper()
+	if quiet == nil {
+		b := newBench(t)
+		b.run(0)
+		quiet = treeOf(b)
+	}
+	return maps.Clone(quiet)
+}
+
+var quiet tree // the tests here run one after another
+
 // times are what differs between the reports of two runs: when they were, how
 // long things took, and what took longest.
 var times = regexp.MustCompile(`\d{4}-\d\d-\d\dT\d\d:\d\d:\d\dZ|(&lt; )?[0-9.]+ m?s\b|the slowest \([^)]*\)`)
@@ -78,6 +92,12 @@ func (got tree) equal(t testing.TB, want tree) {
 	if len(differ) > 0 {
 		t.Errorf("%d of %d parts of the tree differ from an undisturbed run's: %s", len(differ), len(want), strings.Join(differ[:min(len(differ), 10)], ", "))
 	}
+}
+
+// within leaves out what another tree does not have.
+func (got tree) within(want tree) tree {
+	maps.DeleteFunc(got, func(name, _ string) bool { return want[name] == "" })
+	return got
 }
 
 // filesBelow lists the files below a folder, in order; none if it is not there.

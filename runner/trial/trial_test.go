@@ -92,6 +92,7 @@ type bench struct {
 	store string
 	out   string
 	exe   string // the program
+	gap   bool   // a run left a gap for an element that cost two workers their lives
 }
 
 func newBench(t testing.TB) *bench {
