@@ -32,9 +32,8 @@ type Cluster struct {
 	notes   []string
 	logs    map[string]bool // steps whose log was begun
 
-	copied  sync.Once
-	copy    string
-	copyErr error
+	copying sync.Mutex
+	copied  bool
 }
 
 // Open gets ready to use the cluster from this machine. The batches go into dir,
@@ -98,15 +97,22 @@ func (c *Cluster) note(format string, args ...any) {
 // executable is a copy of this program for the nodes, which need not see where
 // it lies here.
 func (c *Cluster) executable() (string, error) {
-	c.copied.Do(func() {
-		dir := filepath.Join(c.dir, fmt.Sprintf("program-%s", c.program.Key().Short()))
-		c.copy = filepath.Join(dir, "rimlight")
-		if c.copyErr = os.MkdirAll(dir, 0o777); c.copyErr == nil {
-			c.copyErr = copyProgram(c.copy)
-		}
-	})
-	return c.copy, c.copyErr
+	dir := filepath.Join(c.dir, programPrefix+c.program.Key().Short())
+	path := filepath.Join(dir, "rimlight")
+	c.copying.Lock()
+	defer c.copying.Unlock()
+	if _, err := os.Stat(path); err == nil && c.copied {
+		return path, nil // and no other run has tidied up
+	}
+	if err := os.MkdirAll(dir, 0o777); err != nil {
+		return "", err
+	}
+	err := copyProgram(path)
+	c.copied = err == nil
+	return path, err
 }
+
+const programPrefix = "program-"
 
 // copyProgram copies the running program to a path. Jobs may be running the file
 // that is there: it is replaced, not written to, and only if it is another one.
@@ -173,6 +179,7 @@ const (
 // those that an earlier run wanted more of than this one, are cancelled.
 func (c *Cluster) Close() {
 	ctx := context.Background()
+	c.sweep(ctx)
 	cancelled := false
 	for began := time.Now(); len(c.batches) > 0; time.Sleep(min(c.o.Poll, 200*time.Millisecond)) {
 		alive, err := aliveIn(ctx, c.batches)
@@ -195,6 +202,31 @@ func (c *Cluster) Close() {
 		}
 	}
 	c.tidy()
+}
+
+// sweep adds to the batches of this run those that nobody attends to and that
+// have no jobs in the queue: their parent was killed, and what they computed was
+// found in the store.
+func (c *Cluster) sweep(ctx context.Context) {
+	files, err := filepath.Glob(filepath.Join(c.dir, "*", workName))
+	if err != nil {
+		return
+	}
+	var found []*batch
+	for _, f := range files {
+		if b, err := openBatch(filepath.Dir(f)); err == nil && !c.has(b) && !b.attended(c.host) {
+			found = append(found, b)
+		}
+	}
+	alive, err := aliveIn(ctx, found)
+	if err != nil {
+		return
+	}
+	for _, b := range found {
+		if !alive[b.jobName()] {
+			c.keep(b)
+		}
+	}
 }
 
 // names are the names of the jobs of batches.
@@ -267,7 +299,7 @@ func (c *Cluster) tidy() {
 	if names, err := filepath.Glob(filepath.Join(c.dir, "*", workName)); err != nil || len(names) > 0 {
 		return
 	}
-	names, _ := filepath.Glob(filepath.Join(c.dir, "program-*"))
+	names, _ := filepath.Glob(filepath.Join(c.dir, programPrefix+"*"))
 	for _, n := range names {
 		os.RemoveAll(n)
 	}

@@ -134,7 +134,8 @@ func (c *cluster) await(what string, ok func() bool) {
 }
 
 // kill kills a node at once: its daemon, the shepherds of its jobs, and the
-// jobs, as a loss of power would.
+// jobs, as a loss of power would. Slurm would notice by itself, but takes half a
+// minute to.
 func (c *cluster) kill(name string, jobs []int) {
 	c.node[name].Process.Kill()
 	c.node[name].Wait()
@@ -144,6 +145,7 @@ func (c *cluster) kill(name string, jobs []int) {
 		}
 		syscall.Kill(pid, syscall.SIGKILL)
 	}
+	c.ask("scontrol", "update", "NodeName="+name, "State=DOWN", "Reason=power")
 }
 
 // parentOf is the parent of a process, 0 if that is gone.

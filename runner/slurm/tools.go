@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"os"
 	"os/exec"
+	"slices"
 	"strconv"
 	"strings"
 	"time"
@@ -39,7 +40,7 @@ func tool(ctx context.Context, input, name string, args ...string) (string, erro
 	defer cancel()
 	c := exec.CommandContext(ctx, name, args...)
 	c.WaitDelay = time.Second
-	c.Env = append(os.Environ(), "LC_ALL=C")
+	c.Env = append(slices.DeleteFunc(os.Environ(), ofJob), "LC_ALL=C")
 	c.Stdin = strings.NewReader(input)
 	var out, errs bytes.Buffer
 	c.Stdout, c.Stderr = &out, &errs
@@ -50,6 +51,12 @@ func tool(ctx context.Context, input, name string, args ...string) (string, erro
 		return "", &toolError{name, errs.String(), err}
 	}
 	return out.String(), nil
+}
+
+// ofJob reports whether a variable of the environment describes the job that this
+// process may itself be in, and would be taken for those of the jobs it submits.
+func ofJob(variable string) bool {
+	return strings.HasPrefix(variable, "SLURM_") && !strings.HasPrefix(variable, "SLURM_CONF=") && !strings.HasPrefix(variable, "SLURM_CLUSTERS=")
 }
 
 // queue lists the elements of the named jobs that are in the queue.
