@@ -97,11 +97,18 @@ func newBatch(dir string, w workFile) (*batch, error) {
 		return r
 	}, w.Step) + "-" + hex.EncodeToString(id[:])
 	w.Format, w.PID = batchFormat, os.Getpid()
-	b := &batch{dir: filepath.Join(dir, name), work: w}
+	// It gets its name when it is a batch.
+	b := &batch{dir: filepath.Join(dir, "."+name), work: w}
 	if err := os.MkdirAll(b.dir, 0o777); err != nil {
 		return nil, err
 	}
-	return b, b.writeJSON(workName, w)
+	if err := b.writeJSON(workName, w); err != nil {
+		return nil, err
+	}
+	made := filepath.Join(dir, name)
+	err := os.Rename(b.dir, made)
+	b.dir = made
+	return b, err
 }
 
 // add writes a chunk into the batch and gives its number.
@@ -143,6 +150,24 @@ func (b *batch) note(a array) error {
 	}
 	_, err = f.WriteString(line)
 	return errors.Join(err, f.Sync(), f.Close())
+}
+
+// remove removes the batch. What makes it a batch goes last, so that it is one
+// until then, for whoever comes when this process was killed on the way.
+func (b *batch) remove() error {
+	entries, err := os.ReadDir(b.dir)
+	if err != nil {
+		return err
+	}
+	for _, e := range entries {
+		if e.Name() != workName {
+			err = errors.Join(err, os.Remove(b.path(e.Name())))
+		}
+	}
+	if err != nil {
+		return err
+	}
+	return errors.Join(os.Remove(b.path(workName)), os.Remove(b.dir))
 }
 
 // parseJobs reads the file of jobs. An array is known by its first chunk; what

@@ -264,7 +264,7 @@ func (c *Cluster) gather(b *batch) {
 		c.note("the logs of step %s could not be gathered (%v) and stay in %s", b.work.Step, err, b.dir)
 		return
 	}
-	if err := os.RemoveAll(b.dir); err != nil {
+	if err := b.remove(); err != nil {
 		c.note("%s could not be removed: %v", b.dir, err)
 	}
 }

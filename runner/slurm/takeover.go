@@ -143,4 +143,3 @@ func (b *batch) jobs() []int {
 	}
 	return out
 }
-
