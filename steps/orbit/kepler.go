@@ -8,8 +8,9 @@ const (
 	twoPiLow  = 2.4492935982947064e-16
 	// seriesBelow is the eccentric anomaly below which E - sin E is summed as a
 	// series where e is large. There the slope of Kepler's equation is small and
-	// would multiply the rounding of sin E; above it does so by 2 at most.
-	seriesBelow = 1
+	// would multiply the rounding of sin E; above 1 it does so by 2 at most, and a
+	// unit in the last place of E is twice as large. The guess is good to 0.002.
+	seriesBelow = 1.01
 	// thirdOfBits brings the exponent of a float64 back to its bias after a
 	// division of the bits by three, with the fraction shifted so that the
 	// relative error of the cube root is at most 0.032, either way.
@@ -121,7 +122,7 @@ func (k *kepler) residual(m, anomaly, sin, cos float64) (residual, slope float64
 	return (high - product) + (low - productLow), k.rest + e*(1-cos)
 }
 
-// arcMinusSine returns x - sin x for 0 ≤ x ≤ 1.
+// arcMinusSine returns x - sin x for 0 ≤ x ≤ 1.1.
 func arcMinusSine(x float64) float64 {
 	y := x * x
 	y2 := y * y

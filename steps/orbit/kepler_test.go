@@ -103,7 +103,8 @@ func TestKeplerEverywhere(t *testing.T) {
 		case 0:
 			m *= math.Pow(10, -20*rng.Float64()*rng.Float64())
 		case 1: // about where the form of the residual changes
-			x := 0.9 + 0.2*rng.Float64()
+			x := 0.99 + 0.02*rng.Float64()
+			e = 0.5 + 0.499*rng.Float64()
 			m = x - e*math.Sin(x)
 		}
 		if e > 0.999 {

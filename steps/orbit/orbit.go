@@ -15,6 +15,12 @@
 //
 // Z towards us (Winn 2010, in Exoplanets, ed. Seager, ch. 3). Angles are in
 // radians, times in days, lengths in stellar radii.
+//
+// An [Orbit] holds one set of parameters; [Elements] are others that papers use,
+// such as the density of the star, the duration of the transit, the impact
+// parameter, or the vector e cos ω, e sin ω. A [Path] is an orbit made ready for
+// many times. An [Ephemeris] says when transits come and how well that is known,
+// an [Eclipse] when the planet passes behind the star.
 package orbit
 
 import (

@@ -128,14 +128,30 @@ func TestValidate(t *testing.T) {
 	}
 }
 
-func BenchmarkSeparationGradient(b *testing.B) {
-	for name, o := range map[string]Orbit{"Circular": orbits()["A"], "Eccentric": orbits()["B"]} {
-		b.Run(name, func(b *testing.B) {
-			k, at := o.Path(), 0.0
-			for b.Loop() {
-				at += 1e-4
-				k.SeparationGradient(at, at)
+// BenchmarkSeparation takes places during a transit and a quarter of a period
+// later, on a circular and an eccentric orbit.
+func BenchmarkSeparation(b *testing.B) {
+	for name, o := range map[string]Orbit{"circular": orbits()["A"], "eccentric": orbits()["B"]} {
+		for place, start := range map[string]float64{"transit": 0, "quarter": o.Period / 4} {
+			p, at, sum := o.Path(), start, 0.0
+			next := func() float64 {
+				if at += 1e-4; at > start+0.1 {
+					at = start - 0.1
+				}
+				return at
 			}
-		})
+			b.Run(name+"/"+place+"/value", func(b *testing.B) {
+				for b.Loop() {
+					z, _ := p.Separation(next())
+					sum += z
+				}
+			})
+			b.Run(name+"/"+place+"/gradient", func(b *testing.B) {
+				for b.Loop() {
+					z, _, _ := p.SeparationGradient(next(), at)
+					sum += z
+				}
+			})
+		}
 	}
 }

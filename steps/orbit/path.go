@@ -10,6 +10,7 @@ import "math"
 type Path struct {
 	period, midTransit, axis float64
 	motion                   float64 // mean motion, radians per day
+	frequency                float64 // 1/period
 	light                    float64 // time that light takes over a stellar radius, days; negative seen from behind
 	sinW, cosW, sinI, cosI   float64
 	kepler                   kepler
@@ -28,7 +29,7 @@ func (o Orbit) Path() *Path { return o.path(false) }
 func (o Orbit) path(behind bool) *Path {
 	e := o.Eccentricity
 	p := &Path{
-		period: o.Period, midTransit: o.MidTransit, axis: o.AxisRatio, motion: 2 * math.Pi / o.Period,
+		period: o.Period, midTransit: o.MidTransit, axis: o.AxisRatio, motion: 2 * math.Pi / o.Period, frequency: 1 / o.Period,
 		light: o.StarRadius * lightPerRadius, kepler: newKepler(e),
 	}
 	p.sinW, p.cosW = math.Sincos(o.Periastron)
@@ -86,7 +87,7 @@ func (p *Path) Separation(since float64) (z float64, front bool) {
 // the derivative with respect to the period needs.
 func (p *Path) SeparationGradient(since, elapsed float64) (z float64, front bool, grad [6]float64) {
 	p = p.known()
-	z, front, grad = p.VectorGradient(since, elapsed)
+	z, front = p.vectorGradient(since, elapsed, &grad)
 	byH, byK := grad[4], grad[5]
 	grad[4] = p.cosW*byH + p.sinW*byK
 	grad[5] = p.kepler.e * (p.cosW*byK - p.sinW*byH)
@@ -97,7 +98,12 @@ func (p *Path) SeparationGradient(since, elapsed float64) (z float64, front bool
 // e sin ω in the place of those by e and ω. They are regular at e = 0, where the
 // direction ω is lost; others follow by the chain rule, see [Elements.Jacobian].
 func (p *Path) VectorGradient(since, elapsed float64) (z float64, front bool, grad [6]float64) {
-	p = p.known()
+	z, front = p.known().vectorGradient(since, elapsed, &grad)
+	return z, front, grad
+}
+
+// vectorGradient is VectorGradient into zeros.
+func (p *Path) vectorGradient(since, elapsed float64, grad *[6]float64) (z float64, front bool) {
 	if p.light != 0 {
 		place, slopes := p.SkyGradient(since, elapsed)
 		z = math.Sqrt(place[0]*place[0] + place[1]*place[1])
@@ -107,26 +113,26 @@ func (p *Path) VectorGradient(since, elapsed float64) (z float64, front bool, gr
 				grad[k] = x*slopes[0][k] + y*slopes[1][k]
 			}
 		}
-		return z, place[2] > 0, grad
+		return z, place[2] > 0
 	}
 	s := p.plane(since)
 	y := s.v * p.cosI
 	distance := math.Sqrt(s.u*s.u + y*y)
 	z, front = p.axis*distance, s.v*p.sinI > 0
 	if distance == 0 {
-		return z, front, grad
+		return z, front
 	}
 	scale := p.axis / distance
 	byU, byV := scale*s.u, scale*y*p.cosI
 	byM := (byU*s.uE + byV*s.vE) * s.inverse
 	grad[1] = -byM * p.motion
-	grad[0] = grad[1] * elapsed / p.period
+	grad[0] = grad[1] * elapsed * p.frequency
 	grad[2] = distance
 	grad[3] = -scale * y * s.v * p.sinI
 	w := p.vector.at(s.sin, s.versine)
 	grad[4] = byM*w.mH + byU*w.uH + byV*w.vH
 	grad[5] = byM*w.mK + byU*w.uK + byV*w.vK
-	return z, front, grad
+	return z, front
 }
 
 // Window returns a span of time around mid-transit, in days since it, outside

@@ -23,7 +23,11 @@ func (p *Path) plane(since float64) plane {
 	e := p.kepler.e
 	if e == 0 {
 		sin, cos := math.Sincos(m)
-		return t.plane(sin, 1-cos)
+		versine := 1 - cos
+		if cos > 0 {
+			versine = sin * sin / (1 + cos)
+		}
+		return plane{u: -sin, v: cos, uE: -cos, vE: -sin, inverse: 1, sin: sin, versine: versine}
 	}
 	m += p.m0
 	if math.Abs(m) > math.Pi {
