@@ -41,10 +41,9 @@ type nodes struct {
 	squares      []float64 // 1 - tanh²(π/2 sinh x)
 	weights      []float64 // those of the step in x times the squares
 
-	// For outlines that are not circles, see walk: the length of a panel in
-	// distances to the nearest singular point, and how far an argument of tanh is
-	// followed towards infinity.
-	stretch, farthest float64
+	// For outlines that are not circles, see walk: errors are below exp(-digits), and
+	// an argument of tanh is followed towards infinity to farthest.
+	digits, farthest float64
 }
 
 // equal are equal steps in ψ from 0 to π.
@@ -70,26 +69,26 @@ var levels = []struct {
 	tolerance float64
 	nodes     nodes
 }{
-	{DefaultTolerance, newNodes(25, 16, 32, 0.1, 35, 2.4, 13)},
-	{1e-10, newNodes(29, 32, 64, 0.08, 45, 2, 15)},
-	{LeastTolerance, newNodes(34, 32, 128, 0.06, 62, 1.7, 18)},
+	{DefaultTolerance, newNodes(25, 16, 32, 0.1, 35, 24, 13)},
+	{1e-10, newNodes(29, 32, 64, 0.08, 45, 28, 15)},
+	{LeastTolerance, newNodes(34, 32, 128, 0.06, 62, 36, 18)},
 }
 
 // finest are the last of the levels.
 func finest() *nodes { return &levels[len(levels)-1].nodes }
 
-// newNodes prepares rules: of equal steps all around, to exp(-digits), and of n
-// steps of h.
-func newNodes(digits float64, coarse, fine int, h float64, n int, stretch, farthest float64) nodes {
-	around := func(n int) equal {
-		e := equal{ratio: math.Cosh(digits / float64(n))}
+// newNodes prepares rules: of equal steps all around, to exp(-around), and of n
+// steps of h; the others are those of nodes.
+func newNodes(around float64, coarse, fine int, h float64, n int, digits, farthest float64) nodes {
+	steps := func(n int) equal {
+		e := equal{ratio: math.Cosh(around / float64(n))}
 		for k := range n/2 + 1 {
 			s := math.Sin(math.Pi * float64(k) / float64(n))
 			e.squares = append(e.squares, s*s)
 		}
 		return e
 	}
-	out := nodes{coarse: around(coarse), fine: around(fine), stretch: stretch, farthest: farthest}
+	out := nodes{coarse: steps(coarse), fine: steps(fine), digits: digits, farthest: farthest}
 	for k := range n {
 		sinh, cosh := math.Sinh(h*float64(k)), math.Cosh(h*float64(k))
 		c := math.Cosh(math.Pi / 2 * sinh)

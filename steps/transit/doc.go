@@ -17,8 +17,8 @@
 //
 //	uniform, linear and quadratic laws   closed expressions, to rounding: 1e-14
 //	other laws                           quadratures, 1e-9, or as asked to 1e-12
-//	two limbs                            quadratures, 1e-12, or as for other laws
-//	spots                                quadratures, 1e-9 of the star's light
+//	two limbs                            quadratures, 1e-13, or as for other laws
+//	spots                                quadratures, 1e-11
 //	exposures                            1e-8
 //
 // # Methods
