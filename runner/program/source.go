@@ -18,8 +18,10 @@ var directive = regexp.MustCompile(`^//([A-Za-z0-9]+):\S`)
 
 // scan reads the tokens of the source, before any parser sees them. It blanks
 // imports of available packages, which are implied, and refuses other imports,
-// package clauses, directives to the compiler, and nesting that is too deep.
+// characters and names that deceive the reader, package clauses, directives to the compiler, and nesting that is too deep.
 func (c *checker) scan() {
+	c.visible()
+	names := newLookout()
 	files := token.NewFileSet()
 	f := files.AddFile(c.file, -1, len(c.src))
 	at := func(pos token.Pos) diag.Pos {
@@ -48,6 +50,11 @@ func (c *checker) scan() {
 		if tok == token.IDENT && len(lit) > maxIdentifier {
 			c.diags.Add(at(pos), fmt.Sprintf("a name is %d bytes long", len(lit)), fmt.Sprintf("at most %d are read", maxIdentifier), "")
 			return
+		}
+		if tok == token.IDENT {
+			if message, expected := names.look(lit, at(pos).Line); message != "" {
+				c.diags.Add(at(pos), message, expected, "")
+			}
 		}
 		if imports.active {
 			from := f.Offset(pos)
