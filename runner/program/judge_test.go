@@ -80,7 +80,7 @@ func agree(got string, want []string) bool {
 // acts otherwise than by its results.
 func undetermined(s sample) bool {
 	c := typed(s)
-	l := &linter{checker: c}
+	l := &linter{checker: c, changes: newChanges(c)}
 	l.declarations()
 	walk(c.tree, l.result)
 	return len(c.diags) > 0

@@ -13,7 +13,7 @@ import (
 // that the interpreter runs otherwise than compiled Go does and that
 // normalise.go does not rewrite (lintinterp.go).
 func (c *checker) lint() {
-	l := &linter{checker: c, escape: newEscape(c), called: map[ast.Expr]bool{}}
+	l := &linter{checker: c, escape: newEscape(c), changes: newChanges(c), called: map[ast.Expr]bool{}}
 	walk(c.tree, func(n ast.Node, _ []ast.Node) {
 		if call, ok := n.(*ast.CallExpr); ok {
 			l.called[ast.Unparen(call.Fun)] = true
@@ -33,8 +33,9 @@ func (c *checker) lint() {
 
 type linter struct {
 	*checker
-	escape *escape
-	called map[ast.Expr]bool // the function operands of calls
+	escape  *escape
+	changes *changes
+	called  map[ast.Expr]bool // the function operands of calls
 }
 
 // walk visits the tree top-down with the nodes above each node, outermost

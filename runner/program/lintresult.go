@@ -12,6 +12,7 @@ import (
 // result refuses code whose outcome is not a function of the step's arguments,
 // or that acts otherwise than by its results.
 func (l *linter) result(n ast.Node, above []ast.Node) {
+	l.order(n)
 	switch n := n.(type) {
 	case *ast.RangeStmt:
 		switch l.under(n.X).(type) {
