@@ -20,10 +20,10 @@
 // multiple assignments are split where needed, and so on (see normalise.go). A
 // compiled recipe is a [Machine].
 //
-// One difference from compiled Go is left: a struct, an array or a complex number
-// that is zero but for the signs of zeros in it loses these signs when it is
-// given to a function of the recipe, or is the receiver of a method. Numbers as
-// such keep their signs.
+// Signs of zeros are kept where values are handed on (see signs.go). Where Go
+// leaves the order of evaluation open, so that compilers may differ, the code is
+// refused (see order.go), as are characters and names that deceive a reader (see
+// letters.go).
 //
 // Checking can use much memory and time on hostile code (constants that grow),
 // so it belongs into a confined process, as running does.

@@ -92,17 +92,18 @@ func (l *linter) expression(n ast.Node, above []ast.Node) {
 		}
 	case *ast.Ident:
 		l.name(n)
-		l.asValue(n, above)
+		if s, ok := above[len(above)-1].(*ast.SelectorExpr); !ok || s.Sel != n {
+			l.signable(n, above[len(above)-1])
+		} else {
+			l.signable(s, above[len(above)-2])
+		}
 	case *ast.CompositeLit:
 		l.interfaceField(n)
 	case *ast.CallExpr:
 		l.interfaceArgument(n)
 		l.verbs(n)
-		if l.handsOnTuple(n) {
-			if sig := l.under(n.Fun).(*types.Signature); !l.writable(sig, n.Pos()) {
-				l.refuse(n, "assign the results to variables first", "a call of this type cannot hand on the results of another")
-			}
-		}
+		l.signable(n, nil)
+		l.variadic(n)
 	case *ast.FuncLit:
 		l.closure(n, above)
 	}
@@ -210,14 +211,19 @@ func (l *linter) name(id *ast.Ident) {
 	}
 }
 
-// asValue refuses functions as values that signs cannot wrap.
-func (l *linter) asValue(id *ast.Ident, above []ast.Node) {
-	e := ast.Expr(id)
-	if s, ok := above[len(above)-1].(*ast.SelectorExpr); ok && s.Sel == id {
-		e = s
+// variadic refuses calls of variadic functions that pack cannot rewrite.
+func (l *linter) variadic(call *ast.CallExpr) {
+	if call.Ellipsis.IsValid() {
+		if last := call.Args[len(call.Args)-1]; l.info.Types[last].IsNil() {
+			l.refuse(last, "leave it out", "nil... is not available")
+		}
+		return
 	}
-	if !l.called[e] && l.functionValue(e) && !l.writable(l.under(e), id.Pos()) {
-		l.refuse(e, "write func(…) { return "+exprText(e)+"(…) }", "function %s is not available as a value", exprText(e))
+	if l.unpacked(call) {
+		sig := l.under(call.Fun).(*types.Signature)
+		if t := sig.Params().At(fixed(sig)).Type(); !l.writable(t, call.Args[fixed(sig)].Pos()) {
+			l.refuse(call, "give the elements a type with a name that nothing hides", "a function value cannot take several last arguments of this type")
+		}
 	}
 }
 

@@ -83,12 +83,14 @@ func (c *checker) writable(t types.Type, pos token.Pos) bool {
 		if o.Pkg() == nil || o.Pkg() != c.pkg {
 			return o.Pkg() == nil || available.Name(o.Pkg().Path()) != ""
 		}
-		scope := c.pkg.Scope().Innermost(pos)
-		if scope == nil {
-			return false
+		for scope := c.pkg.Scope().Innermost(pos); scope != nil; {
+			at, found := scope.LookupParent(o.Name(), pos)
+			if _, isType := found.(*types.TypeName); found == o || isType || o.Parent() != c.pkg.Scope() {
+				return found == o
+			}
+			scope = at.Parent() // rename gives what hides o another name
 		}
-		_, found := scope.LookupParent(o.Name(), pos)
-		return found == o
+		return false
 	case *types.Pointer:
 		return c.writable(t.Elem(), pos)
 	case *types.Slice:
@@ -97,6 +99,13 @@ func (c *checker) writable(t types.Type, pos token.Pos) bool {
 		return c.writable(t.Elem(), pos)
 	case *types.Map:
 		return c.writable(t.Key(), pos) && c.writable(t.Elem(), pos)
+	case *types.Struct:
+		for i := 0; i < t.NumFields(); i++ {
+			if f := t.Field(i); f.Embedded() || f.Name() == "_" || t.Tag(i) != "" || !c.writable(f.Type(), pos) {
+				return false
+			}
+		}
+		return true
 	case *types.Signature:
 		for _, list := range []*types.Tuple{t.Params(), t.Results()} {
 			for i := 0; i < list.Len(); i++ {
@@ -110,7 +119,7 @@ func (c *checker) writable(t types.Type, pos token.Pos) bool {
 	return false
 }
 
-// typeExpr writes a writable type; functions take signed numbers as complex ones.
+// typeExpr writes a writable type; functions take what carries their arguments.
 func (n *normaliser) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 	switch t := types.Unalias(t).(type) {
 	case *types.Basic:
@@ -129,24 +138,23 @@ func (n *normaliser) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 		return &ast.ArrayType{Lbrack: pos, Len: number(pos, token.INT, strconv.FormatInt(t.Len(), 10)), Elt: n.typeExpr(t.Elem(), pos)}
 	case *types.Map:
 		return &ast.MapType{Map: pos, Key: n.typeExpr(t.Key(), pos), Value: n.typeExpr(t.Elem(), pos)}
-	case *types.Signature:
-		list := func(tuple *types.Tuple, parameters, variadic bool) *ast.FieldList {
-			out := &ast.FieldList{Opening: pos, Closing: pos}
-			for i := 0; i < tuple.Len(); i++ {
-				e := n.typeExpr(tuple.At(i).Type(), pos)
-				if parameters && signed(tuple.At(i).Type()) {
-					e = ident("complex128", pos)
-				}
-				if variadic && i == tuple.Len()-1 {
-					e = &ast.Ellipsis{Ellipsis: pos, Elt: e.(*ast.ArrayType).Elt}
-				}
-				out.List = append(out.List, &ast.Field{Type: e})
-			}
-			return out
+	case *types.Struct:
+		s := &ast.StructType{Struct: pos, Fields: &ast.FieldList{Opening: pos, Closing: pos}}
+		for i := 0; i < t.NumFields(); i++ {
+			f := t.Field(i)
+			s.Fields.List = append(s.Fields.List, &ast.Field{Names: []*ast.Ident{ident(f.Name(), pos)}, Type: n.typeExpr(f.Type(), pos)})
 		}
-		f := &ast.FuncType{Func: pos, Params: list(t.Params(), true, t.Variadic())}
-		if t.Results().Len() > 0 {
-			f.Results = list(t.Results(), false, false)
+		return s
+	case *types.Signature:
+		f := &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}, Results: n.resultTypes(t, pos)}
+		for i := 0; i < t.Params().Len(); i++ {
+			var e ast.Expr
+			if p := t.Params().At(i).Type(); i < fixed(t) {
+				e = n.carrierType(p, pos)
+			} else {
+				e = &ast.Ellipsis{Ellipsis: pos, Elt: n.typeExpr(p.(*types.Slice).Elem(), pos)}
+			}
+			f.Params.List = append(f.Params.List, &ast.Field{Type: e})
 		}
 		return f
 	}

@@ -20,7 +20,9 @@ import (
 //     recipe are changed;
 //   - constant expressions become literals of their final type, as the type
 //     checker found it (the interpreter takes var x float64 = 3/2 for 1.5);
-//   - functions get floating-point arguments as complex numbers (signs.go);
+//   - functions get floating-point arguments as complex numbers, and structs and
+//     arrays of them in slices; declared functions that are kept become function
+//     literals (signs.go);
 //   - values that become interfaces get memory of their own (interfaces.go);
 //   - bodies of loops whose variables are kept become calls (loopbody.go);
 //   - method values become function literals (methodvalue.go);

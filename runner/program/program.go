@@ -13,7 +13,7 @@ import (
 // Version names the rules of the check, of the normal form and of the
 // rewriting for the interpreter. It changes whenever the same source could give
 // another normal form or another result, and belongs into every key.
-const Version = "3"
+const Version = "4"
 
 // firstPos is below the positions of every source: the interpreter has files of
 // its own in its file set, and the tree must come after them.

@@ -92,7 +92,7 @@ func TestSteps(t *testing.T) {
 
 func TestCode(t *testing.T) {
 	code := accept(t, sampleRecipe).Steps[1].Code
-	const want = `program 3
+	const want = `program 4
 import rimlight/steps/lightcurve
 
 func Level(channel lightcurve.Curve, limb summary) (level float64) {

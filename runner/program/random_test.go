@@ -44,6 +44,10 @@ func rec(p P, n int) (r P) { p.X += float64(n); if n <= 0 { return p }; r = rec(
 func fold(xs []float64, init float64, f func(a, b float64) float64) float64 { a := init; for _, x := range xs { a = f(a, x) }; return a }
 func find(xs []float64, pred func(float64) bool) (at int, ok bool) { for i, x := range xs { if pred(x) { return i, true } }; return -1, ok }
 func upd(p *P, f func(float64) float64) { p.X = f(p.X); p.A[1] = f(p.A[1]) }
+func nz() float64 { z := 0.0; return -z }
+func (p P) neg() P { return P{X: -p.X, A: [2]float64{-p.A[0], -p.A[1]}} }
+func arr(a [2]float64, k float64) [2]float64 { a[0] *= k; return a }
+func pick(n int) (func(float64) float64, int) { if n%2 == 0 { return clamp, n }; return math.Floor, n + 1 }
 func counted(n int) (next func() int, start int) { next = func() int { start++; return start }; return next, n }
 `
 
@@ -59,10 +63,10 @@ var typeText = map[kind]string{
 
 // atoms are the expressions without operands.
 var atoms = map[kind][]string{
-	"f": {"0.5", "1.5", "-2.25", "3.0", "C1", "1", "C2/2.0", "1e-3", "float64(C2)", "C1*C2", "7/2"},
+	"f": {"0.5", "nz()", "1.5", "-2.25", "3.0", "C1", "1", "C2/2.0", "1e-3", "float64(C2)", "C1*C2", "7/2"},
 	"i": {"0", "1", "2", "3", "-4", "C2", "5", "C2/2", "11%4", "ci(7)"},
 	"b": {"true", "false", "C2 > 3"},
-	"s": {"[]float64{1, 2.5, -3}"}, "a": {"[2]float64{1, 0.5}"}, "P": {"mkP(1, 2, 3)"},
+	"s": {"[]float64{1, 2.5, -3}"}, "a": {"[2]float64{1, 0.5}"}, "P": {"mkP(1, 2, 3)", "P{X: nz()}"},
 	"u": {"u32(7)", "u32(4000000000)"}, "y": {"u8(200)", "u8(3)"}, "D": {"D(1.5)", "D(C1)"}, "k": {"K0", "K1", "K2"},
 	"l": {"[]P{mkP(1, 2, 3), mkP(4, 5, 6)}"}, "p": {"&P{X: 1, Y: 2}"}, "F": {"func(x float64) float64 { return x + 1 }"},
 	"m": {`map[string]float64{"a": 1, "b": 2}`}, "Q": {"Q{P: mkP(1, 1, 1)}"}, "g": {"[][]float64{{1, 2}, {3, 4}}"},
@@ -84,14 +88,14 @@ var forms = map[kind][]string{
 		`($t == "a")`, "(#p != nil)", `strings.HasPrefix($t, "a")`, "sort.Float64sAreSorted($s)"},
 	"s": {"append([]float64(nil), $s...)", "append([]float64{$f}, $f, $f)", "mapf($F, $s)", "[]float64{$f, $f}", "#s[:ix($i, len(#s)+1)]", "#a[:]", "#P.S", "mapf(adder($f), $s)",
 		"func() (out []float64, n int) { out, n = []float64{$f}, $i; return }()#0"},
-	"a": {"[2]float64{$f, $f}", "#P.A", "#p.A"},
-	"P": {"mkP($f, $f, $i)", "P{X: $f, A: $a}", "$P.With($f)", "#l[ix($i, len(#l))]", "(*#p)", "#Q.P", "rec($P, ix($i, 3))", "#MP[$t]"},
+	"a": {"[2]float64{$f, $f}", "arr($a, $f)", "#P.A", "#p.A"},
+	"P": {"mkP($f, $f, $i)", "$P.neg()", "P{X: $f, A: $a}", "$P.With($f)", "#l[ix($i, len(#l))]", "(*#p)", "#Q.P", "rec($P, ix($i, 3))", "#MP[$t]"},
 	"u": {"($u + $u)", "($u - $u)", "($u * $u)", "($u ^ $u)", "($u &^ $u)", "($u << 3)", "($u >> 5)", "uint32(ci($i))", "uint32($y)", "^$u"},
 	"y": {"($y + $y)", "($y - $y)", "($y * $y)", "uint8(ci($i))", "($y << 3)", "uint8($u >> 9)"},
 	"D": {"D($f)", "($D * $D)", "($D + 2)", "($D - C1)"},
 	"k": {"K(ix($i, 3))", "($k + 1)"},
 	"t": {"($t + $t)", "strconv.Itoa($i)"},
-	"F": {"func(x float64) float64 { return x * $f }", "func(x float64) (r float64) { r = x; r -= $f; return }", "math.Sqrt", "clamp", "adder($f)"},
+	"F": {"func(x float64) float64 { return x * $f }", "func(x float64) (r float64) { r = x; r -= $f; return }", "math.Sqrt", "clamp", "adder($f)", "func() func(float64) float64 { f, n := pick($i); _ = n; return f }()"},
 	"l": {"[]P{$P, $P}", "append([]P(nil), $l...)", "append($l, $P)"},
 	"p": {"&P{X: $f, Y: $f}"}, "m": {`map[string]float64{"a": $f, "zz": $f}`}, "Q": {"Q{P: $P, L: $l, F: $F}"}, "g": {"[][]float64{$s, $s}"},
 	"S": {"mkS($i, $f)"}, "SS": {"[]Shape{mkS($i, $f), mkS(3, $f)}"}, "MP": {`map[string]P{"a": $P, "b": $P}`},
@@ -122,6 +126,7 @@ var statements = []string{
 	"{ var fs []func() int; for i := 0; i < 3; i++ { n := $i; fs = append(fs, func() int { n++; return n }) }; ^i = fs[0]() + fs[0]() + fs[2]() }",
 	"for i, r := range $t { ^i += i * int(r) }", "^i = 1 << ix($i, 5) | $i >> ix($i, 4)", "{ var b strings.Builder; fmt.Fprintf(&b, \"%d %.3g\", $i, float64($f)); ^i += b.Len() }",
 	"{ var keys []string; for k := range #m { keys = append(keys, k) }; sort.Strings(keys); for i, k := range keys { ^f = clamp(^f + #m[k]*float64(i)) } }",
+	"{ f, n := pick($i); ^f = f($f); ^i += n }", "{ fs := []func(float64) float64{clamp, $F}; fs[0], ^i = clamp, $i; ^f = clamp(fs[ix($i, 2)]($f)) }",
 	"for _, r := range $t { ^i += int(r) }", "for i := 0; i < 3; { i++; %1 }", "{ next, n := counted($i); ^i = next()*n + next() }",
 	"{ len := $i; sort := len + 1; ^i = sort }", "{ f := func(x float64) (r float64, ok bool) { if x > 1 { r = x; return }; g := func() { r = 3 }; g(); return r + 1, true }; x, ok := f($f); if ok { ^f = x } }",
 	"outer: for i := 0; i < 3; i++ { for j := 0; j < 3; j++ { if j == 2 { continue outer }; if i == 2 && $b { break outer }; ^f += $f } }",

@@ -10,35 +10,74 @@ import (
 
 // The interpreter does not hand on an argument that is zero, but leaves the
 // parameter at zero, and takes -0 for zero. So functions of the recipe get their
-// floating-point numbers as complex ones, whose imaginary part is 1:
+// floating-point numbers as complex ones, whose imaginary part is 1; and complex
+// numbers, structs and arrays, which may have such numbers in them, as slices of
+// one element:
 //
-//	func f(x_1 complex128) float64 { x := real(x_1); … }
-//	f(complex(y, 1.0))
+//	func f(x_1 complex128, p_2 []P) float64 { x := real(x_1); p := p_2[0]; … }
+//	f(complex(y, 1.0), []P{q})
 //
-// All functions of the recipe do so but its steps, which compiled code calls; a
-// compiled function or a step that is used as a value goes into a function
-// literal. No compiled function takes or gives functions of floating-point
-// numbers, see the test.
+// Steps are called by compiled code. One that the recipe calls too becomes a
+// function of its own, and a step that calls it. A compiled function that is used
+// as a value goes into a function literal; so does a declared function of the
+// recipe that is kept, which the interpreter loses in places of some kinds. No
+// compiled function takes or gives functions with such parameters, see the test.
+// Receivers, results and elements of variadic parameters keep their signs.
 
-// signed reports whether parameters of type t are handed on as complex numbers.
-func signed(t types.Type) bool {
-	b, ok := t.Underlying().(*types.Basic)
-	return ok && b.Info()&types.IsFloat != 0
+// A carrier is how a parameter is handed on.
+type carrier int
+
+const (
+	asItIs carrier = iota
+	asComplex
+	inSlice
+)
+
+// carried is how parameters of type t are handed on.
+func carried(t types.Type) carrier {
+	switch u := t.Underlying().(type) {
+	case *types.Basic:
+		switch {
+		case u.Info()&types.IsFloat != 0:
+			return asComplex
+		case u.Info()&types.IsComplex != 0:
+			return inSlice
+		}
+	case *types.Array:
+		if carried(u.Elem()) != asItIs {
+			return inSlice
+		}
+	case *types.Struct:
+		for i := 0; i < u.NumFields(); i++ {
+			if carried(u.Field(i).Type()) != asItIs {
+				return inSlice
+			}
+		}
+	}
+	return asItIs
 }
 
-// takesSigned reports whether a parameter of the function is signed. The last
-// of a variadic one is a slice.
+// fixed is the number of parameters that take one argument each.
+func fixed(sig *types.Signature) int {
+	if sig.Variadic() {
+		return sig.Params().Len() - 1
+	}
+	return sig.Params().Len()
+}
+
+// takesSigned reports whether a parameter of the function is not handed on as
+// it is. The last of a variadic one is a slice.
 func takesSigned(sig *types.Signature) bool {
-	for i := 0; i < sig.Params().Len(); i++ {
-		if signed(sig.Params().At(i).Type()) {
+	for i := 0; i < fixed(sig); i++ {
+		if carried(sig.Params().At(i).Type()) != asItIs {
 			return true
 		}
 	}
 	return false
 }
 
-// direct reports whether the function that an expression names gets its
-// arguments as they are: it is compiled, or a step.
+// direct reports whether an expression names a compiled function, which gets its
+// arguments as they are.
 func (c *checker) direct(e ast.Expr) bool {
 	switch x := ast.Unparen(e).(type) {
 	case *ast.SelectorExpr:
@@ -51,46 +90,73 @@ func (c *checker) direct(e ast.Expr) bool {
 		return false
 	}
 	fn, ok := c.info.Uses[id].(*types.Func)
+	return ok && fn.Pkg() != c.pkg
+}
+
+// isStep reports whether an expression names a step.
+func (c *checker) isStep(e ast.Expr) bool {
+	id, ok := e.(*ast.Ident)
 	if !ok {
 		return false
 	}
-	if fn.Pkg() != c.pkg {
-		return true
-	}
-	return fn.Signature().Recv() == nil && fn.Exported()
+	fn, ok := c.info.Uses[id].(*types.Func)
+	return ok && fn.Pkg() == c.pkg && fn.Signature().Recv() == nil && fn.Exported()
 }
 
-// functionValue reports whether the expression, which is not called, is a
-// direct function that takes signed parameters.
-func (c *checker) functionValue(e ast.Expr) bool {
-	if !c.direct(e) || c.info.Selections[selector(e)] != nil {
+// signedCall is the type of the function that a call calls, when its arguments
+// are not handed on as they are, nil otherwise.
+func (c *checker) signedCall(call *ast.CallExpr) *types.Signature {
+	if c.info.Types[call.Fun].IsType() || c.builtin(call) != "" || c.direct(call.Fun) {
+		return nil
+	}
+	if sig, ok := c.under(call.Fun).(*types.Signature); ok && takesSigned(sig) {
+		return sig
+	}
+	return nil
+}
+
+// handsOn reports whether a call gets all its arguments from another call.
+func (c *checker) handsOn(call *ast.CallExpr) bool {
+	if len(call.Args) != 1 {
 		return false
 	}
-	sig, ok := c.under(e).(*types.Signature)
-	return ok && takesSigned(sig)
-}
-
-func selector(e ast.Expr) *ast.SelectorExpr {
-	s, _ := e.(*ast.SelectorExpr)
-	return s
-}
-
-// handsOnTuple reports whether a call of a function of the recipe gets all its
-// arguments, signed ones among them, from another call.
-func (c *checker) handsOnTuple(call *ast.CallExpr) bool {
-	sig, ok := c.under(call.Fun).(*types.Signature)
-	if !ok || len(call.Args) != 1 || c.direct(call.Fun) || c.builtin(call) != "" || !takesSigned(sig) {
-		return false
-	}
-	_, ok = c.info.TypeOf(call.Args[0]).(*types.Tuple)
+	_, ok := c.info.TypeOf(call.Args[0]).(*types.Tuple)
 	return ok
 }
 
-// signs hands signed arguments on as complex numbers.
+// signable refuses calls and functions as values that signs cannot rewrite.
+func (l *linter) signable(e ast.Expr, parent ast.Node) {
+	if call, ok := e.(*ast.CallExpr); ok {
+		sig := l.signedCall(call)
+		switch {
+		case sig == nil:
+		case l.handsOn(call):
+			if !l.writable(sig, call.Pos()) {
+				l.refuse(call, "assign the results to variables first", "a call of this type cannot hand on the results of another")
+			}
+		default:
+			for i := 0; i < fixed(sig) && i < len(call.Args); i++ {
+				if t := sig.Params().At(i).Type(); carried(t) == inSlice && !l.writable(t, call.Pos()) {
+					l.refuse(call.Args[i], "give type "+l.typeName(t)+" a name that nothing hides", "a value of type %s cannot be handed on here", l.typeName(t))
+				}
+			}
+		}
+		return
+	}
+	switch sig, ok := l.under(e).(*types.Signature); {
+	case !ok:
+	case l.isStep(e) && takesSigned(sig) && !l.writable(sig, l.tree.Name.End()):
+		l.refuse(e, "put what both need into a function of its own", "step %s has a parameter or a result of a type without a name, and is used by the recipe itself", exprText(e))
+	case l.called[e]:
+	case l.functionValue(e, parent) && !l.writable(sig, e.Pos()):
+		l.refuse(e, "write func(…) { return "+exprText(e)+"(…) }", "function %s is not available as a value", exprText(e))
+	}
+}
+
+// signs hands signed arguments on with their signs.
 func (n *normaliser) signs() {
 	called := map[ast.Expr]bool{}
 	named := map[*ast.Ident]bool{} // parts of selectors
-	steps := map[*ast.FuncType]bool{}
 	used := map[types.Object]bool{}
 	ast.Inspect(n.tree, func(m ast.Node) bool {
 		switch m := m.(type) {
@@ -103,16 +169,27 @@ func (n *normaliser) signs() {
 		}
 		return true
 	})
+	steps := map[*ast.FuncType]bool{} // that only compiled code calls
+	var outer []ast.Decl
 	for _, f := range n.steps {
-		steps[f.Type] = true
+		if o := n.info.Defs[f.Name]; used[o] && takesSigned(o.Type().(*types.Signature)) {
+			outer = append(outer, n.outerStep(f, o))
+		} else {
+			steps[f.Type] = true
+		}
 	}
 	astutil.Apply(n.tree, nil, func(cur *astutil.Cursor) bool {
 		switch m := cur.Node().(type) {
 		case *ast.CallExpr:
-			if n.handsOnTuple(m) {
-				cur.Replace(n.spread(m))
-			} else {
-				n.signArguments(m)
+			n.pack(m)
+			switch sig := n.signedCall(m); {
+			case sig == nil:
+			case n.handsOn(m):
+				cur.Replace(n.spread(m, sig))
+			default:
+				for i := 0; i < fixed(sig); i++ {
+					m.Args[i] = n.sign(m.Args[i], sig.Params().At(i).Type())
+				}
 			}
 		case *ast.FuncDecl:
 			if !steps[m.Type] && m.Body != nil {
@@ -127,61 +204,116 @@ func (n *normaliser) signs() {
 				n.signParameters(m, nil)
 			}
 		case *ast.SelectorExpr:
-			if !called[m] && n.functionValue(m) {
+			if !called[m] && n.functionValue(m, cur.Parent()) {
 				cur.Replace(n.adapter(m))
 			}
 		case *ast.Ident:
-			if !called[m] && !named[m] && n.functionValue(m) {
+			if !called[m] && !named[m] && n.functionValue(m, cur.Parent()) {
 				cur.Replace(n.adapter(m))
 			}
 		}
 		return true
 	})
+	n.tree.Decls = append(n.tree.Decls, outer...)
 }
 
-// sign makes a complex number of a signed argument.
+// outerStep gives step f another name, and makes a step of its name that calls
+// it.
+func (n *normaliser) outerStep(f *ast.FuncDecl, o types.Object) ast.Decl {
+	name := n.temporary(f.Name.Name)
+	pos := n.tree.Name.End()
+	sig := o.Type().(*types.Signature)
+	typ := &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}, Results: n.resultTypes(sig, pos)}
+	inner := &ast.CallExpr{Fun: ident(name, pos), Lparen: pos, Rparen: pos}
+	for i := 0; i < sig.Params().Len(); i++ {
+		t := sig.Params().At(i).Type()
+		arg := n.temporary("argument")
+		typ.Params.List = append(typ.Params.List, &ast.Field{Names: []*ast.Ident{ident(arg, pos)}, Type: n.typeExpr(t, pos)})
+		inner.Args = append(inner.Args, n.sign(ident(arg, pos), t))
+	}
+	out := &ast.FuncDecl{Name: ident(f.Name.Name, pos), Type: typ, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{returning(sig, inner)}, Rbrace: pos}}
+	n.info.Defs[out.Name] = o
+	f.Name.Name = name
+	ast.Inspect(n.tree, func(m ast.Node) bool {
+		if id, ok := m.(*ast.Ident); ok && n.info.Uses[id] == o {
+			id.Name = name
+		}
+		return true
+	})
+	return out
+}
+
+// sign makes of an argument what carries it to a parameter of type t.
 func (n *normaliser) sign(e ast.Expr, t types.Type) ast.Expr {
 	pos := e.Pos()
-	if b, ok := types.Unalias(t).(*types.Basic); !ok || b.Kind() != types.Float64 {
-		e = call(pos, "float64", e)
+	switch carried(t) {
+	case asComplex:
+		if !isFloat64(t) {
+			e = call(pos, "float64", e)
+		}
+		return call(pos, "complex", e, number(pos, token.FLOAT, "1.0"))
+	case inSlice:
+		lit := &ast.CompositeLit{Type: n.carrierType(t, pos), Lbrace: pos, Elts: []ast.Expr{e}, Rbrace: pos}
+		n.info.Types[lit] = types.TypeAndValue{Type: types.NewSlice(t)}
+		return lit
 	}
-	return call(pos, "complex", e, number(pos, token.FLOAT, "1.0"))
+	return e
+}
+
+// unsign makes a value of type t of what carries it.
+func (n *normaliser) unsign(e ast.Expr, t types.Type) ast.Expr {
+	pos := e.Pos()
+	switch carried(t) {
+	case asComplex:
+		e = call(pos, "real", e)
+		if !isFloat64(t) {
+			e = &ast.CallExpr{Fun: n.typeExpr(t, pos), Lparen: pos, Args: []ast.Expr{e}, Rparen: pos}
+		}
+	case inSlice:
+		e = &ast.IndexExpr{X: e, Lbrack: pos, Index: number(pos, token.INT, "0"), Rbrack: pos}
+		n.info.Types[e] = types.TypeAndValue{Type: t}
+	}
+	return e
+}
+
+// carrierType is the type of what carries a parameter of type t.
+func (n *normaliser) carrierType(t types.Type, pos token.Pos) ast.Expr {
+	switch carried(t) {
+	case asComplex:
+		return ident("complex128", pos)
+	case inSlice:
+		return &ast.ArrayType{Lbrack: pos, Elt: n.typeExpr(t, pos)}
+	}
+	return n.typeExpr(t, pos)
+}
+
+func isFloat64(t types.Type) bool {
+	b, ok := types.Unalias(t).(*types.Basic)
+	return ok && b.Kind() == types.Float64
 }
 
 func call(pos token.Pos, name string, args ...ast.Expr) *ast.CallExpr {
 	return &ast.CallExpr{Fun: ident(name, pos), Lparen: pos, Args: args, Rparen: pos}
 }
 
-func (n *normaliser) signArguments(m *ast.CallExpr) {
-	if n.info.Types[m.Fun].IsType() || n.builtin(m) != "" || n.direct(m.Fun) {
-		return
-	}
-	sig, ok := n.under(m.Fun).(*types.Signature)
-	if !ok {
-		return
-	}
-	fixed := sig.Params().Len()
-	if sig.Variadic() {
-		fixed--
-	}
-	for i := 0; i < fixed && i < len(m.Args); i++ {
-		if t := sig.Params().At(i).Type(); signed(t) {
-			m.Args[i] = n.sign(m.Args[i], t)
-		}
-	}
-}
-
-// signParameters makes the signed parameters of a function complex. It gives
-// the statements that make them real again, of those that are used.
+// signParameters makes the signed parameters of a function what carries them. It
+// gives the statements that take them out again, of those that are used.
 func (n *normaliser) signParameters(t *ast.FuncType, used map[types.Object]bool) []ast.Stmt {
 	var out []ast.Stmt
 	for _, f := range t.Params.List {
-		if _, variadic := f.Type.(*ast.Ellipsis); variadic || !signed(n.info.TypeOf(f.Type)) {
+		if _, variadic := f.Type.(*ast.Ellipsis); variadic {
 			continue
 		}
 		pos := f.Type.Pos()
-		typ := f.Type
-		f.Type = ident("complex128", pos)
+		typ := n.info.TypeOf(f.Type)
+		switch carried(typ) {
+		case asItIs:
+			continue
+		case asComplex:
+			f.Type = ident("complex128", pos)
+		case inSlice:
+			f.Type = &ast.ArrayType{Lbrack: pos, Elt: f.Type}
+		}
 		for i, id := range f.Names {
 			if !used[n.info.Defs[id]] {
 				f.Names[i] = ident("_", id.Pos())
@@ -195,61 +327,9 @@ func (n *normaliser) signParameters(t *ast.FuncType, used map[types.Object]bool)
 	return out
 }
 
-// unsign makes a number of the type of a complex one.
-func (n *normaliser) unsign(e, typ ast.Expr) ast.Expr {
-	pos := e.Pos()
-	re := call(pos, "real", e)
-	if b, ok := types.Unalias(n.info.TypeOf(typ)).(*types.Basic); ok && b.Kind() == types.Float64 {
-		return re
-	}
-	return &ast.CallExpr{Fun: n.typeExpr(n.info.TypeOf(typ), pos), Lparen: pos, Args: []ast.Expr{re}, Rparen: pos}
-}
-
-// adapter is a function literal that calls a direct function.
-func (n *normaliser) adapter(fn ast.Expr) ast.Expr {
-	pos := fn.Pos()
-	sig := n.under(fn).(*types.Signature)
-	typ := n.typeExpr(sig, pos).(*ast.FuncType)
-	inner := &ast.CallExpr{Fun: fn, Lparen: pos, Rparen: pos}
-	n.forward(typ, sig, inner, true)
-	lit := &ast.FuncLit{Type: typ, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{returning(sig, inner)}, Rbrace: pos}}
-	n.info.Types[lit] = types.TypeAndValue{Type: sig}
-	return lit
-}
-
-// forward names the parameters of typ, which was made of sig, and gives them to
-// the call; as they are, or with signed ones made real again.
-func (n *normaliser) forward(typ *ast.FuncType, sig *types.Signature, inner *ast.CallExpr, direct bool) {
-	pos := inner.Pos()
-	for i, p := range typ.Params.List {
-		name := n.temporary("argument")
-		p.Names = []*ast.Ident{ident(name, pos)}
-		var arg ast.Expr = ident(name, pos)
-		if t := sig.Params().At(i).Type(); direct && signed(t) {
-			arg = call(pos, "real", arg)
-			if b, ok := types.Unalias(t).(*types.Basic); !ok || b.Kind() != types.Float64 {
-				arg = &ast.CallExpr{Fun: n.typeExpr(t, pos), Lparen: pos, Args: []ast.Expr{arg}, Rparen: pos}
-			}
-		}
-		inner.Args = append(inner.Args, arg)
-		if _, ok := p.Type.(*ast.Ellipsis); ok {
-			inner.Ellipsis = pos
-		}
-	}
-}
-
-// returning is the statement that ends a function with the results of a call.
-func returning(sig *types.Signature, inner *ast.CallExpr) ast.Stmt {
-	if sig.Results().Len() == 0 {
-		return &ast.ExprStmt{X: inner}
-	}
-	return &ast.ReturnStmt{Return: inner.Pos(), Results: []ast.Expr{inner}}
-}
-
 // spread is f(g()), where g has several results, with each in a variable.
-func (n *normaliser) spread(m *ast.CallExpr) ast.Expr {
+func (n *normaliser) spread(m *ast.CallExpr, sig *types.Signature) ast.Expr {
 	pos := m.Pos()
-	sig := n.under(m.Fun).(*types.Signature)
 	tuple := n.info.TypeOf(m.Args[0]).(*types.Tuple)
 	get := &ast.AssignStmt{TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{m.Args[0]}}
 	inner := &ast.CallExpr{Fun: m.Fun, Lparen: pos, Rparen: pos}
@@ -257,15 +337,12 @@ func (n *normaliser) spread(m *ast.CallExpr) ast.Expr {
 		name := n.temporary("value")
 		get.Lhs = append(get.Lhs, ident(name, pos))
 		var arg ast.Expr = ident(name, pos)
-		if variadic := sig.Variadic() && i >= sig.Params().Len()-1; !variadic && signed(sig.Params().At(i).Type()) {
-			arg = n.sign(arg, tuple.At(i).Type())
+		if i < fixed(sig) {
+			arg = n.sign(arg, sig.Params().At(i).Type())
 		}
 		inner.Args = append(inner.Args, arg)
 	}
-	typ := &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}}
-	if sig.Results().Len() > 0 {
-		typ.Results = n.resultTypes(sig, pos)
-	}
+	typ := &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}, Results: n.resultTypes(sig, pos)}
 	lit := &ast.FuncLit{Type: typ, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{get, returning(sig, inner)}, Rbrace: pos}}
 	n.info.Types[lit] = types.TypeAndValue{Type: types.NewSignatureType(nil, nil, nil, nil, sig.Results(), false)}
 	out := &ast.CallExpr{Fun: lit, Lparen: pos, Rparen: pos}
@@ -273,8 +350,12 @@ func (n *normaliser) spread(m *ast.CallExpr) ast.Expr {
 	return out
 }
 
+// resultTypes are the results of a function, nil when there are none.
 func (n *normaliser) resultTypes(sig *types.Signature, pos token.Pos) *ast.FieldList {
-	out := &ast.FieldList{}
+	if sig.Results().Len() == 0 {
+		return nil
+	}
+	out := &ast.FieldList{Opening: pos, Closing: pos}
 	for i := 0; i < sig.Results().Len(); i++ {
 		out.List = append(out.List, &ast.Field{Type: n.typeExpr(sig.Results().At(i).Type(), pos)})
 	}
