@@ -3,8 +3,10 @@ package slurm_test
 import (
 	"os"
 	"path/filepath"
+	"strconv"
 	"strings"
 	"testing"
+	"time"
 
 	"rimlight/runner/command"
 )
@@ -16,7 +18,8 @@ var fakes = map[string]string{
 
 	// full: no more than so many elements are taken. refuse: what it holds is said,
 	// and nothing taken. doomed: what is submitted says what it holds, and dies.
-	// held: so many arrays cannot be started, and stay in the queue.
+	// held: so many arrays cannot be started, and stay in the queue. stuck: nothing
+	// is ever started.
 	"sbatch": `
 for a; do case $a in
 --array=0-*) last=${a#--array=0-} ;;
@@ -40,6 +43,10 @@ while [ $i -le $last ]; do
 		echo "$job|$i|PENDING|$name||launch failed requeued held" >FAKE/queue/${job}_$i
 		i=$((i + 1)); continue
 	fi
+	if [ -f FAKE/stuck ]; then
+		echo "$job|$i|PENDING|$name||Resources" >FAKE/queue/${job}_$i
+		i=$((i + 1)); continue
+	fi
 	echo "$job|$i|RUNNING|$name|n1|None" >FAKE/queue/${job}_$i
 	out=$(echo $log | sed "s/%A_%a/${job}_$i/")
 	(
@@ -60,7 +67,12 @@ echo "a greeting of the site"
 cat FAKE/queue/* 2>/dev/null
 true`,
 
-	"scancel": `for a; do case $a in --*) ;; *) rm -f FAKE/queue/$a ;; esac; done`,
+	"scancel": `
+for a; do case $a in
+--name=*) for q in $(grep -lF "|${a#--name=}|" FAKE/queue/*); do rm -f $q; done ;;
+--*) ;;
+*) rm -f FAKE/queue/$a ;;
+esac; done`,
 }
 
 // A fake is the folder of such commands, first in the path of the bench.
@@ -92,6 +104,73 @@ func (f *fake) set(name, text string) {
 func (f *fake) arrays() int {
 	text, _ := os.ReadFile(filepath.Join(f.dir, "submitted"))
 	return strings.Count(string(text), "\n")
+}
+
+// queued is how many elements are in the queue.
+func (f *fake) queued() int {
+	entries, _ := os.ReadDir(filepath.Join(f.dir, "queue"))
+	return len(entries)
+}
+
+// TestWhereStepsGo holds that work goes to the cluster by what is known of it.
+func TestWhereStepsGo(t *testing.T) {
+	t.Parallel()
+	b := newBench(t, "--on", "slurm", "--slurm-poll", "50ms")
+	f := newFake(t, b)
+	away := func(want string, args ...string) {
+		t.Helper()
+		r, said := b.run(command.ExitDone, args...)
+		var got []string
+		for _, s := range r.Steps {
+			n := strings.Count(s.Host, "Slurm job")
+			for _, e := range s.Elements {
+				n += strings.Count(e.Host, "Slurm job")
+			}
+			if n > 0 && len(s.Elements) > 0 {
+				n -= strings.Count(s.Host, "Slurm job") // which says it again
+			}
+			got = append(got, strconv.Itoa(n))
+		}
+		if strings.Join(got, " ") != want {
+			t.Errorf("%v: of List, Measure, Assemble %v were on the cluster, expected %s; it said\n%s", args, got, want, said)
+		}
+	}
+	away("0 4 0", "--set", "count=8", "--set", "loops=20000", "--slurm-over", "1us") // nothing is known: a first wave here
+	arrays := f.arrays()
+	away("0 0 0", "--set", "count=8", "--set", "loops=20001", "--slurm-over", "1h")
+	away("0 0 0", "--set", "count=8", "--set", "loops=20002", "--slurm-over", "1us", "--again", "Measure", "--again", "Assemble")
+	if f.arrays() != arrays {
+		t.Errorf("%d arrays were submitted of what stays here", f.arrays()-arrays)
+	}
+	away("0 8 1", "--set", "count=8", "--set", "loops=20003", "--slurm-over", "1us") // known from the run before
+	away("1 9 1", "--set", "count=9", "--set", "loops=20004", "--slurm-over", "0")
+}
+
+// TestTakingOver holds that jobs of a killed run that nobody needs are cancelled,
+// and that those needed are not submitted again.
+func TestTakingOver(t *testing.T) {
+	t.Parallel()
+	b := newBench(t, "--on", "slurm", "--slurm-over", "1us", "--slurm-poll", "50ms", "--slurm-chunk", "1ns", "--set", "count=8")
+	f := newFake(t, b)
+	f.set("stuck", "")
+	killed := func(args ...string) {
+		c, _ := b.start(args...)
+		b.until("jobs in the queue", func() bool { return f.queued() == 4 })
+		time.Sleep(300 * time.Millisecond) // so that it comes to wait
+		c.Process.Kill()
+		c.Wait()
+	}
+	killed("--set", "loops=20000")
+	killed("--set", "loops=20000") // finds them
+	if f.arrays() != 1 || f.queued() != 4 {
+		t.Errorf("%d arrays were submitted, %d elements are in the queue", f.arrays(), f.queued())
+	}
+	os.Remove(filepath.Join(f.dir, "stuck"))
+	_, said := b.run(command.ExitDone, "--set", "loops=20001")
+	if !strings.Contains(said, "of an earlier run were cancelled") || f.queued() != 0 {
+		t.Errorf("%d elements are in the queue; it said\n%s", f.queued(), said)
+	}
+	b.clean()
 }
 
 // TestMisbehaviour holds that a run comes to its results, or to an error that

@@ -222,11 +222,15 @@ func (r *round) look(ctx context.Context) {
 	}
 }
 
+// fewChunks are so few that all their files can be read all the time, although
+// squeue has not said yet that they have begun.
+const fewChunks = 64
+
 // read takes up what the chunks have written.
 func (r *round) read() {
 	written := map[*batch]map[int][]string{}
 	for _, ch := range r.chunks {
-		if ch.state == "PENDING" && len(ch.tails) == 0 || ch.wants == 0 && ch.finished {
+		if ch.state == "PENDING" && len(ch.tails) == 0 && len(r.chunks) > fewChunks || ch.wants == 0 && ch.finished {
 			continue
 		}
 		if written[ch.batch] == nil {
