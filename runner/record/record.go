@@ -160,7 +160,29 @@ func Read(path string) (*Record, error) {
 	if r.Format != Format {
 		return nil, fmt.Errorf("%s: the format is %q, expected %q", path, r.Format, Format)
 	}
+	if err := r.sound(); err != nil {
+		return nil, fmt.Errorf("%s is damaged: %w", path, err)
+	}
 	return r, nil
+}
+
+// sound demands that each key is that of its text and that each hash is one:
+// what a report needs must not be told from a file that is damaged.
+func (r *Record) sound() error {
+	var err error
+	r.each(func(c Computation) {
+		if _, e := store.ParseKey(c.Key); c.Key != "" && e != nil {
+			err = e
+		} else if c.Key != "" && c.KeyText != "" && c.KeyText.Key().String() != c.Key {
+			err = fmt.Errorf("the key %.12s is not that of its text", c.Key)
+		}
+		for _, v := range c.Results {
+			if _, e := store.ParseHash(v.Hash); e != nil {
+				err = e
+			}
+		}
+	})
+	return err
 }
 
 // Bytes is the content of run.json.
