@@ -66,6 +66,7 @@ type Engine struct {
 	watch   sync.Mutex    // guards Observe
 	heal    []sync.Mutex  // one per step: a step is healed by one caller at a time
 	state   sync.RWMutex  // guards outcome.Steps, which mending may rewrite
+	standby standby
 	notes   []string
 	differs []string
 
@@ -157,6 +158,7 @@ func (e *Engine) Run(ctx context.Context) *Outcome {
 	e.outcome = &Outcome{Inputs: make([]Input, len(e.Plan.Inputs)), Steps: make([]Step, len(e.Plan.Steps))}
 	e.slots, e.turn = make(chan struct{}, max(1, e.Jobs)), make(chan struct{}, 1)
 	e.heal = make([]sync.Mutex, len(e.Plan.Steps))
+	e.standby.waiting.Store(int64(len(e.Plan.Steps)))
 	var all sync.WaitGroup
 	for i := range e.outcome.Inputs {
 		in := &e.outcome.Inputs[i]
@@ -180,6 +182,7 @@ func (e *Engine) Run(ctx context.Context) *Outcome {
 		})
 	}
 	all.Wait()
+	e.standby.dismiss()
 	e.outcome.Interrupted = ctx.Err() != nil
 	e.outcome.Notes = e.Notes()
 	e.outcome.Differs = e.differs
@@ -330,6 +333,7 @@ func (e *Engine) readInput(ctx context.Context, in *Input, spec *plan.Input) err
 	}
 	defer h.give()
 	e.observe(Event{Step: in.Name, Input: true, Why: in.Why})
+	e.prepareNext(ctx)
 	w, err := worker.Start(ctx, e.Limits.Reading(total), files...)
 	if err != nil {
 		return err

@@ -28,6 +28,7 @@ var inputTypes = map[string]reflect.Type{
 // step looks up or computes step i, whose needs are all there.
 func (e *Engine) step(ctx context.Context, i int) {
 	out, spec := &e.outcome.Steps[i], &e.Plan.Steps[i]
+	e.standby.waiting.Add(-1)
 	var err error
 	if spec.Each >= 0 {
 		err = e.fanOut(ctx, i)
@@ -490,13 +491,9 @@ func (p *pool) call(ctx context.Context, args []worker.Arg, t *tray) (worker.Val
 		p.close()
 	}
 	if p.w == nil {
-		p.size = size
-		w, err := worker.Start(ctx, p.e.Limits.For(size))
-		if err != nil {
-			return worker.Values{}, err
-		}
-		p.w = w
-		if err := w.Load(p.e.Code); err != nil {
+		p.size = max(size, small/2)
+		var err error
+		if p.w, err = p.e.worker(ctx, size); err != nil {
 			return worker.Values{}, err
 		}
 	}
