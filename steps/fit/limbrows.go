@@ -41,7 +41,7 @@ func limbRows(priors Priors, setup Setup, channel lightcurve.Channel, byTable bo
 			case "u2":
 				warnings = append(warnings, "the prior on u2 is not used: the law is linear")
 			default:
-				return nil, nil, fmt.Errorf("%s belongs to the quadratic law, but the law is linear; give a prior for u1", p.Name)
+				return nil, nil, fmt.Errorf("%s belongs to a law of two coefficients, but the law is linear; give a prior for u1", p.Name)
 			}
 		}
 		rows = append(kept, held("u2", 0))

@@ -21,6 +21,14 @@ const (
 	leastSettling = 1e-6
 	mostSettling  = 1e3
 
+	// squareMargin keeps √q1 and q2 of the power-2 law off the sides of the unit
+	// square where its exponent is zero or infinite.
+	squareMargin = 1e-4
+	// Exponents of the power-2 law outside this range make a star without limb
+	// darkening, or one that is bright at its centre only.
+	leastExponent = 0.01
+	mostExponent  = 50
+
 	degree = math.Pi / 180
 )
 

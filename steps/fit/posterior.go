@@ -158,8 +158,8 @@ func (s *solution) derived() []Quantity {
 		})))
 	if space.name[slotLimb1] == "q1" {
 		out = append(out,
-			s.quantity("u1", "", "linear limb-darkening coefficient", from(func(p transit.Params) float64 { return p.Law.Coefficients[0] })),
-			s.quantity("u2", "", "quadratic limb-darkening coefficient", from(func(p transit.Params) float64 { return p.Law.Coefficients[1] })))
+			s.quantity("u1", "", "first limb-darkening coefficient", from(func(p transit.Params) float64 { return p.Law.Coefficients[0] })),
+			s.quantity("u2", "", "second limb-darkening coefficient", from(func(p transit.Params) float64 { return p.Law.Coefficients[1] })))
 	}
 	return out
 }

@@ -3,17 +3,30 @@ package fit
 import (
 	"fmt"
 	"math"
+	"slices"
+	"strings"
 
+	"rimlight/steps/limb"
 	"rimlight/steps/limbtable"
+	"rimlight/steps/nearest"
 	"rimlight/steps/systematics"
 )
 
-// Limb-darkening laws of [Setup].
+// Limb-darkening laws of [Setup]: those of package limb with up to two
+// coefficients.
 const (
-	LawQuadratic = "quadratic" // I(mu) = 1 - u1 (1 - mu) - u2 (1 - mu)^2
-	LawLinear    = "linear"    // I(mu) = 1 - u1 (1 - mu)
-	LawUniform   = "uniform"   // I(mu) = 1
+	LawUniform     = limb.Uniform
+	LawLinear      = limb.Linear
+	LawQuadratic   = limb.Quadratic
+	LawSquareRoot  = limb.SquareRoot
+	LawLogarithmic = limb.Logarithmic
+	LawPower2      = limb.Power2
 )
+
+// laws lists them.
+func laws() []string {
+	return []string{LawUniform, LawLinear, LawQuadratic, LawSquareRoot, LawLogarithmic, LawPower2}
+}
 
 // Policies for limb darkening of [Setup].
 const (
@@ -34,7 +47,7 @@ type Setup struct {
 	RadiusRatio  float64 // planet radius over stellar radius, a start value, above 0
 	Exposure     float64 // of one integration, s; 0 for an instantaneous one
 
-	LimbLaw    string          // "quadratic" (also when empty), "linear" or "uniform"
+	LimbLaw    string          // "quadratic" (also when empty) or another law of up to two coefficients
 	LimbPolicy string          // "free" (also when empty), "fixed" or "prior"
 	Limb       limbtable.Table // for the policies "fixed" and "prior"
 
@@ -51,8 +64,8 @@ func (s *Setup) check(what string) error {
 	if s.LimbPolicy == "" {
 		s.LimbPolicy = PolicyFree
 	}
-	if l := s.LimbLaw; l != LawQuadratic && l != LawLinear && l != LawUniform {
-		return fmt.Errorf("%s: limb-darkening law %.40q; expected quadratic, linear or uniform", what, l)
+	if !slices.Contains(laws(), s.LimbLaw) {
+		return fmt.Errorf("%s: limb-darkening law %.40q; expected one of %s%s", what, s.LimbLaw, strings.Join(laws(), ", "), nearest.Hint(s.LimbLaw, laws()))
 	}
 	if p := s.LimbPolicy; p != PolicyFree && p != PolicyFixed && p != PolicyPrior {
 		return fmt.Errorf("%s: limb-darkening policy %.40q; expected free, fixed or prior", what, p)

@@ -17,7 +17,7 @@ import (
 //	period, midTransit (offset from reference), axisRatio,
 //	inclination (cos² i) or impact (b²),
 //	eccentricity, periastron (rad), radiusRatio,
-//	u1, u2 or q1 (√q1), q2 (Kipping 2013), settlingTime (its logarithm)
+//	u1, u2 or q1 (√q1), q2 (see limb.FromSquare), settlingTime (its logarithm)
 type space struct {
 	value     [slots]float64 // coordinates: start of the free ones, values of the others
 	name      [slots]string  // the name each slot goes by in tables
@@ -25,6 +25,7 @@ type space struct {
 	free      []int          // free slots, increasing
 	reference float64        // mid-transit time that slotMid counts from
 	exposure  float64        // s
+	law       string         // of limb darkening, one of two coefficients; the quadratic one stands in for simpler ones
 }
 
 // newSpace takes start values from the setup and names the slots by the
@@ -41,6 +42,14 @@ func newSpace(setup Setup) *space {
 			"radiusRatio", "u1", "u2", "settlingTime"},
 		reference: setup.MidTransit,
 		exposure:  setup.Exposure,
+		law:       LawQuadratic,
+	}
+	switch setup.LimbLaw {
+	case LawSquareRoot, LawLogarithmic:
+		s.law = setup.LimbLaw
+	case LawPower2:
+		s.law = setup.LimbLaw
+		s.value[slotLimb1], s.value[slotLimb2] = 0.5, 0.7 // some star; an exponent of 0 is none
 	}
 	if setup.Trend.Settling {
 		s.value[slotSettling] = math.Log(setup.Trend.SettlingTime)
@@ -59,7 +68,7 @@ func (s *space) rename(slot int, name string) {
 		b := p.Orbit.ImpactParameter()
 		s.value[slotShape] = max(b*b, leastShape)
 	case "q1", "q2":
-		q1, q2, err := limb.ToSquare(limb.Quadratic, p.Law.Coefficients[0], p.Law.Coefficients[1])
+		q1, q2, err := limb.ToSquare(s.law, p.Law.Coefficients[0], p.Law.Coefficients[1])
 		if err != nil { // the start is nowhere near a star
 			q1, q2 = 0, 0.5
 		}
@@ -177,7 +186,15 @@ func (s *space) allowed(slot int) (lo, hi float64) {
 	case slotRadius:
 		return leastRadius, maxRadiusRatio
 	case slotLimb1, slotLimb2:
-		if s.name[slot][0] == 'q' {
+		square := s.name[slot][0] == 'q'
+		switch {
+		case s.law == LawPower2 && square && slot == slotLimb1:
+			return squareMargin, 1 - squareMargin
+		case s.law == LawPower2 && square:
+			return 0, 1 - squareMargin
+		case s.law == LawPower2 && slot == slotLimb2:
+			return leastExponent, mostExponent
+		case square:
 			return 0, 1
 		}
 	}
@@ -263,15 +280,26 @@ func (s *space) physical(v *[slots]float64) transit.Params {
 	}
 	u1, u2 := v[slotLimb1], v[slotLimb2]
 	if s.name[slotLimb1] == "q1" {
-		u1, u2, _, _ = limb.FromRoot(limb.Quadratic, v[slotLimb1], v[slotLimb2])
+		u1, u2, _ = s.fromSquare(v)
 	}
 	return transit.Params{
 		Orbit: orbit.Orbit{
 			Period: v[slotPeriod], MidTransit: s.reference + v[slotMid], AxisRatio: v[slotAxis],
 			Inclination: math.Acos(cosI), Eccentricity: e, Periastron: v[slotPeriastron],
 		},
-		RadiusRatio: v[slotRadius], Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{u1, u2}}, Exposure: s.exposure,
+		RadiusRatio: v[slotRadius], Law: limb.Law{Name: s.law, Coefficients: []float64{u1, u2}}, Exposure: s.exposure,
 	}
+}
+
+// fromSquare returns the limb-darkening coefficients at √q1 and q2 and their
+// derivatives, see [limb.FromRoot].
+func (s *space) fromSquare(v *[slots]float64) (u1, u2 float64, grad [4]float64) {
+	root, q2 := v[slotLimb1], v[slotLimb2]
+	if s.law == LawPower2 { // steps of differences may leave the range
+		root, q2 = min(max(root, squareMargin), 1-squareMargin), min(q2, 1-squareMargin)
+	}
+	u1, u2, grad, _ = limb.FromRoot(s.law, root, q2)
+	return u1, u2, grad
 }
 
 // chain turns the gradient of a light curve in the transit model's arguments, in
@@ -290,12 +318,14 @@ func (s *space) chain(v *[slots]float64, slot int) (weight [9]float64) {
 	case slotLimb1:
 		weight[slotLimb1] = 1
 		if s.name[slot] == "q1" {
-			weight[slotLimb1], weight[slotLimb2] = 2*v[slotLimb2], 1-2*v[slotLimb2]
+			_, _, grad := s.fromSquare(v)
+			weight[slotLimb1], weight[slotLimb2] = grad[0], grad[2]
 		}
 	case slotLimb2:
 		weight[slotLimb2] = 1
 		if s.name[slot] == "q2" {
-			weight[slotLimb1], weight[slotLimb2] = 2*v[slotLimb1], -2*v[slotLimb1]
+			_, _, grad := s.fromSquare(v)
+			weight[slotLimb1], weight[slotLimb2] = grad[1], grad[3]
 		}
 	default:
 		weight[slot] = 1

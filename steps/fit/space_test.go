@@ -16,7 +16,11 @@ func TestChain(t *testing.T) {
 		o := p.Orbit
 		return [9]float64{o.Period, o.MidTransit, o.AxisRatio, o.Inclination, o.Eccentricity, o.Periastron, p.RadiusRatio, p.Law.Coefficients[0], p.Law.Coefficients[1]}
 	}
-	for _, names := range [][]string{{"inclination", "u1"}, {"impact", "u1"}, {"inclination", "q1"}, {"impact", "q1"}} {
+	for _, names := range [][]string{
+		{"inclination", "u1", ""}, {"impact", "u1", ""}, {"inclination", "q1", ""}, {"impact", "q1", ""},
+		{"impact", "q1", LawSquareRoot}, {"impact", "q1", LawLogarithmic}, {"impact", "q1", LawPower2}, {"impact", "u1", LawPower2},
+	} {
+		setup.LimbLaw = names[2]
 		s := newSpace(setup)
 		s.value[slotLimb1], s.value[slotLimb2] = 0.4, 0.2
 		s.rename(slotShape, names[0])

@@ -23,7 +23,7 @@ const (
 // others are held at the priors' or else the setup's values. Names are period
 // (d), midTransit (BJD_TDB, d) or midTransitOffset (d, from setup.MidTransit),
 // axisRatio, inclination (deg) or impact, eccentricity, periastron (deg),
-// radiusRatio, u1 and u2 or q1 and q2 (the sampling of Kipping 2013), and
+// radiusRatio, u1 and u2 or q1 and q2 (the unit square of limb.FromSquare), and
 // settlingTime (d). The coefficients of the trend are always free and come last
 // in the posterior, under names such as "trend.constant", in units of the curve's
 // median flux. Limb darkening follows the priors where they name it, and

@@ -214,12 +214,12 @@ func TestWhiteErrors(t *testing.T) {
 	}{
 		{"period", curve, func(s *Setup) { s.Period = 0 }, nil, "white fit: period is 0; expected days above 0"},
 		{"NaN", curve, func(s *Setup) { s.MidTransit = math.NaN() }, nil, "midTransit is NaN"},
-		{"law", curve, func(s *Setup) { s.LimbLaw = "cubic" }, nil, `law "cubic"; expected quadratic, linear or uniform`},
+		{"law", curve, func(s *Setup) { s.LimbLaw = "cubic" }, nil, `law "cubic"; expected one of uniform, linear, quadratic, square-root, logarithmic, power-2`},
 		{"policy", curve, func(s *Setup) { s.LimbPolicy = "loose" }, nil, `policy "loose"; expected free, fixed or prior`},
 		{"no limb rows", curve, func(*Setup) {}, Priors{uniform("radiusRatio", 0, 1)}, "no rows for it; add u1 and u2"},
 		{"no table", curve, func(s *Setup) { s.LimbPolicy = PolicyFixed }, nil, "no limb-darkening table; give the input limb"},
 		{"regressor", curve, func(s *Setup) { s.Trend.Regressors = []string{"Z"} }, whitePriors(), "no auxiliary column Z"},
-		{"linear law", curve, func(s *Setup) { s.LimbLaw = LawLinear }, Priors{uniform("q1", 0, 1)}, "q1 belongs to the quadratic law"},
+		{"linear law", curve, func(s *Setup) { s.LimbLaw = LawLinear }, Priors{uniform("q1", 0, 1)}, "q1 belongs to a law of two coefficients"},
 		{"few samples", short, func(*Setup) {}, whitePriors(), "40 usable samples of 200"},
 		{"ragged", ragged, func(*Setup) {}, whitePriors(), "10 errors"},
 	} {
