@@ -16,8 +16,9 @@ func (o Orbit) Duration(radiusRatio float64) (t14, t23 float64) {
 // DurationGradient returns the duration from first to fourth contact, in days,
 // and its derivatives by (Period, MidTransit, AxisRatio, Inclination, e cos ω,
 // e sin ω, radius ratio); that by MidTransit is 0. It is an error when the orbit
-// is not valid, radiusRatio not finite and ≥ 0, or there is no transit. The
-// derivatives grow without bound towards orbits whose transits just graze.
+// is not valid, radiusRatio not finite and ≥ 0, there is no transit, or the planet
+// touches the star beside it, where contacts are not seen. The derivatives grow
+// without bound towards orbits whose transits just graze.
 func (o Orbit) DurationGradient(radiusRatio float64) (t14 float64, grad [7]float64, err error) {
 	if err := o.Validate(); err != nil {
 		return 0, grad, err
@@ -29,6 +30,11 @@ func (o Orbit) DurationGradient(radiusRatio float64) (t14 float64, grad [7]float
 	c := p.Contacts(radiusRatio)
 	if !c.Transit {
 		return 0, grad, fmt.Errorf("orbit: there is no transit at an impact parameter of %g and a radius ratio of %g", o.ImpactParameter(), radiusRatio)
+	}
+	for _, side := range []float64{-1, 1} {
+		if s, _ := p.separationAt(side, 0); !(s >= (1+radiusRatio)*(1+radiusRatio)) {
+			return 0, grad, fmt.Errorf("orbit: the planet touches the star beside it, %.6g stellar radii from its centre; the transit has no duration", math.Sqrt(s))
+		}
 	}
 	for i, at := range []float64{c.First, c.Fourth} {
 		sign := float64(2*i - 1)

@@ -21,7 +21,7 @@ const (
 	// maxAxisRatio is the largest axis ratio that a duration is turned into: light
 	// takes weeks over that of a star like the Sun.
 	maxAxisRatio = 1e12
-	// margin keeps the least axis ratio that is tried above 1/(1-e).
+	// margin allows for rounding at the ends of ranges.
 	margin = 1 + 1e-12
 )
 
@@ -94,6 +94,9 @@ func (e Elements) Orbit() (Orbit, error) {
 	}
 	o := Orbit{Period: e.Period, MidTransit: e.MidTransit, AxisRatio: e.Size, Inclination: e.Tilt, StarRadius: e.StarRadius}
 	o.Eccentricity, o.Periastron = e.shape()
+	if o.Eccentricity > maxEccentricity && o.Eccentricity < maxEccentricity*margin {
+		o.Eccentricity = maxEccentricity // the sum of squares was rounded
+	}
 	// Tests what does not depend on size and tilt.
 	some := o
 	some.AxisRatio, some.Inclination, some.StarRadius = 1e6, 0, 0
@@ -125,7 +128,10 @@ func (e Elements) Orbit() (Orbit, error) {
 		if !(e.RadiusRatio >= 0) || math.IsInf(e.RadiusRatio, 1) {
 			return Orbit{}, fmt.Errorf("orbit: RadiusRatio is %g, must be finite and not negative", e.RadiusRatio)
 		}
-		least := margin / (1 - o.Eccentricity)
+		// Outside of the star, and not touching it beside.
+		eccentric := o.Eccentricity
+		beside := (1 + e.RadiusRatio) * (1 + eccentric*math.Abs(math.Cos(o.Periastron))) / ((1 - eccentric) * (1 + eccentric))
+		least := margin * math.Max(1/(1-eccentric), beside)
 		if e.Basis.Tilt == ByImpact {
 			least = math.Max(least, e.Tilt/near)
 		}

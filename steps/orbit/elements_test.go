@@ -175,3 +175,49 @@ func BenchmarkElementsDuration(b *testing.B) {
 		e.Jacobian()
 	}
 }
+
+// TestElementsHard goes through the corners of the domain: nearly circular and
+// nearly parabolic orbits, close ones, central and grazing transits. Durations lead
+// back to the axis ratio, as well as grazing lets them, or there is an error, and
+// derivatives are numbers.
+func TestElementsHard(t *testing.T) {
+	rng := rand.New(rand.NewPCG(5, 15))
+	done := 0
+	for range 4000 {
+		r, e := 0.3*rng.Float64(), []float64{0, 1e-12, 1e-4, 0.3, 0.9, 0.99, 0.999}[rng.IntN(7)]
+		o := Orbit{Period: math.Pow(10, 3*rng.Float64()-0.5), Eccentricity: e, Periastron: []float64{0, math.Pi / 2, -math.Pi / 2, math.Pi, 6 * rng.Float64()}[rng.IntN(5)]}
+		o.AxisRatio = (1 + math.Pow(10, 3*rng.Float64()-2)) / (1 - e)
+		b := (1 + r) * []float64{0, rng.Float64(), 1 - 1e-3*rng.Float64(), 1 - 1e-9}[rng.IntN(4)]
+		o.Inclination = math.Acos(math.Min(1, b/(o.AxisRatio*o.near())))
+		for _, tilt := range []string{ByImpact, ByInclination} {
+			elements, err := o.Elements(Basis{ByDuration, tilt, ByRoot}, r)
+			if err != nil {
+				if !strings.Contains(err.Error(), "touches the star beside it") && !strings.Contains(err.Error(), "there is no transit") {
+					t.Errorf("%+v: %v", o, err)
+				}
+				continue
+			}
+			back, j, err := elements.Jacobian()
+			if err != nil {
+				if o.Inclination > 0 {
+					t.Errorf("%+v: %v", o, err)
+				}
+				continue
+			}
+			done++
+			for _, row := range j {
+				for _, x := range row {
+					if math.IsNaN(x) || math.IsInf(x, 0) {
+						t.Errorf("%+v, %s: derivatives %v", o, tilt, j)
+					}
+				}
+			}
+			if d := math.Abs(back.AxisRatio/o.AxisRatio - 1); !(d <= 1e-9 || b > 0.99*(1+r)) {
+				t.Errorf("%+v, %s: the axis ratio comes back as %.15g", o, tilt, back.AxisRatio)
+			}
+		}
+	}
+	if done < 3000 {
+		t.Errorf("only %d", done)
+	}
+}
