@@ -41,7 +41,10 @@ func UnmarshalValue(data []byte, v reflect.Value) error {
 // end, into v, which must be settable. It is [Open] and [UnmarshalValue], piece
 // by piece, so that it takes little memory besides the value. At most limit
 // bytes are read, and lengths that the bytes announce are held against it.
-func ReadSealed(src io.Reader, limit int64, v reflect.Value) error {
+//
+// Of a struct, fields whose names are given are passed over, almost unchecked,
+// and stay zero.
+func ReadSealed(src io.Reader, limit int64, v reflect.Value, but ...string) error {
 	if !v.CanSet() {
 		return errorf("cannot decode into a value that cannot be set")
 	}
@@ -50,6 +53,9 @@ func ReadSealed(src io.Reader, limit int64, v reflect.Value) error {
 		return err
 	}
 	r := readerOf(src, limit)
+	if len(but) > 0 && p.form == record {
+		r.top, r.but = p, but
+	}
 	err = p.readSealed(r, v)
 	if r.err != nil {
 		return r.err
@@ -271,7 +277,13 @@ func (p *plan) readRecord(r *reader, v reflect.Value) error {
 			return p.strange(r, i)
 		}
 		r.data = r.data[len(f.key):]
-		if err := f.plan.read(r, v.Field(f.index)); err != nil {
+		to := v.Field(f.index)
+		if r.top == p && r.passes(f.name) {
+			err = f.plan.pass(r, to.Type())
+		} else {
+			err = f.plan.read(r, to)
+		}
+		if err != nil {
 			return within("."+f.name, err)
 		}
 	}
@@ -279,6 +291,28 @@ func (p *plan) readRecord(r *reader, v reflect.Value) error {
 		return p.strange(r, len(p.fields))
 	}
 	return nil
+}
+
+// pass takes off the next item, of a type that has this plan.
+func (p *plan) pass(r *reader, t reflect.Type) error {
+	r.fill()
+	switch p.form {
+	case typed:
+		k, n, err := r.typedHeads()
+		if err != nil {
+			return err
+		}
+		return r.discard(n * k.width)
+	case list:
+		n, err := r.count(majorArray, p.what(), p.elem.min)
+		for i := 0; i < n && err == nil; i++ {
+			if err = p.elem.pass(r, t.Elem()); err != nil {
+				err = within(index(i), err)
+			}
+		}
+		return err
+	}
+	return p.read(r, reflect.New(t).Elem())
 }
 
 // strange says why the next key of a record is not that of field i.

@@ -15,6 +15,9 @@ type reader struct {
 	left int    // bytes that may yet come from the source
 	buf  []byte // what data is a part of, with a source
 	err  error  // of the source
+
+	top *plan    // of the value, with fields to be passed over
+	but []string // their names
 }
 
 // lookAhead is more than the longest head or name of a field takes.
@@ -131,6 +134,31 @@ func (r *reader) take(n uint64) ([]byte, error) {
 	b := r.data[:n]
 	r.data = r.data[n:]
 	return b, nil
+}
+
+// passes reports whether the field of a name is to be passed over.
+func (r *reader) passes(name string) bool {
+	for _, n := range r.but {
+		if n == name {
+			return true
+		}
+	}
+	return false
+}
+
+// discard takes off n bytes.
+func (r *reader) discard(n int) error {
+	for n > 0 {
+		if len(r.data) == 0 {
+			if r.refill(); len(r.data) == 0 {
+				return errorf("the bytes end in the middle of the value")
+			}
+		}
+		m := min(n, len(r.data))
+		r.data = r.data[m:]
+		n -= m
+	}
+	return nil
 }
 
 // gather takes off n bytes that do not lie ready.

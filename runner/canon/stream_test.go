@@ -95,6 +95,32 @@ func TestStreamRefuses(t *testing.T) {
 	}
 }
 
+// TestPassedOver holds that fields can be left out in reading.
+func TestPassedOver(t *testing.T) {
+	cube := smallCube()
+	cube.Flux = append(cube.Flux, make([]float64, 200_000))
+	layout, err := Layout(reflect.TypeOf(cube))
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := Marshal(cube)
+	if err != nil {
+		t.Fatal(err)
+	}
+	sealed := Seal("cube", layout, b)
+	var back lightcurve.Cube
+	if err := ReadSealed(iotest.HalfReader(bytes.NewReader(sealed)), int64(len(sealed)), reflect.ValueOf(&back).Elem(), "Flux", "Channels"); err != nil {
+		t.Fatal(err)
+	}
+	cube.Flux, cube.Channels = nil, nil
+	if want, got := reflect.ValueOf(cube), reflect.ValueOf(back); !equal(want, got) {
+		t.Errorf("got %+v", back)
+	}
+	if err := ReadSealed(bytes.NewReader(sealed[:len(sealed)-100]), int64(len(sealed)), reflect.ValueOf(&back).Elem(), "Flux"); err == nil {
+		t.Error("a value that is cut short was read")
+	}
+}
+
 // TestStreamMemory holds that values pass without a second copy of them.
 func TestStreamMemory(t *testing.T) {
 	cube := lightcurve.Cube{Flux: make([][]float64, 400)}

@@ -108,13 +108,7 @@ func inputOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outco
 		out.Hash = in.Results[0].Hash.String()
 		if len(in.Files) > 0 {
 			var err error
-			out.Value, err = shownValue(in.Results[0].Type, -1, func(each func(i int, sealed []byte) error) error {
-				b, err := e.InputBytes(ctx, i)
-				if err != nil {
-					return err
-				}
-				return each(0, b)
-			})
+			out.Value, err = shownValue(in.Results[0].Type, -1, func(each eachPart) error { return e.InputParts(ctx, i, each) })
 			if err != nil {
 				in := &outcome.Inputs[i]
 				in.State, in.Err = engine.Failed, fmt.Sprintf("it cannot be read from the store: %v", err)
@@ -163,7 +157,7 @@ func stepOf(ctx context.Context, e *engine.Engine, i int, outcome *engine.Outcom
 	for n, v := range s.Results {
 		r := reports.Result{Name: spec.Results[n].Name, Type: v.Type, Hash: v.Hash.String(), Size: v.Size}
 		var err error
-		r.Value, err = shownValue(v.Type, v.Len(), func(each func(i int, sealed []byte) error) error { return e.Parts(ctx, i, n, each) })
+		r.Value, err = shownValue(v.Type, v.Len(), func(each eachPart) error { return e.Parts(ctx, i, n, each) })
 		if err != nil { // the report cannot be what it should be
 			s.State, s.Err = engine.Failed, fmt.Sprintf("its result %s cannot be read: %v", r.Name, err)
 			out.State, out.Err = reports.State(s.State), s.Err

@@ -1,10 +1,12 @@
 package command
 
 import (
+	"io"
 	"reflect"
 
 	"rimlight/reports"
 	"rimlight/runner/canon"
+	"rimlight/runner/engine"
 	"rimlight/steps/check"
 	"rimlight/steps/figure"
 	"rimlight/steps/fit"
@@ -39,9 +41,18 @@ func types(samples ...any) map[string]reflect.Type {
 // type: such values are shown as trees, which grow in memory.
 const maxShown = 4 << 20
 
+// passed are fields that the report has no use for, of types that are mass data.
+// They are passed over.
+var passed = map[string][]string{
+	"rimlight/steps/lightcurve.Cube":  {"Flux", "Err"},
+	"rimlight/steps/lightcurve.Curve": {"Flux", "Err"},
+}
+
 // A reading hands over the parts of a result: the elements of a list, or else
 // the result as one part. It may begin again at part 0.
-type reading func(each func(i int, sealed []byte) error) error
+type reading func(each eachPart) error
+
+type eachPart = func(i int, p engine.Part) error
 
 // shownValue turns a result into Go for the report; nil when it is not to be
 // shown. It has n parts, or is no list when n is negative. Of light curves and
@@ -55,13 +66,13 @@ func shownValue(typ string, n int, read reading) (any, error) {
 	sum, isLight := reports.Lights(typ)
 	switch {
 	case n < 0:
-		err = read(func(_ int, sealed []byte) error { out = decode(sealed); return nil })
+		err = read(func(_ int, p engine.Part) error { out = decode(p); return nil })
 	case isLight:
-		err = read(func(i int, sealed []byte) error {
+		err = read(func(i int, p engine.Part) error {
 			if i == 0 {
 				sum, _ = reports.Lights(typ)
 			}
-			if one, ok := reports.LightOf(decode(sealed)); ok {
+			if one, ok := reports.LightOf(decode(p)); ok {
 				sum.Add(one)
 			}
 			return nil
@@ -86,8 +97,8 @@ func shownValue(typ string, n int, read reading) (any, error) {
 func shownSlice(slice reflect.Type, n int, read reading) (any, error) {
 	list := reflect.MakeSlice(slice, n, n)
 	good := true
-	err := read(func(i int, sealed []byte) error {
-		one := decode(sealed)
+	err := read(func(i int, p engine.Part) error {
+		one := decode(p)
 		if good = i < n && reflect.TypeOf(one) == slice.Elem() && (good || i == 0); good {
 			list.Index(i).Set(reflect.ValueOf(one))
 		}
@@ -103,13 +114,13 @@ func shownSlice(slice reflect.Type, n int, read reading) (any, error) {
 // large.
 func shownTree(read reading) (any, error) {
 	var tree []any
-	size := 0
-	err := read(func(i int, sealed []byte) error {
+	size := int64(0)
+	err := read(func(i int, p engine.Part) error {
 		if i == 0 {
 			tree, size = nil, 0
 		}
-		if size += len(sealed); size <= maxShown {
-			tree = append(tree, decode(sealed))
+		if size += p.Size; size <= maxShown {
+			tree = append(tree, decode(p))
 		}
 		return nil
 	})
@@ -119,21 +130,26 @@ func shownTree(read reading) (any, error) {
 	return tree, nil
 }
 
-// decode turns a sealed value into Go; nil when it is not to be shown.
-func decode(sealed []byte) any {
-	typ, layout, data, err := canon.Open(sealed)
+// decode turns a kept value into Go; nil when it is not to be shown.
+func decode(p engine.Part) any {
+	if t, ok := shown[p.Type]; ok {
+		if want, err := canon.Layout(t); err == nil && want == p.Layout {
+			v := reflect.New(t).Elem()
+			if canon.ReadSealed(p, p.Size, v, passed[p.Type]...) != nil {
+				return nil
+			}
+			return v.Interface()
+		}
+	}
+	if p.Size > maxShown {
+		return nil
+	}
+	b, err := io.ReadAll(p)
 	if err != nil {
 		return nil
 	}
-	if t, ok := shown[typ]; ok {
-		if want, err := canon.Layout(t); err == nil && want == layout {
-			v := reflect.New(t)
-			if canon.UnmarshalValue(data, v.Elem()) == nil {
-				return v.Elem().Interface()
-			}
-		}
-	}
-	if len(data) > maxShown {
+	_, _, data, err := canon.Open(b)
+	if err != nil {
 		return nil
 	}
 	v, err := canon.Tree(data, maxShown)

@@ -1,12 +1,14 @@
 package command
 
 import (
+	"bytes"
 	"reflect"
 	"strings"
 	"testing"
 
 	"rimlight/reports"
 	"rimlight/runner/canon"
+	"rimlight/runner/engine"
 	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
@@ -20,7 +22,7 @@ func listOf[T any](t *testing.T, typ string, items ...T) (slice string, n int, r
 	if err != nil {
 		t.Fatal(err)
 	}
-	return "[]" + typ, len(items), func(each func(i int, sealed []byte) error) error {
+	return "[]" + typ, len(items), func(each eachPart) error {
 		for attempt := range 2 {
 			for i, item := range items {
 				if attempt == 0 && i > len(items)/2 {
@@ -30,7 +32,8 @@ func listOf[T any](t *testing.T, typ string, items ...T) (slice string, n int, r
 				if err != nil {
 					return err
 				}
-				if err := each(i, canon.Seal(typ, layout, b)); err != nil {
+				b = canon.Seal(typ, layout, b)
+				if err := each(i, engine.Part{Type: typ, Layout: layout, Size: int64(len(b)), Reader: bytes.NewReader(b)}); err != nil {
 					return err
 				}
 			}
@@ -64,5 +67,24 @@ func TestShownValue(t *testing.T) {
 	typ, n, read = listOf(t, "main.text", large, large)
 	if got, err := shownValue(typ, n, read); err != nil || got != nil {
 		t.Error("a large value of a recipe's own type is shown")
+	}
+}
+
+// TestPassedFields holds that the report has no use for the fields that it
+// passes over.
+func TestPassedFields(t *testing.T) {
+	cube := lightcurve.Cube{Time: []float64{1, 2}, Channels: []lightcurve.Channel{{Index: 1, Lo: 1, Hi: 2}}, Flux: [][]float64{{1, 2}}, Err: [][]float64{{1, 1}},
+		Mask: [][]lightcurve.Flag{{0, lightcurve.Outlier}}, Aux: []lightcurve.Series{{Name: "X", Value: []float64{1, 2}}}}
+	curve := lightcurve.Curve{Channel: cube.Channels[0], Time: cube.Time, Flux: cube.Flux[0], Err: cube.Err[0], Mask: cube.Mask[0], Aux: cube.Aux}
+	_, _, cubes := listOf(t, "rimlight/steps/lightcurve.Cube", cube)
+	_, _, curves := listOf(t, "rimlight/steps/lightcurve.Curve", curve)
+	for typ, c := range map[string]struct {
+		value any
+		read  reading
+	}{"rimlight/steps/lightcurve.Cube": {cube, cubes}, "rimlight/steps/lightcurve.Curve": {curve, curves}} {
+		want, _ := reports.LightOf(c.value)
+		if got, err := shownValue(typ, -1, c.read); err != nil || !reflect.DeepEqual(got, want) {
+			t.Errorf("%s is shown as %+v, %v, expected %+v", typ, got, err, want)
+		}
 	}
 }

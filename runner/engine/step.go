@@ -96,27 +96,6 @@ func (e *Engine) mend(ctx context.Context, step int, cause error) error {
 	return e.plain(ctx, step)
 }
 
-// Bytes reads result number result of a step, in its envelope, mending the
-// store when it is damaged. It may be called after Run.
-func (e *Engine) Bytes(ctx context.Context, step, result int) ([]byte, error) {
-	return e.bytes(ctx, plan.Arg{Source: plan.FromResult, Step: step, Result: result})
-}
-
-// InputBytes reads an input as read, in its envelope, likewise.
-func (e *Engine) InputBytes(ctx context.Context, input int) ([]byte, error) {
-	return e.bytes(ctx, plan.Arg{Source: plan.FromInput, Input: input})
-}
-
-func (e *Engine) bytes(ctx context.Context, a plan.Arg) ([]byte, error) {
-	b, err := sealed(e.Store, e.argument(a))
-	if damaged(err) {
-		if err = e.mendArgument(ctx, a, err); err == nil {
-			b, err = sealed(e.Store, e.argument(a))
-		}
-	}
-	return b, err
-}
-
 // plain looks up or computes a step that is no fan-out.
 func (e *Engine) plain(ctx context.Context, i int) error {
 	spec := &e.Plan.Steps[i]
