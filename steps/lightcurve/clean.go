@@ -33,9 +33,9 @@ func (r RunningMedian) check(what string) error {
 	return nil
 }
 
-// MaskOutliers returns a copy of raw in which dead channels carry [Excluded]
-// (see [MaskDead]) and samples far from their neighbours in time carry
-// [Outlier]. Fluxes are left as they are: outliers are masked, not replaced.
+// MaskOutliers returns raw with masks of its own, in which dead channels carry
+// [Excluded] (see [MaskDead]) and samples far from their neighbours in time
+// carry [Outlier]. Fluxes are left as they are: outliers are masked, not replaced.
 //
 // The standard deviation is that of the whole channel about its running median,
 // from the median absolute deviation. Masked samples take no part, and the

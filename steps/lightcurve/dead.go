@@ -7,8 +7,8 @@ package lightcurve
 // lost by leaving such a channel out, and noise about zero never passes.
 const deadRatio = 3
 
-// MaskDead returns a copy of raw in which every sample of a dead channel carries
-// [Excluded]. A channel is dead when, over all its finite fluxes outside other
+// MaskDead returns raw with masks of its own, in which every sample of a dead
+// channel carries [Excluded]. A channel is dead when, over all its finite fluxes outside other
 // excluded samples,
 //
 //   - none is above zero, or
@@ -23,7 +23,7 @@ func MaskDead(raw Cube) (Cube, error) {
 	if err := raw.checkShape("mask dead channels"); err != nil {
 		return Cube{}, err
 	}
-	out := raw.Clone()
+	out := raw.ownMasks()
 	for j := range out.Flux {
 		if dead(out.Flux[j], out.Mask[j]) {
 			for i := range out.Mask[j] {

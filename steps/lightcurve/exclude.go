@@ -7,8 +7,8 @@ import (
 
 const minutesPerDay = 24 * 60
 
-// Exclude returns a copy of cube in which the integrations with from <= time <=
-// to (BJD_TDB, days) carry [Excluded] in every channel. A range that meets no
+// Exclude returns cube with masks of its own, in which the integrations with
+// from <= time <= to (BJD_TDB, days) carry [Excluded] in every channel. A range that meets no
 // integration is an error, because it is most often a wrong time scale.
 func Exclude(cube Cube, from, to float64) (Cube, error) {
 	const what = "exclude a time range"
@@ -18,7 +18,7 @@ func Exclude(cube Cube, from, to float64) (Cube, error) {
 	if !(from <= to) {
 		return Cube{}, fmt.Errorf("%s: the range goes from %g to %g; expected from <= to", what, from, to)
 	}
-	out := cube.Clone()
+	out := cube.ownMasks()
 	found := false
 	for i, t := range out.Time {
 		if t < from || t > to {
@@ -35,8 +35,8 @@ func Exclude(cube Cube, from, to float64) (Cube, error) {
 	return out, nil
 }
 
-// SkipStart returns a copy of cube in which the integrations of the first
-// minutes after the first one carry [Excluded]; 0 excludes none. It is an error
+// SkipStart returns cube with masks of its own, in which the integrations of the
+// first minutes after the first one carry [Excluded]; 0 excludes none. It is an error
 // to skip everything.
 func SkipStart(cube Cube, minutes float64) (Cube, error) {
 	const what = "skip the start"
@@ -46,7 +46,7 @@ func SkipStart(cube Cube, minutes float64) (Cube, error) {
 	if !(minutes >= 0) || math.IsInf(minutes, 1) {
 		return Cube{}, fmt.Errorf("%s: %g min; expected a number from 0 up", what, minutes)
 	}
-	out := cube.Clone()
+	out := cube.ownMasks()
 	if minutes == 0 || len(out.Time) == 0 {
 		return out, nil
 	}

@@ -7,6 +7,11 @@
 // such as a pointing offset. A sample that must not be used is masked, never
 // replaced: its [Flag] says why.
 //
+// No function writes into what it is given. What a function of cleaning leaves
+// as it is, its result shares with its argument, so that masking a cube does not
+// take the memory of a second one; whoever wants to write into fluxes or errors
+// has a copy made first, see [Cube.Clone].
+//
 // Units: times are BJD_TDB in days, wavelengths micrometres; fluxes and their
 // errors share one unit, instrumental or relative.
 package lightcurve

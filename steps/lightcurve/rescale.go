@@ -29,9 +29,11 @@ func RescaleErrors(cube Cube) (scaled Cube, factors []float64, err error) {
 	if err := cube.checkShape("rescale errors"); err != nil {
 		return Cube{}, nil, err
 	}
-	out := cube.Clone()
+	out := cube.ownMasks()
+	out.Err = slices.Clone(cube.Err)
 	factors = make([]float64, len(out.Flux))
 	for j := range out.Flux {
+		out.Err[j] = slices.Clone(out.Err[j])
 		factors[j] = rescale(out.Flux[j], out.Err[j], out.Mask[j])
 	}
 	return out, factors, nil

@@ -27,6 +27,15 @@ func (c Cube) Clone() Cube {
 	return out
 }
 
+// ownMasks is c with masks of its own. All else it shares with c.
+func (c Cube) ownMasks() Cube {
+	c.Mask = slices.Clone(c.Mask)
+	for j := range c.Mask {
+		c.Mask[j] = slices.Clone(c.Mask[j])
+	}
+	return c
+}
+
 func cloneSeries(aux []Series) []Series {
 	out := slices.Clone(aux)
 	for k := range out {

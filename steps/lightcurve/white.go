@@ -100,21 +100,23 @@ func levelAndWeight(flux, sigma []float64, mask []Flag) (level, weight float64) 
 }
 
 // Curves returns the channels of a cube as light curves of their own, in order.
-// They share no memory with the cube. A cube whose slices differ in length gives
+// They share no memory with the cube, but one copy of its times and auxiliaries
+// with each other. A cube whose slices differ in length gives
 // none; [MaskDead] and all other steps of cleaning say what is wrong with it.
 func Curves(cube Cube) []Curve {
 	if cube.checkShape("curves") != nil {
 		return nil
 	}
 	out := make([]Curve, len(cube.Channels))
+	time, aux := slices.Clone(cube.Time), cloneSeries(cube.Aux)
 	for j, channel := range cube.Channels {
 		out[j] = Curve{
 			Channel: channel,
-			Time:    slices.Clone(cube.Time),
+			Time:    time,
 			Flux:    slices.Clone(cube.Flux[j]),
 			Err:     slices.Clone(cube.Err[j]),
 			Mask:    slices.Clone(cube.Mask[j]),
-			Aux:     cloneSeries(cube.Aux),
+			Aux:     aux,
 		}
 	}
 	return out
