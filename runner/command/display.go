@@ -41,10 +41,12 @@ type display struct {
 	of    string // the step that the bar is of
 	tenth map[string]int
 	where map[string]string // that a step was last said to be computed
+	paces map[string]pace
+	now   func() time.Time
 }
 
 func (a *app) display(p *plan.Plan, o *options) *display {
-	return &display{app: a, opts: o, total: len(p.Inputs) + len(p.Steps), tenth: map[string]int{}, where: map[string]string{}}
+	return &display{app: a, opts: o, total: len(p.Inputs) + len(p.Steps), tenth: map[string]int{}, where: map[string]string{}, paces: map[string]pace{}, now: time.Now}
 }
 
 // event is called for one event at a time.
@@ -80,15 +82,16 @@ func (d *display) elsewhere(ev engine.Event) {
 
 // progress shows how far a fan-out has come.
 func (d *display) progress(ev engine.Event) {
+	left := leftText(d.left(ev))
 	if d.app.terminal {
 		if d.of != ev.Step {
 			d.dropBar()
 			d.of = ev.Step
 			d.bar = progressbar.NewOptions(ev.Total, progressbar.OptionSetWriter(d.app.stderr), progressbar.OptionSetDescription(fmt.Sprintf("%-18s", ev.Step)),
-				progressbar.OptionSetWidth(30), progressbar.OptionShowCount(), progressbar.OptionSetPredictTime(true), progressbar.OptionClearOnFinish(),
+				progressbar.OptionSetWidth(30), progressbar.OptionShowCount(), progressbar.OptionSetPredictTime(false), progressbar.OptionClearOnFinish(),
 				progressbar.OptionThrottle(100*time.Millisecond))
 		}
-		d.bar.Describe(fmt.Sprintf("%-18s", strings.TrimSpace(ev.Step+" "+ev.Where)))
+		d.bar.Describe(fmt.Sprintf("%-18s %-18s", strings.TrimSpace(ev.Step+" "+ev.Where), left))
 		d.bar.Set(ev.Done)
 		return
 	}
@@ -98,7 +101,7 @@ func (d *display) progress(ev engine.Event) {
 	}
 	if t := 10 * ev.Done / ev.Total; t > d.tenth[ev.Step] && ev.Done < ev.Total {
 		d.tenth[ev.Step] = t
-		fmt.Fprintf(d.app.stderr, "         %-18s %d of %d\n", ev.Step, ev.Done, ev.Total)
+		fmt.Fprintln(d.app.stderr, strings.TrimRight(fmt.Sprintf("         %-18s %d of %d  %s", ev.Step, ev.Done, ev.Total, left), " "))
 	}
 }
 
@@ -149,6 +152,11 @@ func (d *display) json(ev engine.Event) {
 	m := map[string]any{"event": kind, "name": ev.Step, "state": state, "finished": d.done, "of": d.total}
 	if ev.Absent {
 		m["absent"] = true
+	}
+	if ev.State == "" && ev.Total > 0 {
+		if left, ok := d.left(ev); ok {
+			m["seconds_left"] = left.Seconds()
+		}
 	}
 	if ev.Where != "" {
 		m["where"] = ev.Where

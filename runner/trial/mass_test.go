@@ -284,7 +284,7 @@ func TestMass(t *testing.T) {
 		}
 	}), began)
 	if status := c.ProcessState.ExitCode(); status != 130 && status != 0 {
-		t.Fatalf("exit status %d after an interruption", status)
+		t.Fatalf("exit status %d after an interruption; it said\n%s", status, out.String())
 	}
 	kept := elementsDone(b.store)
 
