@@ -76,7 +76,7 @@ const maxText = 4096
 // descriptors. The worker is killed when ctx ends. Where a layer of confinement
 // is missing that the options require, the error is an *[UnconfinedError].
 func Start(ctx context.Context, o Options, files ...*os.File) (*Worker, error) {
-	o = o.For(0)
+	o = o.For(o.given)
 	w, err := start(ctx, o, files)
 	if err != nil {
 		return nil, err

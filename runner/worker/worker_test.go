@@ -234,7 +234,10 @@ func TestResultsTooLarge(t *testing.T) {
 }
 
 func TestConfinement(t *testing.T) {
-	w := begin(t, Options{Require: os.Getenv("RIMLIGHT_REQUIRE") != ""})
+	w := begin(t, Options{Require: os.Getenv("RIMLIGHT_REQUIRE") != "", Memory: 1 << 30}.For(1<<30))
+	if got := w.options.results(); got != 1<<28+4<<30 {
+		t.Errorf("results may have %d bytes", got)
+	}
 	if len(w.Confinement()) < 8 {
 		t.Errorf("layers: %v", w.Confinement())
 	}
