@@ -21,8 +21,12 @@ type tray struct {
 	layout []string // of each part
 }
 
-// trayful is how many bytes stay in memory.
-const trayful = 16 << 20
+// trayful is how many bytes stay in memory, and draftOverhead what counts for a
+// draft besides its content.
+const (
+	trayful       = 16 << 20
+	draftOverhead = 1 << 10
+)
 
 // Part adds to the object that is coming in. Its envelope is in the first part.
 func (t *tray) Part(b []byte) error {
@@ -46,7 +50,7 @@ func (t *tray) End() error {
 		return errors.New("the worker's answer is malformed: an object without content")
 	}
 	t.parts = append(t.parts, part{t.now.Hash(), t.now.Size()})
-	t.drafts, t.size, t.now = append(t.drafts, t.now), t.size+t.now.Held(), nil
+	t.drafts, t.size, t.now = append(t.drafts, t.now), t.size+t.now.Held()+draftOverhead, nil
 	if t.size < trayful {
 		return nil
 	}
