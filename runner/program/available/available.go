@@ -82,6 +82,9 @@ func Names() []string {
 // withheld holds the functions of available packages that a recipe must not
 // call, with the reason or what to write instead.
 var withheld = map[string]string{
+	"rimlight/steps/lightcurve.OpenCSV":            "recipes open no files; declare an input",
+	"rimlight/steps/lightcurve.OpenFITS":           "recipes open no files; declare an input",
+	"rimlight/steps/lightcurve.OpenFITSComparison": "recipes open no files; declare an input",
 	"fmt.Print":              "a step has no output but its results; return the text",
 	"fmt.Printf":             "a step has no output but its results; return the text",
 	"fmt.Println":            "a step has no output but its results; return the text",
