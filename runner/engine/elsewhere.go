@@ -240,7 +240,7 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 			}
 			w.Units = append(w.Units, u)
 		}
-		var again []int
+		var again, untried []int
 		err := e.Elsewhere.Do(enough, w, func(unit int, err error) {
 			n := todo[unit]
 			c := &comps[n]
@@ -254,6 +254,7 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 			var f *Fault
 			switch {
 			case errors.Is(err, ErrUntried):
+				untried = append(untried, n)
 				return
 			case errors.As(err, &f):
 				c.Log = f.Log
@@ -279,7 +280,7 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 		if err := e.mendFor(ctx, spec, items, again); err != nil {
 			return err
 		}
-		todo = again
+		todo = append(again, untried...) // which were left alone because of those
 	}
 }
 

@@ -146,6 +146,36 @@ func TestWhereStepsGo(t *testing.T) {
 	away("1 9 1", "--set", "count=9", "--set", "loops=20004", "--slurm-over", "0")
 }
 
+// TestDamagedArgument holds that what a node finds damaged is mended by the
+// parent, and then computed with.
+func TestDamagedArgument(t *testing.T) {
+	t.Parallel()
+	args := []string{"--set", "count=8", "--set", "loops=20001"}
+	undisturbed := newBench(t)
+	undisturbed.run(command.ExitDone, "--set", "count=8", "--set", "loops=20000")
+	undisturbed.run(command.ExitDone, args...)
+	b := newBench(t)
+	newFake(t, b)
+	b.run(command.ExitDone, "--set", "count=8", "--set", "loops=20000")
+	objects, _ := filepath.Glob(b.path("rimlight.store", "objects", "*", "*"))
+	for _, o := range objects {
+		text, _ := os.ReadFile(o)
+		if lines := strings.Split(string(text), "\n"); strings.HasPrefix(string(text), "rimlight list 1\ntype []rimlight/steps/lightcurve.Curve\n") {
+			element := strings.Fields(lines[6])[0]
+			name := b.path("rimlight.store", "objects", element[:2], element)
+			os.Chmod(name, 0o644)
+			os.Truncate(name, 40)
+		}
+	}
+	_, said := b.run(command.ExitDone, append(args, "--on", "slurm", "--slurm-over", "1us", "--slurm-poll", "50ms")...)
+	if got, want := b.tree(), undisturbed.tree(); got != want {
+		t.Errorf("the results are\n%s\nexpected\n%s", got, want)
+	}
+	if !strings.Contains(said, "damaged") && !strings.Contains(said, "missing") {
+		t.Errorf("it did not say that something was damaged:\n%s", said)
+	}
+}
+
 // TestTakingOver holds that jobs of a killed run that nobody needs are cancelled,
 // and that those needed are not submitted again.
 func TestTakingOver(t *testing.T) {

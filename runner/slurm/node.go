@@ -72,6 +72,9 @@ func (b *batch) carry(ctx context.Context, n int, who string, p *reporter, log i
 	if w.Units, err = b.units(n); err != nil {
 		return err
 	}
+	if !store.Is(w.Store) {
+		return fmt.Errorf("there is no store %s on %s: it has to be on a folder that all nodes see under the same path", w.Store, who)
+	}
 	s, err := store.Open(w.Store)
 	if err != nil {
 		return err

@@ -12,6 +12,7 @@ import (
 	"time"
 
 	"rimlight/runner/engine"
+	"rimlight/runner/plan"
 	"rimlight/runner/worker"
 )
 
@@ -156,6 +157,16 @@ func TestChunkRefusals(t *testing.T) {
 		return "not refused"
 	}
 	if got := refused(); !strings.Contains(got, "would not compute the same") || !strings.Contains(got, "library changed: steps/fit") {
+		t.Errorf("it was %q", got)
+	}
+	lib, err := plan.OpenLibrary()
+	if err != nil {
+		t.Fatal(err)
+	}
+	b.work.Program = plan.Fingerprint(lib, plan.ReadBuild())
+	os.WriteFile(b.path(progressName(0)), nil, 0o644)
+	b.writeJSON(workName, b.work)
+	if got := refused(); !strings.Contains(got, "there is no store") {
 		t.Errorf("it was %q", got)
 	}
 	os.WriteFile(b.path(progressName(0)), nil, 0o644)

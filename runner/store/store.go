@@ -75,6 +75,12 @@ func Open(dir string) (*Store, error) {
 	return s, checkMark(dir, string(mark))
 }
 
+// Is reports whether a folder is a store, of whatever format.
+func Is(dir string) bool {
+	_, err := os.Stat(filepath.Join(dir, markFile))
+	return err == nil
+}
+
 // Dir is the folder of the store, an absolute path.
 func (s *Store) Dir() string { return s.dir }
 
