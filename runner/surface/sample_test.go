@@ -287,6 +287,7 @@ func newSamples() *samples {
 		"limbtable.ReadIntensities":     {{[]byte(intensityCSV)}},
 		"limbtable.ReadThroughput":      {{[]byte(throughputCSV)}},
 		"limbtable.Band":                {{intensities}, {throughput, limbtable.Throughput{}}, {1.0, 1.5}, {2.0, 3.0}, {limbtable.Photons, limbtable.Energy}},
+		"limbtable.SteepestEdge":        {{profile}},
 		"limbtable.FitLaw":              {{profile}, {limbtable.Choice{}, choice}},
 		"limbtable.Coefficients":        {{intensities}, {throughput}, {channelsOf}, {limbtable.Photons}, {limbtable.Choice{}, choice}},
 		"spectrum.ReadCSV":              {{spectrum.CSV(spec)}},

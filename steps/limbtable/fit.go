@@ -38,7 +38,8 @@ type Choice struct {
 	Law    string  // see package limb; "quadratic" when empty
 	Grid   string  // [GridTable] (also when empty), [GridMu] or [GridRadius]; the last two interpolate in the profile
 	Points int     // of the last two grids, 2 to 10000; 0 means 100
-	MuCut  float64 // places with a mu below are left out, from 0, below 1
+	Edge   float64 // distance from the centre, in radii of the table's disc, that counts as the edge of the star; above 0, 0 means 1; see [SteepestEdge]
+	MuCut  float64 // places with a mu, counted from that edge, below are left out; from 0, below 1
 	Weight string  // [WeightEqual] (also when empty) or [WeightArea]
 }
 
@@ -50,7 +51,7 @@ type Fitted struct {
 	Largest   float64   // law minus profile where its size is largest
 	LargestMu float64   // where that is
 	Mean      float64   // mean of law minus profile over the area of the disc that the places stand for
-	Mu        []float64 // the places, increasing
+	Mu        []float64 // the places, increasing, counted from the edge of the choice
 	Intensity []float64 // of the profile there
 	Model     []float64 // of the law there
 }
@@ -82,6 +83,12 @@ func (c *Choice) check() error {
 	if c.Points < 2 || c.Points > mostPoints {
 		return fmt.Errorf("choice: Points is %d, expected 2 to %d", c.Points, mostPoints)
 	}
+	if c.Edge == 0 {
+		c.Edge = 1
+	}
+	if !(c.Edge > 0 && c.Edge <= 1) {
+		return fmt.Errorf("choice: Edge is %g, expected a number above 0, up to 1", c.Edge)
+	}
 	if !(c.MuCut >= 0 && c.MuCut < 1) {
 		return fmt.Errorf("choice: MuCut is %g, expected a number from 0, below 1", c.MuCut)
 	}
@@ -110,17 +117,14 @@ func fitLaw(p Profile, c Choice) (Fitted, error) {
 	if err := c.check(); err != nil {
 		return Fitted{}, err
 	}
-	n := len(p.Mu)
-	if n < 2 || len(p.Intensity) != n {
-		return Fitted{}, fmt.Errorf("the profile has %d values of mu and %d intensities, expected as many and at least 2", n, len(p.Intensity))
+	if err := p.check(); err != nil {
+		return Fitted{}, err
 	}
-	for i, mu := range p.Mu {
-		if !(mu >= 0 && mu <= 1) || i > 0 && !(mu > p.Mu[i-1]) || !(p.Intensity[i] >= 0 && p.Intensity[i] <= mostIntensity) {
-			return Fitted{}, fmt.Errorf("the profile has intensity %g at mu %g after %g, expected mu increasing from 0 to 1 and intensities from 0 to %g", p.Intensity[i], mu, p.Mu[max(i-1, 0)], mostIntensity)
+	if c.Edge < 1 {
+		p = p.within(c.Edge)
+		if len(p.Mu) < 2 {
+			return Fitted{}, fmt.Errorf("the profile has no place off the centre within an edge at %g", c.Edge)
 		}
-	}
-	if p.Mu[n-1] != 1 || p.Intensity[n-1] != 1 {
-		return Fitted{}, fmt.Errorf("the profile ends with intensity %g at mu %g, expected 1 at 1", p.Intensity[n-1], p.Mu[n-1])
 	}
 	f := Fitted{}
 	if err := f.place(p, c); err != nil {
@@ -155,9 +159,6 @@ func fitLaw(p Profile, c Choice) (Fitted, error) {
 	f.RMS, f.Mean = math.Sqrt(squares/sum), mean/whole
 	return f, nil
 }
-
-// mostIntensity bounds what a profile may hold, relative to the centre.
-const mostIntensity = 1e6
 
 // place chooses where law and profile are compared.
 func (f *Fitted) place(p Profile, c Choice) error {

@@ -19,6 +19,7 @@ func init() {
 		"Read":            reflect.ValueOf(limbtable.Read),
 		"ReadIntensities": reflect.ValueOf(limbtable.ReadIntensities),
 		"ReadThroughput":  reflect.ValueOf(limbtable.ReadThroughput),
+		"SteepestEdge":    reflect.ValueOf(limbtable.SteepestEdge),
 		"Table":           reflect.ValueOf((*limbtable.Table)(nil)),
 		"Throughput":      reflect.ValueOf((*limbtable.Throughput)(nil)),
 	}
