@@ -63,14 +63,13 @@ type edge struct {
 
 // levels are the rules by tolerance, loosest first. The errors of the steps in x
 // are those found, for exponents of μ from 0.2, against 30-digit integrals at all
-// distances from the contacts: 4e-10, 2e-11 and 2e-13 times 2r/π in the derivatives
-// for √μ, less for higher powers and for the flux.
+// distances from the contacts: 4e-11 and 6e-12 times 2r/π in the derivatives for
+// μ^0.2, 3e-12 and 2e-13 for √μ, less for higher powers and for the flux.
 var levels = []struct {
 	tolerance float64
 	nodes     nodes
 }{
-	{DefaultTolerance, newNodes(25, 16, 32, 0.1, 35, 24, 13)},
-	{1e-10, newNodes(29, 32, 64, 0.08, 45, 28, 15)},
+	{DefaultTolerance, newNodes(27, 16, 32, 0.07, 52, 28, 15)},
 	{LeastTolerance, newNodes(34, 32, 128, 0.06, 62, 36, 18)},
 }
 

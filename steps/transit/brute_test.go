@@ -159,11 +159,10 @@ func TestFluxRandom(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		tolerance, tight := DefaultTolerance, 1e-10
+		const tight = 1e-10
+		tolerance := DefaultTolerance
 		if closedLaw(law.Name) {
 			tolerance = 1e-13
-		} else {
-			tight = DefaultTolerance
 		}
 		off := [3]float64{math.Abs(g.Flux[0] - flux)}
 		off[1] = max(math.Abs(g.ByRadius[0]-dr)/max(1, math.Abs(dr)), math.Abs(g.BySeparation[0]-dz)/max(1, math.Abs(dz)))

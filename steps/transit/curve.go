@@ -17,7 +17,7 @@ const orbital = 6
 // Orbit.MidTransit, one value for each; times are the middles of the exposures.
 // The flux is 1 while no part of the star is covered, spots or not, and while the
 // planet is behind the star. With an exposure the flux is averaged over it with an
-// error below 1e-8. Times may be in any order; in
+// error below 5e-9. Times may be in any order; in
 // increasing order those out of transit are passed over at once. It returns an
 // error for invalid parameters or a time that is not finite.
 func Curve(times []float64, p Params) ([]float64, error) {

@@ -8,10 +8,10 @@ import (
 
 const (
 	// mostNodes is the largest number of nodes on one piece of a transit.
-	mostNodes = 16
+	mostNodes = 24
 	// averageTolerance is what the predicted error of an average may reach. The
 	// prediction is for the flux; derivatives are larger and lose as much more.
-	averageTolerance = 2e-10
+	averageTolerance = 1e-11
 	// regular is the distance to a contact, in lengths of the interval, from
 	// which the flux is smooth enough to integrate over time itself.
 	regular = 4

@@ -37,9 +37,9 @@ func Flux(radiusRatio float64, separations []float64, law limb.Law, tolerance fl
 	return g.Flux, err
 }
 
-// FluxGradient returns the flux of [Flux] and its derivatives, which have the
-// same bound on their error as the flux, relative to 1 or to their own size if
-// that is larger. They are continuous, but for that by r and z at r = 1, z = 0,
+// FluxGradient returns the flux of [Flux] and its derivatives, which have errors
+// below 1e-10, relative to 1 or to their own size if that is larger. They are
+// continuous, but for that by r and z at r = 1, z = 0,
 // where 0 is returned, and 0 with respect to z at z = 0.
 func FluxGradient(radiusRatio float64, separations []float64, law limb.Law, tolerance float64) (Gradient, error) {
 	var g Gradient
