@@ -176,7 +176,8 @@ func (s *Store) Copy(w io.Writer, h Hash) error {
 	if err != nil || flaw == "" {
 		return err
 	}
-	aside, err := s.setAside(path, func(path string) bool {
+	// without a place aside, whatever the reason
+	aside, _ := s.setAside(path, func(path string) bool {
 		flaw, err := s.readFile(io.Discard, path, h)
 		return flaw == "" && err == nil
 	})

@@ -3,6 +3,8 @@ package worker
 import (
 	"os"
 	"syscall"
+
+	"golang.org/x/sys/unix"
 )
 
 // forbiddenSignal ends a process that makes a forbidden system call.
@@ -24,6 +26,21 @@ func machineMemory() int64 {
 		return 0
 	}
 	return int64(info.Totalram) * int64(info.Unit)
+}
+
+// pipeSize is the room in a pipe, in bytes. More than the usual 64 KiB spares
+// the processes turns when mass data cross.
+const pipeSize = 1 << 20
+
+// widen gives a pipe more room, if it is to be had.
+func widen(pipe any) {
+	c, ok := pipe.(syscall.Conn)
+	if !ok {
+		return
+	}
+	if raw, err := c.SyscallConn(); err == nil {
+		raw.Control(func(fd uintptr) { unix.FcntlInt(fd, unix.F_SETPIPE_SZ, pipeSize) })
+	}
 }
 
 // executable is the running program, even when its file was replaced since.

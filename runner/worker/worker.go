@@ -134,6 +134,8 @@ func start(ctx context.Context, o Options, files []*os.File) (*Worker, error) {
 		os.Remove(dir)
 		return nil, fmt.Errorf("cannot start a worker process: %w", err)
 	}
+	widen(w.in)
+	widen(r)
 	// The worker is in it; where that does not keep it in the file system, it
 	// goes now, and is not left behind when this process is killed.
 	os.Remove(dir)
