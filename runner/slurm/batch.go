@@ -39,6 +39,8 @@ type workFile struct {
 	PID     int
 	Program plan.KeyText // what of the parent's program can change results
 	Store   string       // folder
+	Reserve int64        // of its disk, see [store.Store.Limit]
+	Most    int64        // of results in it
 	CPUs    int          // workers of a chunk
 	engine.Work
 }

@@ -20,7 +20,6 @@ import (
 type Cluster struct {
 	dir     string // of the batches
 	store   *store.Store
-	folder  string // of the store
 	host    string
 	program plan.KeyText
 	o       Options
@@ -43,7 +42,7 @@ func Open(ctx context.Context, dir string, s *store.Store, lib *plan.Library, bu
 	if err := o.Check(); err != nil {
 		return nil, err
 	}
-	c := &Cluster{o: o, store: s, folder: s.Dir(), where: map[string]string{}, logs: map[string]bool{}, program: plan.Fingerprint(lib, build)}
+	c := &Cluster{o: o, store: s, where: map[string]string{}, logs: map[string]bool{}, program: plan.Fingerprint(lib, build)}
 	var err error
 	if c.dir, err = filepath.Abs(dir); err != nil {
 		return nil, err

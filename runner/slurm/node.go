@@ -87,6 +87,9 @@ func (b *batch) carry(ctx context.Context, n int, who string, p *reporter, log i
 	for _, n := range notes {
 		fmt.Fprintf(log, "%s %s\n", stamp(), n)
 	}
+	if err := s.Limit(w.Reserve, w.Most); err != nil {
+		return err
+	}
 	probe, err := worker.Start(ctx, w.Limits.Checking())
 	if err != nil {
 		return err

@@ -136,7 +136,9 @@ func newChunk(units []int) *chunk {
 // enqueue describes chunks in the round's batch and puts them in line.
 func (r *round) enqueue(chunks []*chunk) error {
 	if r.batch == nil {
-		b, err := newBatch(r.c.dir, workFile{Host: r.c.host, Program: r.c.program, Store: r.c.folder, CPUs: r.c.o.CPUs, Work: r.w})
+		w := workFile{Host: r.c.host, Program: r.c.program, Store: r.c.store.Dir(), CPUs: r.c.o.CPUs, Work: r.w}
+		w.Reserve, w.Most = r.c.store.Limits()
+		b, err := newBatch(r.c.dir, w)
 		if err != nil {
 			return fmt.Errorf("no jobs can be described in %s: %w", r.c.dir, err)
 		}

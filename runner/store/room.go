@@ -32,6 +32,9 @@ func (s *Store) Limit(reserve, most int64) error {
 	})
 }
 
+// Limits are the limits in force, as [Store.Limit] takes them.
+func (s *Store) Limits() (reserve, most int64) { return s.reserve, s.most }
+
 // A RoomError says that a store was told not to take up as much as it would
 // have to. The sizes are in bytes.
 type RoomError struct {
