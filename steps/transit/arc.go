@@ -62,7 +62,7 @@ type edge struct {
 }
 
 // levels are the rules by tolerance, loosest first. The errors of the steps in x
-// are those found, for exponents of μ from 0.2, against 30-digit integrals at all
+// are those found against 30-digit integrals at all
 // distances from the contacts: 4e-11 and 6e-12 times 2r/π in the derivatives for
 // μ^0.2, 3e-12 and 2e-13 for √μ, less for higher powers and for the flux.
 var levels = []struct {

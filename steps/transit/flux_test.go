@@ -5,6 +5,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"os"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -354,6 +355,60 @@ func TestHardTable(t *testing.T) {
 		}
 		for _, name := range limb.Names() {
 			t.Logf("tolerance %g, %s: largest error %.1e, of derivatives %.1e", stated, name, worst[name][0], worst[name][1])
+		}
+	}
+}
+
+// TestEdgesOfLaws has laws with coefficients of all sizes at separations of all
+// sizes: nothing may come out that is not a number.
+func TestEdgesOfLaws(t *testing.T) {
+	lengths := []float64{0, 5e-324, 1e-200, 1e-99, 1e-20, 1e-9, 0.25, 0.5, math.Nextafter(1, 0), 1, math.Nextafter(1, 2), 1.5, 3, 1e3, 1e6, 1e17, 1e300, math.MaxFloat64}
+	sizes := []float64{0, 0.3, -0.2, 1, -40, 1e30, -1e30, 1e100}
+	for _, name := range limb.Names() {
+		n, _ := limb.Count(name)
+		for k := range 40 {
+			law := limb.Law{Name: name}
+			for i := range n {
+				law.Coefficients = append(law.Coefficients, sizes[(k+3*i*k+i)%len(sizes)])
+			}
+			if name == limb.Power2 {
+				law.Coefficients[1] = []float64{1e-100, 1e-3, 0.2, 3, 50, 1e9, 1e100}[k%7]
+			}
+			if law.Validate() != nil {
+				continue
+			}
+			for _, r := range lengths {
+				separations := append([]float64{r, 1 + r, math.Abs(1 - r), math.Nextafter(r, 0), math.Nextafter(1+r, 0), r + 0.5, r - 0.25, math.Inf(1)}, lengths...)
+				separations = slices.DeleteFunc(separations, func(z float64) bool { return z < 0 })
+				g, err := FluxGradient(r, separations, law, 0)
+				if err != nil {
+					t.Fatal(err)
+				}
+				for i, z := range separations {
+					values := []float64{g.Flux[i], g.ByRadius[i], g.BySeparation[i]}
+					for _, by := range g.ByCoefficient {
+						values = append(values, by[i])
+					}
+					for _, v := range values {
+						if v-v != 0 {
+							t.Fatalf("%+v, r = %g, z = %g: %v", law, r, z, values)
+						}
+					}
+					if f := g.Flux[i]; law.Physical() && !(name == limb.Power2 && law.Coefficients[1] > 10) && !(f >= -1e-9 && f <= 1+1e-9) {
+						t.Errorf("%+v, r = %g, z = %g: flux %.17g is not within 0 and 1", law, r, z, f)
+					}
+				}
+			}
+		}
+	}
+	for _, z := range []float64{-0.1, math.NaN()} {
+		if _, err := Flux(0.1, []float64{0.5, z}, quadratic(0.4, 0.3), 0); err == nil || !strings.Contains(err.Error(), "separations[1]") {
+			t.Errorf("separation %g: error %v", z, err)
+		}
+	}
+	for _, r := range []float64{-0.1, math.NaN(), math.Inf(1)} {
+		if _, err := Flux(r, []float64{0.5}, quadratic(0.4, 0.3), 0); err == nil || !strings.Contains(err.Error(), "radius ratio") {
+			t.Errorf("radius ratio %g: error %v", r, err)
 		}
 	}
 }

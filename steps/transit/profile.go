@@ -146,9 +146,9 @@ func (p *profile) values(mu2 float64) (a, b, ha, hb float64) {
 		}
 		return mu * log, 0, -mu2 / (9 * (1 + mu)) * (1 + 3*mu*ratio), 0
 	case power:
-		log := 0.5 * math.Log(mu2)
-		less := math.Expm1(p.alpha * log) // μ^α - 1
-		whole, byLog := 0.5*p.alpha, -0.5 // (1-μ^α)/(1-μ²), ln μ/(1-μ²)
+		log := 0.5 * min(0, math.Log(mu2)) // rounding may pass the centre
+		less := math.Expm1(p.alpha * log)  // μ^α - 1
+		whole, byLog := 0.5*p.alpha, -0.5  // (1-μ^α)/(1-μ²), ln μ/(1-μ²)
 		if log != 0 {
 			rho2 := -math.Expm1(2 * log)
 			whole, byLog = -less/rho2, log/rho2
