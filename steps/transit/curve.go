@@ -17,9 +17,9 @@ const orbital = 6
 // Orbit.MidTransit, one value for each; times are the middles of the exposures.
 // The flux is 1 while no part of the star is covered, spots or not, and while the
 // planet is behind the star. With an exposure the flux is averaged over it with an
-// error below 5e-9. Times may be in any order; in
-// increasing order those out of transit are passed over at once. It returns an
-// error for invalid parameters or a time that is not finite.
+// error below 5e-9. Times may be in any order; in increasing order those out of
+// transit are passed over at once. It returns an error for invalid parameters or a
+// time that is not finite.
 func Curve(times []float64, p Params) ([]float64, error) {
 	c, err := newCurve(times, p)
 	if err != nil {
@@ -30,7 +30,8 @@ func Curve(times []float64, p Params) ([]float64, error) {
 }
 
 // CurveGradient returns the flux of [Curve] and its derivatives: a slice as long
-// as times for each of [Params.Arguments].
+// as times for each of [Params.Arguments]. Averaged over an exposure they have
+// errors of up to 1e-5 of their size, where a contact falls into it.
 func CurveGradient(times []float64, p Params) (flux []float64, grad [][]float64, err error) {
 	c, err := newCurve(times, p)
 	if err != nil {

@@ -26,8 +26,8 @@ type Gradient struct {
 // z ≥ 1+r and 0 for z ≤ r-1. For uniform, linear and quadratic laws the absolute
 // error is that of [Quadratic]. For the others it is below the tolerance, which
 // is [DefaultTolerance] if 0 is given and [LeastTolerance] or more, for physical
-// laws (limb.Law.Physical) and exponents of the power-2 law up to 20; it
-// grows in proportion to r beyond r = 10.
+// laws (limb.Law.Physical) and exponents of the power-2 law up to 20; it grows in
+// proportion to r beyond r = 10.
 //
 // It returns an error for a law that is not valid, a radius ratio that is
 // negative or not finite, a separation that is negative or NaN, and a tolerance
