@@ -206,7 +206,7 @@ func mean(comps []Computation, list []int) time.Duration {
 // away has the elements listed in todo computed elsewhere. A plain step has one
 // computation and no items.
 func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps []Computation, todo []int, each time.Duration) error {
-	w, err := e.work(spec, each)
+	w, err := e.work(spec, items, each)
 	if err != nil {
 		return err
 	}
@@ -285,7 +285,7 @@ func (e *Engine) away(ctx context.Context, spec *plan.Step, items []Value, comps
 }
 
 // work describes what a step computes with, for elsewhere.
-func (e *Engine) work(spec *plan.Step, each time.Duration) (Work, error) {
+func (e *Engine) work(spec *plan.Step, items []Value, each time.Duration) (Work, error) {
 	w := Work{Step: spec.Name, Code: e.Code, Limits: e.Limits, Each: each}
 	for _, r := range spec.Results {
 		w.Results = append(w.Results, r.Name)
@@ -305,6 +305,18 @@ func (e *Engine) work(spec *plan.Step, each time.Duration) (Work, error) {
 		}
 		w.Args = append(w.Args, arg)
 	}
+	// What workers there may use follows what they are given, as it does here, and
+	// is settled here, because room for it has to be asked for.
+	given, largest := int64(0), int64(0)
+	for _, a := range w.Args {
+		if a.Value != nil {
+			given += a.Value.Size
+		}
+	}
+	for _, v := range items {
+		largest = max(largest, v.Size)
+	}
+	w.Limits = w.Limits.For(given + largest)
 	return w, nil
 }
 
