@@ -23,15 +23,23 @@ import (
 	"rimlight/steps/systematics"
 )
 
-// BenchmarkCold runs the shipped recipe on the data of the demo, once as
-// compiled calls of the step library in this process, with as many goroutines
+// BenchmarkCold runs the shipped recipe on the data of the demo, and on those of
+// a longer visit with more channels: once as compiled calls of the step library in this process, with as many goroutines
 // as a run has workers, and once through the program, with nothing known, from
 // the start of the process to the written report. What the second takes beyond
 // the first is the cost of the runner: parsing, checking, interpreting, keys,
 // store, processes, report.
 func BenchmarkCold(b *testing.B) {
+	demo := simulate.Continuous(1)
+	long := demo
+	long.Channels, long.Integrations, long.Cadence, long.Exposure = 400, 6000, demo.Cadence/2, demo.Exposure/2
+	b.Run("demo", func(b *testing.B) { benchmarkCold(b, demo) })
+	b.Run("400x6000", func(b *testing.B) { benchmarkCold(b, long) })
+}
+
+func benchmarkCold(b *testing.B, scenario simulate.Scenario) {
 	dir := b.TempDir()
-	recipe := visit(b, dir, simulate.Continuous(1))
+	recipe := visit(b, dir, scenario)
 	p, _, err := prepare(context.Background(), recipe, defaults())
 	if err != nil {
 		b.Fatal(err)
