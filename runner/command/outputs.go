@@ -13,6 +13,7 @@ import (
 
 	"rimlight/reports"
 	"rimlight/runner/engine"
+	"rimlight/runner/plan"
 	"rimlight/runner/record"
 	"rimlight/steps/check"
 	"rimlight/steps/spectrum"
@@ -165,14 +166,14 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 		for n, el := range s.Elements {
 			c := computation(el, names)
 			if !el.Finished() {
-				c.KeyText = before().KeyText(s.Name, n)
+				c = withEarlier(c, before().KeyText(s.Name, n))
 			}
 			rs.Elements = append(rs.Elements, c)
 		}
 		// What was not reached keeps the key of the run before, so that the
 		// next run can still say what changed.
 		if !s.Finished() {
-			rs.KeyText = before().KeyText(s.Name, -1)
+			rs.Computation = withEarlier(rs.Computation, before().KeyText(s.Name, -1))
 			if len(rs.Elements) == 0 {
 				for n := 0; before().KeyText(s.Name, n) != ""; n++ {
 					rs.Elements = append(rs.Elements, record.Computation{State: string(engine.NotReached), KeyText: before().KeyText(s.Name, n)})
@@ -191,6 +192,16 @@ func recordOf(doc reports.Document, e *engine.Engine, outcome *engine.Outcome, f
 		}
 	}
 	return r
+}
+
+// withEarlier puts the text of the key of the run before in the place of that of
+// a computation which gave no result. A key that goes with the other text goes
+// with it: nothing is kept under it.
+func withEarlier(c record.Computation, text plan.KeyText) record.Computation {
+	if c.KeyText = text; text != "" && text.Key().String() != c.Key {
+		c.Key = ""
+	}
+	return c
 }
 
 // machine is where somebody computed: run.json goes out with the report, which

@@ -255,6 +255,23 @@ func TestStepFailure(t *testing.T) {
 	}
 }
 
+// TestRecordOfFailure holds that the record of a run in which a step failed after
+// a change can be read, and still tells the next run what changed.
+func TestRecordOfFailure(t *testing.T) {
+	b := newBench(t, arithmetic)
+	b.run(ExitDone)
+	b.write(strings.Replace(arithmetic, "sum += s\n", "sum += squared[int(s)+100]\n", 1))
+	r, _ := b.run(ExitFailed, "--set", "offset=7")
+	if sum := r.Steps[2]; sum.State != "failed" || sum.Key != "" || sum.KeyText == "" {
+		t.Errorf("the step that failed is %+v", sum)
+	}
+	b.write(arithmetic)
+	r, _ = b.run(ExitDone, "--set", "offset=7")
+	if got := reasons(r); got != "Sum: result squared changed" {
+		t.Errorf("after the repair: %q", got)
+	}
+}
+
 func TestPanicIsAFailure(t *testing.T) {
 	b := newBench(t, strings.Replace(arithmetic, "sum += s", "sum += squared[int(s)+100]", 1))
 	_, said := b.run(ExitFailed)
