@@ -47,6 +47,38 @@ func CurveGradient(times []float64, p Params) (flux []float64, grad [][]float64,
 	return c.out.flux, c.out.grad, nil
 }
 
+// CurveTerms returns what is covered at the given times of each of the functions of
+// μ that p.Law is a sum of, averaged over exposures as in [Curve]: a slice as long
+// as times for 1, μ and μ², then, for laws with others, for √μ and μ√μ
+// (square-root and laws of more coefficients), μ ln μ (logarithmic) or μ^u2
+// (power-2). They are integrals over the covered part of the disc divided by π, so
+// that for a law I = Σ a_n term_n of mean intensity m over the disc, the flux is
+// 1 - Σ a_n covered_n / m. Where the planet does not touch the star they are 0.
+// p is of a round planet, a star without spots, and no companions; of its law only
+// the name counts, and u2 where it is an exponent. Errors are those of Curve.
+func CurveTerms(times []float64, p Params) ([][]float64, error) {
+	if p.Evening != 0 || len(p.Spots) > 0 || p.Companion != 0 {
+		return nil, fmt.Errorf("transit: terms of a planet of two limbs, a star with spots or with companions; expected neither")
+	}
+	c, err := newCurve(times, p)
+	if err != nil {
+		return nil, err
+	}
+	count := 3
+	switch c.profile.shape {
+	case roots:
+		count = 5
+	case logs, power:
+		count = 4
+	}
+	c.out.terms = make([][]float64, count)
+	for k := range c.out.terms {
+		c.out.terms[k] = make([]float64, len(times))
+	}
+	c.run(times)
+	return c.out.terms, nil
+}
+
 // curve computes a light curve.
 type curve struct {
 	path     *orbit.Path
@@ -64,10 +96,12 @@ type curve struct {
 	wait                     queue
 }
 
-// result is a light curve, with derivatives if grad is not nil.
+// result is a light curve, with derivatives if grad is not nil, or what is covered
+// of each term if terms is not nil.
 type result struct {
-	flux []float64
-	grad [][]float64
+	flux  []float64
+	grad  [][]float64
+	terms [][]float64
 }
 
 // queue holds samples until they are computed side by side.
@@ -173,6 +207,9 @@ func (c *curve) flush() {
 	q.block.cover(p, c.radius, q.z[:q.n])
 	for k, i := range q.target[:q.n] {
 		d := &q.block.covered[k]
+		for a, term := range c.out.terms {
+			term[i] += q.weight[k] * d.value[a]
+		}
 		deficit, weight := p.weigh(&d.value), q.weight[k]*c.share
 		c.out.flux[i] -= weight * deficit
 		if c.out.grad == nil {

@@ -11,6 +11,7 @@ func init() {
 	Table["rimlight/steps/transit/transit"] = map[string]reflect.Value{
 		"Curve":             reflect.ValueOf(transit.Curve),
 		"CurveGradient":     reflect.ValueOf(transit.CurveGradient),
+		"CurveTerms":        reflect.ValueOf(transit.CurveTerms),
 		"Eclipse":           reflect.ValueOf(transit.Eclipse),
 		"EclipseGradient":   reflect.ValueOf(transit.EclipseGradient),
 		"EclipseParams":     reflect.ValueOf((*transit.EclipseParams)(nil)),
