@@ -9,6 +9,7 @@ import (
 	"time"
 
 	"rimlight/steps/check"
+	"rimlight/steps/diagnose"
 	"rimlight/steps/figure"
 	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
@@ -85,12 +86,12 @@ func everything(s string, x float64) Document {
 		nil, s, x, 3, true, uint8(7), complex(x, x), float32(2.5), []float64{x, 1, 2}, []string{s, s}, []int{1, 2, 3}, map[string]string{s: s}, time.Second, [2]bool{true, false},
 		filled[figure.Figure](s, x), filled[[]figure.Figure](s, x), filled[table.Table](s, x), filled[[]table.Table](s, x),
 		filled[check.Check](s, x), filled[[]check.Check](s, x), filled[[][]check.Check](s, x),
-		filled[fit.Posterior](s, x), filled[[]fit.Posterior](s, x), filled[fit.CurveFit](s, x), filled[[]fit.CurveFit](s, x), filled[fit.Priors](s, x), filled[fit.Prior](s, x),
+		filled[fit.Posterior](s, x), filled[[]fit.Posterior](s, x), filled[fit.CurveFit](s, x), filled[[]fit.CurveFit](s, x), filled[diagnose.Summary](s, x), filled[[]diagnose.Summary](s, x), filled[fit.Priors](s, x), filled[fit.Prior](s, x),
 		filled[fit.Quantity](s, x), filled[[]fit.Quantity](s, x), filled[spectrum.Spectrum](s, x), filled[spectrum.Point](s, x), filled[[]spectrum.Point](s, x),
 		filled[lightcurve.Cube](s, x), filled[lightcurve.Curve](s, x), filled[[]lightcurve.Curve](s, x), filled[lightcurve.Channel](s, x), filled[[]lightcurve.Channel](s, x),
 		filled[unknown](s, x), filled[*unknown](s, x), filled[[]unknown](s, x), (*unknown)(nil), struct{}{}, func() {}, make(chan int), [][]float64{{1}, nil},
 		fit.Posterior{Names: []string{s, s}, Value: []float64{x}, Cov: [][]float64{{1}, {2}}}, spectrum.Spectrum{}, lightcurve.Cube{}, []fit.Posterior{{}, {Names: []string{s}}},
-		table.Table{Columns: []table.Column{{Name: s, Text: []string{s}}, {Name: s, Number: []float64{x, x, x}}}}, []fit.CurveFit{{}}, []lightcurve.Curve{{}},
+		table.Table{Columns: []table.Column{{Name: s, Text: []string{s}}, {Name: s, Number: []float64{x, x, x}}}}, []fit.CurveFit{{}}, []diagnose.Summary{{}}, []lightcurve.Curve{{}},
 	} {
 		state := []State{Computed, Reused, Failed, NotReached}[i%4]
 		d.Steps = append(d.Steps, Step{Name: fmt.Sprintf("Step%d", i), Fence: -1, State: state,

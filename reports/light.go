@@ -5,6 +5,7 @@ import (
 	"math"
 	"strings"
 
+	"rimlight/steps/diagnose"
 	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
 )
@@ -23,12 +24,10 @@ type Light struct {
 	Aux          []string  // auxiliaries of the first curve, with their units
 	Scatter      []float64 // of each fit, the standard deviation of its relative residuals
 	Ratio        []float64 // of each fit, that in units of the errors used
+	Beta         []float64 // of each fit, how much its residuals scatter more than uncorrelated noise in bins of 10 to 30 min; NaN when it was not asked
 	Level        float64   // of a single fit, see [fit.CurveFit]
 	Mid          float64   // likewise
 }
-
-// LightVersion changes when [LightOf] gives something else for a value.
-const LightVersion = "1"
 
 // Kinds of value that a Light is made of.
 const (
@@ -39,7 +38,8 @@ const (
 	fitsLight   = "fits"
 )
 
-// LightOf sums up a cube, a light curve, a fit of one, or several of them.
+// LightOf sums up a cube, a light curve, a fit of one or what a step has kept of
+// it, or several of them.
 // Of a Light it gives the Light itself, of any other value false.
 func LightOf(value any) (Light, bool) {
 	switch v := value.(type) {
@@ -62,8 +62,14 @@ func LightOf(value any) (Light, bool) {
 		l.Channels = []lightcurve.Channel{v.Channel}
 		l.mask(v.Mask)
 		sd, ratio := scatter(v)
-		l.Scatter, l.Ratio, l.Level, l.Mid = []float64{sd}, []float64{ratio}, v.Level, v.Mid
+		l.Scatter, l.Ratio, l.Beta, l.Level, l.Mid = []float64{sd}, []float64{ratio}, []float64{math.NaN()}, v.Level, v.Mid
 		return l, true
+	case diagnose.Summary:
+		return Light{
+			Kind: fitLight, Channels: []lightcurve.Channel{v.Channel}, Integrations: v.Samples(), Begin: v.Flux.Begin, End: v.Flux.End,
+			Samples: v.Samples(), Masked: v.Scatter.Masked, Level: v.Level, Mid: v.Mid,
+			Scatter: []float64{v.Scatter.RMS}, Ratio: []float64{v.Scatter.Ratio}, Beta: []float64{v.Beta.Value},
+		}, true
 	case []lightcurve.Curve:
 		out := Light{Kind: curvesLight}
 		for _, c := range v {
@@ -72,6 +78,13 @@ func LightOf(value any) (Light, bool) {
 		}
 		return out, true
 	case []fit.CurveFit:
+		out := Light{Kind: fitsLight}
+		for _, c := range v {
+			l, _ := LightOf(c)
+			out.Add(l)
+		}
+		return out, true
+	case []diagnose.Summary:
 		out := Light{Kind: fitsLight}
 		for _, c := range v {
 			l, _ := LightOf(c)
@@ -107,7 +120,7 @@ func Lights(typ string) (Light, bool) {
 	switch typ {
 	case "[]rimlight/steps/lightcurve.Curve":
 		return Light{Kind: curvesLight}, true
-	case "[]rimlight/steps/fit.CurveFit":
+	case "[]rimlight/steps/fit.CurveFit", "[]rimlight/steps/diagnose.Summary":
 		return Light{Kind: fitsLight}, true
 	}
 	return Light{}, false
@@ -124,7 +137,7 @@ func (l *Light) Add(one Light) {
 	for i, n := range one.Reasons {
 		l.Reasons[i] += n
 	}
-	l.Scatter, l.Ratio = append(l.Scatter, one.Scatter...), append(l.Ratio, one.Ratio...)
+	l.Scatter, l.Ratio, l.Beta = append(l.Scatter, one.Scatter...), append(l.Ratio, one.Ratio...), append(l.Beta, one.Beta...)
 }
 
 func (l *Light) mask(flags []lightcurve.Flag) {
@@ -153,15 +166,33 @@ func (l Light) facts() []fact {
 	case fitLight:
 		return facts("channel", l.channel(), "time", l.time(),
 			"samples", fmt.Sprintf("%s of %s fitted", grouped(l.Samples-l.Masked), grouped(l.Integrations)),
-			"residual scatter", l.scatterText(), "baseline flux", number(l.Level, 6), "mid-transit time", fixed(l.Mid, 6)+" BJD_TDB")
+			"residual scatter", l.scatterText(), "scatter in bins", l.betaText(), "baseline flux", number(l.Level, 6), "mid-transit time", fixed(l.Mid, 6)+" BJD_TDB")
 	}
 	out := facts("size", count(len(l.Channels), "fit"), "wavelengths", channelsText(l.Channels))
+	if l.Samples > 0 {
+		out = append(out, fact{"samples", fmt.Sprintf("%s of %s fitted", grouped(l.Samples-l.Masked), grouped(l.Samples))})
+	}
 	if lo, hi, ok := extent(l.Scatter); ok {
 		out = append(out, facts(
 			"residual scatter", fmt.Sprintf("%s to %s ppm, median %s", fixed(lo*1e6, 0), fixed(hi*1e6, 0), fixed(median(l.Scatter)*1e6, 0)),
-			"scatter / errors used", "median "+fixed(median(l.Ratio), 2))...)
+			"scatter / errors used", "median "+fixed(median(l.Ratio), 2),
+			"scatter in bins", l.betaText())...)
 	}
 	return out
+}
+
+// betaText says how much residuals scatter more in bins than uncorrelated noise
+// does; it is empty when that was not asked.
+func (l Light) betaText() string {
+	_, hi, ok := extent(l.Beta)
+	if !ok {
+		return ""
+	}
+	const what = "times that of uncorrelated noise in bins of 10 to 30 min"
+	if len(l.Beta) == 1 {
+		return fixed(hi, 2) + " " + what
+	}
+	return fmt.Sprintf("median %s, at most %s %s", fixed(median(l.Beta), 2), fixed(hi, 2), what)
 }
 
 func (l Light) masked() string {

@@ -142,14 +142,17 @@ func shippedNatively(b *testing.B, p *plan.Plan) []byte {
 	_, err = figure.WhiteFit(whiteFit)
 	must(err)
 	channels := lightcurve.Curves(clean)
-	points, fits, errs := make([]spectrum.Point, len(channels)), make([]fit.CurveFit, len(channels)), make([]error, len(channels))
+	points, fits, errs := make([]spectrum.Point, len(channels)), make([]diagnose.Summary, len(channels)), make([]error, len(channels))
 	priors := set("FitChannel", "priors").(fit.Priors)
 	var next atomic.Int64
 	var all sync.WaitGroup
 	for range runtime.NumCPU() {
 		all.Go(func() {
 			for n := int(next.Add(1)) - 1; n < len(channels); n = int(next.Add(1)) - 1 {
-				points[n], fits[n], errs[n] = fit.Channel(channels[n], geometry, setup, priors)
+				var fitted fit.CurveFit
+				if points[n], fitted, errs[n] = fit.Channel(channels[n], geometry, setup, priors); errs[n] == nil {
+					fits[n], errs[n] = diagnose.Summarise(fitted)
+				}
 			}
 		})
 	}
@@ -157,13 +160,13 @@ func shippedNatively(b *testing.B, p *plan.Plan) []byte {
 	for _, err := range errs {
 		must(err)
 	}
-	_, err = figure.Detrended(clean, fits)
+	_, err = figure.Detrended(fits)
 	must(err)
 	_, err = figure.ChannelGrid(fits, points)
 	must(err)
 	_, err = figure.LimbDarkening(points)
 	must(err)
-	_, err = figure.BinnedScatter(append([]fit.CurveFit{whiteFit}, fits...))
+	_, err = figure.BinnedScatter(whiteFit, fits)
 	must(err)
 	depths, err := spectrum.Assemble(points, fit.SharedCovariance(points, geometry))
 	must(err)

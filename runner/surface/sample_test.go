@@ -159,6 +159,12 @@ func newSamples() *samples {
 		must(err)
 		points, curveFits = append(points, p), append(curveFits, f)
 	}
+	var summaries []diagnose.Summary
+	for _, f := range curveFits {
+		s, err := diagnose.Summarise(f)
+		must(err)
+		summaries = append(summaries, s)
+	}
 	spec, err := spectrum.Assemble(points, fit.SharedCovariance(points, posterior))
 	must(err)
 	fig, err := figure.WhiteFit(whiteFit)
@@ -277,7 +283,7 @@ func newSamples() *samples {
 		"lightcurve.SkipStart":   {{}, {0.0, 10.0, 60.0}},
 		"diagnose.TimeAveraging": {{whiteFit, curveFits[0]}, {5.0, 10.0}, {30.0, 60.0}},
 		"spectrum.Assemble":      {{points}, {[][]float64(nil), fit.SharedCovariance(points, posterior)}},
-		"figure.Detrended":       {{clean}, {curveFits}},
+		"figure.Detrended":       {{summaries}},
 		"simulate.Make":          {{scenario, settled}},
 
 		"lightcurve.ReadFITS":           {{fitsFile, withComparison}},
@@ -297,7 +303,7 @@ func newSamples() *samples {
 		elements, ephemeris, intensities, throughput, profile, choice,
 		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
 		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, setup, settling, whitePriors, channelPriors,
-		posterior, whiteFit, curveFits, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},
+		posterior, whiteFit, curveFits, summaries, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},
 		transit.Params{Orbit: path, RadiusRatio: 0.12, Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{0.3, 0.2}}, Exposure: 280},
 		diagnose.FitChecks("white light", posterior), []check.Check{},
 		[]spectrum.Note{{Name: "title", Text: "An invented planet"}, {Name: "by", Text: "no one"}},

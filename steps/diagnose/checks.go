@@ -67,7 +67,7 @@ func SpectrumChecks(s spectrum.Spectrum) []check.Check {
 // the channels, the median of both, and the share of masked samples in channels
 // that were fitted. Channels without a single fitted sample are passed over. See
 // [TimeAveraging] for beta.
-func ResidualChecks(white fit.CurveFit, fits []fit.CurveFit) []check.Check {
+func ResidualChecks(white fit.CurveFit, channels []Summary) []check.Check {
 	const (
 		whiteScatter   = "white light: mean square residual in units of the errors"
 		whiteBeta      = "white light: scatter in bins of 10 to 30 min in units of white noise"
@@ -90,27 +90,21 @@ func ResidualChecks(white fit.CurveFit, fits []fit.CurveFit) []check.Check {
 		out = append(out, check.AtMost(whiteBeta, beta.Value, mostBeta, "", whyBeta))
 	}
 	var ratios, betas []float64
-	var lost, all int
+	lost, all := 0, 0
 	reason := "no channel was fitted"
-	for _, f := range fits {
-		scatter, err := ResidualScatter(f)
-		if err != nil {
-			reason = err.Error()
+	for _, c := range channels {
+		if !c.Fitted() {
 			continue
 		}
-		if scatter.Used == 0 {
-			continue
+		lost += c.Scatter.Masked
+		all += c.Samples()
+		if finite(c.Scatter.Ratio) {
+			ratios = append(ratios, c.Scatter.Ratio*c.Scatter.Ratio)
 		}
-		lost += scatter.Masked
-		all += len(f.Time)
-		if finite(scatter.Ratio) {
-			ratios = append(ratios, scatter.Ratio*scatter.Ratio)
+		if finite(c.Beta.Value) {
+			betas = append(betas, c.Beta.Value)
 		}
-		if beta, err := TimeAveraging(f, shortestBin, longestBin); err == nil {
-			betas = append(betas, beta.Value)
-		} else {
-			reason = err.Error()
-		}
+		reason = "no channel has residuals enough, and errors, for it"
 	}
 	if len(ratios) == 0 {
 		out = append(out, check.NotComputed(channelScatter, reason, whyScatter))

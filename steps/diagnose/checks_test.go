@@ -68,6 +68,20 @@ func TestSpectrumChecks(t *testing.T) {
 	}
 }
 
+// summaries sums fits up.
+func summaries(t *testing.T, fits ...fit.CurveFit) []Summary {
+	t.Helper()
+	var out []Summary
+	for _, f := range fits {
+		s, err := Summarise(f)
+		if err != nil {
+			t.Fatal(err)
+		}
+		out = append(out, s)
+	}
+	return out
+}
+
 func TestResidualChecks(t *testing.T) {
 	white, red := series(t, "white"), series(t, "ar1")
 	good, correlated := curve(white, 1e-4), curve(red, 1e-4)
@@ -84,6 +98,7 @@ func TestResidualChecks(t *testing.T) {
 	}
 	broken := curve(white, 1e-4)
 	broken.Err = nil
+	short := curve(white[:60], 1e-4)
 	for _, tc := range []struct {
 		name  string
 		white fit.CurveFit
@@ -96,9 +111,10 @@ func TestResidualChecks(t *testing.T) {
 		{"masked", good, []fit.CurveFit{masked}, "PPPPF"},
 		{"dead", dead, []fit.CurveFit{dead}, "FFFFF"},
 		{"nothing", fit.CurveFit{}, nil, "FFFFF"},
-		{"broken", broken, []fit.CurveFit{broken}, "FFFFF"},
+		{"broken", broken, []fit.CurveFit{good}, "FFPPP"},
+		{"too short for beta", good, []fit.CurveFit{short}, "PPPFP"},
 	} {
-		checks := ResidualChecks(tc.white, tc.fits)
+		checks := ResidualChecks(tc.white, summaries(t, tc.fits...))
 		if got := verdicts(checks); got != tc.want {
 			t.Errorf("%s: %s, want %s: %+v", tc.name, got, tc.want, checks)
 		}
@@ -135,8 +151,9 @@ func TestChecksWithGap(t *testing.T) {
 		t.Errorf("with a gap the checks are %+v", got)
 	}
 	white, channel := curve(series(t, "white"), 1e-4), curve(series(t, "ar1"), 1e-4)
-	gap := fit.CurveFit{Channel: channel.Channel, Level: nan, Mid: nan}
-	with, without := ResidualChecks(white, []fit.CurveFit{channel, gap}), ResidualChecks(white, []fit.CurveFit{channel})
+	gap := Summary{Channel: channel.Channel, Level: nan, Mid: nan, Scatter: Scatter{RMS: nan, Ratio: nan}, Beta: Beta{Value: nan}}
+	fitted := summaries(t, channel)
+	with, without := ResidualChecks(white, append(fitted, gap)), ResidualChecks(white, fitted)
 	for i := range without {
 		if with[i] != without[i] {
 			t.Errorf("check %+v, without the gap %+v", with[i], without[i])

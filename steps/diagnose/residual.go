@@ -13,12 +13,9 @@ import (
 // in days are rounded.
 const slack = 1e-6
 
-// minutesPerDay converts times of light curves to minutes.
-const minutesPerDay = 1440
-
-// Shape reports the first slice of a curve fit whose length does not fit its
-// times. Every function here and in the figures starts with it.
-func Shape(f fit.CurveFit) error {
+// checkShape reports the first slice of a curve fit whose length does not fit its
+// times. Every function here starts with it.
+func checkShape(f fit.CurveFit) error {
 	n := len(f.Time)
 	for _, part := range []struct {
 		name string
@@ -35,7 +32,7 @@ func Shape(f fit.CurveFit) error {
 // integration, in units of the star's flux. Masked samples and those that are not
 // finite are NaN. It is an error when the slices of f differ in length.
 func Residuals(f fit.CurveFit) ([]float64, error) {
-	if err := Shape(f); err != nil {
+	if err := checkShape(f); err != nil {
 		return nil, fmt.Errorf("residuals: %w", err)
 	}
 	out := make([]float64, len(f.Time))
@@ -63,6 +60,11 @@ func ResidualScatter(f fit.CurveFit) (Scatter, error) {
 	if err != nil {
 		return Scatter{}, err
 	}
+	return scatterOf(f, residual), nil
+}
+
+// scatterOf measures the residuals of f.
+func scatterOf(f fit.CurveFit, residual []float64) Scatter {
 	var out Scatter
 	var sum, ratio float64
 	weighed := 0
@@ -79,19 +81,7 @@ func ResidualScatter(f fit.CurveFit) (Scatter, error) {
 		}
 	}
 	out.RMS, out.Ratio = math.Sqrt(sum/float64(out.Used)), math.Sqrt(ratio/float64(weighed))
-	return out, nil
-}
-
-// Cadence returns the median time between neighbouring integrations, in minutes;
-// NaN with fewer than two times.
-func Cadence(time []float64) float64 {
-	var steps []float64
-	for i := 1; i < len(time); i++ {
-		if d := time[i] - time[i-1]; finite(d) {
-			steps = append(steps, d)
-		}
-	}
-	return median(steps) * minutesPerDay
+	return out
 }
 
 // A Beta is the outcome of the time-averaging test.
@@ -121,7 +111,12 @@ func TimeAveraging(f fit.CurveFit, lo, hi float64) (Beta, error) {
 	if err != nil {
 		return Beta{}, fmt.Errorf("time averaging: %w", err)
 	}
-	minutes := Cadence(f.Time)
+	return betaOf(binned, lightcurve.Cadence(f.Time), lo, hi)
+}
+
+// betaOf is the time-averaging test of residuals that have been binned, one
+// integration taking so many minutes.
+func betaOf(binned lightcurve.Binning, minutes, lo, hi float64) (Beta, error) {
 	out := Beta{From: math.NaN(), To: math.NaN()}
 	sum := 0.0
 	for k, size := range binned.Size {
@@ -138,7 +133,11 @@ func TimeAveraging(f fit.CurveFit, lo, hi float64) (Beta, error) {
 		sum += binned.RMS[k] / Expected(binned.White[k], binned.Bins[k])
 	}
 	if out.Sizes == 0 {
-		return Beta{}, fmt.Errorf("time averaging: no bin of %g to %g minutes fits ten times into %d residuals spaced by %.3g minutes", lo, hi, len(residual), minutes)
+		residuals := 0
+		if len(binned.Bins) > 0 {
+			residuals = binned.Bins[0]
+		}
+		return Beta{}, fmt.Errorf("time averaging: no bin of %g to %g minutes fits ten times into %d residuals spaced by %.3g minutes", lo, hi, residuals, minutes)
 	}
 	out.Value = sum / float64(out.Sizes)
 	return out, nil

@@ -12,6 +12,8 @@ import (
 	"rimlight/steps/lightcurve"
 )
 
+const minutesPerDay = 1440
+
 // curve returns a fit whose residuals in units of the star's flux are noise, with
 // errors err, one sample a minute, and a trend that is not 1.
 func curve(noise []float64, err float64) fit.CurveFit {
@@ -159,14 +161,5 @@ func TestTimeAveragingRefuses(t *testing.T) {
 		if got, err := TimeAveraging(tc.f, tc.lo, tc.hi); err == nil || !strings.Contains(err.Error(), tc.want) {
 			t.Errorf("%+v, error %v; want %q", got, err, tc.want)
 		}
-	}
-}
-
-func TestCadence(t *testing.T) {
-	if got := Cadence([]float64{0, 1, 2, 10, 11, math.NaN(), 12}); got != 1440 {
-		t.Errorf("%g", got)
-	}
-	if !math.IsNaN(Cadence(nil)) || !math.IsNaN(Cadence([]float64{1})) {
-		t.Error("a cadence without steps")
 	}
 }

@@ -3,42 +3,35 @@ package figure
 import (
 	"math"
 	"slices"
+
+	"rimlight/steps/lightcurve"
 )
 
-// bins holds averages of a series over equal intervals of x; intervals without a
-// value are left out.
+// bins holds averages of a series over equal intervals of time; intervals without
+// a value are left out.
 type bins struct {
-	x, y  []float64 // means
+	x, y  []float64 // means; hours, and the unit of the series
 	count []int
-	width float64 // of an interval
+	width float64 // of an interval, hours
 }
 
-// binned averages the finite values of y in n equal intervals between the least
-// and the greatest finite x.
-func binned(x, y []float64, n int) bins {
-	lo, hi := extent(x)
-	if !(hi > lo) || n < 1 || math.IsInf(hi-lo, 0) {
-		n, hi = 1, lo
-	}
-	sumX, sumY, count := make([]float64, n), make([]float64, n), make([]int, n)
-	for i := range x {
-		if !finite(x[i]) || !finite(y[i]) {
-			continue
+// newBins joins every so many intervals of averages to one; hours count from
+// zero.
+func newBins(a lightcurve.Averages, every int, zero float64) bins {
+	out := bins{width: (a.End - a.Begin) * hours * float64(every) / float64(len(a.Value))}
+	for from := 0; from < len(a.Value); from += every {
+		x, y, count := 0.0, 0.0, 0
+		for k := from; k < min(from+every, len(a.Value)); k++ {
+			if n := a.Used[k]; n > 0 {
+				x += (a.Time[k] - zero) * hours * float64(n)
+				y += a.Value[k] * float64(n)
+				count += n
+			}
 		}
-		k := 0
-		if hi > lo {
-			k = min(int(float64(n)*((x[i]-lo)/(hi-lo))), n-1)
-		}
-		sumX[k] += x[i]
-		sumY[k] += y[i]
-		count[k]++
-	}
-	out := bins{width: (hi - lo) / float64(n)}
-	for k, c := range count {
-		if c > 0 {
-			out.x = append(out.x, sumX[k]/float64(c))
-			out.y = append(out.y, sumY[k]/float64(c))
-			out.count = append(out.count, c)
+		if count > 0 {
+			out.x = append(out.x, x/float64(count))
+			out.y = append(out.y, y/float64(count))
+			out.count = append(out.count, count)
 		}
 	}
 	return out
@@ -106,52 +99,6 @@ func thin(n, limit int) (index []int, every int) {
 		index = append(index, i)
 	}
 	return index, every
-}
-
-// simplified returns the indices of a subset of points, in order, between which a
-// line leaves none of the others out by more than tolerance in y (the method of
-// Douglas & Peucker 1973, with the distance taken along y). Points that are not
-// finite are passed over.
-func simplified(x, y []float64, tolerance float64) []int {
-	var all []int
-	for i := range x {
-		if finite(x[i]) && finite(y[i]) {
-			all = append(all, i)
-		}
-	}
-	if len(all) < 3 {
-		return all
-	}
-	keep := make([]bool, len(all))
-	keep[0], keep[len(all)-1] = true, true
-	todo := [][2]int{{0, len(all) - 1}}
-	for len(todo) > 0 {
-		from, to := todo[len(todo)-1][0], todo[len(todo)-1][1]
-		todo = todo[:len(todo)-1]
-		a, b := all[from], all[to]
-		worst, at := tolerance, -1
-		for k := from + 1; k < to; k++ {
-			i := all[k]
-			onLine := y[a]
-			if x[b] != x[a] {
-				onLine += (y[b] - y[a]) * ((x[i] - x[a]) / (x[b] - x[a]))
-			}
-			if off := math.Abs(y[i] - onLine); off > worst {
-				worst, at = off, k
-			}
-		}
-		if at >= 0 {
-			keep[at] = true
-			todo = append(todo, [2]int{from, at}, [2]int{at, to})
-		}
-	}
-	out := all[:0]
-	for k, i := range all {
-		if keep[k] {
-			out = append(out, i)
-		}
-	}
-	return out
 }
 
 // spread returns at most count indices below n, first and last among them, as

@@ -5,24 +5,27 @@ import (
 	"math/rand/v2"
 	"slices"
 	"testing"
+
+	"rimlight/steps/lightcurve"
 )
 
-func TestBinned(t *testing.T) {
-	x := []float64{0, 1, 2, 3, nan, 4, 10}
-	y := []float64{1, 3, nan, 5, 100, 7, 9}
-	got := binned(x, y, 5) // intervals of 2: {1, 3}, {5}, {7}, none, {9}
-	if !slices.Equal(got.y, []float64{2, 5, 7, 9}) || !slices.Equal(got.x, []float64{0.5, 3, 4, 10}) || !slices.Equal(got.count, []int{2, 1, 1, 1}) || got.width != 2 {
+func TestNewBins(t *testing.T) {
+	a := lightcurve.Averages{
+		Begin: 10, End: 10 + 5.0/24,
+		Time:  []float64{10 + 0.5/24, 10 + 1.5/24, nan, 10 + 3.5/24, 10 + 4.5/24},
+		Value: []float64{1, 4, nan, 7, 9}, Used: []int{2, 1, 0, 3, 1}, Samples: []int{2, 2, 1, 3, 1},
+	}
+	near := func(a, b float64) bool { return math.Abs(a-b) < 1e-9 }
+	got := newBins(a, 1, 10)
+	if !slices.EqualFunc(got.x, []float64{0.5, 1.5, 3.5, 4.5}, near) || !slices.Equal(got.y, []float64{1, 4, 7, 9}) || !slices.Equal(got.count, []int{2, 1, 3, 1}) || !near(got.width, 1) {
 		t.Errorf("%+v", got)
 	}
-	one := binned([]float64{5, 5}, []float64{1, 2}, 9)
-	if !slices.Equal(one.y, []float64{1.5}) || one.width != 0 {
-		t.Errorf("%+v", one)
+	got = newBins(a, 2, 10) // {1, 1, 4}, {7, 7, 7}, {9}
+	if !slices.EqualFunc(got.x, []float64{2.5 / 3, 3.5, 4.5}, near) || !slices.Equal(got.y, []float64{2, 7, 9}) || !slices.Equal(got.count, []int{3, 3, 1}) || !near(got.width, 2) {
+		t.Errorf("%+v", got)
 	}
-	if none := binned(nil, nil, 3); len(none.x) != 0 {
+	if none := newBins(lightcurve.Averages{}, 1, 0); len(none.x) != 0 {
 		t.Errorf("%+v", none)
-	}
-	if wide := binned([]float64{-math.MaxFloat64, math.MaxFloat64}, []float64{1, 3}, 4); len(wide.y) != 1 || wide.y[0] != 2 {
-		t.Errorf("%+v", wide)
 	}
 }
 
@@ -56,33 +59,6 @@ func TestThinAndSpread(t *testing.T) {
 	}
 	if got := spread(5, 1); !slices.Equal(got, []int{0}) {
 		t.Errorf("%v", got)
-	}
-}
-
-func TestSimplified(t *testing.T) {
-	n := 2000
-	x, y := make([]float64, n), make([]float64, n)
-	for i := range x {
-		x[i] = float64(i) / float64(n)
-		y[i] = 1
-		if z := math.Abs(x[i]-0.5) / 0.2; z < 1 {
-			y[i] = 1 - 0.01*math.Sqrt(1-z*z)
-		}
-	}
-	x[7], y[8] = nan, math.Inf(1)
-	const tolerance = 1e-5
-	index := simplified(x, y, tolerance)
-	if len(index) > 80 || index[0] != 0 || index[len(index)-1] != n-1 {
-		t.Fatalf("%d points, from %d to %d", len(index), index[0], index[len(index)-1])
-	}
-	for k := 1; k < len(index); k++ {
-		a, b := index[k-1], index[k]
-		for i := a; i <= b; i++ {
-			onLine := y[a] + (y[b]-y[a])*(x[i]-x[a])/(x[b]-x[a])
-			if finite(x[i]) && finite(y[i]) && math.Abs(onLine-y[i]) > tolerance*(1+1e-9) {
-				t.Fatalf("point %d is off by %g", i, onLine-y[i])
-			}
-		}
 	}
 }
 

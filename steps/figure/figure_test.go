@@ -13,7 +13,7 @@ import (
 	"strings"
 	"testing"
 
-	"rimlight/steps/fit"
+	"rimlight/steps/diagnose"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
 )
@@ -25,8 +25,8 @@ var write = flag.String("write", "", "write the figures of a large scene into th
 
 // titles are the axis titles that each figure must carry.
 var titles = map[string][]string{
-	"map":       {"Wavelength (µm)", "Time from BJD_TDB 2460123.45000 (h)", "Relative flux − 1 (%)", "masked"},
-	"detrended": {"Wavelength (µm)", "Time from BJD_TDB 2460123.45000 (h)", "Relative flux − 1 (%)", "masked"},
+	"map":       {"Wavelength (µm)", "Time from BJD_TDB 2460123.44996 (h)", "Relative flux − 1 (%)", "masked"},
+	"detrended": {"Wavelength (µm)", "Time from BJD_TDB 2460123.44996 (h)", "Relative flux − 1 (%)", "masked"},
 	"white":     {"Relative flux", "Residual (ppm)", "Time from mid-transit (h)"},
 	"grid":      {"Relative flux", "Time from mid-transit (h)"},
 	"scatter":   {"Bin length (min)", "Rms of binned residuals (ppm)", "White light", "Channels", "Uncorrelated noise"},
@@ -241,11 +241,11 @@ func TestFiguresRefuseWrongShapes(t *testing.T) {
 	}
 	few := s.cube.Clone()
 	few.Mask = few.Mask[:2]
-	if _, err := Detrended(few, s.fits); err == nil || !strings.Contains(err.Error(), "2 of flags") {
+	if _, err := Map(few); err == nil || !strings.Contains(err.Error(), "2 of flags") {
 		t.Errorf("error %v", err)
 	}
 	other := newScene(40, 3)
-	if _, err := Detrended(s.cube, other.fits); err == nil || !strings.Contains(err.Error(), "has 40 times and the cube 50") {
+	if _, err := Detrended(append(s.channels(), other.channels()...)); err == nil || !strings.Contains(err.Error(), "do not share their times") {
 		t.Errorf("error %v", err)
 	}
 	reversed := s.cube.Clone()
@@ -253,16 +253,36 @@ func TestFiguresRefuseWrongShapes(t *testing.T) {
 	if _, err := Map(reversed); err == nil || !strings.Contains(err.Error(), "expected an interval") {
 		t.Errorf("error %v", err)
 	}
-	broken := s.fits[1]
+	fits := s.channels()
+	fits[1].Channel.Lo = nan
+	if _, err := Detrended(fits); err == nil || !strings.Contains(err.Error(), "expected an interval") {
+		t.Errorf("error %v", err)
+	}
+	broken := s.white()
 	broken.Trend = nil
-	for _, draw := range []func() (Figure, error){
-		func() (Figure, error) { return WhiteFit(broken) },
-		func() (Figure, error) { return ChannelGrid([]fit.CurveFit{s.fits[2], broken}, nil) },
-		func() (Figure, error) { return BinnedScatter([]fit.CurveFit{s.fits[2], broken}) },
-		func() (Figure, error) { return Detrended(s.cube, []fit.CurveFit{broken}) },
+	if _, err := WhiteFit(broken); err == nil || !strings.Contains(err.Error(), "has 0 trend values") {
+		t.Errorf("error %v", err)
+	}
+	if _, err := BinnedScatter(broken, nil); err == nil || !strings.Contains(err.Error(), "has 0 trend values") {
+		t.Errorf("error %v", err)
+	}
+	for what, spoil := range map[string]func(*diagnose.Summary){
+		"has 49 mean times":        func(s *diagnose.Summary) { s.Flux.Time = s.Flux.Time[1:] },
+		"has 0 counts of samples":  func(s *diagnose.Summary) { s.Flux.Samples = nil },
+		"has 0 values of the mode": func(s *diagnose.Summary) { s.Model = nil },
+		"scatters of white noise":  func(s *diagnose.Summary) { s.Binning.White = s.Binning.White[:1] },
+		"has 400 intervals":        func(s *diagnose.Summary) { s.Flux.Value = make([]float64, 400) },
 	} {
-		if _, err := draw(); err == nil || !strings.Contains(err.Error(), "has 0 trend values") {
-			t.Errorf("error %v", err)
+		fits := s.channels()
+		spoil(&fits[1])
+		for _, draw := range []func() (Figure, error){
+			func() (Figure, error) { return ChannelGrid(fits, nil) },
+			func() (Figure, error) { return BinnedScatter(s.white(), fits) },
+			func() (Figure, error) { return Detrended(fits) },
+		} {
+			if _, err := draw(); err == nil || !strings.Contains(err.Error(), what) {
+				t.Errorf("error %v, expected %q", err, what)
+			}
 		}
 	}
 }

@@ -4,16 +4,16 @@ import (
 	"strings"
 	"testing"
 
-	"rimlight/steps/fit"
+	"rimlight/steps/diagnose"
+	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
 )
 
-// gapped makes a scene in which one channel has no fit at all: what stands in
+// gapped makes a scene in which one channel has no result at all: what stands in
 // its place knows the channel, and no more.
 func gapped() (s scene, at int) {
 	s, at = newScene(200, 30), 9
 	c := s.cube.Channels[at]
-	s.fits[at+1] = fit.CurveFit{Channel: c, Level: nan, Mid: nan}
 	s.points[at] = spectrum.Point{Channel: c, Depth: nan, DepthErr: nan, RadiusRatio: nan, RadiusRatioErr: nan, Chi2: nan, Scatter: nan, Flag: "out of memory"}
 	return s, at
 }
@@ -23,6 +23,10 @@ func gapped() (s scene, at int) {
 func TestFiguresWithGap(t *testing.T) {
 	s, at := gapped()
 	whole := newScene(200, 30)
+	fits := s.channels()
+	fits[at] = diagnose.Summary{Channel: fits[at].Channel, Mid: nan, Level: nan, Cadence: nan,
+		Flux:    lightcurve.Averages{Begin: nan, End: nan},
+		Scatter: diagnose.Scatter{RMS: nan, Ratio: nan}, Beta: diagnose.Beta{Value: nan, Err: nan, From: nan, To: nan}}
 	draw := func(name string, f Figure, err error) Figure {
 		t.Helper()
 		if err != nil {
@@ -33,15 +37,18 @@ func TestFiguresWithGap(t *testing.T) {
 		}
 		return f
 	}
-	f, err := Detrended(s.cube, s.fits[1:])
+	f, err := Detrended(fits)
 	draw("detrended map", f, err)
+	if want := "Fluxes of 200 integrations in 30 channels"; !strings.Contains(f.Caption, want) {
+		t.Errorf("caption %q, expected %q", f.Caption, want)
+	}
 	level := f.Data.Columns[3].Number
 	if len(level) != 30 || level[at] == level[at] {
 		t.Errorf("the map has the levels %v", level)
 	}
-	f, err = ChannelGrid(s.fits[1:], s.points)
+	f, err = ChannelGrid(fits, s.points)
 	draw("grid", f, err)
-	f, err = BinnedScatter(s.fits)
+	f, err = BinnedScatter(s.white(), fits)
 	draw("scatter", f, err)
 	f, err = LimbDarkening(s.points)
 	draw("limb darkening", f, err)

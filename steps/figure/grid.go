@@ -1,12 +1,13 @@
 package figure
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 
 	"gonum.org/v1/plot/vg"
 
-	"rimlight/steps/fit"
+	"rimlight/steps/diagnose"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
 	"rimlight/steps/table"
@@ -16,39 +17,31 @@ import (
 const (
 	gridColumns = 4
 	gridPanels  = 24
-	gridBins    = 60
+	gridBins    = 64   // which the intervals of a summary can be joined to
 	gridHeight  = 23.0 // of a panel, mm
 )
 
 // ChannelGrid draws the light curves of up to 24 channels, chosen evenly in
 // wavelength among those with a usable sample: averages of equal intervals of
 // time after division by the trend, and the transit model. All panels share their
-// axes. A white light curve among the fits (channel Index -1) is left out. points gives the depths that are written into the panels (by channel; it
+// axes. points gives the depths that are written into the panels (by channel; it
 // may be empty). It is an error when no channel has a usable sample, or when the
-// slices of a fit differ in length.
-func ChannelGrid(fits []fit.CurveFit, points []spectrum.Point) (Figure, error) {
-	var usable []fit.CurveFit
+// slices of a summary differ in length.
+func ChannelGrid(fits []diagnose.Summary, points []spectrum.Point) (Figure, error) {
+	const where = "figure of the channels"
+	var usable []diagnose.Summary
 	for _, f := range fits {
-		s, err := newSeries(f)
-		if err != nil {
-			return Figure{}, fmt.Errorf("figure of the channels: %w", err)
+		if err := f.Check(); err != nil {
+			return Figure{}, fmt.Errorf("%s: %w", where, err)
 		}
-		if s.used > 0 && f.Channel.Index >= 0 {
+		if slices.ContainsFunc(f.Flux.Used, func(n int) bool { return n > 0 }) {
 			usable = append(usable, f)
 		}
 	}
 	if len(usable) == 0 {
-		return Figure{}, fmt.Errorf("figure of the channels: none of %d fits has a usable sample; look at the masks", len(fits))
+		return Figure{}, fmt.Errorf("%s: none of %d fits has a usable sample; look at the masks", where, len(fits))
 	}
-	slices.SortStableFunc(usable, func(a, b fit.CurveFit) int {
-		switch {
-		case a.Channel.Lo < b.Channel.Lo:
-			return -1
-		case a.Channel.Lo > b.Channel.Lo:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(usable, func(a, b diagnose.Summary) int { return cmp.Compare(a.Channel.Lo, b.Channel.Lo) })
 	depths := make(map[lightcurve.Channel]spectrum.Point, len(points))
 	for _, p := range points {
 		depths[p.Channel] = p
@@ -58,12 +51,11 @@ func ChannelGrid(fits []fit.CurveFit, points []spectrum.Point) (Figure, error) {
 	var xs, ys []float64
 	width := 0.0
 	for k, i := range chosen {
-		s, err := newSeries(usable[i])
-		if err != nil {
-			return Figure{}, fmt.Errorf("figure of the channels: %w", err)
-		}
-		c := cell{channel: usable[i].Channel, bins: binned(s.hours, s.flux, gridBins), rms: rms(s.residual), title: s.timeTitle()}
-		c.modelX, c.modelY = s.modelLine()
+		f := usable[i]
+		from := newZero(f.Mid, f.Flux.Begin)
+		every := (len(f.Flux.Value) + gridBins - 1) / gridBins
+		c := cell{channel: f.Channel, bins: newBins(f.Flux, every, from.at), rms: f.Scatter.RMS, title: from.title()}
+		c.modelX, c.modelY = from.since(f.ModelTime), f.Model
 		width = c.bins.width
 		cells[k] = c
 		xs = append(xs, c.bins.x...)

@@ -6,7 +6,7 @@ import (
 
 	"gonum.org/v1/plot/vg"
 
-	"rimlight/steps/fit"
+	"rimlight/steps/diagnose"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/table"
 )
@@ -14,18 +14,23 @@ import (
 // Map draws fluxes against time and wavelength, each channel divided by the
 // median of its usable samples, as colours. Samples are averaged to at most 320
 // columns; a cell is grey when at least half of its samples are masked. Hours
-// count from the first integration. It is an error when the cube has no times or
-// channels, when its slices differ in length, and when no sample is usable.
+// count from the begin of the first integration. It is an error when the cube has
+// no times or channels, when its slices differ in length, and when no sample is
+// usable.
 func Map(cube lightcurve.Cube) (Figure, error) {
 	const where = "figure of the fluxes"
 	if err := checkCube(where, cube); err != nil {
 		return Figure{}, err
 	}
 	rows := make([]mapRow, len(cube.Channels))
+	flux := make([]float64, len(cube.Time))
 	for j := range rows {
-		rows[j] = newMapRow(cube.Channels[j], cube.Flux[j], cube.Mask[j])
+		var err error
+		if rows[j], err = newMapRow(cube, j, flux); err != nil {
+			return Figure{}, fmt.Errorf("%s: %w", where, err)
+		}
 	}
-	return drawMap(where, cube, rows, mapText{
+	return drawMap(where, rows, mapText{
 		title:  "Fluxes against time and wavelength",
 		what:   "Fluxes of %s in %s from %s, each channel divided by its median.",
 		finish: "Time–wavelength map of the fluxes.",
@@ -33,76 +38,102 @@ func Map(cube lightcurve.Cube) (Figure, error) {
 }
 
 // Detrended draws the same as [Map] after division by the trend that was fitted to
-// each channel, so that the transit and what depends on wavelength show. fits are
-// found by their channel; a channel without a fit, or with an empty one, is grey. It is an error when
-// the times of a fit are not those of the cube in number, and where [Map] gives
-// one.
-func Detrended(cube lightcurve.Cube, fits []fit.CurveFit) (Figure, error) {
+// each channel, so that the transit and what depends on wavelength show. A
+// channel of which nothing is known but that it is there is grey. It is an error
+// when the channels do not share their times, when the slices of a summary differ
+// in length, and when no sample is usable.
+func Detrended(fits []diagnose.Summary) (Figure, error) {
 	const where = "figure of the detrended fluxes"
-	if err := checkCube(where, cube); err != nil {
-		return Figure{}, err
+	if len(fits) == 0 {
+		return Figure{}, fmt.Errorf("%s: no channels; expected at least one", where)
 	}
-	byChannel := make(map[lightcurve.Channel]int, len(fits))
-	for k, f := range fits {
-		byChannel[f.Channel] = k
-	}
-	rows := make([]mapRow, len(cube.Channels))
-	for j, channel := range cube.Channels {
-		k, ok := byChannel[channel]
-		if !ok || len(fits[k].Time) == 0 {
-			rows[j] = mapRow{channel: channel, flux: make([]float64, len(cube.Time)), masked: len(cube.Time), level: nan}
-			for i := range rows[j].flux {
-				rows[j].flux[i] = nan
-			}
-			continue
-		}
-		s, err := newSeries(fits[k])
-		if err != nil {
+	rows := make([]mapRow, len(fits))
+	full := -1 // a channel with samples, which tells what others have
+	for j, f := range fits {
+		if err := f.Check(); err != nil {
 			return Figure{}, fmt.Errorf("%s: %w", where, err)
 		}
-		if len(s.flux) != len(cube.Time) {
-			return Figure{}, fmt.Errorf("%s: the fit of channel %d has %d times and the cube %d; give the cube that was fitted", where, channel.Index, len(s.flux), len(cube.Time))
+		if err := checkChannel(where, j, f.Channel); err != nil {
+			return Figure{}, err
 		}
-		rows[j] = mapRow{channel: channel, flux: s.flux, used: s.used, masked: s.masked, level: fits[k].Level}
+		rows[j] = mapRow{channel: f.Channel, flux: f.Flux, level: f.Level}
+		for k, used := range f.Flux.Used {
+			rows[j].used += used
+			rows[j].masked += f.Flux.Samples[k] - used
+		}
+		switch {
+		case len(f.Flux.Value) == 0:
+			rows[j].level = nan
+		case full < 0:
+			full = j
+		case !sameIntervals(f.Flux, fits[full].Flux):
+			return Figure{}, fmt.Errorf("%s: channels %d and %d do not share their times; give the channels of one cube", where, fits[full].Channel.Index, f.Channel.Index)
+		}
 	}
-	return drawMap(where, cube, rows, mapText{
+	if full < 0 {
+		return Figure{}, fmt.Errorf("%s: none of %d channels has a sample", where, len(fits))
+	}
+	for j := range rows {
+		if len(rows[j].flux.Value) == 0 {
+			rows[j].flux, rows[j].masked = masked(rows[full].flux), rows[full].used+rows[full].masked
+		}
+	}
+	return drawMap(where, rows, mapText{
 		title:  "Detrended fluxes against time and wavelength",
 		what:   "Fluxes of %s in %s from %s after division by the trend fitted to each channel.",
 		finish: "Time–wavelength map of the detrended fluxes.",
 	})
 }
 
+// sameIntervals reports whether averages are over the same intervals of time.
+func sameIntervals(a, b lightcurve.Averages) bool {
+	return a.Begin == b.Begin && a.End == b.End && len(a.Value) == len(b.Value)
+}
+
+// masked gives averages over the same intervals, without a usable sample.
+func masked(a lightcurve.Averages) lightcurve.Averages {
+	out := a
+	out.Value, out.Used = make([]float64, len(a.Value)), make([]int, len(a.Value))
+	for k := range out.Value {
+		out.Value[k] = nan
+	}
+	return out
+}
+
 // A mapText is what differs between the two maps in words.
 type mapText struct{ title, what, finish string }
 
-// A mapRow is one channel of a map.
+// A mapRow is one channel of a map. All rows of a map have the same intervals of
+// time.
 type mapRow struct {
 	channel lightcurve.Channel
-	flux    []float64 // about 1; NaN where masked
+	flux    lightcurve.Averages // about 1
 	used    int
 	masked  int
 	level   float64 // what the fluxes were divided by, in the unit of the input; NaN when nothing was usable
 }
 
-// newMapRow divides the usable fluxes of a channel by their median.
-func newMapRow(channel lightcurve.Channel, flux []float64, mask []lightcurve.Flag) mapRow {
-	row := mapRow{channel: channel, flux: make([]float64, len(flux))}
-	for i, f := range flux {
-		row.flux[i] = nan
-		if mask[i] == 0 && finite(f) {
-			row.flux[i] = f
+// newMapRow divides the usable fluxes of channel j by their median, and averages
+// them. It overwrites flux, which has the length of a channel.
+func newMapRow(cube lightcurve.Cube, j int, flux []float64) (mapRow, error) {
+	for i, f := range cube.Flux[j] {
+		flux[i] = nan
+		if cube.Mask[j][i] == 0 && finite(f) {
+			flux[i] = f
 		}
 	}
-	row.level = median(row.flux)
-	for i := range row.flux {
-		if row.flux[i] /= row.level; finite(row.flux[i]) {
+	row := mapRow{channel: cube.Channels[j], level: median(flux)}
+	for i := range flux {
+		if flux[i] /= row.level; finite(flux[i]) {
 			row.used++
 		} else {
-			row.flux[i] = nan
+			flux[i] = nan
 		}
 	}
 	row.masked = len(flux) - row.used
-	return row
+	var err error
+	row.flux, err = lightcurve.Average(cube.Time, flux, diagnose.Intervals)
+	return row, err
 }
 
 // checkCube reports what keeps a cube from being drawn.
@@ -118,8 +149,8 @@ func checkCube(where string, cube lightcurve.Cube) error {
 		if len(cube.Flux[j]) != n || len(cube.Mask[j]) != n {
 			return fmt.Errorf("%s: channel %d has %d fluxes and %d flags; expected one of each for %d times", where, j, len(cube.Flux[j]), len(cube.Mask[j]), n)
 		}
-		if !(c.Lo < c.Hi) || !finite(c.Lo) || !finite(c.Hi) {
-			return fmt.Errorf("%s: channel %d reaches from %g to %g um; expected an interval, lower edge first", where, j, c.Lo, c.Hi)
+		if err := checkChannel(where, j, c); err != nil {
+			return err
 		}
 	}
 	if lo, _ := extent(cube.Time); !finite(lo) {
@@ -128,10 +159,17 @@ func checkCube(where string, cube lightcurve.Cube) error {
 	return nil
 }
 
-// drawMap draws rows, which have the times of the cube.
-func drawMap(where string, cube lightcurve.Cube, rows []mapRow, words mapText) (Figure, error) {
-	first, _ := extent(cube.Time)
-	raster := newRaster(cube.Time, rows)
+// checkChannel reports what keeps a channel from being drawn.
+func checkChannel(where string, j int, c lightcurve.Channel) error {
+	if !(c.Lo < c.Hi) || !finite(c.Lo) || !finite(c.Hi) {
+		return fmt.Errorf("%s: channel %d reaches from %g to %g um; expected an interval, lower edge first", where, j, c.Lo, c.Hi)
+	}
+	return nil
+}
+
+// drawMap draws rows, of which there is at least one.
+func drawMap(where string, rows []mapRow, words mapText) (Figure, error) {
+	raster := newRaster(rows)
 	values := finites(raster.value)
 	if len(values) == 0 {
 		return Figure{}, fmt.Errorf("%s: none of the samples of %d channels is usable; look at the mask", where, len(rows))
@@ -148,11 +186,11 @@ func drawMap(where string, cube lightcurve.Cube, rows []mapRow, words mapText) (
 	waves := newSpan(raster.lo, raster.hi)
 	from := p.margin(8, waves)
 	barAt := doubleColumn - 20.5
-	zero := newSpan((raster.from-first)*hours, (raster.to-first)*hours)
-	panel := p.newPanel(from, bottomMargin, barAt-3-from, height, zero, waves)
+	length := newSpan(0, (raster.to-raster.from)*hours)
+	panel := p.newPanel(from, bottomMargin, barAt-3-from, height, length, waves)
 	panel.image(panel.box, raster.picture(func(v float64) float64 { return scale.at((v - 1) * factor) }))
 	panel.axes(axes{
-		xTitle: fmt.Sprintf("Time from BJD_TDB %.5f (h)", first), yTitle: waveTitle,
+		xTitle: fmt.Sprintf("Time from BJD_TDB %.5f (h)", raster.from), yTitle: waveTitle,
 		xLabels: 8, yLabels: 8, margin: from,
 	})
 	bar := p.newPanel(barAt, bottomMargin+height-barHeight, 3.5, barHeight, newSpan(0, 1), scale)
@@ -164,10 +202,11 @@ func drawMap(where string, cube lightcurve.Cube, rows []mapRow, words mapText) (
 	legend.write(legend.point(1.35, 0.5), label{text: "masked", size: tickSize, up: center, color: ink})
 
 	var dead []string
-	used, all := 0, 0
+	used, all, integrations := 0, 0, 0
 	columns := make([][]float64, 6)
 	for _, r := range rows {
-		used, all = used+r.used, all+len(r.flux)
+		used, all = used+r.used, all+r.used+r.masked
+		integrations = max(integrations, r.used+r.masked)
 		if r.used == 0 {
 			dead = append(dead, wave(r.channel)+" µm")
 		}
@@ -187,9 +226,9 @@ func drawMap(where string, cube lightcurve.Cube, rows []mapRow, words mapText) (
 	colours := fmt.Sprintf("Colours span %s to %s %s, which holds 99 %% of the cells.", plain(scale.lo, 3), plain(scale.hi, 3), unit)
 	return finish(p, Figure{
 		Title: words.title,
-		Caption: sentences(fmt.Sprintf(words.what, counted(len(cube.Time), "integration"), counted(len(rows), "channel"), waveRange(raster.lo, raster.hi)),
+		Caption: sentences(fmt.Sprintf(words.what, counted(integrations, "integration"), counted(len(rows), "channel"), waveRange(raster.lo, raster.hi)),
 			how, colours, masked, lost, "Grey: at least half of a cell is masked."),
-		Alt: sentences(words.finish, fmt.Sprintf("Over %s h the relative flux varies from %s to %s %s.", plain(zero.hi-zero.lo, 3), plain(scale.lo, 3), plain(scale.hi, 3), unit), masked, lost),
+		Alt: sentences(words.finish, fmt.Sprintf("Over %s h the relative flux varies from %s to %s %s.", plain(length.hi-length.lo, 3), plain(scale.lo, 3), plain(scale.hi, 3), unit), masked, lost),
 		Data: table.Table{Title: "Channels of the map", Columns: []table.Column{
 			table.Number("channel", "", "position in the input", 6, columns[0]),
 			table.Number("wave_lo", "um", "lower edge", 6, columns[1]),

@@ -4,15 +4,11 @@ import (
 	"image"
 	"math"
 	"slices"
-
-	"rimlight/steps/diagnose"
 )
 
-// Largest size of the image of a map, in cells.
-const (
-	mapColumns = 320
-	mapRows    = 360
-)
+// mapRows is the greatest number of rows of the image of a map. It has the
+// columns that its channels have intervals.
+const mapRows = 360
 
 // A raster is a map as an image: equal intervals of time by equal intervals of
 // wavelength, row by row from the longest wavelength.
@@ -25,60 +21,44 @@ type raster struct {
 	most          int    // samples of one channel in a cell
 }
 
-// newRaster averages the rows of a map.
-func newRaster(time []float64, channels []mapRow) raster {
-	first, last := extent(time)
-	step := diagnose.Cadence(time) / (hours * minutes)
-	if !(step > 0) {
-		step = 1.0 / (hours * minutes)
-	}
-	out := raster{from: first - step/2, to: last + step/2, lo: math.Inf(1), hi: math.Inf(-1)}
-	out.columns = int(min(max(math.Round((out.to-out.from)/step), 1), mapColumns))
+// newRaster puts channels that share their intervals of time together.
+func newRaster(channels []mapRow) raster {
+	time := channels[0].flux
+	out := raster{columns: len(time.Value), from: time.Begin, to: time.End, lo: math.Inf(1), hi: math.Inf(-1)}
 	narrow, wide := math.Inf(1), 0.0
 	for _, r := range channels {
 		c := r.channel
 		out.lo, out.hi = min(out.lo, c.Lo), max(out.hi, c.Hi)
 		narrow, wide = min(narrow, c.Hi-c.Lo), max(wide, c.Hi-c.Lo)
+		out.most = max(out.most, slices.Max(r.flux.Samples))
 	}
 	// Channels of one width without gaps need one row each.
 	out.rows = mapRows
 	if n := (out.hi - out.lo) / wide; wide-narrow <= 0.01*wide && math.Abs(n-float64(len(channels))) < 0.01 && len(channels) < mapRows {
 		out.rows = len(channels)
 	}
-	column := make([]int, len(time)) // of each time, -1 for none
-	seen := make([]int, out.columns)
-	for i, t := range time {
-		column[i] = -1
-		if finite(t) {
-			column[i] = min(max(int(float64(out.columns)*((t-out.from)/(out.to-out.from))), 0), out.columns-1)
-			seen[column[i]]++
-		}
-	}
-	out.most = slices.Max(seen)
 	out.value = make([]float64, out.columns*out.rows)
 	out.filled = make([]bool, len(out.value))
-	sum, good, bad := make([]float64, out.columns), make([]int, out.columns), make([]int, out.columns)
+	sum, good, all := make([]float64, out.columns), make([]int, out.columns), make([]int, out.columns)
 	for row := range out.rows {
 		clear(sum)
 		clear(good)
-		clear(bad)
+		clear(all)
 		for _, j := range out.channelsOf(row, channels) {
-			for i, f := range channels[j].flux {
-				switch c := column[i]; {
-				case c < 0:
-				case finite(f):
-					sum[c] += f
-					good[c]++
-				default:
-					bad[c]++
+			flux := channels[j].flux
+			for c, used := range flux.Used {
+				all[c] += flux.Samples[c]
+				if finite(flux.Value[c]) {
+					sum[c] += flux.Value[c] * float64(used)
+					good[c] += used
 				}
 			}
 		}
 		for c := range out.columns {
 			k := row*out.columns + c
-			out.filled[k] = good[c]+bad[c] > 0
+			out.filled[k] = all[c] > 0
 			out.value[k] = nan
-			if good[c] > bad[c] {
+			if 2*good[c] > all[c] {
 				out.value[k] = sum[c] / float64(good[c])
 			}
 		}

@@ -4,16 +4,26 @@ import (
 	"math"
 	"testing"
 
+	"rimlight/steps/diagnose"
 	"rimlight/steps/lightcurve"
 )
 
+// rowOf averages the values of a channel.
+func rowOf(t *testing.T, c lightcurve.Channel, time, value []float64) mapRow {
+	t.Helper()
+	flux, err := lightcurve.Average(time, value, diagnose.Intervals)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return mapRow{channel: c, flux: flux}
+}
+
 func TestRaster(t *testing.T) {
 	time := []float64{0, 1, 2, 5} // a gap of two integrations
-	rows := []mapRow{
-		{channel: lightcurve.Channel{Index: 0, Lo: 1, Hi: 2}, flux: []float64{1, 2, nan, 4}},
-		{channel: lightcurve.Channel{Index: 1, Lo: 2, Hi: 3}, flux: []float64{5, 6, 7, 8}},
-	}
-	r := newRaster(time, rows)
+	r := newRaster([]mapRow{
+		rowOf(t, lightcurve.Channel{Index: 0, Lo: 1, Hi: 2}, time, []float64{1, 2, nan, 4}),
+		rowOf(t, lightcurve.Channel{Index: 1, Lo: 2, Hi: 3}, time, []float64{5, 6, 7, 8}),
+	})
 	if r.columns != 6 || r.rows != 2 || r.from != -0.5 || r.to != 5.5 || r.most != 1 {
 		t.Fatalf("%+v", r)
 	}
@@ -52,11 +62,11 @@ func TestRasterAverages(t *testing.T) {
 			half[i] = nan
 		}
 	}
-	r := newRaster(time, []mapRow{
-		{channel: lightcurve.Channel{Index: 0, Lo: 1, Hi: 1.5}, flux: flat},
-		{channel: lightcurve.Channel{Index: 1, Lo: 2, Hi: 4}, flux: half},
+	r := newRaster([]mapRow{
+		rowOf(t, lightcurve.Channel{Index: 0, Lo: 1, Hi: 1.5}, time, flat),
+		rowOf(t, lightcurve.Channel{Index: 1, Lo: 2, Hi: 4}, time, half),
 	})
-	if r.columns != mapColumns || r.rows != mapRows || r.most < 10 || r.most > 11 {
+	if r.columns != diagnose.Intervals || r.rows != mapRows || r.most < 10 || r.most > 11 {
 		t.Fatalf("%d columns, %d rows, %d samples", r.columns, r.rows, r.most)
 	}
 	low := (r.rows-1)*r.columns + 7

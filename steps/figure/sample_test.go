@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 
+	"rimlight/steps/diagnose"
 	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
@@ -97,6 +98,27 @@ func newScene(n, m int) scene {
 	return s
 }
 
+// white is the fit of the white light curve.
+func (s scene) white() fit.CurveFit {
+	if len(s.fits) == 0 {
+		return fit.CurveFit{}
+	}
+	return s.fits[0]
+}
+
+// channels sums the fits of the channels up.
+func (s scene) channels() []diagnose.Summary {
+	var out []diagnose.Summary
+	for _, f := range s.fits[min(1, len(s.fits)):] {
+		sum, err := diagnose.Summarise(f)
+		if err != nil {
+			panic(err)
+		}
+		out = append(out, sum)
+	}
+	return out
+}
+
 // spectrum assembles the points.
 func (s scene) spectrum() spectrum.Spectrum {
 	out, err := spectrum.Assemble(s.points, nil)
@@ -117,15 +139,10 @@ type drawing struct {
 func drawings() []drawing {
 	return []drawing{
 		{"map", func(s scene) (Figure, error) { return Map(s.cube) }},
-		{"detrended", func(s scene) (Figure, error) { return Detrended(s.cube, s.fits) }},
-		{"white", func(s scene) (Figure, error) {
-			if len(s.fits) == 0 {
-				return WhiteFit(fit.CurveFit{})
-			}
-			return WhiteFit(s.fits[0])
-		}},
-		{"grid", func(s scene) (Figure, error) { return ChannelGrid(s.fits, s.points) }},
-		{"scatter", func(s scene) (Figure, error) { return BinnedScatter(s.fits) }},
+		{"detrended", func(s scene) (Figure, error) { return Detrended(s.channels()) }},
+		{"white", func(s scene) (Figure, error) { return WhiteFit(s.white()) }},
+		{"grid", func(s scene) (Figure, error) { return ChannelGrid(s.channels(), s.points) }},
+		{"scatter", func(s scene) (Figure, error) { return BinnedScatter(s.white(), s.channels()) }},
 		{"limb", func(s scene) (Figure, error) { return LimbDarkening(s.points) }},
 		{"spectrum", func(s scene) (Figure, error) { return Spectrum(s.spectrum()) }},
 	}

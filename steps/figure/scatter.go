@@ -8,7 +8,6 @@ import (
 
 	"rimlight/steps/diagnose"
 	"rimlight/steps/fit"
-	"rimlight/steps/lightcurve"
 	"rimlight/steps/table"
 )
 
@@ -19,71 +18,53 @@ type falloff struct {
 	minutes  []float64 // of a bin; NaN when times do not tell
 	rms      []float64 // ppm
 	expected []float64 // of uncorrelated noise, ppm
+	excess   float64   // how much bins of 10 to 30 minutes scatter more than that, a factor; NaN when it cannot be told
 }
 
-// newFalloff measures the residuals of f; it has no element when there are too
-// few.
-func newFalloff(f fit.CurveFit) (falloff, error) {
-	residual, err := diagnose.Residuals(f)
-	if err != nil {
-		return falloff{}, err
+// newFalloff takes the scatter of residuals from a summary; it has no element when
+// there are too few of them.
+func newFalloff(s diagnose.Summary) falloff {
+	b := s.Binning
+	out := falloff{excess: s.Beta.Value}
+	if len(b.RMS) == 0 || !(b.RMS[0] > 0) {
+		return out
 	}
-	binning, err := lightcurve.Binned(residual)
-	if err != nil || !(binning.RMS[0] > 0) {
-		return falloff{}, nil
-	}
-	cadence := diagnose.Cadence(f.Time)
-	var out falloff
-	for k, size := range binning.Size {
+	for k, size := range b.Size {
 		out.size = append(out.size, float64(size))
-		out.minutes = append(out.minutes, float64(size)*cadence)
-		out.rms = append(out.rms, binning.RMS[k]*perMillion)
-		out.expected = append(out.expected, diagnose.Expected(binning.White[k], binning.Bins[k])*perMillion)
+		out.minutes = append(out.minutes, float64(size)*s.Cadence)
+		out.rms = append(out.rms, b.RMS[k]*perMillion)
+		out.expected = append(out.expected, diagnose.Expected(b.White[k], b.Bins[k])*perMillion)
 	}
-	return out, nil
-}
-
-// excess is the mean ratio of measured to expected scatter in bins of 10 to 30
-// minutes, NaN without any.
-func (f falloff) excess() float64 {
-	sum, n := 0.0, 0
-	for k, m := range f.minutes {
-		if m >= 10 && m <= 30 && k > 0 {
-			sum += f.rms[k] / f.expected[k]
-			n++
-		}
-	}
-	return sum / float64(n)
+	return out
 }
 
 // BinnedScatter draws the root mean square of residuals averaged in bins against
-// the length of the bins, on logarithmic axes: the white light curve (the fit
-// whose channel has Index -1) as a thick line, each channel as a thin one. Dashed
-// lines are what uncorrelated noise gives, σ₁ / √N · √(M/(M-1)) for M bins of N
-// integrations (Winn et al. 2008), for the white light curve and for the median
-// channel. Fits with fewer than ten residuals are left out; it is an error when
-// none is left, or when the slices of a fit differ in length.
-func BinnedScatter(fits []fit.CurveFit) (Figure, error) {
-	var white falloff
+// the length of the bins, on logarithmic axes: the white light curve as a thick
+// line, each channel as a thin one. Dashed lines are what uncorrelated noise
+// gives, σ₁ / √N · √(M/(M-1)) for M bins of N integrations (Winn et al. 2008), for
+// the white light curve and for the median channel. Light curves with fewer than
+// ten residuals are left out; it is an error when none is left, or when slices
+// differ in length.
+func BinnedScatter(whiteFit fit.CurveFit, fits []diagnose.Summary) (Figure, error) {
+	const where = "figure of binned scatter"
+	sum, err := diagnose.Summarise(whiteFit)
+	if err != nil {
+		return Figure{}, fmt.Errorf("%s: %w", where, err)
+	}
+	white := newFalloff(sum)
+	timed := len(white.size) == 0 || finite(sum.Cadence) && sum.Cadence > 0
 	var channels []falloff
-	timed := true
 	for _, f := range fits {
-		one, err := newFalloff(f)
-		if err != nil {
-			return Figure{}, fmt.Errorf("figure of binned scatter: %w", err)
+		if err := f.Check(); err != nil {
+			return Figure{}, fmt.Errorf("%s: %w", where, err)
 		}
-		if len(one.size) == 0 {
-			continue
-		}
-		timed = timed && one.minutes[0] > 0 && finite(one.minutes[0])
-		if f.Channel.Index == -1 && len(white.size) == 0 {
-			white = one
-		} else {
+		if one := newFalloff(f); len(one.size) > 0 {
+			timed = timed && finite(f.Cadence) && f.Cadence > 0
 			channels = append(channels, one)
 		}
 	}
 	if len(white.size) == 0 && len(channels) == 0 {
-		return Figure{}, fmt.Errorf("figure of binned scatter: none of %d fits has ten residuals; look at the masks", len(fits))
+		return Figure{}, fmt.Errorf(where+": neither the white light curve nor any of %d channels has ten residuals; look at the masks", len(fits))
 	}
 	length := func(f falloff) []float64 {
 		if timed {
@@ -124,11 +105,11 @@ func BinnedScatter(fits []fit.CurveFit) (Figure, error) {
 
 	var excesses []float64
 	for _, f := range channels {
-		excesses = append(excesses, f.excess())
+		excesses = append(excesses, f.excess)
 	}
 	var found []string
 	if len(white.size) > 0 {
-		found = append(found, fmt.Sprintf("White-light residuals scatter by %s unbinned%s.", ppm(white.rms[0]/perMillion), asExcess("", white.excess())))
+		found = append(found, fmt.Sprintf("White-light residuals scatter by %s unbinned%s.", ppm(white.rms[0]/perMillion), asExcess("", white.excess)))
 	}
 	if len(channels) > 0 {
 		found = append(found, fmt.Sprintf("The median channel scatters by %s%s.", ppm(middle.rms[0]/perMillion), asExcess("the median over channels is ", median(excesses))))

@@ -6,19 +6,20 @@ import (
 
 	"rimlight/steps/diagnose"
 	"rimlight/steps/fit"
+	"rimlight/steps/lightcurve"
 )
 
 // A series is what a figure shows of a curve fit: usable samples after division
 // by the trend.
 type series struct {
-	hours    []float64 // from mid-transit
+	zero
+	time     []float64 // BJD_TDB, days
+	hours    []float64 // from zero
 	flux     []float64 // flux over trend; NaN where masked
 	model    []float64 // transit model
 	residual []float64 // flux less model; NaN where masked
 	used     int
 	masked   int
-	middle   float64 // BJD_TDB that hours count from
-	known    bool    // middle is mid-transit, not merely the first time
 }
 
 // newSeries prepares a curve fit. It is an error when slices differ in length;
@@ -28,13 +29,10 @@ func newSeries(f fit.CurveFit) (series, error) {
 	if err != nil {
 		return series{}, err
 	}
-	out := series{residual: residual, model: f.Transit, middle: f.Mid, known: true}
-	if lo, _ := extent(f.Time); !finite(f.Mid) {
-		out.middle, out.known = lo, false
-	}
-	out.hours, out.flux = make([]float64, len(f.Time)), make([]float64, len(f.Time))
-	for i, t := range f.Time {
-		out.hours[i] = (t - out.middle) * hours
+	first, _ := extent(f.Time)
+	out := series{zero: newZero(f.Mid, first), time: f.Time, residual: residual, model: f.Transit}
+	out.hours, out.flux = out.since(f.Time), make([]float64, len(f.Time))
+	for i := range f.Time {
 		if !finite(out.hours[i]) {
 			out.residual[i] = math.NaN()
 		}
@@ -48,20 +46,13 @@ func newSeries(f fit.CurveFit) (series, error) {
 	return out, nil
 }
 
-// timeTitle is the title of a time axis that counts from the middle.
-func (s series) timeTitle() string {
-	if s.known {
-		return "Time from mid-transit (h)"
+// binned averages values of the series, a few of them at least in each interval.
+func (s series) binned(value []float64) (bins, error) {
+	averages, err := lightcurve.Average(s.time, value, min(whiteBins, max(s.used/4, leastBins)))
+	if err != nil {
+		return bins{}, err
 	}
-	return "Time from the first integration (h)"
-}
-
-// since says what the hours count from.
-func (s series) since() string {
-	if s.known {
-		return fmt.Sprintf("Hours count from mid-transit at BJD_TDB %.5f.", s.middle)
-	}
-	return fmt.Sprintf("Hours count from the first integration at BJD_TDB %.5f.", s.middle)
+	return newBins(averages, 1, s.at), nil
 }
 
 // depth returns how far the model falls below its maximum of 1, and for how many
@@ -83,12 +74,41 @@ func (s series) depth() (depth, duration float64) {
 	return depth, last - first
 }
 
-// bend is how far a drawn model may lie from the model, in units of its depth.
-const bend = 5e-4
+// A zero is the time that the hours of a figure count from.
+type zero struct {
+	at    float64 // BJD_TDB, days
+	known bool    // it is mid-transit, not merely the first time
+}
 
-// modelLine returns the points of the model that a line through it needs.
-func (s series) modelLine() (x, y []float64) {
-	depth, _ := s.depth()
-	index := simplified(s.hours, s.model, max(bend*depth, 1e-9))
-	return pick(s.hours, index), pick(s.model, index)
+// newZero takes mid-transit, or else the first time.
+func newZero(mid, first float64) zero {
+	if finite(mid) {
+		return zero{mid, true}
+	}
+	return zero{first, false}
+}
+
+// since gives times in hours from zero.
+func (z zero) since(time []float64) []float64 {
+	out := make([]float64, len(time))
+	for i, t := range time {
+		out[i] = (t - z.at) * hours
+	}
+	return out
+}
+
+// title is the title of a time axis.
+func (z zero) title() string {
+	if z.known {
+		return "Time from mid-transit (h)"
+	}
+	return "Time from the first integration (h)"
+}
+
+// sentence says what the hours count from.
+func (z zero) sentence() string {
+	if z.known {
+		return fmt.Sprintf("Hours count from mid-transit at BJD_TDB %.5f.", z.at)
+	}
+	return fmt.Sprintf("Hours count from the first integration at BJD_TDB %.5f.", z.at)
 }

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"rimlight/steps/diagnose"
 	"rimlight/steps/fit"
 	"rimlight/steps/table"
 )
@@ -28,8 +29,18 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 	if s.used == 0 {
 		return Figure{}, fmt.Errorf("figure of the white fit: none of %d samples is usable; look at the mask", len(f.Time))
 	}
-	count := min(whiteBins, max(s.used/4, leastBins))
-	flux, residual := binned(s.hours, s.flux, count), binned(s.hours, s.residual, count)
+	flux, err := s.binned(s.flux)
+	if err != nil {
+		return Figure{}, fmt.Errorf("figure of the white fit: %w", err)
+	}
+	residual, err := s.binned(s.residual)
+	if err != nil {
+		return Figure{}, fmt.Errorf("figure of the white fit: %w", err)
+	}
+	summary, err := diagnose.Summarise(f)
+	if err != nil {
+		return Figure{}, fmt.Errorf("figure of the white fit: %w", err)
+	}
 	dot := 0.9
 	if s.used < fewPoints {
 		dot = 1.6
@@ -53,8 +64,7 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 	up := p.newPanel(from, bottomMargin+downHeight+gap, box, upHeight, x, fluxes)
 	up.dots(pick(s.hours, index), pick(s.flux, index), dot, faint(teal, 0.45))
 	up.rings(flux.x, flux.y, 2.9, indigo, color(0xe4e3f6))
-	modelX, modelY := s.modelLine()
-	up.line(modelX, modelY, stroke{color: amber, width: 0.9})
+	up.line(s.since(summary.ModelTime), summary.Model, stroke{color: amber, width: 0.9})
 	up.axes(axes{yTitle: "Relative flux", xLabels: 6, yLabels: upLabels, hideX: true, margin: from})
 
 	down := p.newPanel(from, bottomMargin, box, downHeight, x, ppmSpan)
@@ -67,7 +77,7 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 	}
 	down.errorBars(residual.x, means, errs, stroke{color: indigo, width: 0.6})
 	down.rings(residual.x, means, 2.9, indigo, color(0xe4e3f6))
-	down.axes(axes{xTitle: s.timeTitle(), yTitle: "Residual (ppm)", xLabels: 6, yLabels: downLabels, margin: from})
+	down.axes(axes{xTitle: s.title(), yTitle: "Residual (ppm)", xLabels: 6, yLabels: downLabels, margin: from})
 
 	depth, duration := s.depth()
 	expected := expectedRMS(residual.count, single)
@@ -86,7 +96,7 @@ func WhiteFit(f fit.CurveFit) (Figure, error) {
 		fmt.Sprintf("Circles are averages over %s min; %s.", plain(flux.width*minutes, 2), lowerFirst(raw)),
 		fmt.Sprintf("Below: residuals, with a root mean square of %s in one integration and %s in the averages, where uncorrelated noise would give %s.",
 			ppm(single), ppm(rms(residual.y)), ppm(expected)),
-		s.since())
+		s.sentence())
 	title := "White light curve and its fit"
 	if f.Channel.Index >= 0 {
 		title = "Light curve at " + wave(f.Channel) + " µm and its fit"

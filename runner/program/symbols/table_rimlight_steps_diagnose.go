@@ -10,15 +10,15 @@ import (
 func init() {
 	Table["rimlight/steps/diagnose/diagnose"] = map[string]reflect.Value{
 		"Beta":            reflect.ValueOf((*diagnose.Beta)(nil)),
-		"Cadence":         reflect.ValueOf(diagnose.Cadence),
 		"Expected":        reflect.ValueOf(diagnose.Expected),
 		"FitChecks":       reflect.ValueOf(diagnose.FitChecks),
 		"ResidualChecks":  reflect.ValueOf(diagnose.ResidualChecks),
 		"ResidualScatter": reflect.ValueOf(diagnose.ResidualScatter),
 		"Residuals":       reflect.ValueOf(diagnose.Residuals),
 		"Scatter":         reflect.ValueOf((*diagnose.Scatter)(nil)),
-		"Shape":           reflect.ValueOf(diagnose.Shape),
 		"SpectrumChecks":  reflect.ValueOf(diagnose.SpectrumChecks),
+		"Summarise":       reflect.ValueOf(diagnose.Summarise),
+		"Summary":         reflect.ValueOf((*diagnose.Summary)(nil)),
 		"TimeAveraging":   reflect.ValueOf(diagnose.TimeAveraging),
 	}
 }

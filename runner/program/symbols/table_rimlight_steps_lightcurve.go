@@ -9,8 +9,11 @@ import (
 
 func init() {
 	Table["rimlight/steps/lightcurve/lightcurve"] = map[string]reflect.Value{
+		"Average":             reflect.ValueOf(lightcurve.Average),
+		"Averages":            reflect.ValueOf((*lightcurve.Averages)(nil)),
 		"Binned":              reflect.ValueOf(lightcurve.Binned),
 		"Binning":             reflect.ValueOf((*lightcurve.Binning)(nil)),
+		"Cadence":             reflect.ValueOf(lightcurve.Cadence),
 		"Channel":             reflect.ValueOf((*lightcurve.Channel)(nil)),
 		"Column":              reflect.ValueOf((*lightcurve.Column)(nil)),
 		"Columns":             reflect.ValueOf((*lightcurve.Columns)(nil)),
