@@ -14,6 +14,7 @@ import (
 	"rimlight/steps/fit"
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
+	"rimlight/steps/systematics"
 	"rimlight/steps/table"
 )
 
@@ -274,7 +275,7 @@ func sampleWhite(rng *rand.Rand, c lightcurve.Cube) (fit.Posterior, fit.CurveFit
 			{Name: "impactParameter", Value: 0.3089, Err: 0.0221}, {Name: "T14", Value: 0.10391, Err: 0.00021, Unit: "d", About: "first to fourth contact"}},
 		Chi2: 2981.24, Dof: 2988, Samples: 2996, Iterations: 14, Status: "converged",
 		Warnings: []string{"axisRatio and inclination are correlated by 0.97: the data give their combination only"},
-		Model:    "F(t) = transit(t; Rp/Rs, T₀, a/Rs, i, u₁, u₂) × (1 + slope t + A exp(−t/τ))",
+		Model:    fit.Model{Period: 3.2, Trend: systematics.Trend{Polynomial: 1, Settling: true, Regressors: []string{"X"}}},
 	}
 	for i := range names {
 		row := make([]float64, len(names))

@@ -26,6 +26,7 @@ type block struct {
 	Verdicts  []verdictView
 	Facts     []fact
 	Posterior *posteriorView
+	Equation  *equationView
 	Tree      *node
 }
 
@@ -79,6 +80,8 @@ func (b *builder) show(title string, value any) []block {
 		return []block{{Posterior: b.posterior(v)}}
 	case []fit.Posterior:
 		return b.posteriors(title, v)
+	case fit.Model:
+		return b.model(v)
 	case fit.Priors:
 		return []block{{Grid: b.numbered(priorsGrid(v))}}
 	case fit.Quantity:

@@ -3,6 +3,7 @@ package reports
 import (
 	"cmp"
 	"fmt"
+	"html/template"
 	"math"
 	"slices"
 	"strings"
@@ -19,7 +20,7 @@ type posteriorView struct {
 	Fit         string // chi-square and how the fit ended
 	Odd         bool   // it did not converge
 	Warnings    []string
-	Model       string
+	Model       *equationView
 	Correlation *correlationView
 	Pairs       string // strongest correlations in words, when there are too many for a matrix
 }
@@ -48,13 +49,14 @@ const (
 
 func (b *builder) posterior(p fit.Posterior) *posteriorView {
 	b.tables++
-	v := &posteriorView{Number: b.tables, Model: sentence(p.Model), Odd: p.Status != "" && p.Status != "converged"}
+	v := &posteriorView{Number: b.tables, Odd: p.Status != "" && p.Status != "converged"}
+	v.Model = equation(p.Model)
 	for i, n := range p.Names {
 		if i == shownParameters {
 			break
 		}
 		q, _ := quantity(fit.Posterior{Names: p.Names[i : i+1], Value: tail(p.Value, i), Err: tail(p.Err, i), Units: tail(p.Units, i)}, n)
-		v.Free = append(v.Free, parameterView{Name: label(n), Symbol: symbols[n], Value: measured(q.Value, q.Err), Unit: label(q.Unit), Prior: b.priorOf(n)})
+		v.Free = append(v.Free, parameterView{Name: label(n), Symbol: symbols[n], Value: measured(q.Value, q.Err), Unit: label(q.Unit), Prior: b.priorOf(p.Model, n)})
 	}
 	for i, h := range p.Held {
 		if i == shownParameters {
@@ -80,6 +82,47 @@ func (b *builder) posterior(p fit.Posterior) *posteriorView {
 	return v
 }
 
+// An equationView is a model as papers print it.
+type equationView struct {
+	Lines []template.HTML // MathML
+	Where []string        // what the symbols mean
+}
+
+// equation writes a model out; nil when there is none.
+func equation(m fit.Model) *equationView {
+	if m.Period == 0 {
+		return nil
+	}
+	v := new(equationView)
+	e := m.Equation()
+	for _, line := range e.MathML {
+		v.Lines = append(v.Lines, template.HTML(line)) // made by the library, of names that are escaped
+	}
+	for _, clause := range e.Where {
+		v.Where = append(v.Where, sentence(clause))
+	}
+	return v
+}
+
+// model shows a declared model: its equation, and the priors of its parameters.
+func (b *builder) model(m fit.Model) []block {
+	blocks := []block{{Text: "a model without a period"}}
+	if e := equation(m); e != nil {
+		blocks[0] = block{Equation: e}
+	}
+	for _, rows := range []struct {
+		caption string
+		priors  fit.Priors
+	}{{"Priors of the white light curve", m.White}, {"Priors of each channel", m.Channel}} {
+		if len(rows.priors) > 0 {
+			g := priorsGrid(rows.priors)
+			g.Caption = rows.caption
+			blocks = append(blocks, block{Grid: b.numbered(g)})
+		}
+	}
+	return blocks
+}
+
 func tail[T any](s []T, i int) []T {
 	if i >= len(s) {
 		return nil
@@ -87,9 +130,10 @@ func tail[T any](s []T, i int) []T {
 	return s[i:]
 }
 
-// priorOf finds a parameter's prior among the arguments of the step at hand.
-func (b *builder) priorOf(parameter string) string {
-	for _, p := range b.priors {
+// priorOf finds a parameter's prior in the model, or among the arguments of the
+// step at hand.
+func (b *builder) priorOf(m fit.Model, parameter string) string {
+	for _, p := range slices.Concat(m.White, b.priors) {
 		if p.Name == parameter {
 			return priorText(p)
 		}

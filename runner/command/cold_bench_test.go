@@ -112,8 +112,8 @@ func shippedNatively(b *testing.B, p *plan.Plan) []byte {
 		b.Fatalf("step %s has no argument %s", step, name)
 		return nil
 	}
-	number := func(name string) float64 { return set("Describe", name).(float64) }
-	word := func(name string) string { return set("Describe", name).(string) }
+	number := func(name string) float64 { return set("Declare", name).(float64) }
+	word := func(name string) string { return set("Declare", name).(string) }
 
 	file, err := os.ReadFile(p.Inputs[0].Paths[0])
 	must(err)
@@ -130,27 +130,27 @@ func shippedNatively(b *testing.B, p *plan.Plan) []byte {
 	must(err)
 	white, err := lightcurve.White(clean)
 	must(err)
-	setup := fit.Setup{
+	model := fit.Model{
 		Period: number("period"), MidTransit: number("midTransit"), AxisRatio: number("axisRatio"), Inclination: number("inclination"),
 		Eccentricity: number("eccentricity"), Periastron: number("periastron"), RadiusRatio: number("radiusRatio"), Exposure: number("exposure"),
 		LimbLaw: word("limbLaw"), LimbPolicy: word("limbPolicy"), Limb: limbtable.Table{},
-		Trend: systematics.Trend{Polynomial: set("Describe", "trendOrder").(int), Settling: set("Describe", "settling").(bool),
-			SettlingTime: number("settlingTime"), Regressors: set("Describe", "regressors").([]string)},
+		Trend: systematics.Trend{Polynomial: set("Declare", "trendOrder").(int), Settling: set("Declare", "settling").(bool),
+			SettlingTime: number("settlingTime"), Regressors: set("Declare", "regressors").([]string)},
+		White: set("Declare", "priors").(fit.Priors), Channel: set("DeclareChannels", "priors").(fit.Priors),
 	}
-	geometry, whiteFit, _, err := fit.WhiteOrbit(white, setup, set("FitWhite", "priors").(fit.Priors), set("FitWhite", "orbitFrom").(string))
+	geometry, whiteFit, _, err := fit.WhiteOrbit(white, model, set("FitWhite", "orbitFrom").(string))
 	must(err)
 	_, err = figure.WhiteFit(whiteFit)
 	must(err)
 	channels := lightcurve.Curves(clean)
 	points, fits, errs := make([]spectrum.Point, len(channels)), make([]diagnose.Summary, len(channels)), make([]error, len(channels))
-	priors := set("FitChannel", "priors").(fit.Priors)
 	var next atomic.Int64
 	var all sync.WaitGroup
 	for range runtime.NumCPU() {
 		all.Go(func() {
 			for n := int(next.Add(1)) - 1; n < len(channels); n = int(next.Add(1)) - 1 {
 				var fitted fit.CurveFit
-				if points[n], fitted, errs[n] = fit.Channel(channels[n], geometry, setup, priors); errs[n] == nil {
+				if points[n], fitted, errs[n] = fit.Channel(channels[n], geometry, model); errs[n] == nil {
 					fits[n], errs[n] = diagnose.Summarise(fitted)
 				}
 			}

@@ -129,7 +129,7 @@ func TestGapInSpectrum(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	const fitting = "\tpoint, fitted, err := fit.Channel(channel, geometry, setup, priors)\n"
+	const fitting = "\tpoint, fitted, err := fit.Channel(channel, geometry, channelModel)\n"
 	recipe := strings.Replace(string(recipes.Continuous()), fitting,
 		"\tif channel.Channel.Index == 5 {\n\t\terr = errors.New(\"made to fail\")\n\t\treturn\n\t}\n"+fitting, 1)
 	b := newBench(t, recipe)

@@ -11,7 +11,6 @@ import (
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/limb"
 	"rimlight/steps/spectrum"
-	"rimlight/steps/systematics"
 	"rimlight/steps/transit"
 	"rimlight/steps/vector"
 )
@@ -25,18 +24,20 @@ func ramp(curve lightcurve.Curve) func(p []float64) vector.V {
 	}
 }
 
-func White(white lightcurve.Curve, setup fit.Setup, priors fit.Priors) (geometry fit.Posterior, whiteFit fit.CurveFit, err error) {
-	return fit.WhiteWith(white, setup, priors, []string{"hook", "hookTime"}, ramp(white))
+func White(white lightcurve.Curve, model fit.Model, priors fit.Priors) (geometry fit.Posterior, whiteFit fit.CurveFit, err error) {
+	model.White, model.Function = priors, []string{"hook", "hookTime"}
+	return fit.WhiteWith(white, model, ramp(white))
 }
 
-func Channel(channel lightcurve.Curve, geometry fit.Posterior, setup fit.Setup, priors fit.Priors) (point spectrum.Point, err error) {
-	point, _, err = fit.ChannelWith(channel, geometry, setup, priors, []string{"hook", "hookTime"}, ramp(channel))
+func Channel(channel lightcurve.Curve, geometry fit.Posterior, model fit.Model, priors fit.Priors) (point spectrum.Point, err error) {
+	model.Channel, model.Function = priors, []string{"hook", "hookTime"}
+	point, _, err = fit.ChannelWith(channel, geometry, model, ramp(channel))
 	return
 }
 
 // Loop has the model as a loop over elements.
 func Loop(white lightcurve.Curve, priors fit.Priors) (line fit.Posterior, err error) {
-	line, _, err = fit.Function(white, systematics.Trend{}, priors, []string{"slope"}, func(p []float64) vector.V {
+	line, _, err = fit.Function(white, fit.Model{White: priors, Function: []string{"slope"}}, func(p []float64) vector.V {
 		out := make([]float64, len(white.Time))
 		for i, t := range white.Time {
 			out[i] = 1 + p[0]*(t-white.Time[0])
@@ -47,14 +48,14 @@ func Loop(white lightcurve.Curve, priors fit.Priors) (line fit.Posterior, err er
 }
 
 func Short(white lightcurve.Curve, priors fit.Priors) (line fit.Posterior, err error) {
-	line, _, err = fit.Function(white, systematics.Trend{}, priors, []string{"slope"}, func(p []float64) vector.V {
+	line, _, err = fit.Function(white, fit.Model{White: priors, Function: []string{"slope"}}, func(p []float64) vector.V {
 		return vector.Of(white.Time[1:])
 	})
 	return
 }
 
 func Panic(white lightcurve.Curve, priors fit.Priors) (line fit.Posterior, err error) {
-	line, _, err = fit.Function(white, systematics.Trend{}, priors, []string{"slope"}, func(p []float64) vector.V {
+	line, _, err = fit.Function(white, fit.Model{White: priors, Function: []string{"slope"}}, func(p []float64) vector.V {
 		slope := p[0]
 		curvature := p[1]
 		return vector.Of(white.Time).Scale(slope * curvature)
@@ -64,7 +65,7 @@ func Panic(white lightcurve.Curve, priors fit.Priors) (line fit.Posterior, err e
 `
 
 // modelCurve is a transit of a settling detector.
-func modelCurve(t testing.TB, setup fit.Setup) lightcurve.Curve {
+func modelCurve(t testing.TB, setup fit.Model) lightcurve.Curve {
 	t.Helper()
 	c := lightcurve.Curve{Channel: lightcurve.Channel{Index: -1, Lo: 1, Hi: 2}, Mask: make([]lightcurve.Flag, 500)}
 	for i := range c.Mask {
@@ -98,7 +99,7 @@ func TestOwnModel(t *testing.T) {
 		}
 		return m.Call(step, in)
 	}
-	setup := fit.Setup{Period: 3.1, MidTransit: 2460100.4, AxisRatio: 9.4, Inclination: 87.3, RadiusRatio: 0.11}
+	setup := fit.Model{Period: 3.1, MidTransit: 2460100.4, AxisRatio: 9.4, Inclination: 87.3, RadiusRatio: 0.11}
 	curve := modelCurve(t, setup)
 	uniform := func(name string, a, b float64) fit.Prior {
 		return fit.Prior{Name: name, Kind: fit.Uniform, A: a, B: b}
@@ -109,7 +110,11 @@ func TestOwnModel(t *testing.T) {
 	ramp := func(p []float64) vector.V { return start.Scale(-1 / p[1]).Exp().Scale(p[0]).Shift(1) }
 	names := []string{"hook", "hookTime"}
 
-	want, wantFit, err := fit.WhiteWith(curve, setup, priors, names, ramp)
+	model := setup
+	model.White, model.Channel, model.Function = priors, priors[:3], names
+	whiteModel := model
+	whiteModel.Channel = nil
+	want, wantFit, err := fit.WhiteWith(curve, whiteModel, ramp)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -120,7 +125,7 @@ func TestOwnModel(t *testing.T) {
 	if !reflect.DeepEqual(out[0].Interface(), want) || !reflect.DeepEqual(out[1].Interface(), wantFit) {
 		t.Errorf("interpreted %+v\ncompiled %+v", out[0].Interface(), want)
 	}
-	point, _, err := fit.ChannelWith(curve, want, setup, priors[:3], names, ramp)
+	point, _, err := fit.ChannelWith(curve, want, model, ramp)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -133,7 +138,7 @@ func TestOwnModel(t *testing.T) {
 	}
 
 	rows := fit.Priors{uniform("slope", -1, 1)}
-	line, _, err := fit.Function(curve, systematics.Trend{}, rows, []string{"slope"}, func(p []float64) vector.V {
+	line, _, err := fit.Function(curve, fit.Model{White: rows, Function: []string{"slope"}}, func(p []float64) vector.V {
 		return start.Scale(p[0]).Shift(1)
 	})
 	if err != nil {
@@ -174,7 +179,7 @@ func TestReadmeModel(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	setup := fit.Setup{Period: 3.1, MidTransit: 2460100.4, AxisRatio: 9.4, Inclination: 87.3, RadiusRatio: 0.11}
+	setup := fit.Model{Period: 3.1, MidTransit: 2460100.4, AxisRatio: 9.4, Inclination: 87.3, RadiusRatio: 0.11}
 	priors := fit.Priors{{Name: "radiusRatio", Kind: fit.Uniform, A: 0.01, B: 0.3}, {Name: "u1", Kind: fit.Uniform, A: -1, B: 2}, {Name: "u2", Kind: fit.Uniform, A: -1, B: 2},
 		{Name: "hook", Kind: fit.Uniform, A: -0.01, B: 0.01}, {Name: "hookTime", Kind: fit.LogUniform, A: 0.001, B: 0.1, Unit: "d"}}
 	out, err := m.Call("FitWhite", []reflect.Value{reflect.ValueOf(modelCurve(t, setup)), reflect.ValueOf(setup), reflect.ValueOf(priors)})

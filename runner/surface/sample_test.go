@@ -116,13 +116,13 @@ func newSamples() *samples {
 	limbs, err := limbtable.Read([]byte(limbCSV))
 	must(err)
 
-	setup := fit.Setup{
+	model := fit.Model{
 		Period: scenario.Period, MidTransit: scenario.MidTransit, AxisRatio: scenario.AxisRatio,
 		Inclination: scenario.Inclination, Periastron: 90, RadiusRatio: 0.115, Exposure: 280,
 		LimbLaw: fit.LawQuadratic, LimbPolicy: fit.PolicyFree, Limb: limbs,
 		Trend: systematics.Trend{Polynomial: 1, Regressors: []string{"X"}},
 	}
-	settling := setup
+	settling := model
 	settling.Trend = systematics.Trend{Polynomial: 2, Settling: true, SettlingTime: 0.02}
 	settling.LimbPolicy = fit.PolicyPrior
 	whitePriors := fit.Priors{
@@ -149,13 +149,14 @@ func newSamples() *samples {
 		{Name: "u1", Kind: fit.Uniform, A: -2, B: 3},
 		{Name: "u2", Kind: fit.Uniform, A: -2, B: 3},
 	}
-	posterior, whiteFit, err := fit.White(white, setup, whitePriors)
+	model.White, model.Channel, settling.White, settling.Channel = whitePriors, channelPriors, otherPriors, channelPriors
+	posterior, whiteFit, err := fit.White(white, model)
 	must(err)
 	curves := lightcurve.Curves(clean)
 	var points []spectrum.Point
 	var curveFits []fit.CurveFit
 	for _, c := range curves {
-		p, f, err := fit.Channel(c, posterior, setup, channelPriors)
+		p, f, err := fit.Channel(c, posterior, model)
 		must(err)
 		points, curveFits = append(points, p), append(curveFits, f)
 	}
@@ -227,15 +228,16 @@ func newSamples() *samples {
 		{Name: "hook", Kind: fit.Normal, A: 0, B: 0.01},
 		{Name: "hookTime", Kind: fit.LogUniform, A: 0.002, B: 0.2, Unit: "d"},
 	}
-	whiteWith, channelWith := append(slices.Clone(whitePriors), hook...), append(slices.Clone(channelPriors), hook...)
+	with, alone := model, fit.Model{Trend: model.Trend, White: hook, Function: names}
+	with.White, with.Channel, with.Function = append(slices.Clone(whitePriors), hook...), append(slices.Clone(channelPriors), hook...), names
 
 	s := &samples{byType: map[reflect.Type][]reflect.Value{}, own: map[string][][]any{
-		"fit.White":       {{white, curves[0]}, {setup, settling}, {whitePriors, otherPriors}},
-		"fit.WhiteOrbit":  {{white}, {setup, settling}, {whitePriors, otherPriors}, {"fitted", "published", "tested"}},
-		"fit.Channel":     {{curves[0], curves[1]}, {posterior}, {setup, settling}, {channelPriors}},
-		"fit.WhiteWith":   {{white}, {setup}, {whiteWith}, {names}, {ramp}},
-		"fit.ChannelWith": {{curves[0], curves[1]}, {posterior}, {setup}, {channelWith}, {names}, {ramp}},
-		"fit.Function":    {{white}, {systematics.Trend{}, setup.Trend}, {hook}, {names}, {ramp}},
+		"fit.White":       {{white, curves[0]}, {model, settling}},
+		"fit.WhiteOrbit":  {{white}, {model, settling}, {"fitted", "published", "tested"}},
+		"fit.Channel":     {{curves[0], curves[1]}, {posterior}, {model, settling}},
+		"fit.WhiteWith":   {{white}, {with}, {ramp}},
+		"fit.ChannelWith": {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
+		"fit.Function":    {{white}, {with, alone}, {ramp}},
 
 		"orbit.FitEphemeris":           {{[]int{0, 3, 10}}, {[]float64{100.2, 109.8, 132.3}}, {[]float64{0.001, 0.002, 0.001}}},
 		"orbit.Ephemeris.Timings":      {{ephemeris}, {[]float64{2460512.4, 2460525.1}}, {[]float64{0.001, 0}}},
@@ -302,7 +304,7 @@ func newSamples() *samples {
 		limb.Law{Name: limb.Power2, Coefficients: []float64{0.6, 0.7}}, limb.Law{Name: limb.FourParameter, Coefficients: []float64{0.5, 0.3, -0.4, 0.2}},
 		elements, ephemeris, intensities, throughput, profile, choice,
 		cube, clean, curves, white, truth, scenario, simulate.Scenario{}, columns, lightcurve.Columns{}, lightcurve.Columns(nil),
-		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, setup, settling, whitePriors, channelPriors,
+		lightcurve.RunningMedian{Window: 11, Sigma: 4}, binning, limbs, model, settling, whitePriors, channelPriors,
 		posterior, whiteFit, curveFits, summaries, points, spec, fig, path, spec.Summary(), spectrum.Table(spec), table.Table{},
 		transit.Params{Orbit: path, RadiusRatio: 0.12, Law: limb.Law{Name: limb.Quadratic, Coefficients: []float64{0.3, 0.2}}, Exposure: 280},
 		diagnose.FitChecks("white light", posterior), []check.Check{},

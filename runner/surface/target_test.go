@@ -12,7 +12,7 @@ import (
 // A target is one thing that a recipe can call. A method has its receiver as
 // the first argument.
 type target struct {
-	Name string // "lightcurve.White", "fit.Setup.Describe"
+	Name string // "lightcurve.White", "fit.Model.Equation"
 	Func reflect.Value
 	In   []reflect.Type
 	Out  []reflect.Type

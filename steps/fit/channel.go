@@ -14,10 +14,10 @@ const doubtfulChi2 = 2
 
 // Channel fits one spectroscopic channel with the orbit held at the white fit's
 // values. Free are the radius ratio, which priors must name, limb darkening as
-// setup.LimbPolicy has it, and the coefficients of the trend:
+// model.LimbPolicy has it, and the coefficients of the trend:
 //
 //   - "free": under the rows of priors for u1 and u2, or q1 and q2;
-//   - "fixed": at the values of setup.Limb for the channel's wavelengths;
+//   - "fixed": at the values of model.Limb for the channel's wavelengths;
 //   - "prior": normal about these values, with the table's errors.
 //
 // Under the last two, rows for limb darkening in priors are passed over. The
@@ -36,8 +36,11 @@ const doubtfulChi2 = 2
 // zero, depth and errors are NaN and Flag says why. Flag also names what is
 // doubtful: a fit that did not converge, a radius ratio at the end of its range,
 // a reduced chi-square above 2.
-func Channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors) (spectrum.Point, CurveFit, error) {
-	return channel(curve, white, setup, priors, nil)
+func Channel(curve lightcurve.Curve, white Posterior, model Model) (spectrum.Point, CurveFit, error) {
+	if err := model.plain(); err != nil {
+		return spectrum.Point{}, CurveFit{}, fmt.Errorf("%s: %w", whatChannel(curve.Channel), err)
+	}
+	return channel(curve, white, model, nil)
 }
 
 // whatChannel starts the messages of a channel fit.
@@ -46,26 +49,26 @@ func whatChannel(c lightcurve.Channel) string {
 }
 
 // channel is Channel with a function of the recipe, or nil.
-func channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors, own *function) (spectrum.Point, CurveFit, error) {
+func channel(curve lightcurve.Curve, white Posterior, model Model, own *function) (spectrum.Point, CurveFit, error) {
 	what := whatChannel(curve.Channel)
 	fail := func(err error) (spectrum.Point, CurveFit, error) {
 		return spectrum.Point{}, CurveFit{}, fmt.Errorf("%s: %w", what, err)
 	}
-	if err := setup.check(what); err != nil {
-		return spectrum.Point{}, CurveFit{}, err
+	if err := model.check(); err != nil {
+		return fail(err)
 	}
-	rows, _, err := limbRows(priors, setup, curve.Channel, true)
+	rows, _, err := limbRows(without(model.Channel, own), model, curve.Channel, true)
 	if err != nil {
 		return fail(err)
 	}
-	space, err := channelSpace(setup, white, rows, own)
+	space, whole, err := channelSpace(model, white, rows, own)
 	if err != nil {
 		return fail(err)
 	}
 	if usable := countUsable(curve.Mask); usable < leastSamples {
 		return unmeasured(curve, fmt.Sprintf("only %d usable samples; at least %d are needed", usable, leastSamples))
 	}
-	m, err := newModel(curve, setup, space, own)
+	m, err := newObjective(curve, model, space, own)
 	if err != nil {
 		return fail(err)
 	}
@@ -83,11 +86,11 @@ func channel(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors
 	if err := m.search(); err != nil {
 		return fail(err)
 	}
-	s, err := m.solve([][slots]float64{space.value}, setup.Inflate)
+	s, err := m.solve([][slots]float64{space.value}, model.Inflate)
 	if err != nil {
 		return fail(err)
 	}
-	point, err := s.point(curve, white)
+	point, err := s.point(curve, white, whole)
 	if err != nil {
 		return fail(err)
 	}
@@ -108,34 +111,55 @@ func countUsable(mask []lightcurve.Flag) int {
 	return count
 }
 
-// channelSpace is the space of a channel fit: everything at the white fit's
-// values, and the rows' parameters free.
-func channelSpace(setup Setup, white Posterior, rows Priors, own *function) (*space, error) {
-	space := newSpace(setup)
-	if err := space.take(white, own); err != nil {
-		return nil, err
+// without leaves out the rows of a function's parameters.
+func without(rows Priors, own *function) Priors {
+	if own == nil {
+		return rows
 	}
+	var rest Priors
 	for _, p := range rows {
-		named, err := findName(p.Name)
-		if err != nil {
-			return nil, err
-		}
-		if slot := named.slot; slot < slotRadius {
-			return nil, fmt.Errorf("%s is held at the white fit's value in channels; take its row out of this priors table", p.Name)
+		if !slices.Contains(own.names, p.Name) {
+			rest = append(rest, p)
 		}
 	}
-	if _, err := space.apply(rows, setup.Trend.Settling); err != nil {
-		return nil, err
+	return rest
+}
+
+// channelSpace is the space of a channel fit: everything at the white fit's
+// values, and the rows' parameters free. whole is the white fit's.
+func channelSpace(model Model, white Posterior, rows Priors, own *function) (channel, whole *space, err error) {
+	whole = newSpace(model)
+	if err := whole.take(white, own); err != nil {
+		return nil, nil, err
 	}
-	if !space.isFree(slotRadius) {
-		return nil, fmt.Errorf("no prior leaves radiusRatio free; add a row such as radiusRatio | U(0.01, 0.3)")
+	o, err := whole.orbit(&whole.value)
+	if err != nil {
+		return nil, nil, fmt.Errorf("white posterior: %w", err)
 	}
-	return space, nil
+	// The orbit is held, whatever parameters the white fit had for it, and limb
+	// darkening starts from u1, u2, ...
+	channel = newSpace(model)
+	channel.reference, channel.value = whole.reference, whole.value
+	channel.setOrbit(o)
+	copy(channel.value[slotLimb1:slotLimb1+channel.limbs], whole.coefficients(&whole.value))
+	for _, p := range rows {
+		if named, err := findName(p.Name); err == nil && named.slot < slotRadius {
+			return nil, nil, fmt.Errorf("%s is held at the white fit's value in channels; take its row out of this priors table", p.Name)
+		}
+	}
+	if _, err := channel.apply(rows, model.Trend.Settling); err != nil {
+		return nil, nil, err
+	}
+	if !channel.isFree(slotRadius) {
+		return nil, nil, fmt.Errorf("no prior leaves radiusRatio free; add a row such as radiusRatio | U(0.01, 0.3)")
+	}
+	return channel, whole, nil
 }
 
 // take sets the values of a white posterior, free and held, but for those of the
-// recipe's function.
+// recipe's function, and of the noise, which is each channel's own.
 func (s *space) take(white Posterior, own *function) error {
+	values := map[int]float64{}
 	set := func(name string, value float64) error {
 		if own != nil && slices.Contains(own.names, name) {
 			return nil
@@ -144,8 +168,14 @@ func (s *space) take(white Posterior, own *function) error {
 		if err != nil {
 			return fmt.Errorf("white posterior: %w; if it comes from WhiteWith, fit the channels with ChannelWith", err)
 		}
+		if noisy(p.slot) || !s.exists(p.slot) {
+			return nil
+		}
+		if family(name)[0] == "q1" && s.limbs != 2 {
+			return nil
+		}
 		s.name[p.slot] = name
-		s.value[p.slot] = s.coordinate(p.slot, value)
+		values[p.slot] = value
 		return nil
 	}
 	if n := len(white.Names); n == 0 || len(white.Value) != n || len(white.Err) != n {
@@ -163,16 +193,12 @@ func (s *space) take(white Posterior, own *function) error {
 			}
 		}
 	}
-	// The channel's own limb darkening starts from u1 and u2, whatever the white
-	// fit used.
-	u := s.physical(&s.value).Law.Coefficients
-	s.name[slotLimb1], s.name[slotLimb2] = "u1", "u2"
-	s.value[slotLimb1], s.value[slotLimb2] = u[0], u[1]
+	for slot := range slots {
+		if value, ok := values[slot]; ok {
+			s.value[slot] = s.coordinate(slot, value)
+		}
+	}
 	return nil
-}
-
-func isTrend(name string) bool {
-	return len(name) > len(trendPrefix) && name[:len(trendPrefix)] == trendPrefix
 }
 
 // unmeasured is the result for a channel without a depth.

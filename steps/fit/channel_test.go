@@ -16,7 +16,7 @@ func whiteOf(t testing.TB, s scene) Posterior {
 	if err != nil {
 		t.Fatal(err)
 	}
-	p, _, err := White(curve, s.setup(), whitePriors())
+	p, _, err := White(curve, withWhite(s.model(), whitePriors()))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -40,12 +40,12 @@ func TestChannelPolicies(t *testing.T) {
 	s := newScene(t, 21, 800, 4)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[0]
-	setup := s.setup()
+	model := s.model()
 	fits := map[string]struct{ depth, err, u1, u1Err float64 }{}
 	for _, policy := range []string{PolicyFree, PolicyFixed, PolicyPrior} {
-		setup.LimbPolicy = policy
-		setup.Limb = s.truthTable(0)
-		p, fitted, err := Channel(curve, white, setup, channelPriors("u1", "u2", -1, 2))
+		model.LimbPolicy = policy
+		model.Limb = s.truthTable(0)
+		p, fitted, err := Channel(curve, white, withChannel(model, channelPriors("u1", "u2", -1, 2)))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -75,17 +75,17 @@ func TestChannelLaws(t *testing.T) {
 	s := newScene(t, 22, 500, 2)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[1]
-	setup := s.setup()
-	setup.LimbLaw = LawLinear
-	p, _, err := Channel(curve, white, setup, channelPriors("u1", "u2", -1, 2))
+	model := s.model()
+	model.LimbLaw = LawLinear
+	p, _, err := Channel(curve, white, withChannel(model, channelPriors("u1", "u2", -1, 2)))
 	if err != nil {
 		t.Fatal(err)
 	}
 	if p.Limb[1] != 0 || p.LimbErr[1] != 0 || !(p.LimbErr[0] > 0) {
 		t.Errorf("linear law: %v +- %v", p.Limb, p.LimbErr)
 	}
-	setup.LimbLaw = LawUniform
-	p, _, err = Channel(curve, white, setup, channelPriors("u1", "u2", -1, 2))
+	model.LimbLaw = LawUniform
+	p, _, err = Channel(curve, white, withChannel(model, channelPriors("u1", "u2", -1, 2)))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -93,12 +93,12 @@ func TestChannelLaws(t *testing.T) {
 		t.Errorf("uniform law: %v +- %v", p.Limb, p.LimbErr)
 	}
 	// Kipping's sampling reaches the same minimum where that is inside its range.
-	setup.LimbLaw = LawQuadratic
-	a, _, err := Channel(curve, white, setup, channelPriors("u1", "u2", -1, 2))
+	model.LimbLaw = LawQuadratic
+	a, _, err := Channel(curve, white, withChannel(model, channelPriors("u1", "u2", -1, 2)))
 	if err != nil {
 		t.Fatal(err)
 	}
-	b, _, err := Channel(curve, white, setup, channelPriors("q1", "q2", 0, 1))
+	b, _, err := Channel(curve, white, withChannel(model, channelPriors("q1", "q2", 0, 1)))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -144,7 +144,7 @@ func TestChannelUnmeasured(t *testing.T) {
 	} {
 		curve := lightcurve.Curves(s.cube)[0]
 		c.change(&curve)
-		p, fitted, err := Channel(curve, white, s.setup(), channelPriors("u1", "u2", -1, 2))
+		p, fitted, err := Channel(curve, white, withChannel(s.model(), channelPriors("u1", "u2", -1, 2)))
 		if err != nil {
 			t.Errorf("%s: %v", c.name, err)
 			continue
@@ -182,9 +182,9 @@ func TestChannelErrors(t *testing.T) {
 		{"no errors", PolicyPrior, noErrors, white, channelPriors("u1", "u2", 0, 1), "error 0 for u1"},
 		{"no white fit", PolicyFree, limbtable.Table{}, Posterior{}, channelPriors("u1", "u2", 0, 1), "expected the result of a white fit"},
 	} {
-		setup := s.setup()
-		setup.LimbPolicy, setup.Limb = c.policy, c.table
-		_, _, err := Channel(curve, c.white, setup, c.priors)
+		model := s.model()
+		model.LimbPolicy, model.Limb = c.policy, c.table
+		_, _, err := Channel(curve, c.white, withChannel(model, c.priors))
 		if err == nil || !strings.Contains(err.Error(), c.want) {
 			t.Errorf("%s: error %v, want %q", c.name, err, c.want)
 		}
@@ -195,9 +195,9 @@ func BenchmarkChannel(b *testing.B) {
 	s := newScene(b, 25, 3000, 3)
 	white := whiteOf(b, s)
 	curve := lightcurve.Curves(s.cube)[1]
-	setup, priors := s.setup(), channelPriors("u1", "u2", -1, 2)
+	model, priors := s.model(), channelPriors("u1", "u2", -1, 2)
 	for b.Loop() {
-		if _, _, err := Channel(curve, white, setup, priors); err != nil {
+		if _, _, err := Channel(curve, white, withChannel(model, priors)); err != nil {
 			b.Fatal(err)
 		}
 	}
@@ -218,15 +218,15 @@ func TestChannelSettling(t *testing.T) {
 		case "inclination":
 			white.Value[k] = 87.3
 		case "midTransitOffset":
-			white.Value[k] = s.orbit.MidTransit - s.setup().MidTransit
+			white.Value[k] = s.orbit.MidTransit - s.model().MidTransit
 		}
 	}
 	priors := channelPriors("u1", "u2", -1, 2)
-	held, _, err := Channel(curve, white, s.setup(), priors)
+	held, _, err := Channel(curve, white, withChannel(s.model(), priors))
 	if err != nil {
 		t.Fatal(err)
 	}
-	free, _, err := Channel(curve, white, s.setup(), append(priors, Prior{Name: "settlingTime", Kind: LogUniform, A: 0.001, B: 0.1}))
+	free, _, err := Channel(curve, white, withChannel(s.model(), append(priors, Prior{Name: "settlingTime", Kind: LogUniform, A: 0.001, B: 0.1})))
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -1,6 +1,6 @@
 // Package fit fits a transit and systematics to light curves.
 //
-// A [Setup] is what a recipe's settings give, [Priors] a table of priors, and a
+// A [Model] is what a recipe's settings give, [Priors] a table of priors, and a
 // [Posterior] what a fit says of the parameters: the maximum of the posterior,
 // its covariance, what was held and what to be warned of. [White] fits the white
 // light curve, [Channel] one spectroscopic channel with the orbit held at the

@@ -34,20 +34,20 @@ func TestLaws(t *testing.T) {
 			flux[k] += 1e-4 * rng.NormFloat64()
 			curve.Err[k] = 1e-4
 		}
-		setup := s.setup()
-		setup.LimbLaw, setup.MidTransit = truth.Name, s.orbit.MidTransit
-		setup.Trend.Settling, setup.Trend.Regressors = false, nil
+		model := s.model()
+		model.LimbLaw, model.MidTransit = truth.Name, s.orbit.MidTransit
+		model.Trend.Settling, model.Trend.Regressors = false, nil
 		for _, limbs := range []Priors{{uniform("u1", -1, 2), uniform("u2", 0.1, 3)}, {uniform("q1", 0, 1), uniform("q2", 0, 1)}, {}} {
 			priors := append(Priors{uniform("radiusRatio", 0.02, 0.3), uniform("axisRatio", 3, 30), uniform("impact", 0, 1)}, limbs...)
-			setup.LimbPolicy, setup.Limb = PolicyFree, limbtable.Table{}
+			model.LimbPolicy, model.Limb = PolicyFree, limbtable.Table{}
 			if len(limbs) == 0 {
-				setup.LimbPolicy = PolicyFixed
-				setup.Limb = limbtable.Table{Law: truth.Name, Channels: []lightcurve.Channel{{Lo: 0.5, Hi: 3}}, U1: truth.Coefficients[:1], U2: truth.Coefficients[1:]}
+				model.LimbPolicy = PolicyFixed
+				model.Limb = limbtable.Table{Law: truth.Name, Channels: []lightcurve.Channel{{Lo: 0.5, Hi: 3}}, U1: truth.Coefficients[:1], U2: truth.Coefficients[1:]}
 			}
 			if len(limbs) > 0 && limbs[0].Name == "u1" && truth.Name != LawPower2 {
 				priors[len(priors)-1] = uniform("u2", -2, 3)
 			}
-			posterior, _, err := White(curve, setup, priors)
+			posterior, _, err := White(curve, withWhite(model, priors))
 			if err != nil {
 				t.Fatalf("%s, %v: %v", truth.Name, limbs, err)
 			}
@@ -63,7 +63,7 @@ func TestLaws(t *testing.T) {
 				continue
 			}
 			// The same curve as a channel, on the white fit's orbit.
-			point, _, err := Channel(curve, posterior, setup, append(Priors{uniform("radiusRatio", 0.02, 0.3)}, priors[3:]...))
+			point, _, err := Channel(curve, posterior, withChannel(model, append(Priors{uniform("radiusRatio", 0.02, 0.3)}, priors[3:]...)))
 			if err != nil || math.Abs(point.Depth-radius*radius) > 0.02*point.DepthErr {
 				t.Errorf("%s, %v: depth %g ± %g, error %v, expected %g", truth.Name, limbs, point.Depth, point.DepthErr, err, radius*radius)
 			}

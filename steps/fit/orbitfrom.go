@@ -13,7 +13,7 @@ import (
 // Where the orbit comes from that channels are fitted with, for [WhiteOrbit].
 const (
 	OrbitFitted    = "fitted"    // from the white light curve; its uncertainty is shared by all channels
-	OrbitPublished = "published" // from the setup, as if exact
+	OrbitPublished = "published" // from the model, as if exact
 	OrbitTested    = "tested"    // published, unless the white light curve contradicts it
 )
 
@@ -24,7 +24,7 @@ const leastChance = 0.01
 
 // WhiteOrbit fits a white light curve as [White] does, and decides which axis
 // ratio and inclination (or impact parameter) the channels are to be held at:
-// the fitted ones, or those of the setup ("published"), with everything else
+// the fitted ones, or those of the model ("published"), with everything else
 // fitted to go with them.
 //
 // The two are compared by a likelihood ratio: the chi-square that holding the
@@ -37,22 +37,23 @@ const leastChance = 0.01
 // to decide, and the chance is 1.
 //
 // Errors: those of White; an orbitFrom that is none of the three.
-func WhiteOrbit(curve lightcurve.Curve, setup Setup, priors Priors, orbitFrom string) (Posterior, CurveFit, check.Check, error) {
+func WhiteOrbit(curve lightcurve.Curve, model Model, orbitFrom string) (Posterior, CurveFit, check.Check, error) {
 	if orbitFrom != OrbitFitted && orbitFrom != OrbitPublished && orbitFrom != OrbitTested {
 		return Posterior{}, CurveFit{}, check.Check{}, fmt.Errorf("white fit: the orbit is to come from %.40q; expected fitted, published or tested", orbitFrom)
 	}
-	free, freeFit, err := White(curve, setup, priors)
+	free, freeFit, err := White(curve, model)
 	if err != nil {
 		return Posterior{}, CurveFit{}, check.Check{}, err
 	}
 	verdict := check.Check{Name: "published orbit: chance of a misfit as large", Value: 1, Passed: true,
 		Why: "a wrong axis ratio or inclination bends every channel's transit the same way"}
-	kept, dropped := withoutOrbit(priors)
+	published, dropped := model, 0
+	published.White, dropped = withoutOrbit(model.White)
 	if dropped == 0 {
 		verdict.Limit = "nothing to test, the priors hold the orbit"
 		return free, freeFit, verdict, nil
 	}
-	held, heldFit, err := White(curve, setup, kept)
+	held, heldFit, err := White(curve, published)
 	if err != nil {
 		return Posterior{}, CurveFit{}, check.Check{}, fmt.Errorf("with the published orbit: %w", err)
 	}
@@ -80,7 +81,7 @@ func WhiteOrbit(curve lightcurve.Curve, setup Setup, priors Priors, orbitFrom st
 func withoutOrbit(priors Priors) (kept Priors, dropped int) {
 	for _, p := range priors {
 		switch p.Name {
-		case "axisRatio", "inclination", "impact":
+		case "axisRatio", "stellarDensity", "duration", "inclination", "impact":
 			if p.Kind != Fixed {
 				dropped++
 				continue

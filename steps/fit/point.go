@@ -14,11 +14,15 @@ import (
 	"rimlight/steps/transit"
 )
 
-// point summarises a channel's solution.
-func (s *solution) point(curve lightcurve.Curve, white Posterior) (spectrum.Point, error) {
-	m := s.model
+// point summarises a channel's solution. white is the space of the white fit,
+// which says where the orbit comes from.
+func (s *solution) point(curve lightcurve.Curve, posterior Posterior, white *space) (spectrum.Point, error) {
+	m := s.objective
 	k := slices.Index(m.space.free, slotRadius)
-	params := m.space.physical(&s.v)
+	params, err := m.space.physical(&s.v)
+	if err != nil {
+		return spectrum.Point{}, err
+	}
 	r, rErr := params.RadiusRatio, math.Sqrt(s.cov[k][k])
 	out := spectrum.Point{
 		Channel: curve.Channel,
@@ -29,11 +33,12 @@ func (s *solution) point(curve lightcurve.Curve, white Posterior) (spectrum.Poin
 		Used: len(m.used), Masked: len(curve.Time) - len(m.used),
 		Scatter: s.scatter(),
 	}
-	for a := range 2 {
-		u := s.quantity("", "", "", func(v *[slots]float64) float64 {
-			return m.space.physical(v).Law.Coefficients[a]
-		})
+	for a := range out.Limb {
+		u := s.quantity("", "", "", func(v *[slots]float64) float64 { return m.space.coefficients(v)[a] })
 		out.LimbErr = append(out.LimbErr, u.Err)
+	}
+	for len(out.Limb) < 2 { // of laws without
+		out.Limb, out.LimbErr = append(out.Limb, 0), append(out.LimbErr, 0)
 	}
 	var flags []string
 	if s.status != statusConverged {
@@ -51,8 +56,7 @@ func (s *solution) point(curve lightcurve.Curve, white Posterior) (spectrum.Poin
 		flags = append(flags, fmt.Sprintf("reduced chi-square %.2f", reduced))
 	}
 	out.Flag = strings.Join(flags, "; ")
-	var err error
-	out.ShiftGeometry, err = s.shifts(white)
+	out.ShiftGeometry, err = s.shifts(posterior, white)
 	return out, err
 }
 
@@ -60,29 +64,29 @@ func (s *solution) point(curve lightcurve.Curve, white Posterior) (spectrum.Poin
 // posterior that the channel holds, 0 for the others: the linear response
 // -(JᵀWJ)⁻¹JᵀW J_g of the fit, times 2 r. J_g is the change of the model over
 // one standard deviation of the parameter to either side, as in [solution.slope].
-func (s *solution) shifts(white Posterior) ([]float64, error) {
-	m := s.model
+func (s *solution) shifts(posterior Posterior, white *space) ([]float64, error) {
+	m := s.objective
 	k := slices.Index(m.space.free, slotRadius)
-	out := make([]float64, len(white.Names))
+	out := make([]float64, len(posterior.Names))
 	change := make([]float64, m.rows())
-	for g, name := range white.Names {
+	for g, name := range posterior.Names {
 		if isTrend(name) {
 			continue
 		}
 		own := m.own.heldFromWhite(name)
 		named, err := findName(name)
-		if own < 0 && (err != nil || m.space.isFree(named.slot)) {
+		if own < 0 && (err != nil || named.slot == slotSettling && m.space.isFree(slotSettling)) {
 			continue
 		}
-		switch named.slot {
-		case slotRadius, slotLimb1, slotLimb2: // a channel has its own
+		if own < 0 && named.slot > slotShape2 && named.slot != slotSettling &&
+			!(named.slot == slotRadius && white.name[slotSize] == "duration") { // a channel has its own
 			continue
 		}
-		at := func(value float64) ([]float64, error) { return s.at(named.slot, value) }
+		at := func(value float64) ([]float64, error) { return s.at(white, named.slot, value) }
 		if own >= 0 {
 			at = func(value float64) ([]float64, error) { return s.ownAt(own, value) }
 		}
-		lo, hi := white.Value[g]-white.Err[g], white.Value[g]+white.Err[g]
+		lo, hi := posterior.Value[g]-posterior.Err[g], posterior.Value[g]+posterior.Err[g]
 		if !(lo < hi) || math.IsInf(hi-lo, 0) {
 			continue
 		}
@@ -108,19 +112,23 @@ func clipNamed(name string, lo, hi float64) (float64, float64) {
 		return max(lo, 0), hi
 	case "axisRatio":
 		return max(lo, 1), hi
-	case "settlingTime", "period":
+	case "settlingTime", "period", "stellarDensity", "duration", "radiusRatio":
 		return max(lo, hi/10), hi
 	}
 	return lo, hi
 }
 
-// at is the model, relative to its level, with a parameter of the transit or the
-// settling time at another value.
-func (s *solution) at(slot int, named float64) ([]float64, error) {
-	m := s.model
-	v := s.v
-	v[slot] = m.space.coordinate(slot, named)
-	flux, err := transit.Curve(m.times, m.space.physical(&v))
+// at is the model, relative to its level, with a parameter of the white fit, of
+// the transit or the settling time, at another value.
+func (s *solution) at(white *space, slot int, named float64) ([]float64, error) {
+	m := s.objective
+	v := white.value
+	v[slot] = white.coordinate(slot, named)
+	o, err := white.orbit(&v)
+	if err != nil {
+		return nil, err
+	}
+	flux, err := transit.Curve(m.times, m.space.params(&s.v, o))
 	if err != nil {
 		return nil, err
 	}
@@ -130,12 +138,14 @@ func (s *solution) at(slot int, named float64) ([]float64, error) {
 		floats.AddScaled(trend, c, settleChange(m, math.Exp(v[slotSettling]), math.Exp(s.v[slotSettling])))
 	}
 	floats.Mul(trend, m.factor)
-	return floats.MulTo(flux, flux, trend), nil
+	floats.Mul(flux, trend)
+	floats.Add(flux, m.added)
+	return flux, nil
 }
 
 // ownAt is the same with a parameter of the recipe's function at another value.
 func (s *solution) ownAt(k int, value float64) ([]float64, error) {
-	m := s.model
+	m := s.objective
 	flux, err := m.transit(&s.v)
 	if err != nil {
 		return nil, err
@@ -146,13 +156,15 @@ func (s *solution) ownAt(k int, value float64) ([]float64, error) {
 		return nil, m.own.fault()
 	}
 	floats.Mul(flux, factor)
-	return floats.MulTo(flux, flux, m.linear), nil
+	floats.Mul(flux, m.linear)
+	floats.Add(flux, m.added)
+	return flux, nil
 }
 
 // modelChange sets change to the difference of the residuals at two values of a
 // held parameter, divided by their distance.
 func (s *solution) modelChange(at func(named float64) ([]float64, error), lo, hi float64, change []float64) error {
-	m := s.model
+	m := s.objective
 	up, err := at(hi)
 	if err != nil {
 		return err
@@ -163,13 +175,13 @@ func (s *solution) modelChange(at func(named float64) ([]float64, error), lo, hi
 	}
 	clear(change)
 	for i := range up {
-		change[i] = (up[i] - down[i]) / (hi - lo) * m.weight[i] / m.scale
+		change[i] = (up[i] - down[i]) / (hi - lo) * m.weight[i]
 	}
 	return nil
 }
 
 // settleChange is the settling column at one settling time less that at another.
-func settleChange(m *model, tau, from float64) []float64 {
+func settleChange(m *objective, tau, from float64) []float64 {
 	column := systematics.Settle(m.times, m.design.Start, tau)
 	floats.Sub(column, systematics.Settle(m.times, m.design.Start, from))
 	return column

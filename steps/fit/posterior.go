@@ -1,8 +1,8 @@
 package fit
 
 import (
+	"fmt"
 	"math"
-	"strings"
 
 	"rimlight/steps/orbit"
 	"rimlight/steps/transit"
@@ -20,7 +20,7 @@ func (s *solution) slope(k int, f func(v *[slots]float64) float64) float64 {
 	lo, hi := s.interval(k)
 	at := func(x float64) float64 {
 		v := s.v
-		v[s.model.space.free[k]] = x
+		v[s.objective.space.free[k]] = x
 		return f(&v)
 	}
 	return (at(hi) - at(lo)) / (hi - lo)
@@ -30,7 +30,7 @@ func (s *solution) slope(k int, f func(v *[slots]float64) float64) float64 {
 // off at its limits.
 func (s *solution) interval(k int) (lo, hi float64) {
 	x, sd := s.x[k], math.Sqrt(s.cov[k][k])
-	a, b := s.model.space.limits(s.model.space.free[k])
+	a, b := s.objective.space.limits(s.objective.space.free[k])
 	if sd == 0 || math.IsInf(sd, 0) {
 		sd = 1e-6 * max(1, math.Abs(x))
 	}
@@ -39,7 +39,7 @@ func (s *solution) interval(k int) (lo, hi float64) {
 
 // quantity propagates the covariance to a function of the coordinates.
 func (s *solution) quantity(name, unit, about string, f func(v *[slots]float64) float64) Quantity {
-	n := len(s.model.space.free)
+	n := len(s.objective.space.free)
 	gradient := make([]float64, n)
 	for k := range gradient {
 		gradient[k] = s.slope(k, f)
@@ -54,27 +54,27 @@ func (s *solution) quantity(name, unit, about string, f func(v *[slots]float64) 
 }
 
 // posterior writes the solution in named parameters and their units.
-func (s *solution) posterior(setup Setup) Posterior {
-	trend := setup.Trend
-	space := s.model.space
-	size := s.model.size()
+func (s *solution) posterior(model Model) Posterior {
+	space := s.objective.space
+	size := s.objective.size()
+	all := size + len(space.noise)
 	out := Posterior{
-		Chi2: s.chi2, Dof: s.dof, Samples: len(s.model.used),
+		Chi2: s.chi2, Dof: s.dof, Samples: len(s.objective.used),
 		Iterations: s.steps, Status: s.status, Warnings: s.warnings,
-		Model: s.model.formula(setup), Cov: columns(size, size),
+		Model: model, Cov: columns(all, all),
 	}
 	factor := make([]float64, size) // d named / d coordinate
 	for k := range size {
 		var value float64
 		var unit string
 		value, factor[k] = s.value(k)
-		if k >= len(space.free) && k < s.model.leading() {
-			own := s.model.own
+		if k >= len(space.free) && k < s.objective.leading() {
+			own := s.objective.own
 			unit = own.prior[own.free[k-len(space.free)]].Unit
 		}
 		if k < len(space.free) {
 			slot := space.free[k]
-			if slot == slotShape || slot == slotLimb1 { // may bend within the error
+			if slot == slotTilt || slot == slotLimb1 { // may bend within the error
 				factor[k] = s.slope(k, func(v *[slots]float64) float64 {
 					named, _ := space.named(slot, v[slot])
 					return named
@@ -90,37 +90,61 @@ func (s *solution) posterior(setup Setup) Posterior {
 		for l := range size {
 			out.Cov[k][l] = factor[k] * s.cov[k][l] * factor[l]
 		}
+	}
+	s.addNoise(&out)
+	for k := range all {
 		out.Err = append(out.Err, math.Sqrt(out.Cov[k][k]))
 	}
 	for slot := range slots {
-		if space.isFree(slot) || slot == slotSettling && !trend.Settling || slot != slotSettling && s.model.alone {
+		if space.isFree(slot) || !s.objective.uses(slot) || noisy(slot) && space.value[slot] == 0 || slot == slotCompanion && space.value[slot] == 0 {
 			continue
 		}
 		value, _ := space.named(slot, space.value[slot])
 		out.Held = append(out.Held, Prior{Name: space.name[slot], Kind: Fixed, A: value, Unit: unitOf(space.name[slot])})
 	}
-	if s.model.own != nil {
-		out.Held = append(out.Held, s.model.own.held()...)
+	if s.objective.own != nil {
+		out.Held = append(out.Held, s.objective.own.held()...)
 	}
-	if !s.model.alone {
+	if !s.objective.alone {
 		out.Derived = s.derived()
 	}
 	return out
 }
 
-// formula is the model as an equation in words and symbols.
-func (m *model) formula(setup Setup) string {
-	const transit = "transit(t) is that of a dark sphere on a Keplerian orbit before a star with "
-	trend := setup.Trend.Formula()
-	if m.own == nil {
-		return "flux = transit(t) × (" + trend + "); " + transit + setup.LimbLaw + " limb darkening, 1 out of transit"
+// uses reports whether the model has a slot's parameter.
+func (m *objective) uses(slot int) bool {
+	switch {
+	case slot == slotSettling:
+		return m.design.Settling >= 0
+	case noisy(slot):
+		return true
 	}
-	own := "f(t; " + strings.Join(m.own.names, ", ") + ")"
-	if m.alone {
-		return "flux = " + own + " × (" + trend + "); f is a function of the recipe"
+	return !m.alone && m.space.exists(slot)
+}
+
+// addNoise appends the parameters of the noise. What is near zero may bend within
+// the error, so that slopes are secants.
+func (s *solution) addNoise(out *Posterior) {
+	space := s.objective.space
+	first := len(out.Names)
+	slope := make([]float64, len(space.noise))
+	for a, slot := range space.noise {
+		x, sd := space.value[slot], math.Sqrt(s.noiseCov[a][a])
+		lo, hi := space.limits(slot)
+		lo, hi = max(lo, x-sd), min(hi, x+sd)
+		value, tangent := space.named(slot, x)
+		if slope[a] = tangent; hi > lo {
+			up, _ := space.named(slot, hi)
+			down, _ := space.named(slot, lo)
+			slope[a] = (up - down) / (hi - lo)
+		}
+		out.Names, out.Value, out.Units = append(out.Names, space.name[slot]), append(out.Value, value), append(out.Units, "")
 	}
-	return "flux = transit(t) × " + own + " × (" + trend + "); " + transit + setup.LimbLaw +
-		" limb darkening, 1 out of transit; f is a function of the recipe"
+	for a := range slope {
+		for b := range slope {
+			out.Cov[first+a][first+b] = slope[a] * s.noiseCov[a][b] * slope[b]
+		}
+	}
 }
 
 func unitOf(name string) string {
@@ -133,33 +157,43 @@ func unitOf(name string) string {
 
 // derived lists what follows from the parameters of a white fit.
 func (s *solution) derived() []Quantity {
-	space := s.model.space
+	space := s.objective.space
 	from := func(f func(p transit.Params) float64) func(v *[slots]float64) float64 {
-		return func(v *[slots]float64) float64 { return f(space.physical(v)) }
+		return func(v *[slots]float64) float64 {
+			p, err := space.physical(v)
+			if err != nil {
+				return math.NaN()
+			}
+			return f(p)
+		}
 	}
 	out := []Quantity{
 		s.quantity("depth", "", "squared radius ratio", from(func(p transit.Params) float64 { return p.RadiusRatio * p.RadiusRatio })),
 	}
-	if space.name[slotMid] != "midTransit" {
-		out = append(out, s.quantity("midTransit", "d", "time of mid-transit, BJD_TDB", from(func(p transit.Params) float64 { return p.Orbit.MidTransit })))
+	add := func(name, about string, f func(p transit.Params) float64) {
+		for _, known := range space.name {
+			if known == name {
+				return
+			}
+		}
+		out = append(out, s.quantity(name, unitOf(name), about, from(f)))
 	}
-	if space.name[slotShape] == "impact" {
-		out = append(out, s.quantity("inclination", "deg", "of the orbit", from(func(p transit.Params) float64 { return p.Orbit.Inclination / degree })))
-	} else {
-		out = append(out, s.quantity("impact", "", "impact parameter, in stellar radii", from(func(p transit.Params) float64 { return p.Orbit.ImpactParameter() })))
-	}
-	out = append(out,
-		s.quantity("duration", "h", "of the transit, first to fourth contact", from(func(p transit.Params) float64 {
-			t14, _ := p.Orbit.Duration(p.RadiusRatio)
-			return 24 * t14
-		})),
-		s.quantity("stellarDensity", "kg.m-3", "of the star, from period and axis ratio, for a planet of negligible mass", from(func(p transit.Params) float64 {
-			return orbit.StellarDensity(p.Orbit.Period, p.Orbit.AxisRatio)
-		})))
-	if space.name[slotLimb1] == "q1" {
-		out = append(out,
-			s.quantity("u1", "", "first limb-darkening coefficient", from(func(p transit.Params) float64 { return p.Law.Coefficients[0] })),
-			s.quantity("u2", "", "second limb-darkening coefficient", from(func(p transit.Params) float64 { return p.Law.Coefficients[1] })))
+	add("midTransit", "time of mid-transit, BJD_TDB", func(p transit.Params) float64 { return p.Orbit.MidTransit })
+	add("axisRatio", "semi-major axis in stellar radii", func(p transit.Params) float64 { return p.Orbit.AxisRatio })
+	add("inclination", "of the orbit", func(p transit.Params) float64 { return p.Orbit.Inclination / degree })
+	add("impact", "impact parameter, in stellar radii", func(p transit.Params) float64 { return p.Orbit.ImpactParameter() })
+	add("duration", "of the transit, first to fourth contact", func(p transit.Params) float64 {
+		t14, _ := p.Orbit.Duration(p.RadiusRatio)
+		return hoursPerDay * t14
+	})
+	add("stellarDensity", "of the star, from period and axis ratio, for a planet of negligible mass", func(p transit.Params) float64 {
+		return orbit.StellarDensity(p.Orbit.Period, p.Orbit.AxisRatio)
+	})
+	add("eccentricity", "of the orbit", func(p transit.Params) float64 { return p.Orbit.Eccentricity })
+	add("periastron", "argument of periastron", func(p transit.Params) float64 { return p.Orbit.Periastron / degree })
+	for k := range space.limbs {
+		add(fmt.Sprintf("u%d", k+1), [...]string{"first", "second", "third", "fourth"}[k]+" limb-darkening coefficient",
+			func(p transit.Params) float64 { return p.Law.Coefficients[k] })
 	}
 	return out
 }

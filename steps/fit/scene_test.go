@@ -11,6 +11,7 @@ import (
 	"rimlight/steps/spectrum"
 	"rimlight/steps/systematics"
 	"rimlight/steps/transit"
+	"rimlight/steps/vector"
 )
 
 // quadratic is a quadratic limb-darkening law.
@@ -75,10 +76,10 @@ func newScene(t testing.TB, seed uint64, n, m int) scene {
 	return s
 }
 
-// setup is what a user would give for a scene: a mid-transit time good to 0.01 d
+// model is what a user would give for a scene: a mid-transit time good to 0.01 d
 // and other values near the true ones.
-func (s scene) setup() Setup {
-	return Setup{
+func (s scene) model() Model {
+	return Model{
 		Period: s.orbit.Period, MidTransit: 2460100.4, AxisRatio: 9.6, Inclination: 87.6, Periastron: 90, RadiusRatio: 0.1,
 		Trend: systematics.Trend{Polynomial: 1, Settling: true, SettlingTime: 0.02, Regressors: []string{"X", "Y"}},
 	}
@@ -97,19 +98,19 @@ func channelPriors(a, b string, lo, hi float64) Priors {
 }
 
 // reduce runs all channel fits after a white fit.
-func (s scene) reduce(t testing.TB, setup Setup, white, channel Priors) (Posterior, []spectrum.Point) {
+func (s scene) reduce(t testing.TB, model Model, white, channel Priors) (Posterior, []spectrum.Point) {
 	t.Helper()
 	curve, err := lightcurve.White(s.cube)
 	if err != nil {
 		t.Fatal(err)
 	}
-	posterior, _, err := White(curve, setup, white)
+	posterior, _, err := White(curve, withWhite(model, white))
 	if err != nil {
 		t.Fatal(err)
 	}
 	var points []spectrum.Point
 	for _, c := range lightcurve.Curves(s.cube) {
-		p, _, err := Channel(c, posterior, setup, channel)
+		p, _, err := Channel(c, posterior, withChannel(model, channel))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -131,4 +132,25 @@ func (s scene) pulls(points []spectrum.Point, shared [][]float64) (mean, rms flo
 		rms += pull * pull / float64(len(points))
 	}
 	return mean, math.Sqrt(rms)
+}
+
+// withWhite is a model with parameters of the white light curve, and withChannel
+// one with parameters of each channel.
+func withWhite(model Model, rows Priors) Model   { model.White = rows; return model }
+func withChannel(model Model, rows Priors) Model { model.Channel = rows; return model }
+
+// whiteWith, channelWith and functionOf fit models with parameters and a function
+// put in.
+func whiteWith(curve lightcurve.Curve, model Model, rows Priors, names []string, f func(p []float64) vector.V) (Posterior, CurveFit, error) {
+	model.White, model.Function = rows, names
+	return WhiteWith(curve, model, f)
+}
+
+func channelWith(curve lightcurve.Curve, white Posterior, model Model, rows Priors, names []string, f func(p []float64) vector.V) (spectrum.Point, CurveFit, error) {
+	model.Channel, model.Function = rows, names
+	return ChannelWith(curve, white, model, f)
+}
+
+func functionOf(curve lightcurve.Curve, trend systematics.Trend, rows Priors, names []string, f func(p []float64) vector.V) (Posterior, CurveFit, error) {
+	return Function(curve, Model{Trend: trend, White: rows, Function: names}, f)
 }

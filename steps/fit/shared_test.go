@@ -14,8 +14,8 @@ func TestShiftGeometry(t *testing.T) {
 	s := newScene(t, 31, 600, 6)
 	white := whiteOf(t, s)
 	curve := lightcurve.Curves(s.cube)[2]
-	setup, priors := s.setup(), channelPriors("u1", "u2", -1, 2)
-	base, _, err := Channel(curve, white, setup, priors)
+	model, priors := s.model(), channelPriors("u1", "u2", -1, 2)
+	base, _, err := Channel(curve, white, withChannel(model, priors))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -26,7 +26,7 @@ func TestShiftGeometry(t *testing.T) {
 		moved := white
 		moved.Value = append([]float64(nil), white.Value...)
 		moved.Value[k] += change
-		p, _, err := Channel(curve, moved, setup, priors)
+		p, _, err := Channel(curve, moved, withChannel(model, priors))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -81,7 +81,7 @@ func TestSpectrumIsHonest(t *testing.T) {
 	const scenes = 4
 	for seed := range uint64(scenes) {
 		s := newScene(t, 40+seed, 500, 12)
-		white, points := s.reduce(t, s.setup(), whitePriors(), channelPriors("u1", "u2", -1, 2))
+		white, points := s.reduce(t, s.model(), whitePriors(), channelPriors("u1", "u2", -1, 2))
 		shared := SharedCovariance(points, white)
 		mean, rms := s.pulls(points, shared)
 		meanSq += mean * mean / scenes

@@ -4,78 +4,99 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"rimlight/steps/limb"
-	"rimlight/steps/orbit"
-	"rimlight/steps/transit"
 )
 
 // A space is the set of parameters of a fit: a vector of coordinates, one per
 // slot, some free. Coordinates are those in which the light curve is smooth, in
 // parentheses where they are not the named parameter itself:
 //
-//	period, midTransit (offset from reference), axisRatio,
+//	period, midTransit (offset from reference), axisRatio, stellarDensity or duration,
 //	inclination (cos² i) or impact (b²),
-//	eccentricity, periastron (rad), radiusRatio,
-//	u1, u2 or q1 (√q1), q2 (see limb.FromSquare), settlingTime (its logarithm)
+//	eccentricity and periastron (rad), ecosw and esinw, or secosw and sesinw,
+//	radiusRatio, u1 to u4 or q1 (√q1) and q2 (see limb.FromSquare), companion,
+//	settlingTime and errorScale (their logarithms), jitter (its square)
 type space struct {
 	value     [slots]float64 // coordinates: start of the free ones, values of the others
 	name      [slots]string  // the name each slot goes by in tables
 	prior     [slots]Prior   // of the free slots, in the posterior's units
-	free      []int          // free slots, increasing
+	free      []int          // free slots of what the flux is, increasing
+	noise     []int          // free slots of the noise, increasing
+	trend     Priors         // normal priors of coefficients of the trend
 	reference float64        // mid-transit time that slotMid counts from
 	exposure  float64        // s
-	law       string         // of limb darkening, one of two coefficients; the quadratic one stands in for simpler ones
+	law       string         // of limb darkening
+	limbs     int            // coefficients of the law
 }
 
-// newSpace takes start values from the setup and names the slots by the
-// parameterisation that the priors choose.
-func newSpace(setup Setup) *space {
-	cosI := math.Cos(setup.Inclination * degree)
+// newSpace takes start values from the model. Names are those of its fields.
+func newSpace(model Model) *space {
+	cosI := math.Cos(model.Inclination * degree)
 	s := &space{
 		value: [slots]float64{
-			slotPeriod: setup.Period, slotAxis: setup.AxisRatio, slotShape: max(cosI*cosI, leastShape),
-			slotEccentricity: setup.Eccentricity, slotPeriastron: setup.Periastron * degree,
-			slotRadius: setup.RadiusRatio,
+			slotPeriod: model.Period, slotSize: model.AxisRatio, slotTilt: max(cosI*cosI, leastShape),
+			slotShape1: model.Eccentricity, slotShape2: model.Periastron * degree,
+			slotRadius: model.RadiusRatio, slotCompanion: model.Companion,
 		},
 		name: [slots]string{"period", "midTransit", "axisRatio", "inclination", "eccentricity", "periastron",
-			"radiusRatio", "u1", "u2", "settlingTime"},
-		reference: setup.MidTransit,
-		exposure:  setup.Exposure,
-		law:       LawQuadratic,
+			"radiusRatio", "u1", "u2", "u3", "u4", "companion", "settlingTime", "errorScale", "jitter"},
+		reference: model.MidTransit,
+		exposure:  model.Exposure,
+		law:       model.LimbLaw,
 	}
-	switch setup.LimbLaw {
-	case LawSquareRoot, LawLogarithmic:
-		s.law = setup.LimbLaw
-	case LawPower2:
-		s.law = setup.LimbLaw
+	if s.law == "" {
+		s.law = LawQuadratic
+	}
+	s.limbs, _ = limb.Count(s.law) // the law was checked
+	if s.law == LawPower2 {
 		s.value[slotLimb1], s.value[slotLimb2] = 0.5, 0.7 // some star; an exponent of 0 is none
 	}
-	if setup.Trend.Settling {
-		s.value[slotSettling] = math.Log(setup.Trend.SettlingTime)
+	if model.Trend.Settling {
+		s.value[slotSettling] = math.Log(model.Trend.SettlingTime)
 	}
 	return s
 }
 
-// rename changes the parameterisation of a slot, converting its value.
+// exists reports whether a slot has a meaning for the law of limb darkening.
+func (s *space) exists(slot int) bool {
+	return slot < slotLimb1 || slot >= slotLimb1+limb.Most || slot < slotLimb1+s.limbs
+}
+
+// rename changes the parameterisation of a slot, and of those that go with it,
+// and converts values.
 func (s *space) rename(slot int, name string) {
 	if s.name[slot] == name {
 		return
 	}
-	p := s.physical(&s.value)
-	switch name {
-	case "impact":
-		b := p.Orbit.ImpactParameter()
-		s.value[slotShape] = max(b*b, leastShape)
-	case "q1", "q2":
-		q1, q2, err := limb.ToSquare(s.law, p.Law.Coefficients[0], p.Law.Coefficients[1])
-		if err != nil { // the start is nowhere near a star
-			q1, q2 = 0, 0.5
+	switch slot {
+	case slotSize, slotTilt, slotShape1, slotShape2:
+		o, err := s.orbit(&s.value)
+		s.name[slot] = name
+		if slot == slotShape1 || slot == slotShape2 {
+			f := family(name)
+			s.name[slotShape1], s.name[slotShape2] = f[0], f[1]
 		}
-		s.value[slotLimb1], s.value[slotLimb2] = math.Sqrt(q1), q2
-		s.name[slotLimb1], s.name[slotLimb2] = "q1", "q2"
+		if err == nil {
+			s.setOrbit(o)
+		}
+	case slotLimb1, slotLimb2, slotLimb3, slotLimb4:
+		u := s.coefficients(&s.value)
+		if family(name)[0] == "q1" {
+			s.name[slotLimb1], s.name[slotLimb2] = "q1", "q2"
+			q1, q2, err := limb.ToSquare(s.law, u[0], u[1])
+			if err != nil { // the start is nowhere near a star
+				q1, q2 = 0, 0.5
+			}
+			s.value[slotLimb1], s.value[slotLimb2] = math.Sqrt(q1), q2
+			return
+		}
+		s.name[slotLimb1], s.name[slotLimb2] = "u1", "u2"
+		copy(s.value[slotLimb1:], u)
+	default:
+		s.name[slot] = name
 	}
-	s.name[slot] = name
 }
 
 // apply puts the rows of a priors table into the space. settling says whether
@@ -84,6 +105,12 @@ func (s *space) rename(slot int, name string) {
 func (s *space) apply(priors Priors, settling bool) (warnings []string, err error) {
 	var rows [slots]*Prior
 	for i := range priors {
+		if isTrend(priors[i].Name) {
+			if err := s.addTrend(priors[i]); err != nil {
+				return nil, err
+			}
+			continue
+		}
 		named, err := findName(priors[i].Name)
 		if err != nil {
 			return nil, err
@@ -102,40 +129,78 @@ func (s *space) apply(priors Priors, settling bool) (warnings []string, err erro
 			warnings = append(warnings, "the prior on settlingTime is not used: the trend has no settling term")
 			continue
 		}
+		if !s.exists(named.slot) {
+			warnings = append(warnings, fmt.Sprintf("the prior on %s is not used: the law is %s", row.Name, s.law))
+			continue
+		}
+		if family(row.Name)[0] == "q1" && s.limbs != 2 {
+			return nil, fmt.Errorf("%s belongs to a law of two coefficients, but the law is %s; give a prior for u1", row.Name, s.law)
+		}
 		rows[named.slot] = &row
 	}
-	if a, b := rows[slotLimb1], rows[slotLimb2]; a != nil && b != nil && a.Name[0] != b.Name[0] {
-		return nil, fmt.Errorf("both %s and %s have priors; use u1 and u2, or q1 and q2", a.Name, b.Name)
+	if err := checkFamilies(&rows); err != nil {
+		return nil, err
 	}
 	for slot, row := range rows {
 		if row != nil {
 			s.rename(slot, row.Name)
 		}
 	}
+	// A duration, a density and an impact parameter depend on what else is held:
+	// numbers that the table gives come first, and start values after them.
 	for slot, row := range rows {
-		if row == nil {
-			continue
-		}
-		if row.Kind == Fixed {
-			lo, hi := s.allowed(slot)
-			s.value[slot] = s.coordinate(slot, row.A)
-			if !(s.value[slot] >= lo && s.value[slot] <= hi) {
-				return nil, fmt.Errorf("parameter %s is held at %g, outside its range", row.Name, row.A)
+		if row != nil && row.Kind == Fixed {
+			if err := s.hold(slot, *row); err != nil {
+				return nil, err
 			}
-			continue
 		}
-		if err := s.release(slot, *row); err != nil {
-			return nil, err
+	}
+	for slot, row := range rows {
+		if row != nil && row.Kind != Fixed {
+			if err := s.release(slot, *row); err != nil {
+				return nil, err
+			}
 		}
 	}
 	return warnings, nil
 }
 
+// addTrend adds a prior of a coefficient of the trend.
+func (s *space) addTrend(p Prior) error {
+	if err := p.check(); err != nil {
+		return err
+	}
+	if p.Kind != Normal || p.Unit != "" {
+		return fmt.Errorf("prior of %.40s is %.40s(...) with unit %.40q; expected N(mean, sd), a pure number in units of the curve's median flux", p.Name, p.Kind, p.Unit)
+	}
+	for _, other := range s.trend {
+		if other.Name == p.Name {
+			return fmt.Errorf("parameter %.40s has two priors; give one", p.Name)
+		}
+	}
+	s.trend = append(s.trend, p)
+	return nil
+}
+
+// hold fixes a slot at the value of a row.
+func (s *space) hold(slot int, row Prior) error {
+	lo, hi := s.allowed(slot)
+	s.value[slot] = s.coordinate(slot, row.A)
+	if !(s.value[slot] >= lo && s.value[slot] <= hi) {
+		return fmt.Errorf("parameter %s is held at %g, outside its range", row.Name, row.A)
+	}
+	return nil
+}
+
 // release makes a slot free under a prior and moves its value into the range.
 func (s *space) release(slot int, prior Prior) error {
 	s.prior[slot] = prior
-	s.free = append(s.free, slot)
-	slices.Sort(s.free)
+	if noisy(slot) {
+		s.noise = append(s.noise, slot)
+	} else {
+		s.free = append(s.free, slot)
+		slices.Sort(s.free)
+	}
 	lo, hi := s.limits(slot)
 	if !(lo < hi) {
 		return fmt.Errorf("the prior of %s leaves no room inside the parameter's range", prior.Name)
@@ -165,7 +230,9 @@ func inside(x, lo, hi float64) float64 {
 }
 
 // isFree reports whether a slot is free.
-func (s *space) isFree(slot int) bool { return slices.Contains(s.free, slot) }
+func (s *space) isFree(slot int) bool {
+	return slices.Contains(s.free, slot) || slices.Contains(s.noise, slot)
+}
 
 // allowed is the range of a coordinate that holds whatever the prior says.
 func (s *space) allowed(slot int) (lo, hi float64) {
@@ -174,17 +241,33 @@ func (s *space) allowed(slot int) (lo, hi float64) {
 		return math.SmallestNonzeroFloat64, math.Inf(1)
 	case slotSettling:
 		return math.Log(leastSettling), math.Log(mostSettling)
-	case slotAxis:
-		return 1, math.Inf(1)
-	case slotShape:
+	case slotSize:
+		if s.name[slot] == "axisRatio" {
+			return 1, math.Inf(1)
+		}
+		return math.SmallestNonzeroFloat64, math.Inf(1)
+	case slotTilt:
 		if s.name[slot] == "impact" {
 			return leastShape, 4
 		}
 		return leastShape, 1
-	case slotEccentricity:
-		return 0, maxEccentricity
+	case slotShape1, slotShape2:
+		switch s.name[slot] {
+		case "eccentricity":
+			return 0, maxEccentricity
+		case "ecosw", "esinw":
+			return -maxEccentricity, maxEccentricity
+		case "secosw", "sesinw":
+			return -math.Sqrt(maxEccentricity), math.Sqrt(maxEccentricity)
+		}
 	case slotRadius:
 		return leastRadius, maxRadiusRatio
+	case slotCompanion:
+		return 0, mostCompanion
+	case slotErrorScale:
+		return math.Log(leastErrorScale), math.Log(mostErrorScale)
+	case slotJitter:
+		return 0, 1
 	case slotLimb1, slotLimb2:
 		square := s.name[slot][0] == 'q'
 		switch {
@@ -215,7 +298,7 @@ func (s *space) limits(slot int) (lo, hi float64) {
 		return max(lo, min(ca, cb)), min(hi, max(ca, cb))
 	}
 	switch s.name[slot] {
-	case "impact", "q1", "settlingTime":
+	case "impact", "q1", "settlingTime", "errorScale", "jitter":
 		if b < 0 {
 			return lo, math.Inf(-1) // no room
 		}
@@ -242,9 +325,11 @@ func (s *space) coordinate(slot int, named float64) float64 {
 		return max(named*named, leastShape)
 	case "periastron":
 		return named * degree
+	case "jitter":
+		return named * named
 	case "q1":
 		return math.Sqrt(named)
-	case "settlingTime":
+	case "settlingTime", "errorScale":
 		return math.Log(named)
 	}
 	return named
@@ -263,83 +348,23 @@ func (s *space) named(slot int, x float64) (value, slope float64) {
 		return b, 1 / (2 * b)
 	case "periastron":
 		return x / degree, 1 / degree
+	case "jitter":
+		j := math.Sqrt(x)
+		return j, 1 / (2 * j)
 	case "q1":
 		return x * x, 2 * x
-	case "settlingTime":
+	case "settlingTime", "errorScale":
 		return math.Exp(x), math.Exp(x)
 	}
 	return x, 1
 }
 
-// physical turns coordinates into the arguments of the transit model.
-func (s *space) physical(v *[slots]float64) transit.Params {
-	e, sinW := v[slotEccentricity], math.Sin(v[slotPeriastron])
-	cosI := math.Sqrt(v[slotShape])
-	if s.name[slotShape] == "impact" {
-		cosI = min(1, cosI*(1+e*sinW)/(v[slotAxis]*(1-e*e)))
-	}
-	u1, u2 := v[slotLimb1], v[slotLimb2]
-	if s.name[slotLimb1] == "q1" {
-		u1, u2, _ = s.fromSquare(v)
-	}
-	return transit.Params{
-		Orbit: orbit.Orbit{
-			Period: v[slotPeriod], MidTransit: s.reference + v[slotMid], AxisRatio: v[slotAxis],
-			Inclination: math.Acos(cosI), Eccentricity: e, Periastron: v[slotPeriastron],
-		},
-		RadiusRatio: v[slotRadius], Law: limb.Law{Name: s.law, Coefficients: []float64{u1, u2}}, Exposure: s.exposure,
-	}
+// noiseOf returns errorScale and jitter.
+func (s *space) noiseOf(v *[slots]float64) (scale, jitter float64) {
+	return math.Exp(v[slotErrorScale]), math.Sqrt(v[slotJitter])
 }
 
-// fromSquare returns the limb-darkening coefficients at √q1 and q2 and their
-// derivatives, see [limb.FromRoot].
-func (s *space) fromSquare(v *[slots]float64) (u1, u2 float64, grad [4]float64) {
-	root, q2 := v[slotLimb1], v[slotLimb2]
-	if s.law == LawPower2 { // steps of differences may leave the range
-		root, q2 = min(max(root, squareMargin), 1-squareMargin), min(q2, 1-squareMargin)
-	}
-	u1, u2, grad, _ = limb.FromRoot(s.law, root, q2)
-	return u1, u2, grad
-}
-
-// chain turns the gradient of a light curve in the transit model's arguments, in
-// their order, into that in a slot's coordinate: a weight for each argument.
-func (s *space) chain(v *[slots]float64, slot int) (weight [9]float64) {
-	const inclination = 3 // the arguments are in the order of the slots, but for coordinates
-	p := s.physical(v)
-	sinI, cosI := math.Sincos(p.Orbit.Inclination)
-	impact := s.name[slotShape] == "impact"
-	e := v[slotEccentricity]
-	sinW, cosW := math.Sincos(v[slotPeriastron])
-	dCos := -1 / sinI // derivative of the inclination in its cosine
-	switch slot {
-	case slotShape:
-		weight[inclination] = dCos * cosI / (2 * v[slotShape])
-	case slotLimb1:
-		weight[slotLimb1] = 1
-		if s.name[slot] == "q1" {
-			_, _, grad := s.fromSquare(v)
-			weight[slotLimb1], weight[slotLimb2] = grad[0], grad[2]
-		}
-	case slotLimb2:
-		weight[slotLimb2] = 1
-		if s.name[slot] == "q2" {
-			_, _, grad := s.fromSquare(v)
-			weight[slotLimb1], weight[slotLimb2] = grad[1], grad[3]
-		}
-	default:
-		weight[slot] = 1
-		if !impact {
-			break
-		}
-		switch slot { // the inclination follows from the impact parameter
-		case slotAxis:
-			weight[inclination] = -dCos * cosI / v[slotAxis]
-		case slotEccentricity:
-			weight[inclination] = dCos * cosI * (sinW/(1+e*sinW) + 2*e/(1-e*e))
-		case slotPeriastron:
-			weight[inclination] = dCos * cosI * e * cosW / (1 + e*sinW)
-		}
-	}
-	return weight
+// isTrend reports whether a name is that of a coefficient of the trend.
+func isTrend(name string) bool {
+	return len(name) > len(trendPrefix) && strings.HasPrefix(name, trendPrefix)
 }

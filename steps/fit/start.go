@@ -6,7 +6,6 @@ import (
 	"gonum.org/v1/gonum/floats"
 
 	"rimlight/steps/systematics"
-	"rimlight/steps/transit"
 )
 
 // Tuning of the search for a start.
@@ -20,7 +19,7 @@ const (
 
 // search finds start values: those of the recipe's function, where there is one,
 // in turns with the transit's.
-func (m *model) search() error {
+func (m *objective) search() error {
 	if m.own == nil {
 		return m.scan()
 	}
@@ -52,11 +51,11 @@ func (m *model) search() error {
 // time where they are free: for each trial time and settling time, the trend and
 // the depth of the start's transit shape are solved for linearly, and the pair
 // that fits best is kept.
-func (m *model) scan() error {
+func (m *objective) scan() error {
 	s := m.space
 	start := s.value
 	shapeAt := func(v *[slots]float64) ([]float64, error) {
-		flux, err := transit.Curve(m.times, s.physical(v))
+		flux, err := m.transit(v)
 		if err != nil {
 			return nil, err
 		}
@@ -105,7 +104,7 @@ func (m *model) scan() error {
 }
 
 // trialOffsets lists the mid-transit times to try, as offsets.
-func (m *model) trialOffsets() []float64 {
+func (m *objective) trialOffsets() []float64 {
 	s := m.space
 	if !s.isFree(slotMid) {
 		return []float64{s.value[slotMid]}
@@ -122,8 +121,10 @@ func (m *model) trialOffsets() []float64 {
 	if math.IsInf(hi-lo, 0) { // or is too narrow to step through
 		return []float64{s.value[slotMid]}
 	}
-	p := s.physical(&s.value)
-	t14, _ := p.Orbit.Duration(p.RadiusRatio)
+	t14 := 0.0
+	if p, err := s.physical(&s.value); err == nil {
+		t14, _ = p.Orbit.Duration(p.RadiusRatio)
+	}
 	if !(t14 > 0) {
 		t14 = s.value[slotPeriod] / 50
 	}
@@ -136,7 +137,7 @@ func (m *model) trialOffsets() []float64 {
 }
 
 // trialSettling lists the settling times to try, as coordinates.
-func (m *model) trialSettling() []float64 {
+func (m *objective) trialSettling() []float64 {
 	s := m.space
 	if !s.isFree(slotSettling) {
 		return []float64{s.value[slotSettling]}
@@ -152,7 +153,7 @@ func (m *model) trialSettling() []float64 {
 // projectTrend returns an orthonormal basis of the weighted trend columns at a
 // settling time, times the function's values; the trend that fits best without a
 // transit; and the weighted residuals of that.
-func (m *model) projectTrend(tau float64) (basis [][]float64, level, left []float64) {
+func (m *objective) projectTrend(tau float64) (basis [][]float64, level, left []float64) {
 	n := len(m.used)
 	left = make([]float64, n)
 	floats.MulTo(left, m.flux, m.weight)
@@ -162,7 +163,9 @@ func (m *model) projectTrend(tau float64) (basis [][]float64, level, left []floa
 			column = systematics.Settle(m.times, m.design.Start, tau)
 		}
 		v := floats.MulTo(make([]float64, n), column, m.weight)
-		floats.Mul(v, m.factor)
+		if k < m.design.Added {
+			floats.Mul(v, m.factor)
+		}
 		length := floats.Norm(v, 2)
 		for range 2 {
 			for _, q := range basis {
@@ -185,30 +188,34 @@ func (m *model) projectTrend(tau float64) (basis [][]float64, level, left []floa
 // starts lists vectors of coordinates to start the optimiser from: the present
 // one and, where the shape of the orbit is free, others of about the same
 // transit duration and other impact parameters.
-func (m *model) starts() [][slots]float64 {
+func (m *objective) starts() [][slots]float64 {
 	s := m.space
 	out := [][slots]float64{s.value}
-	if !s.isFree(slotShape) {
+	if !s.isFree(slotTilt) {
 		return out
 	}
-	p := s.physical(&s.value)
-	b0 := p.Orbit.ImpactParameter()
+	p, err := s.physical(&s.value)
+	if err != nil {
+		return out
+	}
+	b0, e := p.Orbit.ImpactParameter(), p.Orbit.Eccentricity
+	near := (1 - e*e) / (1 + e*math.Sin(p.Orbit.Periastron)) // distance at mid-transit in semi-major axes
 	chord := func(b float64) float64 { return (1+p.RadiusRatio)*(1+p.RadiusRatio) - b*b }
 	for _, b := range []float64{0.15, 0.5, 0.75} {
+		other := *s
+		o := p.Orbit
+		if s.isFree(slotSize) && chord(b0) > 0 {
+			o.AxisRatio *= math.Sqrt(chord(b) / chord(b0))
+		}
+		o.Inclination = math.Acos(min(1, b/(o.AxisRatio*near)))
+		other.setOrbit(o)
 		v := s.value
-		if s.isFree(slotAxis) && chord(b0) > 0 {
-			lo, hi := s.limits(slotAxis)
-			v[slotAxis] = inside(v[slotAxis]*math.Sqrt(chord(b)/chord(b0)), lo, hi)
+		for _, slot := range []int{slotSize, slotTilt} {
+			if s.isFree(slot) {
+				lo, hi := s.limits(slot)
+				v[slot] = inside(other.value[slot], lo, hi)
+			}
 		}
-		shape := b * b
-		if s.name[slotShape] != "impact" {
-			// cos i = b/a × (1 + e sin w)/(1 - e²); the last factor from the present orbit.
-			factor := math.Cos(p.Orbit.Inclination) * p.Orbit.AxisRatio / b0
-			cosI := b * factor / v[slotAxis]
-			shape = cosI * cosI
-		}
-		lo, hi := s.limits(slotShape)
-		v[slotShape] = inside(shape, lo, hi)
 		out = append(out, v)
 	}
 	return out

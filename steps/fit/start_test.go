@@ -19,12 +19,12 @@ func TestTrialOffsets(t *testing.T) {
 		"far":           {Kind: Normal, A: 1e300, B: 1},
 	} {
 		prior.Name = "midTransitOffset"
-		setup := s.setup()
-		space := newSpace(setup)
+		model := s.model()
+		space := newSpace(model)
 		if _, err := space.apply(Priors{prior}, true); err != nil {
 			t.Fatal(err)
 		}
-		m, err := newModel(curve, setup, space, nil)
+		m, err := newObjective(curve, model, space, nil)
 		if err != nil {
 			t.Fatal(err)
 		}

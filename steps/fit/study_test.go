@@ -56,7 +56,7 @@ func TestStudy(t *testing.T) {
 			}
 			s := scene{cube: clean, depth: truth.Depth, u1: truth.U1, u2: truth.U2}
 			for _, treat := range treatments {
-				setup := Setup{
+				model := Model{
 					Period: scenario.Period, MidTransit: scenario.MidTransit - 0.006, AxisRatio: scenario.AxisRatio, Inclination: scenario.Inclination,
 					Periastron: 90, RadiusRatio: 0.1, Exposure: scenario.Exposure,
 					Trend: systematics.Trend{Polynomial: 1, Settling: true, SettlingTime: 0.01, Regressors: []string{"X", "Y"}},
@@ -72,7 +72,7 @@ func TestStudy(t *testing.T) {
 					}
 				}
 				start := time.Now()
-				posterior, points := s.reduce(t, setup, white, treat.channel)
+				posterior, points := s.reduce(t, model, white, treat.channel)
 				took := time.Since(start).Seconds()
 				shared := SharedCovariance(points, posterior)
 				var own, total, ratio, chi2 tally

@@ -27,7 +27,8 @@ type Prior struct {
 type Priors []Prior
 
 // A Posterior summarises a fit: best values, standard deviations and
-// covariance of the parameters that were free, and what was held.
+// covariance of the parameters that were free, and what was held. The coefficients
+// of the trend come after the other parameters, those of the noise last.
 type Posterior struct {
 	Names      []string    // free parameters, then none of the held ones
 	Units      []string    // unit of each free parameter
@@ -42,7 +43,7 @@ type Posterior struct {
 	Iterations int      // of the optimiser
 	Status     string   // "converged", or how it ended otherwise
 	Warnings   []string // parameters at a bound, degenerate pairs
-	Model      string   // the model that was fitted, as an equation in words and symbols
+	Model      Model    // what was fitted
 }
 
 // A Quantity is a named number with its standard deviation.
@@ -59,11 +60,12 @@ type Quantity struct {
 type CurveFit struct {
 	Channel lightcurve.Channel
 	Time    []float64         // BJD_TDB, days
-	Flux    []float64         // as given, divided by Level
+	Flux    []float64         // as given, divided by Level, less Added
 	Err     []float64         // as used in the fit, divided by Level
 	Mask    []lightcurve.Flag // 0 marks a sample that was fitted
 	Transit []float64         // transit model, 1 out of transit
 	Trend   []float64         // systematics model, relative to Level; Flux is about Transit times Trend
+	Added   []float64         // what the systematics model adds to the light of the star, relative to Level
 	Level   float64           // baseline flux in the curve's own unit
 	Mid     float64           // fitted or held mid-transit time, BJD_TDB, days; NaN when a model of the recipe has none
 }

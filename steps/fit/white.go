@@ -5,7 +5,6 @@ import (
 	"fmt"
 
 	"rimlight/steps/lightcurve"
-	"rimlight/steps/transit"
 )
 
 // whatWhite starts the messages of a white fit.
@@ -20,14 +19,14 @@ const (
 // White fits transit and systematics to a white light curve of n integrations.
 //
 // Every parameter that priors names with a kind other than "=" is free; the
-// others are held at the priors' or else the setup's values. Names are period
-// (d), midTransit (BJD_TDB, d) or midTransitOffset (d, from setup.MidTransit),
+// others are held at the priors' or else the model's values. Names are period
+// (d), midTransit (BJD_TDB, d) or midTransitOffset (d, from model.MidTransit),
 // axisRatio, inclination (deg) or impact, eccentricity, periastron (deg),
 // radiusRatio, u1 and u2 or q1 and q2 (the unit square of limb.FromSquare), and
 // settlingTime (d). The coefficients of the trend are always free and come last
 // in the posterior, under names such as "trend.constant", in units of the curve's
 // median flux. Limb darkening follows the priors where they name it, and
-// otherwise setup.LimbPolicy.
+// otherwise model.LimbPolicy.
 //
 // The maximum of the posterior is found by the Levenberg-Marquardt method from
 // several starts, after a scan in mid-transit time over its prior range (0.05 d
@@ -36,65 +35,81 @@ const (
 // there, limits left out of account; a parameter that the data do not determine
 // has the variance of its prior range, and a warning. Inclinations are reported
 // at or below 90 deg. Chi2 is that of the samples with the errors as given;
-// where setup.Inflate applies, the errors of the curve fit and the covariance
+// where model.Inflate applies, the errors of the curve fit and the covariance
 // are the multiplied ones.
 //
 // Errors: settings or priors out of range, unknown or contradictory names, a
 // trend that does not fit the curve (see systematics.Trend.Design), fewer than
 // 50 usable samples.
-func White(curve lightcurve.Curve, setup Setup, priors Priors) (Posterior, CurveFit, error) {
-	return white(curve, setup, priors, nil)
+func White(curve lightcurve.Curve, model Model) (Posterior, CurveFit, error) {
+	if err := model.plain(); err != nil {
+		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", whatWhite, err)
+	}
+	return white(curve, model, nil)
 }
 
 // white is White with a function of the recipe, or nil.
-func white(curve lightcurve.Curve, setup Setup, priors Priors, own *function) (Posterior, CurveFit, error) {
-	fail := func(err error) (Posterior, CurveFit, error) {
+func white(curve lightcurve.Curve, model Model, own *function) (Posterior, CurveFit, error) {
+	s, err := solveWhite(curve, &model, own)
+	if err != nil {
 		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", whatWhite, err)
-	}
-	if err := setup.check(whatWhite); err != nil {
-		return Posterior{}, CurveFit{}, err
-	}
-	rows, warnings, err := limbRows(priors, setup, curve.Channel, false)
-	if err != nil {
-		return fail(err)
-	}
-	space := newSpace(setup)
-	unused, err := space.apply(rows, setup.Trend.Settling)
-	if err != nil {
-		return fail(err)
-	}
-	m, err := newModel(curve, setup, space, own)
-	if err != nil {
-		return fail(err)
-	}
-	if len(m.used) < leastSamples {
-		return fail(fmt.Errorf("%d usable samples of %d; expected at least %d", len(m.used), len(curve.Time), leastSamples))
-	}
-	if err := m.usableLevel(); err != nil {
-		return fail(err)
-	}
-	if err := m.search(); err != nil {
-		return fail(err)
-	}
-	s, err := m.solve(m.starts(), setup.Inflate)
-	if err != nil {
-		return fail(err)
-	}
-	s.warnings = append(append(warnings, unused...), s.warnings...)
-	if reason, err := m.coverage(&s.v); err != nil {
-		return fail(err)
-	} else if reason != "" {
-		s.warnings = append(s.warnings, reason)
 	}
 	curveFit, err := s.curveFit(curve)
 	if err != nil {
-		return fail(err)
+		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", whatWhite, err)
 	}
-	return s.posterior(setup), curveFit, nil
+	return s.posterior(model), curveFit, nil
+}
+
+// solveWhite fits a single curve, after filling the defaults of the model.
+func solveWhite(curve lightcurve.Curve, model *Model, own *function) (*solution, error) {
+	if err := model.check(); err != nil {
+		return nil, err
+	}
+	rows, warnings := without(model.White, own), []string(nil)
+	if !model.Alone {
+		var err error
+		if rows, warnings, err = limbRows(rows, *model, curve.Channel, false); err != nil {
+			return nil, err
+		}
+	}
+	space := newSpace(*model)
+	unused, err := space.apply(rows, model.Trend.Settling)
+	if err != nil {
+		return nil, err
+	}
+	m, err := newObjective(curve, *model, space, own)
+	if err != nil {
+		return nil, err
+	}
+	if len(m.used) < leastSamples {
+		return nil, fmt.Errorf("%d usable samples of %d; expected at least %d", len(m.used), len(curve.Time), leastSamples)
+	}
+	if err := m.usableLevel(); err != nil {
+		return nil, err
+	}
+	if err := m.search(); err != nil {
+		return nil, err
+	}
+	starts := [][slots]float64{space.value}
+	if !model.Alone {
+		starts = m.starts()
+	}
+	s, err := m.solve(starts, model.Inflate)
+	if err != nil {
+		return nil, err
+	}
+	s.warnings = append(append(warnings, unused...), s.warnings...)
+	if reason, err := m.coverage(&s.v); err != nil {
+		return nil, err
+	} else if reason != "" {
+		s.warnings = append(s.warnings, reason)
+	}
+	return s, nil
 }
 
 // usableLevel reports a median flux that cannot be divided by.
-func (m *model) usableLevel() error {
+func (m *objective) usableLevel() error {
 	if !(m.level > 0) {
 		return errors.New("the median flux is not above zero; there is no starlight to fit")
 	}
@@ -103,8 +118,11 @@ func (m *model) usableLevel() error {
 
 // coverage says what is wrong with the usable samples' cover of transit and
 // baseline, or "".
-func (m *model) coverage(v *[slots]float64) (string, error) {
-	flux, err := transit.Curve(m.times, m.space.physical(v))
+func (m *objective) coverage(v *[slots]float64) (string, error) {
+	if m.alone {
+		return "", nil
+	}
+	flux, err := m.transit(v)
 	if err != nil {
 		return "", err
 	}

@@ -55,9 +55,9 @@ func TestWhiteRecoversTruth(t *testing.T) {
 		{uniform("inclination", 75, 90), uniform("u1", -1, 2), uniform("u2", -1, 2)},
 		{uniform("impact", 0, 1), uniform("q1", 0, 1), uniform("q2", 0, 1)},
 	} {
-		setup := s.setup()
-		setup.Inclination, setup.AxisRatio = 89.9, 11
-		p, fitted, err := White(curve, setup, append(more, base...))
+		model := s.model()
+		model.Inclination, model.AxisRatio = 89.9, 11
+		p, fitted, err := White(curve, withWhite(model, append(more, base...)))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -95,9 +95,9 @@ func TestWhiteCentralTransit(t *testing.T) {
 	for i := range curve.Flux { // some noise, so that errors mean something
 		curve.Flux[i] *= 1 + 1e-5*math.Sin(float64(i*i))
 	}
-	setup := s.setup()
-	setup.Inclination = 90
-	p, _, err := White(curve, setup, whitePriors())
+	model := s.model()
+	model.Inclination = 90
+	p, _, err := White(curve, withWhite(model, whitePriors()))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -123,7 +123,7 @@ func TestWhiteErrorsAreHonest(t *testing.T) {
 			curve.Flux[i] += 2000 * 6e-5 * rng.NormFloat64()
 			curve.Err[i] = 2000 * 6e-5
 		}
-		p, _, err := White(curve, s.setup(), whitePriors())
+		p, _, err := White(curve, withWhite(s.model(), whitePriors()))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -149,9 +149,9 @@ func TestWhiteErrorsAreHonest(t *testing.T) {
 func TestWhiteHoldsWhatPriorsDoNotName(t *testing.T) {
 	s := newScene(t, 7, 400, 1)
 	curve := quiet(t, s, 0.115, 0.35, 0.2)
-	setup := s.setup()
-	p, _, err := White(curve, setup, Priors{uniform("midTransitOffset", -0.03, 0.03), uniform("radiusRatio", 0.02, 0.3),
-		{Name: "axisRatio", Kind: Fixed, A: 9.4}, {Name: "u1", Kind: Fixed, A: 0.35}, uniform("u2", -1, 2)})
+	model := s.model()
+	p, _, err := White(curve, withWhite(model, Priors{uniform("midTransitOffset", -0.03, 0.03), uniform("radiusRatio", 0.02, 0.3),
+		{Name: "axisRatio", Kind: Fixed, A: 9.4}, {Name: "u1", Kind: Fixed, A: 0.35}, uniform("u2", -1, 2)}))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -175,14 +175,14 @@ func TestWhiteInflate(t *testing.T) {
 		curve.Err[i] /= 2
 	}
 	priors := Priors{uniform("radiusRatio", 0.02, 0.3), uniform("u1", -1, 2), uniform("u2", -1, 2)}
-	setup := s.setup()
-	setup.AxisRatio, setup.Inclination, setup.MidTransit = 9.4, 87.3, s.orbit.MidTransit
-	plain, fitted, err := White(curve, setup, priors)
+	model := s.model()
+	model.AxisRatio, model.Inclination, model.MidTransit = 9.4, 87.3, s.orbit.MidTransit
+	plain, fitted, err := White(curve, withWhite(model, priors))
 	if err != nil {
 		t.Fatal(err)
 	}
-	setup.Inflate = true
-	inflated, wide, err := White(curve, setup, priors)
+	model.Inflate = true
+	inflated, wide, err := White(curve, withWhite(model, priors))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -208,24 +208,24 @@ func TestWhiteErrors(t *testing.T) {
 	for _, c := range []struct {
 		name   string
 		curve  lightcurve.Curve
-		change func(*Setup)
+		change func(*Model)
 		priors Priors
 		want   string
 	}{
-		{"period", curve, func(s *Setup) { s.Period = 0 }, nil, "white fit: period is 0; expected days above 0"},
-		{"NaN", curve, func(s *Setup) { s.MidTransit = math.NaN() }, nil, "midTransit is NaN"},
-		{"law", curve, func(s *Setup) { s.LimbLaw = "cubic" }, nil, `law "cubic"; expected one of uniform, linear, quadratic, square-root, logarithmic, power-2`},
-		{"policy", curve, func(s *Setup) { s.LimbPolicy = "loose" }, nil, `policy "loose"; expected free, fixed or prior`},
-		{"no limb rows", curve, func(*Setup) {}, Priors{uniform("radiusRatio", 0, 1)}, "no rows for it; add u1 and u2"},
-		{"no table", curve, func(s *Setup) { s.LimbPolicy = PolicyFixed }, nil, "no limb-darkening table; give the input limb"},
-		{"regressor", curve, func(s *Setup) { s.Trend.Regressors = []string{"Z"} }, whitePriors(), "no auxiliary column Z"},
-		{"linear law", curve, func(s *Setup) { s.LimbLaw = LawLinear }, Priors{uniform("q1", 0, 1)}, "q1 belongs to a law of two coefficients"},
-		{"few samples", short, func(*Setup) {}, whitePriors(), "40 usable samples of 200"},
-		{"ragged", ragged, func(*Setup) {}, whitePriors(), "10 errors"},
+		{"period", curve, func(s *Model) { s.Period = 0 }, nil, "white fit: period is 0; expected days above 0"},
+		{"NaN", curve, func(s *Model) { s.MidTransit = math.NaN() }, nil, "midTransit is NaN"},
+		{"law", curve, func(s *Model) { s.LimbLaw = "cubic" }, nil, `law "cubic"; expected one of uniform, linear, quadratic, square-root, logarithmic, power-2`},
+		{"policy", curve, func(s *Model) { s.LimbPolicy = "loose" }, nil, `policy "loose"; expected free, fixed or prior`},
+		{"no limb rows", curve, func(*Model) {}, Priors{uniform("radiusRatio", 0, 1)}, "no rows for it; add u1 and u2"},
+		{"no table", curve, func(s *Model) { s.LimbPolicy = PolicyFixed }, nil, "no limb-darkening table; give the input limb"},
+		{"regressor", curve, func(s *Model) { s.Trend.Regressors = []string{"Z"} }, whitePriors(), "no auxiliary column Z"},
+		{"linear law", curve, func(s *Model) { s.LimbLaw = LawLinear }, Priors{uniform("q1", 0, 1)}, "q1 belongs to a law of two coefficients"},
+		{"few samples", short, func(*Model) {}, whitePriors(), "40 usable samples of 200"},
+		{"ragged", ragged, func(*Model) {}, whitePriors(), "10 errors"},
 	} {
-		setup := s.setup()
-		c.change(&setup)
-		_, _, err := White(c.curve, setup, c.priors)
+		model := s.model()
+		c.change(&model)
+		_, _, err := White(c.curve, withWhite(model, c.priors))
 		if err == nil || !strings.Contains(err.Error(), c.want) {
 			t.Errorf("%s: error %v, want %q", c.name, err, c.want)
 		}
@@ -239,11 +239,11 @@ func TestWhiteIsReproducible(t *testing.T) {
 		t.Fatal(err)
 	}
 	before := lightcurve.Curve{Flux: append([]float64(nil), curve.Flux...)}
-	a, fa, err := White(curve, s.setup(), whitePriors())
+	a, fa, err := White(curve, withWhite(s.model(), whitePriors()))
 	if err != nil {
 		t.Fatal(err)
 	}
-	b, fb, err := White(curve, s.setup(), whitePriors())
+	b, fb, err := White(curve, withWhite(s.model(), whitePriors()))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -261,12 +261,12 @@ func TestWhiteIsReproducible(t *testing.T) {
 func BenchmarkWhite(b *testing.B) {
 	s := newScene(b, 27, 6000, 1)
 	curve := lightcurve.Curves(s.cube)[0]
-	settling := s.setup()
+	settling := s.model()
 	nine := settling
 	nine.Trend.Settling, nine.Trend.Regressors = false, []string{"X"}
 	for _, c := range []struct {
 		name   string
-		setup  Setup
+		model  Model
 		priors Priors
 	}{
 		{"9", nine, whitePriors()[:6]},
@@ -274,7 +274,7 @@ func BenchmarkWhite(b *testing.B) {
 	} {
 		b.Run(c.name, func(b *testing.B) {
 			for b.Loop() {
-				p, _, err := White(curve, c.setup, c.priors)
+				p, _, err := White(curve, withWhite(c.model, c.priors))
 				if err != nil || p.Status != statusConverged {
 					b.Fatal(p.Status, err)
 				}

@@ -1,23 +1,24 @@
 package fit
 
 import (
+	"errors"
 	"fmt"
+	"slices"
 
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/spectrum"
-	"rimlight/steps/systematics"
 	"rimlight/steps/vector"
 )
 
 // WhiteWith fits a white light curve as [White] does, with a systematics model
 // of the recipe's own: the flux is transit times f times the linear combination
-// of the terms of setup.Trend.
+// of the terms of model.Trend.
 //
-// f gets the values of the parameters called names, in this order, and returns a
+// f gets the values of the parameters that model.Function names, in this order, and returns a
 // value for each integration of the curve, in the order of curve.Time. The
 // level of the flux is the trend's constant, so that f is relative and needs no
 // factor of its own. It must depend on nothing but p and what stands fixed
-// around it, such as the times. Parameters have rows in priors like any other,
+// around it, such as the times. Parameters have rows in model.White like any other,
 // in any unit; of kind "=" they are held. Their names are not those of a
 // parameter of the transit or the trend. In the posterior they come after
 // those of the transit.
@@ -26,7 +27,7 @@ import (
 //	ramp := func(p []float64) vector.V {
 //		return t.Scale(-1 / p[1]).Exp().Scale(p[0]).Shift(1)
 //	}
-//	geometry, whiteFit, err = fit.WhiteWith(white, setup, priors, []string{"hook", "hookTime"}, ramp)
+//	geometry, whiteFit, err = fit.WhiteWith(white, model, priors, []string{"hook", "hookTime"}, ramp)
 //
 // The search starts from the best of 64 points spread over the ranges of the
 // function's priors (four standard deviations of normal ones). Derivatives are
@@ -39,110 +40,76 @@ import (
 // without a prior; a function that returns a fault, or another number of values
 // than there are integrations, or NaN or infinities at usable samples (while the
 // search goes on, such parameters are only avoided).
-func WhiteWith(curve lightcurve.Curve, setup Setup, priors Priors, names []string, f func(p []float64) vector.V) (Posterior, CurveFit, error) {
-	own, rest, err := withFunction(names, f, priors, nil)
+func WhiteWith(curve lightcurve.Curve, model Model, f func(p []float64) vector.V) (Posterior, CurveFit, error) {
+	own, err := withFunction(model, model.White, f, nil)
 	if err != nil {
 		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", whatWhite, err)
 	}
-	return white(curve, setup, rest, own)
+	return white(curve, model, own)
 }
 
 // ChannelWith fits a spectroscopic channel as [Channel] does, with a systematics
 // model of the recipe's own as in [WhiteWith]. Parameters of f that have a row in
-// priors are the channel's own; they start from the white fit's values where it
+// model.Channel are the channel's own; they start from the white fit's values where it
 // has them. Those without a row are held at the white fit's values, and what
 // these leave uncertain of the depth is part of the point's ShiftGeometry.
 //
 // Errors: those of Channel, and of WhiteWith.
-func ChannelWith(curve lightcurve.Curve, white Posterior, setup Setup, priors Priors, names []string, f func(p []float64) vector.V) (spectrum.Point, CurveFit, error) {
-	own, rest, err := withFunction(names, f, priors, &white)
+func ChannelWith(curve lightcurve.Curve, white Posterior, model Model, f func(p []float64) vector.V) (spectrum.Point, CurveFit, error) {
+	own, err := withFunction(model, model.Channel, f, &white)
 	if err != nil {
 		return spectrum.Point{}, CurveFit{}, fmt.Errorf("%s: %w", whatChannel(curve.Channel), err)
 	}
-	return channel(curve, white, setup, rest, own)
+	return channel(curve, white, model, own)
 }
 
-// withFunction is newFunction beside a transit, whose names are taken.
-func withFunction(names []string, f func(p []float64) vector.V, priors Priors, white *Posterior) (*function, Priors, error) {
+// withFunction is newFunction with the names of the model, of which those of
+// transit and noise are taken.
+func withFunction(model Model, priors Priors, f func(p []float64) vector.V, white *Posterior) (*function, error) {
+	if model.Alone {
+		return nil, errors.New("the model has no transit; fit it with Function")
+	}
 	var known []string
 	for _, p := range parameterNames {
 		known = append(known, p.name)
 	}
-	for _, name := range names {
+	for _, name := range model.Function {
 		if _, err := findName(name); err == nil {
-			return nil, nil, fmt.Errorf("%s is a parameter of the transit or the trend; call that of the function otherwise", name)
+			return nil, fmt.Errorf("%s is a parameter of the transit, the trend or the noise; call that of the function otherwise", name)
 		}
 	}
-	own, rest, err := newFunction(names, f, priors, white)
+	own, rest, err := newFunction(model.Function, f, priors, white)
 	if err != nil {
-		return nil, nil, err
+		return nil, err
 	}
 	for _, p := range rest {
-		if _, err := findName(p.Name); err != nil {
-			return nil, nil, own.strange(p.Name, known)
+		if _, err := findName(p.Name); err != nil && !isTrend(p.Name) {
+			return nil, own.strange(p.Name, known)
 		}
 	}
-	return own, rest, nil
+	return own, nil
 }
 
 // Function fits a light curve that is wholly the recipe's own, such as a
-// transit of another shape, times a trend: the flux is f times the linear
-// combination of the terms of trend. f and names are as in [WhiteWith], but any
-// name will do, "settlingTime" apart where the trend has a settling term (which a
-// row in priors leaves free).
+// transit of another shape, times a trend. Of the model, Trend, Function, Inflate
+// and the priors White count; f is as in [WhiteWith], and any name will do for its
+// parameters, but for those of trend and noise (settlingTime, errorScale, jitter).
 //
 // Where f is 1 out of transit, the curve fit's Transit is f and its Trend the
 // rest, as with [White]; Mid is the parameter called midTransit, and NaN without
-// one. The posterior has nothing derived. Errors are not multiplied.
+// one. The posterior has nothing derived.
 //
-// Errors: those of WhiteWith, as far as they apply; a row in priors for a
-// parameter that is not among names.
-func Function(curve lightcurve.Curve, trend systematics.Trend, priors Priors, names []string, f func(p []float64) vector.V) (Posterior, CurveFit, error) {
-	const what = "fit of a function"
+// Errors: those of WhiteWith, as far as they apply; a row in the priors for a
+// parameter that is neither the function's nor the noise's.
+func Function(curve lightcurve.Curve, model Model, f func(p []float64) vector.V) (Posterior, CurveFit, error) {
 	fail := func(err error) (Posterior, CurveFit, error) {
-		return Posterior{}, CurveFit{}, fmt.Errorf("%s: %w", what, err)
+		return Posterior{}, CurveFit{}, fmt.Errorf("fit of a function: %w", err)
 	}
-	setup := Setup{Period: 1, AxisRatio: 10, Inclination: 90, RadiusRatio: 0.1, Trend: trend} // there is no transit; any will do
-	if err := setup.check(what); err != nil {
-		return Posterior{}, CurveFit{}, err
-	}
-	var known []string
-	if trend.Settling {
-		known = []string{"settlingTime"}
-	}
-	own, rest, err := newFunction(names, f, priors, nil)
+	model, own, err := aloneFunction(model, f)
 	if err != nil {
 		return fail(err)
 	}
-	for _, p := range rest {
-		if p.Name != "settlingTime" || !trend.Settling {
-			return fail(own.strange(p.Name, known))
-		}
-	}
-	for _, name := range names {
-		if name == "settlingTime" && trend.Settling {
-			return fail(fmt.Errorf("settlingTime is a parameter of the trend; call that of the function otherwise"))
-		}
-	}
-	space := newSpace(setup)
-	if _, err := space.apply(rest, trend.Settling); err != nil {
-		return fail(err)
-	}
-	m, err := newModel(curve, setup, space, own)
-	if err != nil {
-		return fail(err)
-	}
-	m.alone = true
-	if len(m.used) < leastSamples {
-		return fail(fmt.Errorf("%d usable samples of %d; expected at least %d", len(m.used), len(curve.Time), leastSamples))
-	}
-	if err := m.usableLevel(); err != nil {
-		return fail(err)
-	}
-	if err := m.search(); err != nil {
-		return fail(err)
-	}
-	s, err := m.solve([][slots]float64{space.value}, false)
+	s, err := solveWhite(curve, &model, own)
 	if err != nil {
 		return fail(err)
 	}
@@ -150,5 +117,33 @@ func Function(curve lightcurve.Curve, trend systematics.Trend, priors Priors, na
 	if err != nil {
 		return fail(err)
 	}
-	return s.posterior(setup), curveFit, nil
+	return s.posterior(model), curveFit, nil
+}
+
+// aloneFunction is the function of a model without a transit, and that model with
+// what is not used of it taken out.
+func aloneFunction(model Model, f func(p []float64) vector.V) (Model, *function, error) {
+	model = Model{
+		Period: 1, AxisRatio: 10, Inclination: 90, RadiusRatio: 0.1, // there is no transit; any will do
+		Trend: model.Trend, Function: model.Function, Alone: true, Inflate: model.Inflate, White: model.White,
+	}
+	known := []string{"errorScale", "jitter"}
+	if model.Trend.Settling {
+		known = append(known, "settlingTime")
+	}
+	for _, name := range model.Function {
+		if slices.Contains(known, name) {
+			return Model{}, nil, fmt.Errorf("%s is a parameter of the trend or the noise; call that of the function otherwise", name)
+		}
+	}
+	own, rest, err := newFunction(model.Function, f, model.White, nil)
+	if err != nil {
+		return Model{}, nil, err
+	}
+	for _, p := range rest {
+		if !slices.Contains(known, p.Name) && !isTrend(p.Name) {
+			return Model{}, nil, own.strange(p.Name, known)
+		}
+	}
+	return model, own, nil
 }

@@ -26,14 +26,14 @@ func rampPriors() Priors {
 	return Priors{{Name: "hookTime", Kind: LogUniform, A: 0.001, B: 0.1, Unit: "d"}, uniform("hook", -0.01, 0.01)}
 }
 
-// flat drops the terms of a setup that a ramp in its own right would not
+// flat drops the terms of a model that a ramp in its own right would not
 // multiply in the same way, so that both models are the same.
-func flat(setup Setup, settling bool) Setup {
-	setup.Trend = systematics.Trend{Settling: settling, SettlingTime: 0.02}
-	return setup
+func flat(model Model, settling bool) Model {
+	model.Trend = systematics.Trend{Settling: settling, SettlingTime: 0.02}
+	return model
 }
 
-func without(priors Priors, name string) Priors {
+func others(priors Priors, name string) Priors {
 	return slices.DeleteFunc(slices.Clone(priors), func(p Prior) bool { return p.Name == name })
 }
 
@@ -53,11 +53,11 @@ func TestWithMatchesNative(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	native, nativeFit, err := White(curve, flat(s.setup(), true), whitePriors())
+	native, nativeFit, err := White(curve, withWhite(flat(s.model(), true), whitePriors()))
 	if err != nil {
 		t.Fatal(err)
 	}
-	own, ownFit, err := WhiteWith(curve, flat(s.setup(), false), append(rampPriors(), without(whitePriors(), "settlingTime")...), rampNames, ramp(curve))
+	own, ownFit, err := whiteWith(curve, flat(s.model(), false), append(rampPriors(), others(whitePriors(), "settlingTime")...), rampNames, ramp(curve))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -81,8 +81,8 @@ func TestWithMatchesNative(t *testing.T) {
 			t.Fatalf("model %g and %g at %d", a, b, i)
 		}
 	}
-	if !strings.HasPrefix(own.Model, "flux = transit(t) × f(t; hook, hookTime) × (c0); ") {
-		t.Errorf("model %q", own.Model)
+	if !strings.HasPrefix(own.Model.Equation().String(), "flux = transit(t) × f(t; hook, hookTime) × (c0); ") {
+		t.Errorf("model %q", own.Model.Equation().String())
 	}
 
 	channel := lightcurve.Curves(s.cube)[1]
@@ -95,11 +95,11 @@ func TestWithMatchesNative(t *testing.T) {
 		{"held", rows, append(slices.Clone(rows), uniform("hook", -0.01, 0.01))},
 		{"free", append(slices.Clone(rows), free), append(slices.Clone(rows), rampPriors()...)},
 	} {
-		want, _, err := Channel(channel, native, flat(s.setup(), true), test.native)
+		want, _, err := Channel(channel, native, withChannel(flat(s.model(), true), test.native))
 		if err != nil {
 			t.Fatal(err)
 		}
-		got, _, err := ChannelWith(channel, own, flat(s.setup(), false), test.own, rampNames, ramp(channel))
+		got, _, err := channelWith(channel, own, flat(s.model(), false), test.own, rampNames, ramp(channel))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -124,8 +124,8 @@ func TestWithMatchesNative(t *testing.T) {
 func TestWithHeld(t *testing.T) {
 	s := newScene(t, 32, 300, 1)
 	curve := lightcurve.Curves(s.cube)[0]
-	rows := append(without(whitePriors(), "settlingTime"), Prior{Name: "hookTime", Kind: Fixed, A: 0.012, Unit: "d"})
-	free, _, err := WhiteWith(curve, flat(s.setup(), false), append(slices.Clone(rows), uniform("hook", -0.1, 0.1)), rampNames, ramp(curve))
+	rows := append(others(whitePriors(), "settlingTime"), Prior{Name: "hookTime", Kind: Fixed, A: 0.012, Unit: "d"})
+	free, _, err := whiteWith(curve, flat(s.model(), false), append(slices.Clone(rows), uniform("hook", -0.1, 0.1)), rampNames, ramp(curve))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -140,7 +140,7 @@ func TestWithHeld(t *testing.T) {
 		{Name: "hook", Kind: Normal, A: mean, B: hookErr},
 		{Name: "hook", Kind: TruncatedNormal, A: mean, B: hookErr, Lo: hook - 9*hookErr, Hi: mean + 9*hookErr},
 	} {
-		p, _, err := WhiteWith(curve, flat(s.setup(), false), append(slices.Clone(rows), prior), rampNames, ramp(curve))
+		p, _, err := whiteWith(curve, flat(s.model(), false), append(slices.Clone(rows), prior), rampNames, ramp(curve))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -149,7 +149,7 @@ func TestWithHeld(t *testing.T) {
 			t.Errorf("%s: %g +- %g, without %g +- %g", prior.Kind, got, gotErr, hook, hookErr)
 		}
 	}
-	limited, _, err := WhiteWith(curve, flat(s.setup(), false), append(slices.Clone(rows), uniform("hook", hook+hookErr, hook+2*hookErr)), rampNames, ramp(curve))
+	limited, _, err := whiteWith(curve, flat(s.model(), false), append(slices.Clone(rows), uniform("hook", hook+hookErr, hook+2*hookErr)), rampNames, ramp(curve))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -196,7 +196,7 @@ func TestFunctionIsHonest(t *testing.T) {
 	var sum, squares [3]float64
 	for range fits {
 		c := dipCurve(rng, 250)
-		p, f, err := Function(c, systematics.Trend{Polynomial: 1}, dipPriors(), dipNames, dip(c.Time))
+		p, f, err := functionOf(c, systematics.Trend{Polynomial: 1}, dipPriors(), dipNames, dip(c.Time))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -226,11 +226,11 @@ func TestFunctionOfLinearTerms(t *testing.T) {
 	c := dipCurve(rand.New(rand.NewPCG(9, 9)), 300)
 	x := vector.Linspace(-1, 1, 300)
 	f := func(p []float64) vector.V { return x.Polynomial([]float64{1, p[0], p[1]}) }
-	p, _, err := Function(c, systematics.Trend{}, Priors{uniform("a", -1e3, 1e3), {Name: "b", Kind: Normal, A: 0, B: 1e6}}, []string{"a", "b"}, f)
+	p, _, err := functionOf(c, systematics.Trend{}, Priors{uniform("a", -1e3, 1e3), {Name: "b", Kind: Normal, A: 0, B: 1e6}}, []string{"a", "b"}, f)
 	if err != nil {
 		t.Fatal(err)
 	}
-	q, _, err := Function(c, systematics.Trend{Polynomial: 2}, nil, nil, func([]float64) vector.V { return vector.Full(300, 1) })
+	q, _, err := functionOf(c, systematics.Trend{Polynomial: 2}, nil, nil, func([]float64) vector.V { return vector.Full(300, 1) })
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -253,7 +253,7 @@ func TestFunctionDomain(t *testing.T) {
 	c := dipCurve(rand.New(rand.NewPCG(10, 9)), 200)
 	age := vector.Of(c.Time).Shift(-c.Time[0])
 	f := func(p []float64) vector.V { return age.Shift(p[1]).Sqrt().Scale(p[0]).Shift(1) }
-	p, _, err := Function(c, systematics.Trend{}, Priors{uniform("a", -1, 1), uniform("b", -1, 0.5)}, []string{"a", "b"}, f)
+	p, _, err := functionOf(c, systematics.Trend{}, Priors{uniform("a", -1, 1), uniform("b", -1, 0.5)}, []string{"a", "b"}, f)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -265,8 +265,8 @@ func TestFunctionDomain(t *testing.T) {
 func TestWithErrors(t *testing.T) {
 	s := newScene(t, 33, 200, 2)
 	curve := lightcurve.Curves(s.cube)[0]
-	setup := flat(s.setup(), false)
-	rows := append(rampPriors(), without(whitePriors(), "settlingTime")...)
+	model := flat(s.model(), false)
+	rows := append(rampPriors(), others(whitePriors(), "settlingTime")...)
 	n := len(curve.Time)
 	constant := func(x float64) func([]float64) vector.V {
 		return func([]float64) vector.V { return vector.Full(n, x) }
@@ -285,7 +285,7 @@ func TestWithErrors(t *testing.T) {
 		{"infinite", rampNames, constant(math.Inf(1)), rows, "is +Inf at integration 0"},
 		{"zero", rampNames, constant(0), rows, "the terms of the trend cannot be told apart"},
 		{"huge", rampNames, constant(1e308), rows, ""},
-		{"taken", []string{"radiusRatio"}, constant(1), rows, "radiusRatio is a parameter of the transit or the trend"},
+		{"taken", []string{"radiusRatio"}, constant(1), rows, "radiusRatio is a parameter of the transit, the trend or the noise"},
 		{"no name", []string{""}, constant(1), rows, `parameter 1 of the function is called ""`},
 		{"trend name", []string{"trend.x"}, constant(1), rows, `expected a name that does not start with "trend."`},
 		{"twice", []string{"hook", "hook"}, constant(1), rows, "two parameters of the function are called hook"},
@@ -296,22 +296,22 @@ func TestWithErrors(t *testing.T) {
 		{"bad prior", rampNames, constant(1), append(Priors{uniform("hook", 1, 0)}, rows[:1]...), "prior of hook is U with A=1, B=0"},
 		{"endless prior", rampNames, constant(1), append(Priors{uniform("hook", -1.7e308, 1.7e308)}, rows[:1]...), "the prior of hook leaves no room, or more than can be computed with"},
 	} {
-		_, _, err := WhiteWith(curve, setup, test.priors, test.names, test.f)
+		_, _, err := whiteWith(curve, model, test.priors, test.names, test.f)
 		if err == nil || !strings.HasPrefix(err.Error(), "white fit: ") || !strings.Contains(err.Error(), test.want) {
 			t.Errorf("%s: error %v, want %q", test.name, err, test.want)
 		}
 	}
 
-	white, _, err := WhiteWith(curve, setup, rows, rampNames, ramp(curve))
+	white, _, err := whiteWith(curve, model, rows, rampNames, ramp(curve))
 	if err != nil {
 		t.Fatal(err)
 	}
 	channel := lightcurve.Curves(s.cube)[1]
-	_, _, err = Channel(channel, white, setup, channelPriors("u1", "u2", -1, 2))
+	_, _, err = Channel(channel, white, withChannel(model, channelPriors("u1", "u2", -1, 2)))
 	if err == nil || !strings.Contains(err.Error(), "fit the channels with ChannelWith") {
 		t.Errorf("error %v", err)
 	}
-	_, _, err = ChannelWith(channel, white, setup, channelPriors("u1", "u2", -1, 2), []string{"hook", "other"}, ramp(curve))
+	_, _, err = channelWith(channel, white, model, channelPriors("u1", "u2", -1, 2), []string{"hook", "other"}, ramp(curve))
 	if err == nil || !strings.Contains(err.Error(), "parameter other of the function has no prior, and the white posterior does not know it") {
 		t.Errorf("error %v", err)
 	}
@@ -322,12 +322,12 @@ func TestWithErrors(t *testing.T) {
 		want   string
 	}{
 		{systematics.Trend{Polynomial: 9}, dipPriors(), dipNames, "polynomial of order 9"},
-		{systematics.Trend{}, append(dipPriors(), uniform("settlingTime", 0.01, 1)), dipNames, `unknown parameter "settlingTime"; expected one of dipDepth, midTransit, width`},
+		{systematics.Trend{}, append(dipPriors(), uniform("settlingTime", 0.01, 1)), dipNames, `unknown parameter "settlingTime"; expected one of errorScale, jitter, dipDepth, midTransit, width`},
 		{systematics.Trend{}, append(dipPriors(), uniform("with", 0.01, 1)), dipNames, "nearest known name: width"},
 		{systematics.Trend{Settling: true, SettlingTime: -1}, dipPriors(), dipNames, "settlingTime is -1"},
 		{systematics.Trend{Settling: true, SettlingTime: 0.01}, append(dipPriors(), uniform("settlingTime", 0.01, 1)), []string{"dipDepth", "midTransit", "width", "settlingTime"}, "settlingTime is a parameter of the trend"},
 	} {
-		_, _, err := Function(curve, test.trend, test.priors, test.names, dip(curve.Time))
+		_, _, err := functionOf(curve, test.trend, test.priors, test.names, dip(curve.Time))
 		if err == nil || !strings.HasPrefix(err.Error(), "fit of a function: ") || !strings.Contains(err.Error(), test.want) {
 			t.Errorf("error %v, want %q", err, test.want)
 		}
@@ -340,7 +340,7 @@ func TestFunctionSettling(t *testing.T) {
 	for i, x := range c.Time {
 		c.Flux[i] *= 1 + 0.01*math.Exp(-(x-c.Time[0])/0.015)
 	}
-	p, _, err := Function(c, systematics.Trend{Polynomial: 1, Settling: true, SettlingTime: 0.04},
+	p, _, err := functionOf(c, systematics.Trend{Polynomial: 1, Settling: true, SettlingTime: 0.04},
 		append(dipPriors(), uniform("settlingTime", 0.001, 0.1)), dipNames, dip(c.Time))
 	if err != nil {
 		t.Fatal(err)
@@ -354,12 +354,12 @@ func TestFunctionSettling(t *testing.T) {
 // and changes its argument.
 func TestWithIsReproducible(t *testing.T) {
 	c := dipCurve(rand.New(rand.NewPCG(12, 9)), 200)
-	plain, plainFit, err := Function(c, systematics.Trend{}, dipPriors(), dipNames, dip(c.Time))
+	plain, plainFit, err := functionOf(c, systematics.Trend{}, dipPriors(), dipNames, dip(c.Time))
 	if err != nil {
 		t.Fatal(err)
 	}
 	buffer := make([]float64, len(c.Time))
-	shared, sharedFit, err := Function(c, systematics.Trend{}, dipPriors(), dipNames, func(p []float64) vector.V {
+	shared, sharedFit, err := functionOf(c, systematics.Trend{}, dipPriors(), dipNames, func(p []float64) vector.V {
 		copy(buffer, dip(c.Time)(p).X)
 		clear(p)
 		return vector.Of(buffer)
@@ -414,7 +414,7 @@ func TestFunctionHostile(t *testing.T) {
 	for i, f := range functions {
 		for j, prior := range priors {
 			prior.Name = "a"
-			p, fitted, err := Function(curve, systematics.Trend{}, Priors{prior}, []string{"a"}, f)
+			p, fitted, err := functionOf(curve, systematics.Trend{}, Priors{prior}, []string{"a"}, f)
 			if err != nil {
 				if len(err.Error()) > 600 {
 					t.Errorf("function %d, prior %d: error of %d bytes", i, j, len(err.Error()))

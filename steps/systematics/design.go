@@ -25,9 +25,10 @@ const (
 // A Design is the matrix of a trend's terms for one light curve of n
 // integrations.
 type Design struct {
-	Names    []string    // one per term, as in "constant", "time", "time^2", "settling", "X"
+	Names    []string    // one per term, as in "constant", "time", "time^2", "settling", "X", "added.X"
 	Columns  [][]float64 // one per term, each of length n; NaN where a regressor has no finite value
 	Settling int         // which term is the settling one; -1 without
+	Added    int         // the first of the terms that are added, which come last; the number of terms without
 	Start    float64     // time from which settling counts, BJD_TDB, days
 	Warnings []string    // pairs of terms that are hard to tell apart
 }
@@ -35,7 +36,7 @@ type Design struct {
 // Design builds the columns of the trend for a curve: a constant 1, powers of
 // time scaled to run from -1 to 1 over the curve, exp(-(t-t0)/SettlingTime) with
 // t0 the first time, and each regressor less its mean, divided by its standard
-// deviation, both over the usable samples.
+// deviation, both over the usable samples. Added terms are made like regressors.
 //
 // Errors: settings out of range; a regressor that the curve does not have (the
 // message lists those it has), that is constant, or that is a linear combination
@@ -76,21 +77,40 @@ func (t Trend) Design(curve lightcurve.Curve) (Design, error) {
 		d.Columns[d.Settling] = Settle(curve.Time, d.Start, t.SettlingTime)
 	}
 	usable := usableSamples(curve.Mask)
-	for _, name := range t.Regressors {
-		value, err := aux(curve, name)
-		if err != nil {
-			return Design{}, err
+	regress := func(prefix string, names []string) error {
+		for _, name := range names {
+			value, err := aux(curve, name)
+			if err != nil {
+				return err
+			}
+			column, err := standardise(value, usable)
+			if err != nil {
+				return fmt.Errorf("systematics: regressor %.40s %w", name, err)
+			}
+			add(prefix+name, column)
 		}
-		column, err := standardise(value, usable)
-		if err != nil {
-			return Design{}, fmt.Errorf("systematics: regressor %.40s %w", name, err)
-		}
-		add(name, column)
+		return nil
 	}
-	if err := d.compare(usable); err != nil {
+	if err := regress("", t.Regressors); err != nil {
 		return Design{}, err
 	}
+	d.Added = len(d.Columns)
+	if err := regress("added.", t.Added); err != nil {
+		return Design{}, err
+	}
+	multiplied, added := d.part(0, d.Added), d.part(d.Added, len(d.Columns))
+	for _, part := range []*Design{&multiplied, &added} {
+		if err := part.compare(usable); err != nil {
+			return Design{}, err
+		}
+		d.Warnings = append(d.Warnings, part.Warnings...)
+	}
 	return d, nil
+}
+
+// part is the design of the terms from one to before another.
+func (d *Design) part(from, to int) Design {
+	return Design{Names: d.Names[from:to], Columns: d.Columns[from:to]}
 }
 
 // Settle returns exp(-(t-start)/tau) for each time; tau > 0 and times in days.
@@ -210,7 +230,7 @@ func (d *Design) compare(usable []int) error {
 		if norm := floats.Norm(u, 2); norm > 0 {
 			floats.Scale(1/norm, u)
 		}
-		for j := 1; j < k; j++ {
+		for j := range k {
 			if r := floats.Dot(unit[j], u); math.Abs(r) > alike {
 				d.Warnings = append(d.Warnings, fmt.Sprintf("systematics terms %s and %s have correlation %.4f: their coefficients are hard to tell apart", d.Names[j], d.Names[k], r))
 			}

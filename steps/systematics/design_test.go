@@ -113,18 +113,3 @@ func TestSettleDerivative(t *testing.T) {
 		}
 	}
 }
-
-func TestFormula(t *testing.T) {
-	got := Trend{Polynomial: 2, Settling: true, Regressors: []string{"X"}}.Formula()
-	want := "c0 + c1 x + c2 x^2 + s exp(-(t - t0)/settlingTime) + k_X z(X), where x is time scaled to [-1, 1], " +
-		"t0 is the first time, z() is standardised to mean 0 and standard deviation 1"
-	if got != want {
-		t.Errorf("%s\nwant\n%s", got, want)
-	}
-	if got := (Trend{}).Formula(); got != "c0" {
-		t.Errorf("constant trend: %s", got)
-	}
-	if got := (Trend{Polynomial: math.MaxInt}).Formula(); got != (Trend{Polynomial: MaxPolynomial}).Formula() {
-		t.Errorf("polynomial of an order out of range: %s", got)
-	}
-}

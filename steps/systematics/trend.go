@@ -3,7 +3,7 @@
 //
 // A [Trend] says which terms the trend has; its [Design] is the matrix of those
 // terms for one light curve, one column per term, so that the trend is a linear
-// combination of columns. The coefficients are found by the fit, jointly with
+// combination of columns. Terms may also be added to the light of the star instead. The coefficients are found by the fit, jointly with
 // the transit. Only the e-folding time of the settling term enters nonlinearly.
 package systematics
 
@@ -35,6 +35,7 @@ type Trend struct {
 	Settling     bool     // whether there is a term exp(-(t-t0)/SettlingTime), t0 the first time of the curve
 	SettlingTime float64  // e-folding time in days, above 0; the start value where the fit leaves it free
 	Regressors   []string // names of auxiliary columns, each a linear term; at most 64
+	Added        []string // names of auxiliary columns that add to the flux, such as that of the background, rather than multiply it; at most 64
 }
 
 // check reports settings outside their range.
@@ -45,50 +46,17 @@ func (t Trend) check() error {
 	if t.Settling && !(t.SettlingTime > 0 && t.SettlingTime < math.Inf(1)) {
 		return fmt.Errorf("systematics: settling time %g d; expected a number above 0, for example 0.01", t.SettlingTime)
 	}
-	if n := len(t.Regressors); n > maxRegressors {
-		return fmt.Errorf("systematics: %d regressors; expected at most %d", n, maxRegressors)
-	}
-	for i, name := range t.Regressors {
-		if slices.Contains(t.Regressors[:i], name) {
-			return fmt.Errorf("systematics: regressor %.40s is listed twice; list it once", name)
+	for _, names := range [][]string{t.Regressors, t.Added} {
+		if n := len(names); n > maxRegressors {
+			return fmt.Errorf("systematics: %d regressors; expected at most %d", n, maxRegressors)
+		}
+		for i, name := range names {
+			if slices.Contains(names[:i], name) {
+				return fmt.Errorf("systematics: regressor %.40s is listed twice; list it once", name)
+			}
 		}
 	}
 	return nil
-}
-
-// Formula writes the trend as an equation in words and symbols. Of a trend that
-// [Trend.Design] refuses, it leaves out the orders and regressors that are too
-// many.
-func (t Trend) Formula() string {
-	terms := []string{"c0"}
-	for k := 1; k <= min(t.Polynomial, MaxPolynomial); k++ {
-		if k == 1 {
-			terms = append(terms, "c1 x")
-		} else {
-			terms = append(terms, fmt.Sprintf("c%d x^%d", k, k))
-		}
-	}
-	if t.Settling {
-		terms = append(terms, "s exp(-(t - t0)/settlingTime)")
-	}
-	for _, name := range t.Regressors[:min(len(t.Regressors), maxRegressors)] {
-		terms = append(terms, "k_"+name+" z("+name+")")
-	}
-	text := strings.Join(terms, " + ")
-	var where []string
-	if t.Polynomial > 0 {
-		where = append(where, "x is time scaled to [-1, 1]")
-	}
-	if t.Settling {
-		where = append(where, "t0 is the first time")
-	}
-	if len(t.Regressors) > 0 {
-		where = append(where, "z() is standardised to mean 0 and standard deviation 1")
-	}
-	if len(where) > 0 {
-		text += ", where " + strings.Join(where, ", ")
-	}
-	return text
 }
 
 // aux finds the auxiliary column of the given name.

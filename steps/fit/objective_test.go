@@ -15,12 +15,12 @@ func TestJacobian(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	setup := s.setup()
-	if err := setup.check("test"); err != nil {
+	model := s.model()
+	if err := model.check(); err != nil {
 		t.Fatal(err)
 	}
 	for _, names := range [][3]string{{"inclination", "u1", "u2"}, {"impact", "q1", "q2"}} {
-		sp := newSpace(setup)
+		sp := newSpace(model)
 		sp.value[slotLimb1], sp.value[slotLimb2] = 0.3, 0.2
 		if _, err := sp.apply(Priors{
 			{Name: "midTransitOffset", Kind: Normal, A: 0.001, B: 0.01},
@@ -30,7 +30,7 @@ func TestJacobian(t *testing.T) {
 		}, true); err != nil {
 			t.Fatal(err)
 		}
-		m, err := newModel(curve, setup, sp, nil)
+		m, err := newObjective(curve, model, sp, nil)
 		if err != nil {
 			t.Fatal(err)
 		}
