@@ -36,7 +36,7 @@ func (m Model) Equation() Equation {
 			law = LawQuadratic
 		}
 		factors = append(factors, call{"transit", []expression{t}})
-		about := "transit(t) is that of a dark sphere on a Keplerian orbit before a star with " + law + " limb darkening, 1 out of transit"
+		about := "transit(t) is that of a dark sphere on a Keplerian orbit before a star with " + short(law) + " limb darkening, 1 out of transit"
 		if m.Exposure > 0 {
 			about += fmt.Sprintf(", averaged over exposures of %.6g s", m.Exposure)
 		}

@@ -1,6 +1,7 @@
 package fit
 
 import (
+	"fmt"
 	"html"
 	"strings"
 	"unicode"
@@ -18,13 +19,16 @@ type symbol struct{ name, sub string }
 
 func (s symbol) text() string {
 	if s.sub == "" {
-		return s.name
+		return short(s.name)
 	}
 	if len(s.sub) == 1 {
-		return s.name + s.sub
+		return short(s.name) + s.sub
 	}
-	return s.name + "_" + s.sub
+	return short(s.name) + "_" + short(s.sub)
 }
+
+// short cuts off names that are too long to read.
+func short(name string) string { return fmt.Sprintf("%.40s", name) }
 
 func (s symbol) mathML() string {
 	name := "<mi>" + escape(s.name) + "</mi>"
@@ -41,7 +45,7 @@ func escape(name string) string {
 			return r
 		}
 		return -1
-	}, strings.ToValidUTF8(name, "")))
+	}, strings.ToValidUTF8(short(name), "")))
 }
 
 // call is a function and its arguments; those after the first are parameters.
