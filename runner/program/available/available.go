@@ -37,6 +37,7 @@ var Packages = []Package{
 	{"lightcurve", stepLibrary + "lightcurve"},
 	{"limb", stepLibrary + "limb"},
 	{"limbtable", stepLibrary + "limbtable"},
+	{"noise", stepLibrary + "noise"},
 	{"orbit", stepLibrary + "orbit"},
 	{"sample", stepLibrary + "sample"},
 	{"simulate", stepLibrary + "simulate"},
