@@ -15,6 +15,7 @@ import (
 	"rimlight/steps/lightcurve"
 	"rimlight/steps/limb"
 	"rimlight/steps/limbtable"
+	"rimlight/steps/noise"
 	"rimlight/steps/orbit"
 	"rimlight/steps/sample"
 	"rimlight/steps/simulate"
@@ -209,6 +210,38 @@ func newSamples() *samples {
 		}
 		return times.Scale(-1 / p[1]).Exp().Scale(p[0]).Shift(1)
 	}
+	noiseData, _, err := noise.FromCurve(curves[0], 1)
+	must(err)
+	noiseModels := []any{
+		noise.White(true, true).Plus(noise.NewTerm("red", noise.Matern32)),
+		noise.White(true, false).Plus(noise.NewTerm("red", noise.Oscillator)),
+		noise.White(false, true).Plus(noise.NewTerm("gp", noise.SquaredExponential, "time")),
+		noise.White(true, true).Plus(noise.NewTerm("gp", noise.Matern52, "time")),
+	}
+	var noiseProcesses, noiseCovariances []any
+	values := [][]float64{{1, 1e-4, 3e-4, 0.02}, {1, 3e-4, 0.02, 3}, {1e-4, 3e-4, 0.02}, {1, 1e-4, 3e-4, 0.02}}
+	for k, m := range noiseModels {
+		p, err := noise.New(m.(noise.Model), noiseData)
+		must(err)
+		c, err := p.At(values[k])
+		must(err)
+		noiseProcesses, noiseCovariances = append(noiseProcesses, p), append(noiseCovariances, c)
+	}
+	residual := make([]float64, len(noiseData.Time))
+	for i := range residual {
+		residual[i] = 1e-4 * float64(i%7-3)
+	}
+	allOf := func(x [][]float64) (out []any) {
+		for _, v := range x {
+			out = append(out, v)
+		}
+		return out
+	}
+	detector := noise.Detector{Gain: 1.5, ReadNoise: 5, Pixels: 20, Background: 3}
+	evenly := make([]float64, 64)
+	for i := range evenly {
+		evenly[i] = float64(i%5 - 2)
+	}
 	names := []string{"hook", "hookTime"}
 	parameters := []sample.Parameter{{Name: "a", Lo: 0, Hi: 1}, {Name: "b", Unit: "d"}}
 	target := func(x, gradient []float64) float64 {
@@ -281,6 +314,30 @@ func newSamples() *samples {
 		"chain.Draws.Column":        {{draws}, {"a", "b"}},
 		"chain.Weighted.Column":     {{weighted}, {"a", "b"}},
 
+		"noise.New":                     {noiseModels, {noiseData}},
+		"noise.NewTerm":                 {{"red", "b"}, {noise.Exponential, noise.Oscillator}, {[]string(nil), []string{"time"}}},
+		"noise.FromCurve":               {{white, curves[0]}, {1.0, 3.0}},
+		"noise.Model.Parameters":        {noiseModels},
+		"noise.Process.LogLikelihood":   {noiseProcesses, allOf(values), {residual}},
+		"noise.Process.Gradient":        {noiseProcesses, allOf(values), {residual}},
+		"noise.Process.GradientInto":    {noiseProcesses, {&noise.Gradient{}}, allOf(values), {residual}},
+		"noise.Process.At":              {noiseProcesses, allOf(values)},
+		"noise.Covariance.Whiten":       {noiseCovariances, {[][]float64{residual, noiseData.Time}}},
+		"noise.Covariance.Colour":       {noiseCovariances, {[][]float64{residual, noiseData.Time}}},
+		"noise.Covariance.Solve":        {noiseCovariances, {[][]float64{residual, noiseData.Time}}},
+		"noise.Covariance.Draw":         {noiseCovariances},
+		"noise.Covariance.Predict":      {noiseCovariances, {residual}, {noiseData}, {"", "red", "gp"}},
+		"noise.Covariance.LeastSquares": {noiseCovariances, {[][]float64{residual, noiseData.Time}}, {residual}},
+		"noise.AverageTable":            {{noiseData.Time}, {residual}},
+		"noise.TimeAveraging":           {{noiseData.Time}, {residual}, {5.0, 10.0}, {30.0, 60.0}},
+		"noise.Inflate":                 {{noiseData.Time}, {residual}, {noiseData.Err}, {0, 3}, {5.0, 10.0}, {30.0, 60.0}},
+		"noise.Shift":                   {{residual}, {residual}},
+		"noise.Shifts":                  {{24, 50}, {0, 7}},
+		"noise.Wavelet.Gradient":        {{noise.Wavelet{Red: 1, White: 2}}, {evenly}},
+		"noise.Wavelet.LogLikelihood":   {{noise.Wavelet{Red: 1, White: 2}}, {evenly}},
+		"noise.Detector.Expected":       {{detector}, {1e4, 100.0}},
+		"noise.Detector.Above":          {{detector}, {1e4, 100.0}, {residual}},
+
 		"lightcurve.Exclude":     {{}, {scenario.Start, scenario.Start + 0.1}, {scenario.MidTransit, scenario.MidTransit + 1}},
 		"lightcurve.SkipStart":   {{}, {0.0, 10.0, 60.0}},
 		"diagnose.TimeAveraging": {{whiteFit, curveFits[0]}, {5.0, 10.0}, {30.0, 60.0}},
@@ -311,6 +368,7 @@ func newSamples() *samples {
 		[]spectrum.Note{{Name: "title", Text: "An invented planet"}, {Name: "by", Text: "no one"}},
 		fitsFile, series, spectrum.CSV(spec),
 		draws, []chain.Draws{draws, draws}, weighted, sample.Evidence{LogZ: -3, Err: 0.1, Live: 25, RankP: 0.3},
+		noiseData, detector, noiseModels[0], noiseProcesses[0], noiseCovariances[1], noise.Averages{}, noise.Beta{Value: 1.2},
 		times, times.Sin(), vector.Of(white.Flux), times.Less(0.1), vector.Used(white.Mask),
 	} {
 		s.add(reflect.ValueOf(v), 0)

@@ -29,9 +29,11 @@ var benchModels = []struct {
 	{"sum of three", White(true, true).Plus(NewTerm("a", Matern32), NewTerm("b", Oscillator), NewTerm("c", Exponential)), []float64{1, 1e-4, 3e-4, 0.02, 3e-4, 0.1, 3, 1e-4, 0.005}},
 }
 
+func newRand() *rand.Rand { return rand.New(rand.NewPCG(3, 4)) }
+
 // irregular makes n unequal times with a gap, unequal errors and white residuals.
 func irregular(n int) (Data, []float64) {
-	rng := rand.New(rand.NewPCG(3, 4))
+	rng := newRand()
 	var d Data
 	var r []float64
 	t := 2460512.0

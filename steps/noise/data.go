@@ -103,6 +103,19 @@ func (d Data) checkInputs(m Model) error {
 	return nil
 }
 
+// unit returns the unit of an input, empty when there is none.
+func (d Data) unit(name string) string {
+	if name == Time {
+		return "d"
+	}
+	for _, s := range d.Inputs {
+		if s.Name == name {
+			return s.Unit
+		}
+	}
+	return ""
+}
+
 // input returns the values of an input.
 func (d Data) input(name string) ([]float64, error) {
 	if name == Time {

@@ -81,7 +81,7 @@ func (m Model) Plus(terms ...Term) Model {
 // A Parameter is a positive number that a model depends on. A jitter may be 0.
 type Parameter struct {
 	Name  string
-	Unit  string // FITS-standard unit string; empty for numbers in the residuals' unit, and for pure ones
+	Unit  string // FITS-standard unit string; empty for pure numbers and those in the residuals' unit, and for lengths in inputs of which no data are known
 	About string
 }
 
@@ -94,10 +94,11 @@ func (m Model) Parameters() ([]Parameter, error) {
 	if err := m.Check(); err != nil {
 		return nil, err
 	}
-	return m.parameters(), nil
+	return m.parameters(Data{}), nil
 }
 
-func (m Model) parameters() []Parameter {
+// parameters lists them with the units of the inputs of d.
+func (m Model) parameters(d Data) []Parameter {
 	var out []Parameter
 	if m.Scale {
 		out = append(out, Parameter{"errorScale", "", "factor on the given errors"})
@@ -109,10 +110,7 @@ func (m Model) parameters() []Parameter {
 		out = append(out, Parameter{t.Name + ".sigma", "", "standard deviation of the term " + t.Name})
 		for _, f := range t.Factors {
 			for _, input := range f.inputs() {
-				suffix, unit := suffixOf(input), "d"
-				if input != Time {
-					unit = ""
-				}
+				suffix, unit := suffixOf(input), d.unit(input)
 				switch {
 				case f.Kind == Oscillator:
 					out = append(out, Parameter{t.Name + ".period" + suffix, unit, "undamped period of the oscillator"},

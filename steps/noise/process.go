@@ -35,7 +35,7 @@ func New(m Model, d Data) (Process, error) {
 	if err := d.check(m); err != nil {
 		return Process{}, fmt.Errorf("noise: %w", err)
 	}
-	p := &process{model: m, data: d, parameters: m.parameters(), fast: m.Fast()}
+	p := &process{model: m, data: d, parameters: m.parameters(d), fast: m.Fast()}
 	p.data.Time = slices.Clone(d.Time)
 	for _, e := range d.Err {
 		p.square = append(p.square, e*e)
@@ -46,8 +46,8 @@ func New(m Model, d Data) (Process, error) {
 	return Process{p}, nil
 }
 
-// Parameters lists what the process depends on, in the order of values; see
-// [Model.Parameters].
+// Parameters lists what the process depends on, in the order of values,
+// with the units of the inputs; see [Model.Parameters].
 func (p Process) Parameters() []Parameter {
 	if p.p == nil {
 		return nil
