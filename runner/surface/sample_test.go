@@ -336,6 +336,7 @@ func newSamples() *samples {
 		"noise.Wavelet.Gradient":        {{noise.Wavelet{Red: 1, White: 2}}, {evenly}},
 		"noise.Wavelet.LogLikelihood":   {{noise.Wavelet{Red: 1, White: 2}}, {evenly}},
 		"noise.Detector.Expected":       {{detector}, {1e4, 100.0}},
+		"noise.ExcessTable":             {{}, {[]lightcurve.Channel{{Lo: 1, Hi: 2}}}, {[]noise.Excess{{Expected: 1e-4, Ratio: 1.2}}}},
 		"noise.Detector.Above":          {{detector}, {1e4, 100.0}, {residual}},
 
 		"lightcurve.Exclude":     {{}, {scenario.Start, scenario.Start + 0.1}, {scenario.MidTransit, scenario.MidTransit + 1}},
