@@ -85,7 +85,7 @@ func (p Process) LogLikelihood(values, residual []float64) (float64, error) {
 
 // Gradient is [Process.LogLikelihood] with its derivatives, found by running the
 // computation backwards (reverse mode; Foreman-Mackey 2018 does so for the
-// factorisation of semi-separable matrices), at about three times the cost.
+// factorisation of semi-separable matrices), at two to three times the cost.
 func (p Process) Gradient(values, residual []float64) (Gradient, error) {
 	var out Gradient
 	err := p.GradientInto(&out, values, residual)
