@@ -8,16 +8,17 @@ import (
 
 // A function is what the lowering of a body knows of the function around it.
 type function struct {
+	literal  bool
 	results  []string // names of its named results
 	captured bool     // a function literal uses one of them
 }
 
 // lower rewrites a function in place.
-func (n *normaliser) lower(t *ast.FuncType, body *ast.BlockStmt) {
+func (n *normaliser) lower(t *ast.FuncType, body *ast.BlockStmt, literal bool) {
 	if body == nil {
 		return
 	}
-	n.fn = function{}
+	n.fn = function{literal: literal}
 	list := fields(t.Results)
 	if len(list) == 0 || list[0].name == nil {
 		body.List = n.statements(body.List)
@@ -104,7 +105,10 @@ func (n *normaliser) post(s *ast.ForStmt) {
 	if s.Post == nil {
 		return
 	}
+	around := n.fn.literal
+	n.fn.literal = true
 	list, _ := n.statement(s.Post)
+	n.fn.literal = around
 	if len(list) == 1 {
 		s.Post = list[0]
 		return
@@ -243,9 +247,8 @@ func (n *normaliser) assignment(s *ast.AssignStmt) []ast.Stmt {
 	pos := s.TokPos
 	switch {
 	case len(s.Lhs) == 1:
-		// p = T{…} makes another variable of p than the one that function
-		// literals know.
-		if lit, ok := s.Rhs[0].(*ast.CompositeLit); ok && s.Tok == token.ASSIGN && !isBlank(s.Lhs[0]) {
+		// p = T{…} is lost in a function literal when p is a variable outside.
+		if lit, ok := s.Rhs[0].(*ast.CompositeLit); ok && s.Tok == token.ASSIGN && n.fn.literal && !isBlank(s.Lhs[0]) {
 			name := n.temporary("value")
 			return []ast.Stmt{define(pos, name, lit), set(pos, s.Lhs[0], token.ASSIGN, ident(name, pos))}
 		}

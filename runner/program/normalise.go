@@ -285,9 +285,9 @@ func (n *normaliser) functions() {
 	astutil.Apply(n.tree, nil, func(cur *astutil.Cursor) bool {
 		switch f := cur.Node().(type) {
 		case *ast.FuncDecl:
-			n.lower(f.Type, f.Body)
+			n.lower(f.Type, f.Body, false)
 		case *ast.FuncLit:
-			n.lower(f.Type, f.Body)
+			n.lower(f.Type, f.Body, true)
 		}
 		return true
 	})

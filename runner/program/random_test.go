@@ -126,7 +126,6 @@ var statements = []string{
 	"{ var fs []func() int; for i := 0; i < 3; i++ { n := $i; fs = append(fs, func() int { n++; return n }) }; ^i = fs[0]() + fs[0]() + fs[2]() }",
 	"for i, r := range $t { ^i += i * int(r) }", "^i = 1 << ix($i, 5) | $i >> ix($i, 4)", "{ var b strings.Builder; fmt.Fprintf(&b, \"%d %.3g\", $i, float64($f)); ^i += b.Len() }",
 	"{ var keys []string; for k := range #m { keys = append(keys, k) }; sort.Strings(keys); for i, k := range keys { ^f = clamp(^f + #m[k]*float64(i)) } }",
-	"{ g := func() float64 { return ^P.X + ^P.A[0] }; ^P = P{X: $f}; ^f = clamp(g()); ^P = P{A: $a}; ^f = clamp(g() + ^f) }",
 	"{ f, n := pick($i); ^f = f($f); ^i += n }", "{ fs := []func(float64) float64{clamp, $F}; fs[0], ^i = clamp, $i; ^f = clamp(fs[ix($i, 2)]($f)) }",
 	"for _, r := range $t { ^i += int(r) }", "for i := 0; i < 3; { i++; %1 }", "{ next, n := counted($i); ^i = next()*n + next() }",
 	"{ len := $i; sort := len + 1; ^i = sort }", "{ f := func(x float64) (r float64, ok bool) { if x > 1 { r = x; return }; g := func() { r = 3 }; g(); return r + 1, true }; x, ok := f($f); if ok { ^f = x } }",

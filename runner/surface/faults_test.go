@@ -92,8 +92,8 @@ func TestTargets(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	// fits, sheet and nearest are for the library itself.
-	hidden := map[string]bool{"fits": true, "sheet": true, "nearest": true}
+	// compress, fits, sheet and nearest are for the library itself.
+	hidden := map[string]bool{"compress": true, "fits": true, "sheet": true, "nearest": true}
 	for _, s := range steps {
 		if s.IsDir() && !hidden[s.Name()] && !packages[s.Name()] {
 			t.Errorf("nothing of package %s is called", s.Name())

@@ -161,6 +161,10 @@ func newSamples() *samples {
 		must(err)
 		points, curveFits = append(points, p), append(curveFits, f)
 	}
+	fewDraws, marginal := fit.Sampling{Effective: 100, Compared: 1}, model
+	marginal.Channel = append(slices.Clone(model.Channel), fit.Prior{Name: "errorScale", Kind: fit.LogUniform, A: 0.01, B: 100})
+	_, sampled, err := fit.Channels(curves, posterior, model, fewDraws)
+	must(err)
 	var summaries []diagnose.Summary
 	for _, f := range curveFits {
 		s, err := diagnose.Summarise(f)
@@ -265,12 +269,14 @@ func newSamples() *samples {
 	with.White, with.Channel, with.Function = append(slices.Clone(whitePriors), hook...), append(slices.Clone(channelPriors), hook...), names
 
 	s := &samples{byType: map[reflect.Type][]reflect.Value{}, own: map[string][][]any{
-		"fit.White":       {{white, curves[0]}, {model, settling}},
-		"fit.WhiteOrbit":  {{white}, {model, settling}, {"fitted", "published", "tested"}},
-		"fit.Channel":     {{curves[0], curves[1]}, {posterior}, {model, settling}},
-		"fit.WhiteWith":   {{white}, {with}, {ramp}},
-		"fit.ChannelWith": {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
-		"fit.Function":    {{white}, {with, alone}, {ramp}},
+		"fit.White":        {{white, curves[0]}, {model, settling}},
+		"fit.WhiteOrbit":   {{white}, {model, settling}, {"fitted", "published", "tested"}},
+		"fit.Channel":      {{curves[0], curves[1]}, {posterior}, {model, settling}},
+		"fit.Channels":     {{curves, curves[:2]}, {posterior}, {model, settling, marginal}, {fewDraws, fit.Sampling{Effective: 100, Compared: -1}}},
+		"fit.ChannelCurve": {{curves[0]}, {sampled[0]}, {posterior}, {model}},
+		"fit.WhiteWith":    {{white}, {with}, {ramp}},
+		"fit.ChannelWith":  {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
+		"fit.Function":     {{white}, {with, alone}, {ramp}},
 
 		"orbit.FitEphemeris":           {{[]int{0, 3, 10}}, {[]float64{100.2, 109.8, 132.3}}, {[]float64{0.001, 0.002, 0.001}}},
 		"orbit.Ephemeris.Timings":      {{ephemeris}, {[]float64{2460512.4, 2460525.1}}, {[]float64{0.001, 0}}},
@@ -336,7 +342,6 @@ func newSamples() *samples {
 		"noise.Wavelet.Gradient":        {{noise.Wavelet{Red: 1, White: 2}}, {evenly}},
 		"noise.Wavelet.LogLikelihood":   {{noise.Wavelet{Red: 1, White: 2}}, {evenly}},
 		"noise.Detector.Expected":       {{detector}, {1e4, 100.0}},
-		"noise.ExcessTable":             {{}, {[]lightcurve.Channel{{Lo: 1, Hi: 2}}}, {[]noise.Excess{{Expected: 1e-4, Ratio: 1.2}}}},
 		"noise.Detector.Above":          {{detector}, {1e4, 100.0}, {residual}},
 
 		"lightcurve.Exclude":     {{}, {scenario.Start, scenario.Start + 0.1}, {scenario.MidTransit, scenario.MidTransit + 1}},

@@ -71,7 +71,7 @@ func tableRows(model Model, channel lightcurve.Channel, n int) (Priors, error) {
 	table := model.Limb
 	switch {
 	case table.Law != "" && !strings.EqualFold(table.Law, model.LimbLaw):
-		return nil, fmt.Errorf("the limb-darkening table is for the %s law, but the law is %s; set limbLaw to %s", table.Law, model.LimbLaw, table.Law)
+		return nil, fmt.Errorf("the limb-darkening table is for the %.40s law, but the law is %s; set limbLaw to %.40s", table.Law, model.LimbLaw, table.Law)
 	case table.Law == "" && n > 2:
 		return nil, fmt.Errorf("the limb-darkening table does not say that it is for the %s law; give one that does, or set limbPolicy to free", model.LimbLaw)
 	}

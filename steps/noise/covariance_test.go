@@ -2,8 +2,6 @@ package noise
 
 import (
 	"math"
-	"runtime"
-	"slices"
 	"testing"
 )
 
@@ -117,26 +115,5 @@ func TestLeastSquares(t *testing.T) {
 	}
 	if _, err := c.LeastSquares([][]float64{{1, 1, 1, 1}, {2, 2, 2, 2}}, []float64{1, 3, 4, 8}); err == nil {
 		t.Error("columns that are alike were taken")
-	}
-}
-
-// Dense processes give the same bits at every number of processors.
-func TestSameAtAnyNumberOfProcessors(t *testing.T) {
-	data, residual := irregular(400)
-	p := newProcess(t, benchModels[3].model, data, true)
-	defer runtime.GOMAXPROCS(runtime.GOMAXPROCS(1))
-	first, err := p.Gradient(benchModels[3].values, residual)
-	if err != nil {
-		t.Fatal(err)
-	}
-	for _, n := range []int{2, 7} {
-		runtime.GOMAXPROCS(n)
-		g, err := p.Gradient(benchModels[3].values, residual)
-		if err != nil {
-			t.Fatal(err)
-		}
-		if !slices.Equal(g.ByLog, first.ByLog) || !slices.Equal(g.ByResidual, first.ByResidual) || g.LogLikelihood != first.LogLikelihood {
-			t.Errorf("%d processors give other numbers than one", n)
-		}
 	}
 }

@@ -44,8 +44,8 @@ func (k *kernel) evaluate(a [][]float64, i, j int, values, by []float64) (value 
 		var p propagator
 		s.propagate(&p, τ)
 		if by != nil {
-			by[0] = -p.byRate(&s, s.rate*τ)[0]
-			by[1] = -p.byDamping(&s, s.rate*τ)[0]
+			by[0] = -p.byRate(s, s.rate*τ)[0]
+			by[1] = -p.byDamping(s, s.rate*τ)[0]
 		}
 		return p.phi[0], 2
 	}

@@ -38,8 +38,6 @@
 //	expected                         68.3% and 95.0%    68.3% and 95.0%    1
 //
 // The last column is the length of intervals from white errors over that from the
-// matching model. The parameters of the noise were known. When σ and time scale of
-// the Matérn-3/2 noise were fitted to the same data by maximum likelihood and then
-// held, intervals were too short, 64.0% and 90.0% of 400 series: let the parameters
-// of the noise vary together with the depth.
+// matching model. The parameters of the noise were known; where they are fitted,
+// let them vary together with the depth.
 package noise

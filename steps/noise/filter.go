@@ -52,6 +52,16 @@ func count(kind string) int {
 	return 1
 }
 
+func timescaleOf(kind string, values []float64) timescale {
+	switch kind {
+	case Oscillator:
+		return timescale{rate: 2 * math.Pi / values[0], damping: 1 / (2 * values[1])}
+	case Matern32:
+		return timescale{rate: math.Sqrt(3) / values[0], damping: 1}
+	}
+	return timescale{rate: 1 / values[0]}
+}
+
 // run filters the residuals and returns the logarithm of their likelihood. What
 // the factorisation needs stays in d, gain and step; with all, mean and left are
 // kept, too.

@@ -3,9 +3,6 @@ package noise
 import (
 	"fmt"
 	"math"
-
-	"rimlight/steps/lightcurve"
-	"rimlight/steps/table"
 )
 
 // A Detector turns counts into electrons, for the noise that a measurement could
@@ -83,29 +80,4 @@ func (d Detector) Above(flux float64, residual []float64) (Excess, error) {
 		return Excess{}, errRange
 	}
 	return out, nil
-}
-
-// ExcessTable shows how far channels lie above their photon noise, one row each. It
-// is an error when lengths differ.
-func ExcessTable(title string, channels []lightcurve.Channel, excess []Excess) (table.Table, error) {
-	if len(channels) != len(excess) {
-		return table.Table{}, fmt.Errorf("photon noise: %d channels and %d of their excesses; expected equal numbers", len(channels), len(excess))
-	}
-	columns := []table.Column{
-		{Name: "channel", About: "index in the input, from 0"},
-		{Name: "from", Unit: "um", About: "lower wavelength", Digits: 5},
-		{Name: "to", Unit: "um", About: "upper wavelength", Digits: 5},
-		{Name: "expected", About: "relative noise of photons and reads", Digits: 4},
-		{Name: "measured", About: "root mean square of the residuals", Digits: 4},
-		{Name: "ratio", About: "measured over expected noise", Digits: 4},
-		{Name: "error", About: "standard error of the ratio", Digits: 2},
-		{Name: "extra", About: "noise that adds to the expected, in quadrature", Digits: 4},
-	}
-	for i, e := range excess {
-		c := channels[i]
-		for k, x := range []float64{float64(c.Index), c.Lo, c.Hi, e.Expected, e.Measured, e.Ratio, e.Err, e.Extra} {
-			columns[k].Number = append(columns[k].Number, x)
-		}
-	}
-	return table.Table{Title: title, Columns: columns}, nil
 }

@@ -18,32 +18,14 @@ type propagator struct {
 // damping it is the exponential process, and rate its inverse time scale.
 type timescale struct {
 	rate, damping float64
-	slow          [slowOrder]float64 // of an oscillator, see slowSpread
 }
 
-// timescaleOf gives that of a kernel in time at the values of its parameters.
-func timescaleOf(kind string, values []float64) timescale {
-	switch kind {
-	case Oscillator:
-		s := timescale{rate: 2 * math.Pi / values[0], damping: 1 / (2 * values[1])}
-		s.slow = slowSpread(s.damping)
-		return s
-	case Matern32:
-		return timescale{rate: math.Sqrt(3) / values[0], damping: 1, slow: slowSpread(1)}
-	}
-	return timescale{rate: 1 / values[0]}
-}
-
-// Below the phase small, and a quarter of it in units of the damping, what an
-// oscillator gains is summed as a series: the closed form cancels to the third
-// order. Ten terms then are exact in double precision.
-const (
-	small     = 1. / 16
-	slowOrder = 10
-)
+// small is the phase below which what an oscillator adds is summed as a series:
+// the closed form cancels to the third order.
+const small = 1. / 16
 
 // propagate fills p for an interval of the length τ ≥ 0.
-func (s *timescale) propagate(p *propagator, τ float64) {
+func (s timescale) propagate(p *propagator, τ float64) {
 	x := s.rate * τ
 	if s.damping == 0 {
 		e := math.Exp(-x)
@@ -59,11 +41,7 @@ func (s *timescale) propagate(p *propagator, τ float64) {
 	p.spread[1] = 2 * ζ * sn * sn
 	p.spread[2] = lost + 2*ζ*sn*(c-ζ*sn)
 	if x < small && ζ*x < small/4 {
-		sum := 0.0
-		for k := slowOrder - 1; k >= 0; k-- {
-			sum = sum*x + s.slow[k]
-		}
-		p.spread[0] = sum * x * x * x
+		p.spread[0] = slowSpread(x, ζ)
 	}
 }
 
@@ -96,28 +74,29 @@ func damped(x, ζ float64) (c, s, bend float64) {
 	return c, s, (x*c - s) / (2 * y)
 }
 
-// slowSpread returns the variance that an oscillator gains within a short phase x,
-// 4ζ times the integral of the squared response to a kick, as the coefficients of x³
-// and higher powers. The response obeys y″ + 2ζy′ + y = 0.
-func slowSpread(ζ float64) (out [slowOrder]float64) {
-	var y [slowOrder + 2]float64
-	y[1] = 1
-	for k := 0; k+2 < len(y); k++ {
-		y[k+2] = -(2*ζ*float64(k+1)*y[k+1] + y[k]) / float64((k+1)*(k+2))
+// slowSpread is the variance that an oscillator gains within a short phase x, 4ζ
+// times the integral of the squared response to a kick, as a series.
+func slowSpread(x, ζ float64) float64 {
+	const order = 8
+	var y [order + 1]float64 // of the response, in powers of the phase times x
+	y[1] = x
+	for k := 0; k+2 <= order; k++ {
+		y[k+2] = -x * (2*ζ*float64(k+1)*y[k+1] + x*y[k]) / float64((k+1)*(k+2))
 	}
-	for k := range out {
-		square := 0.0 // coefficient of x^(k+2) in y²
-		for i := 1; i <= k+1; i++ {
-			square += y[i] * y[k+2-i]
+	sum := 0.0
+	for power := order + 1; power >= 2; power-- {
+		square := 0.0
+		for i := max(1, power-order); i <= min(order, power-1); i++ {
+			square += y[i] * y[power-i]
 		}
-		out[k] = 4 * ζ * square / float64(k+3)
+		sum += square / float64(power+1)
 	}
-	return out
+	return 4 * ζ * x * sum
 }
 
 // byRate is the derivative of phi by the logarithm of the rate, x its own by the
 // phase; x = rate τ.
-func (p *propagator) byRate(s *timescale, x float64) [4]float64 {
+func (p *propagator) byRate(s timescale, x float64) [4]float64 {
 	if s.damping == 0 {
 		return [4]float64{-x * p.phi[0]}
 	}
@@ -129,7 +108,7 @@ func (p *propagator) byRate(s *timescale, x float64) [4]float64 {
 }
 
 // byDamping is the derivative of phi by the logarithm of the damping.
-func (p *propagator) byDamping(s *timescale, x float64) [4]float64 {
+func (p *propagator) byDamping(s timescale, x float64) [4]float64 {
 	ζ := s.damping
 	sn := p.phi[1]
 	c := p.phi[0] - ζ*sn

@@ -67,69 +67,57 @@ func (f *filter) reverse(time []float64, out *Gradient, byLog []float64) {
 type termSums struct{ rate, damping, variance float64 }
 
 // back carries the bars over the interval before a sample, with the mean and
-// covariance after the sample before. What the interval adds to the covariance of
-// term t is v (1 - φφᵀ), so that the bar of φ is
-//
-//	2 Σ_s left_ts φ_s before_st - 2 v left_tt φ + mean beforeᵀ
+// covariance after the sample before.
 func (f *filter) back(τ float64, step []propagator, before [][2]float64, leftBefore [][4]float64, mean [][2]float64, left [][4]float64, sums []termSums) {
 	terms := len(step)
-	var bars [mostTerms][4]float64
-	k := 0
-	for s := range step {
-		a := &step[s].phi
-		for t := s; t < terms; t++ {
-			l, b := &left[k], leftBefore[k]
-			if s == t {
-				spread := &step[t].spread
-				sums[t].variance += l[0]*spread[0] + 2*l[1]*spread[1] + l[3]*spread[2]
-				b[0] -= f.variance[t]
-				if f.scale[t].damping != 0 {
-					b[3] -= f.variance[t]
-				}
-			} else {
-				addTwice(&bars[t], transposeTimes(l, a), &b)
-			}
-			x := product(l, &step[t].phi)
-			turned := [4]float64{b[0], b[2], b[1], b[3]}
-			addTwice(&bars[s], x, &turned)
-			left[k] = transposeTimes(a, &x)
-			k++
-		}
-	}
 	for t := range step {
-		bar, p, m, b := &bars[t], &step[t].phi, mean[t], before[t]
+		p := &step[t].phi
+		own := &left[diagonal(t, terms)]
+		v := f.variance[t]
+		// What the interval adds is v (1 - φφᵀ), so that the bar of φ is
+		// 2 Σ_s left_ts φ_s (before_st) - 2 v left_tt φ + mean beforeᵀ.
+		var bar [4]float64
+		for s := range step {
+			l, b := pair(left, t, s, terms), pair(leftBefore, s, t, terms)
+			if s == t {
+				b[0] -= v
+				if f.scale[t].damping != 0 {
+					b[3] -= v
+				}
+			}
+			x := product(&l, &step[s].phi)
+			x = product(&x, &b)
+			for e := range bar {
+				bar[e] += 2 * x[e]
+			}
+		}
+		m, b := mean[t], before[t]
 		bar[0] += m[0] * b[0]
 		bar[1] += m[0] * b[1]
 		bar[2] += m[1] * b[0]
 		bar[3] += m[1] * b[1]
-		scale := &f.scale[t]
-		x := scale.rate * τ
-		sums[t].rate += dot(bar, step[t].byRate(scale, x))
-		if f.freeDamping[t] {
-			sums[t].damping += dot(bar, step[t].byDamping(scale, x))
+
+		x := f.scale[t].rate * τ
+		by := step[t].byRate(f.scale[t], x)
+		sums[t].rate += bar[0]*by[0] + bar[1]*by[1] + bar[2]*by[2] + bar[3]*by[3]
+		if f.scale[t].damping != 0 {
+			by = step[t].byDamping(f.scale[t], x)
+			sums[t].damping += bar[0]*by[0] + bar[1]*by[1] + bar[2]*by[2] + bar[3]*by[3]
 		}
+		spread := &step[t].spread
+		sums[t].variance += own[0]*spread[0] + 2*own[1]*spread[1] + own[3]*spread[2]
+
 		mean[t] = [2]float64{p[0]*m[0] + p[2]*m[1], p[1]*m[0] + p[3]*m[1]}
 	}
-}
-
-// addTwice adds 2ab to sum.
-func addTwice(sum *[4]float64, a [4]float64, b *[4]float64) {
-	sum[0] += 2 * (a[0]*b[0] + a[1]*b[2])
-	sum[1] += 2 * (a[0]*b[1] + a[1]*b[3])
-	sum[2] += 2 * (a[2]*b[0] + a[3]*b[2])
-	sum[3] += 2 * (a[2]*b[1] + a[3]*b[3])
-}
-
-// transposeTimes returns aᵀb.
-func transposeTimes(a, b *[4]float64) [4]float64 {
-	return [4]float64{
-		a[0]*b[0] + a[2]*b[2], a[0]*b[1] + a[2]*b[3],
-		a[1]*b[0] + a[3]*b[2], a[1]*b[1] + a[3]*b[3],
+	k := 0
+	for s := range step {
+		a := transposed(&step[s].phi)
+		for t := s; t < terms; t++ {
+			b := transposed(&step[t].phi)
+			left[k] = sandwich(&a, &left[k], &b)
+			k++
+		}
 	}
-}
-
-func dot(a *[4]float64, b [4]float64) float64 {
-	return a[0]*b[0] + a[1]*b[1] + a[2]*b[2] + a[3]*b[3]
 }
 
 // collect turns the sums into derivatives by the logarithms of the parameters.

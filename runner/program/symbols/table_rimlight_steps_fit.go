@@ -10,10 +10,14 @@ import (
 func init() {
 	Table["rimlight/steps/fit/fit"] = map[string]reflect.Value{
 		"Channel":          reflect.ValueOf(fit.Channel),
+		"ChannelCurve":     reflect.ValueOf(fit.ChannelCurve),
+		"ChannelPosterior": reflect.ValueOf((*fit.ChannelPosterior)(nil)),
 		"ChannelWith":      reflect.ValueOf(fit.ChannelWith),
+		"Channels":         reflect.ValueOf(fit.Channels),
 		"CurveFit":         reflect.ValueOf((*fit.CurveFit)(nil)),
 		"Equation":         reflect.ValueOf((*fit.Equation)(nil)),
 		"Function":         reflect.ValueOf(fit.Function),
+		"Interval":         reflect.ValueOf((*fit.Interval)(nil)),
 		"Model":            reflect.ValueOf((*fit.Model)(nil)),
 		"Parameter":        reflect.ValueOf((*fit.Parameter)(nil)),
 		"Parameters":       reflect.ValueOf(fit.Parameters),
@@ -21,6 +25,8 @@ func init() {
 		"Prior":            reflect.ValueOf((*fit.Prior)(nil)),
 		"Priors":           reflect.ValueOf((*fit.Priors)(nil)),
 		"Quantity":         reflect.ValueOf((*fit.Quantity)(nil)),
+		"Sampling":         reflect.ValueOf((*fit.Sampling)(nil)),
+		"SamplingChecks":   reflect.ValueOf(fit.SamplingChecks),
 		"SharedCovariance": reflect.ValueOf(fit.SharedCovariance),
 		"White":            reflect.ValueOf(fit.White),
 		"WhiteOrbit":       reflect.ValueOf(fit.WhiteOrbit),

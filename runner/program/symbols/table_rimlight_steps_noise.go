@@ -16,7 +16,6 @@ func init() {
 		"Data":            reflect.ValueOf((*noise.Data)(nil)),
 		"Detector":        reflect.ValueOf((*noise.Detector)(nil)),
 		"Excess":          reflect.ValueOf((*noise.Excess)(nil)),
-		"ExcessTable":     reflect.ValueOf(noise.ExcessTable),
 		"Factor":          reflect.ValueOf((*noise.Factor)(nil)),
 		"FromCurve":       reflect.ValueOf(noise.FromCurve),
 		"Gradient":        reflect.ValueOf((*noise.Gradient)(nil)),
