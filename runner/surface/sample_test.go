@@ -49,14 +49,18 @@ func (s *samples) of(target string, parameter int, t reflect.Type) []reflect.Val
 
 // asksForMuch reports whether a call is meant to take long: a simulation takes
 // as long as the number of its samples and their parts has it, a sampler as long as
-// it may evaluate its target.
+// it may evaluate its target, or as it has channels to sample.
 func asksForMuch(args []reflect.Value) bool {
 	const evaluations = 1e5
-	starts := 1.0
+	starts, channels := 1.0, 0
 	for _, a := range args {
 		switch s := a.Interface().(type) {
 		case [][]float64:
 			starts = float64(len(s))
+		case []lightcurve.Curve:
+			channels = len(s)
+		case fit.Sampling:
+			return channels > 100
 		case sample.NUTSSettings:
 			return s.Evaluations == 0 || float64(s.Evaluations)*starts > evaluations
 		case sample.EnsembleSettings:

@@ -65,6 +65,8 @@ type channel struct {
 	scale    bool    // of the errors, integrated over
 	priors   []Coefficient
 	target   target
+
+	square, packed []float64 // scratch
 }
 
 // newChannel prepares a light curve.
@@ -214,9 +216,11 @@ func (c *channel) legendre(lo, hi float64, count int) []*node {
 func (c *channel) tabulate(nodes []*node, sections []section, f *family) {
 	for _, n := range nodes {
 		m := c.mixing(n.logTau, f)
-		n.pieces = n.pieces[:0]
-		for _, s := range sections {
-			n.pieces = append(n.pieces, newTables(s.sums, s.deficits, m))
+		if len(n.pieces) != len(sections) {
+			n.pieces = make([]tables, len(sections))
+		}
+		for k, s := range sections {
+			n.pieces[k].set(s.sums, s.deficits, m)
 		}
 		if f != nil {
 			n.logWeight += c.jeffreys(sections[0].sums, m)
@@ -237,25 +241,21 @@ func (c *channel) mixing(logTau float64, f *family) *mixing {
 // have no prior of their own, out of transit and in: see the package comment.
 func (c *channel) jeffreys(s *sums, m *mixing) float64 {
 	p := m.size()
-	square := make([]float64, pairs(p))
-	m.mixSquare(s.block(0), square)
-	given := make([]bool, p)
-	for _, prior := range c.priors {
-		given[prior.Column] = true
-	}
-	var flat []int
+	c.square = resized(c.square, pairs(p))
+	m.mixSquare(s.block(0), c.square)
+	flat := make([]int, 0, 80)
 	for j := range p {
-		if !given[j] {
+		if !slices.ContainsFunc(c.priors, func(prior Coefficient) bool { return prior.Column == j }) {
 			flat = append(flat, j)
 		}
 	}
-	g := make([]float64, pairs(len(flat)+1))
+	c.packed = resized(c.packed, pairs(len(flat)+1))
 	for a, j := range flat {
 		for b, k := range flat[:a+1] {
-			g[pairs(a)+b] = square[packed(j, k)]
+			c.packed[pairs(a)+b] = c.square[packed(j, k)]
 		}
 	}
-	_, logDet, _ := factorise(g, len(flat))
+	_, logDet, _ := factorise(c.packed, len(flat))
 	return logDet / 2
 }
 

@@ -14,6 +14,9 @@ import (
 // 10⁹.
 const rare = 3e-6
 
+// mostShapes bounds the polynomials in ln τ, which the widest range of times needs.
+const mostShapes = 64
+
 // A family is exponentials of all e-folding times between two limits as combinations
 // of a few columns: exp(-age/τ) = Σ c_m(ln τ) S_m, the columns orthogonal and of mean
 // square 1 over the integrations.
@@ -26,7 +29,7 @@ type family struct {
 
 // newFamily makes a family of exponentials from a start, for ln τ from lo to hi.
 func newFamily(times []float64, start, lo, hi float64) *family {
-	points := int(math.Min(64, math.Max(12, math.Ceil(12*(hi-lo)))))
+	points := int(math.Min(mostShapes, math.Max(12, math.Ceil(12*(hi-lo)))))
 	raw := make([][]float64, points)
 	f := &family{lo: lo, hi: hi, t: points}
 	for i, x := range chebyshevNodes(points) {
@@ -91,7 +94,8 @@ func decompose(products *mat.SymDense) (norm []float64, vectors *mat.Dense) {
 // combine sets c to the coefficients at ln τ.
 func (f *family) combine(logTau float64, c []float64) {
 	x := (2*logTau - f.lo - f.hi) / (f.hi - f.lo)
-	t := make([]float64, f.t)
+	var room [mostShapes]float64
+	t := room[:f.t]
 	chebyshev(math.Min(1, math.Max(-1, x)), t, nil)
 	for m, shape := range f.shape {
 		c[m] = floats.Dot(shape, t)

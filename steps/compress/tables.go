@@ -18,6 +18,8 @@ type tables struct {
 	flat      []float64 // G0
 	first     []float64 // G1 of each function
 	second    []float64 // G2 of each pair of functions, twice that where they differ
+
+	square, cross []float64 // scratch
 }
 
 // A mixing says which columns a model has: columns 0 to fixed-1 as they are and, with a
@@ -38,13 +40,14 @@ func (m *mixing) size() int {
 	return m.fixed + 1
 }
 
-// newTables makes tables from sums.
-func newTables(s *sums, d *Deficits, m *mixing) *tables {
+// set makes tables from sums, in the space of those there were.
+func (t *tables) set(s *sums, d *Deficits, m *mixing) {
 	p := m.size()
 	n := pairs(p + 1)
-	t := &tables{deficits: d, functions: s.functions, size: p,
-		flat: make([]float64, n), first: make([]float64, s.functions*n), second: make([]float64, pairs(s.functions)*n)}
-	square, cross := make([]float64, pairs(p)), make([]float64, p)
+	t.deficits, t.functions, t.size = d, s.functions, p
+	t.flat, t.first, t.second = resized(t.flat, n), resized(t.first, s.functions*n), resized(t.second, pairs(s.functions)*n)
+	t.square, t.cross = resized(t.square, pairs(p)), resized(t.cross, p)
+	square, cross := t.square, t.cross
 	last := pairs(p) // where the row of the residual begins
 	// In the flat part, columns are whole.
 	m.mixSquare(s.block(0), square)
@@ -99,7 +102,14 @@ func newTables(s *sums, d *Deficits, m *mixing) *tables {
 			x++
 		}
 	}
-	return t
+}
+
+// resized is a slice of n numbers, x if it has the room.
+func resized(x []float64, n int) []float64 {
+	if cap(x) >= n {
+		return x[:n]
+	}
+	return make([]float64, n)
 }
 
 // mixSquare turns products of all columns into those of the model's.

@@ -5,8 +5,8 @@ import "math"
 // A node is the posterior of a light curve at one settling time.
 type node struct {
 	logTau    float64
-	logWeight float64   // of the node: rule of integration, prior of the time and of the coefficients
-	pieces    []*tables // in order of radius ratio, each beginning where the one before ends
+	logWeight float64  // of the node: rule of integration, prior of the time and of the coefficients
+	pieces    []tables // in order of radius ratio, each beginning where the one before ends
 
 	mode     []float64 // in free coordinates
 	factor   []float64 // Cholesky factor of the inverse of the covariance there, packed
@@ -39,7 +39,8 @@ type target struct {
 
 // piece is the table for a radius ratio, nil where there is none.
 func (n *node) piece(r float64) *tables {
-	for _, t := range n.pieces {
+	for k := range n.pieces {
+		t := &n.pieces[k]
 		if r <= t.deficits.Hi {
 			if r < t.deficits.Lo {
 				return nil

@@ -35,7 +35,7 @@ func (c *channel) walk(d *draws, at *fitted, seed uint64, stream int) (*draws, f
 		}
 		if logTau := p[m]; logTau != last {
 			last = logTau
-			n = node{logTau: logTau, logWeight: c.trend.Settle.logDensity(math.Exp(logTau)) + logTau}
+			n.logTau, n.logWeight = logTau, c.trend.Settle.logDensity(math.Exp(logTau))+logTau
 			c.tabulate([]*node{&n}, at.sections, f)
 		}
 		return c.target.value(&n, p[:m]) + n.logWeight
