@@ -70,20 +70,35 @@ func (s *Shared) Posterior(curve *Curve, settings Settings) (*Posterior, error) 
 	if err != nil {
 		return nil, err
 	}
-	x, err := c.locate()
+	out := &Posterior{RHat: math.NaN(), By: ByImportance, Level: c.level, Samples: c.used}
+	f, d, err := c.draw(settings, out)
 	if err != nil {
 		return nil, err
 	}
-	out := &Posterior{RHat: math.NaN(), By: ByImportance, Level: c.level, Samples: c.used}
-	var f *fitted
-	var d *draws
+	out.Draws, out.Effective = len(d.node), d.size
+	out.Tables, out.Error = len(f.sections), f.error
+	out.Marginals = c.marginals(d, f)
+	if settings.Compare > 0 {
+		if out.Compared, err = c.compare(d, f.nodes, settings.Compare); err != nil {
+			return nil, err
+		}
+	}
+	return out, c.best(out, f, settings.Directions)
+}
+
+// draw samples the posterior, and says in out how.
+func (c *channel) draw(settings Settings, out *Posterior) (f *fitted, d *draws, err error) {
+	x, err := c.locate()
+	if err != nil {
+		return nil, nil, err
+	}
 	rng := rand.New(rand.NewPCG(settings.Seed, uint64(settings.Stream)))
 	for round := 0; ; round++ {
 		if f, err = c.refine(x); err != nil {
-			return nil, err
+			return nil, nil, err
 		}
 		if d, out.Refits, err = c.importance(f.nodes, settings.Effective, rng); err != nil {
-			return nil, err
+			return nil, nil, err
 		}
 		if out.Edge = c.edge(d, f); out.Edge < mostEdge || round == 3 {
 			break
@@ -101,15 +116,7 @@ func (s *Shared) Posterior(curve *Curve, settings Settings) (*Posterior, error) 
 			out.Mixed = rhat <= mostRHat
 		}
 	}
-	out.Draws, out.Effective = len(d.node), d.size
-	out.Tables, out.Error = len(f.sections), f.error
-	out.Marginals = c.marginals(d, f)
-	if settings.Compare > 0 {
-		if out.Compared, err = c.compare(d, f.nodes, settings.Compare); err != nil {
-			return nil, err
-		}
-	}
-	return out, c.best(out, f, settings.Directions)
+	return f, d, nil
 }
 
 const (

@@ -29,6 +29,7 @@ type scene struct {
 	law           string
 	parameters    Parameters
 	normal        []Coefficient
+	sizes         []float64 // of the columns; nil for some
 	seed          uint64
 }
 
@@ -121,6 +122,10 @@ func (s scene) curve(t testing.TB, star Star, trend Trend, stream uint64) *Curve
 	size := make([]float64, len(trend.Columns))
 	for k := range size {
 		size[k] = 3e-4 * rng.NormFloat64()
+	}
+	if s.sizes != nil {
+		copy(size, s.sizes)
+		s.hook = s.sizes[len(size)]
 	}
 	for i := range flux {
 		base := 0.0
