@@ -127,7 +127,7 @@ func TestAgainstWalkers(t *testing.T) {
 		target := directTarget(t, shared, curve, s)
 		draws, steps := 700, 300
 		if long() {
-			draws, steps = 6000, 1500
+			draws, steps = 4000, 1000
 		}
 		w, err := sample.Ensemble(parameters, target, starts, sample.EnsembleSettings{Seed: 4, WarmUp: steps, Draws: draws, Differential: 0.4})
 		if err != nil {

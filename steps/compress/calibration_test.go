@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"os"
+	"strconv"
 	"sync"
 	"testing"
 
@@ -11,6 +12,20 @@ import (
 
 	"rimlight/steps/limb"
 )
+
+// simulations is how many of them a calibration has, given by RIMLIGHT_POSTERIORS: some
+// thousands take minutes.
+func simulations(t *testing.T) int {
+	text := os.Getenv("RIMLIGHT_POSTERIORS")
+	if text == "" {
+		return 40
+	}
+	n, err := strconv.Atoi(text)
+	if err != nil || n < 40 {
+		t.Fatalf("RIMLIGHT_POSTERIORS is %q; expected a number of simulations from 40 up", text)
+	}
+	return n
+}
 
 // long reports whether tests that take minutes are asked for.
 func long() bool { return os.Getenv("RIMLIGHT_POSTERIORS") != "" }
@@ -21,10 +36,7 @@ func long() bool { return os.Getenv("RIMLIGHT_POSTERIORS") != "" }
 // of 1 in 1000; the shares of true values in the central 68 % and 95 % are held against
 // the binomial distribution, at 3.3 standard deviations.
 func TestCalibration(t *testing.T) {
-	count := 160
-	if long() {
-		count = 2000
-	}
+	count := simulations(t)
 	base := scene{n: 400, b: 0.3, noise: 8e-4, slope: true, seed: 8,
 		parameters: Parameters{Radius: Prior{Kind: Uniform, A: 0.03, B: 0.17}, Square: true, Limb: [2]Prior{{Kind: Uniform, A: 0, B: 1}, {Kind: Uniform, A: 0, B: 1}}},
 		normal:     []Coefficient{{1, 0, 1e-3}}}

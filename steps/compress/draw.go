@@ -15,6 +15,10 @@ const (
 	refits = 3
 	// mostDraws bounds the draws of one light curve.
 	mostDraws = 30_000
+	// wider is by how much a part of the draws is spread more where proposals are fitted
+	// again, and wideShare how large that part is.
+	wider     = 2
+	wideShare = 0.3
 	// leastShare is the share of the posterior below which a node gets no draws.
 	leastShare = 1e-6
 )
@@ -39,6 +43,7 @@ type proposal struct {
 	center [][]float64
 	factor [][]float64
 	share  []float64 // of the draws
+	wide   float64   // share of those that are from a distribution twice as wide
 }
 
 // propose is that of the modes.
@@ -108,6 +113,12 @@ func (c *channel) sample(d *draws, nodes []*node, p *proposal, n int, rng *rand.
 				xi[k] *= stretch
 				square += xi[k] * xi[k]
 			}
+			if rng.Float64() < p.wide {
+				for k := range xi {
+					xi[k] *= wider
+				}
+				square *= wider * wider
+			}
 			solveUpper(p.factor[g], m, xi)
 			at := len(d.z)
 			for k, x := range xi {
@@ -116,10 +127,22 @@ func (c *channel) sample(d *draws, nodes []*node, p *proposal, n int, rng *rand.
 			value := c.target.value(node, d.z[at:]) + node.logWeight
 			d.node = append(d.node, g)
 			d.density = append(d.density, value)
-			d.base = append(d.base, value-logQ+float64(degrees+m)/2*math.Log1p(square/degrees))
+			d.base = append(d.base, value-logQ-p.spread(square, m))
 			d.counts[g]++
 		}
 	}
+}
+
+// spread is the logarithm of the density at a distance from the center whose square is
+// given in units of the scale, up to a constant.
+func (p *proposal) spread(square float64, m int) float64 {
+	power := -float64(degrees+m) / 2
+	narrow := power * math.Log1p(square/degrees)
+	if p.wide == 0 {
+		return narrow
+	}
+	wide := power*math.Log1p(square/(wider*wider*degrees)) - float64(m)*math.Log(wider)
+	return math.Log((1-p.wide)*math.Exp(narrow) + p.wide*math.Exp(wide))
 }
 
 // weigh computes the weights.
@@ -205,7 +228,7 @@ func (d *draws) refit(nodes []*node, old *proposal) *proposal {
 	if !ok {
 		return nil
 	}
-	p := &proposal{share: share}
+	p := &proposal{share: share, wide: wideShare}
 	offset := make([]float64, m)
 	for g := range nodes {
 		if old.share[g] == 0 {

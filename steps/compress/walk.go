@@ -3,6 +3,7 @@ package compress
 import (
 	"math"
 	"math/rand/v2"
+	"slices"
 
 	"rimlight/steps/chain"
 	"rimlight/steps/sample"
@@ -11,13 +12,13 @@ import (
 const (
 	walkers    = 40
 	walkWarmUp = 500
-	walkDraws  = 1500
+	walkDraws  = 3000
 	walkThin   = 2
 	mostRHat   = 1.02 // of walkers that have met
 )
 
 // walk samples the posterior by an ensemble of walkers that begin at draws of importance
-// sampling. Settling times lie anywhere between the ends.
+// sampling. A settling time is anywhere in the cell of a node, whose density it has.
 func (c *channel) walk(d *draws, at *fitted, seed uint64, stream int) (*draws, float64, error) {
 	m, nodes, x, f := d.m, at.nodes, &at.extent, at.family
 	parameters := make([]sample.Parameter, 0, m+1)
@@ -27,18 +28,13 @@ func (c *channel) walk(d *draws, at *fitted, seed uint64, stream int) (*draws, f
 	if f != nil {
 		parameters = append(parameters, sample.Parameter{Name: "tau", Lo: x.tauLo, Hi: x.tauHi})
 	}
-	n := node{}
-	last := math.Inf(-1)
+	edges := cells(at)
 	value := func(p []float64) float64 {
 		if f == nil {
 			return c.target.value(nodes[0], p)
 		}
-		if logTau := p[m]; logTau != last {
-			last = logTau
-			n.logTau, n.logWeight = logTau, c.trend.Settle.logDensity(math.Exp(logTau))+logTau
-			c.tabulate([]*node{&n}, at.sections, f)
-		}
-		return c.target.value(&n, p[:m]) + n.logWeight
+		g := cell(edges, p[m])
+		return c.target.value(nodes[g], p[:m]) + nodes[g].logWeight - math.Log(edges[g+1]-edges[g])
 	}
 	rng := rand.New(rand.NewPCG(seed, uint64(stream)^walkStream))
 	var start [][]float64
@@ -52,8 +48,8 @@ func (c *channel) walk(d *draws, at *fitted, seed uint64, stream int) (*draws, f
 				p[k] += 1e-3 * rng.NormFloat64() * math.Sqrt(nodes[d.node[i]].variance[k])
 			}
 			if f != nil {
-				cell := (x.tauHi - x.tauLo) / float64(len(nodes))
-				p = append(p, math.Min(x.tauHi-1e-9*cell, math.Max(x.tauLo+1e-9*cell, nodes[d.node[i]].logTau+cell*(rng.Float64()-0.5))))
+				g := d.node[i]
+				p = append(p, edges[g]+(edges[g+1]-edges[g])*(0.01+0.98*rng.Float64()))
 			}
 			if v := value(p); !math.IsInf(v, -1) {
 				start = append(start, p)
@@ -86,9 +82,7 @@ func (c *channel) walk(d *draws, at *fitted, seed uint64, stream int) (*draws, f
 		out.z = append(out.z, p[:m]...)
 		g := 0
 		if f != nil {
-			for g+1 < len(nodes) && p[m] > (nodes[g].logTau+nodes[g+1].logTau)/2 {
-				g++
-			}
+			g = cell(edges, p[m])
 		}
 		out.node = append(out.node, g)
 		out.density = append(out.density, w.LogDensity[i])
@@ -98,6 +92,12 @@ func (c *channel) walk(d *draws, at *fitted, seed uint64, stream int) (*draws, f
 		out.logWeight[i] = -math.Log(float64(len(out.node)))
 	}
 	return out, worst, nil
+}
+
+// cell is the one that ln τ lies in.
+func cell(edges []float64, logTau float64) int {
+	g, _ := slices.BinarySearch(edges, logTau)
+	return min(max(g-1, 0), len(edges)-2)
 }
 
 // walkStream is part of the seed of the walkers' starts.
