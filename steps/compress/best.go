@@ -18,7 +18,7 @@ func (c *channel) best(out *Posterior, f *fitted, directions [][7]float64) error
 			top = n
 		}
 	}
-	c.target.parameters.at(c.target.law, c.target.free, top.mode, &c.target.at)
+	c.target.parameters.at(c.target.law, c.target.free, top.mode, true, &c.target.at)
 	out.Radius, out.Limb, out.Settling = c.target.at.r, c.target.at.u, math.NaN()
 	out.Free = len(c.target.free) + len(c.stars)
 	if f.family != nil {

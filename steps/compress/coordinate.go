@@ -45,20 +45,20 @@ const farthest = 9
 // value gives the parameter at coordinate z, with its derivative. The prior's density
 // in z is that of the standard normal distribution times exp(extra), of which slope and
 // bend are the first and, negative, the second derivative; extra is 0 but for truncated
-// normal priors.
-func (p *Prior) value(z float64) (x, by, extra, slope, bend float64) {
+// normal priors. Derivatives mean nothing unless slopes are asked for.
+func (p *Prior) value(z float64, slopes bool) (x, by, extra, slope, bend float64) {
 	switch p.Kind {
 	case Normal:
 		return p.A + p.B*z, p.B, 0, 0, 0
 	case Uniform:
-		x, by = between(z, p.A, p.B)
+		x, by = between(z, p.A, p.B, slopes)
 	case LogUniform:
-		x, by = between(z, math.Log(p.A), math.Log(p.B))
+		x, by = between(z, math.Log(p.A), math.Log(p.B), slopes)
 		x = math.Exp(x)
 		by *= x
 	case TruncatedNormal:
 		lo, hi := p.window()
-		x, by = between(z, lo, hi)
+		x, by = between(z, lo, hi, slopes)
 		d := (x - p.A) / p.B
 		return x, by, -d * d / 2, -d / p.B * by, by * by / (p.B * p.B)
 	default:
@@ -101,13 +101,16 @@ func (p *Prior) logDensity(x float64) float64 {
 	return 0
 }
 
-// between maps z to lo + (hi-lo) Φ(z), and gives its derivative.
-func between(z, lo, hi float64) (x, by float64) {
+// between maps z to lo + (hi-lo) Φ(z), and gives its derivative if slopes are asked for.
+func between(z, lo, hi float64, slopes bool) (x, by float64) {
 	width := hi - lo
 	share := 0.5 * math.Erfc(math.Abs(z)/math.Sqrt2) // from the nearer end
 	x = lo + width*share
 	if z > 0 {
 		x = hi - width*share
+	}
+	if !slopes {
+		return x, 0
 	}
 	return x, width * math.Exp(-z*z/2) * (1 / (math.Sqrt2 * 1.77245385090551602729816748334))
 }
@@ -156,13 +159,13 @@ func (p *Parameters) prior(k int) *Prior {
 	return &p.Limb[k-1]
 }
 
-// at sets the place for free coordinates z.
-func (p *Parameters) at(law string, free []int, z []float64, out *place) {
+// at sets the place for free coordinates z, its derivatives if slopes are asked for.
+func (p *Parameters) at(law string, free []int, z []float64, slopes bool, out *place) {
 	x := [3]float64{p.Radius.A, p.Limb[0].A, p.Limb[1].A}
 	out.extra = 0
 	for i, k := range free {
 		var extra float64
-		x[k], out.byZ[k], extra, out.slope[k], out.bend[k] = p.prior(k).value(z[i])
+		x[k], out.byZ[k], extra, out.slope[k], out.bend[k] = p.prior(k).value(z[i], slopes)
 		out.extra += extra
 	}
 	out.r = x[0]

@@ -15,6 +15,8 @@ const (
 	// mostError is what the error of the tables may be in units of the noise: the root of
 	// the sum of squares over all samples.
 	mostError = 0.03
+	// roughError is the same for tables that only say where to look.
+	roughError = 0.2
 	// mostSections bounds how many tables cover the radius ratios of one light curve.
 	mostSections = 8
 	// littleMass is the logarithm of a share of the posterior that does not matter.
@@ -115,13 +117,14 @@ func newChannel(s *Shared, curve *Curve, scale bool) (*channel, error) {
 	return c, nil
 }
 
-// functions is how many functions of a table matter at the noise of the light curve.
-func (c *channel) functions(d *Deficits) int {
-	n := 0
-	for n < len(d.norm) && 4*d.norm[n]*math.Sqrt(c.mean) > mostError/3 {
+// functions is how many functions of a table matter by more than an error in units of
+// the noise. Their shares are of the size of 1.
+func (c *channel) functions(d *Deficits, most float64) int {
+	n := 1
+	for n < len(d.norm) && d.norm[n]*math.Sqrt(c.mean) > most {
 		n++
 	}
-	return max(n, 1)
+	return n
 }
 
 // shares reports whether sums of weight 1 that all light curves share are as good as the
@@ -131,7 +134,11 @@ func (c *channel) shares() bool { return c.alike && len(c.unused) <= len(c.weigh
 // section makes the sums over a table. Rough ones are with weights as if all were equal.
 func (c *channel) section(e *entry, columns [][]float64, rough bool) section {
 	d := e.deficits
-	out := section{deficits: d, functions: min(c.functions(d), len(d.values))}
+	most := mostError / 6
+	if rough {
+		most = roughError
+	}
+	out := section{deficits: d, functions: c.functions(d, most)}
 	weight := c.weight
 	if len(columns) != len(c.columns) || !c.shares() && !rough || len(c.unused) > len(c.weight)/4 {
 		out.sums = newSums(len(columns), out.functions)

@@ -57,7 +57,7 @@ func (c *channel) products(flux []float64, columns [][]float64) []float64 {
 
 // exact is the log density of draw i, without tables.
 func (c *channel) exact(n *node, z []float64) (float64, error) {
-	c.target.parameters.at(c.target.law, c.target.free, z, &c.target.at)
+	c.target.parameters.at(c.target.law, c.target.free, z, false, &c.target.at)
 	at := c.target.at
 	flux, err := transit.Curve(c.star.Times, c.params(at.r, at.u))
 	if err != nil {

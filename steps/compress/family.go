@@ -35,7 +35,7 @@ func newFamily(times []float64, start, lo, hi float64) *family {
 	for i, x := range chebyshevNodes(points) {
 		raw[i] = systematics.Settle(times, start, math.Exp(f.at(x)))
 	}
-	f.settle(raw, math.Sqrt(float64(len(times))))
+	f.settle(raw, math.Sqrt(float64(len(times))), rare)
 	return f
 }
 
@@ -43,8 +43,8 @@ func newFamily(times []float64, start, lo, hi float64) *family {
 func (f *family) at(x float64) float64 { return (f.lo+f.hi)/2 + x*(f.hi-f.lo)/2 }
 
 // settle finds columns and shapes from exponentials at the nodes; unit is the norm that
-// columns get.
-func (f *family) settle(raw [][]float64, unit float64) {
+// columns get, rare the relative norm below which they are left out.
+func (f *family) settle(raw [][]float64, unit, rare float64) {
 	n := len(raw)
 	products := mat.NewSymDense(n, nil)
 	for a := range n {
@@ -102,8 +102,9 @@ func (f *family) combine(logTau float64, c []float64) {
 	}
 }
 
-// narrow is the family for a part of the range, which takes fewer columns.
-func (f *family) narrow(lo, hi float64) *family {
+// narrow is the family for a part of the range, which takes fewer columns, and fewer
+// still where exponentials need not be as right as rare says by default.
+func (f *family) narrow(lo, hi, rare float64) *family {
 	const points = 12
 	out := &family{lo: lo, hi: hi, t: points}
 	k := len(f.columns)
@@ -112,7 +113,7 @@ func (f *family) narrow(lo, hi float64) *family {
 		raw[i] = make([]float64, k)
 		f.combine(out.at(x), raw[i])
 	}
-	out.settle(raw, 1)
+	out.settle(raw, 1, rare)
 	for m, mix := range out.columns {
 		column := make([]float64, len(f.columns[0]))
 		for j, share := range mix {

@@ -7,6 +7,7 @@ import "math"
 type extent struct {
 	lo, hi       float64 // radius ratio
 	tauLo, tauHi float64 // ln τ
+	hook         float64 // most that the coefficient of the settling may be, in units of the error of a mean over all samples
 	z            []float64
 }
 
@@ -105,7 +106,7 @@ func (c *channel) within(lo, hi float64, z []float64) (found extent, value float
 	sections := []section{c.section(e, c.columns, true)}
 	lo = math.Max(lo, 0)
 	z = append([]float64(nil), z...)
-	c.target.parameters.at(c.target.law, c.target.free, z, &c.target.at)
+	c.target.parameters.at(c.target.law, c.target.free, z, false, &c.target.at)
 	if r := c.target.at.r; r <= lo || r >= hi { // start inside
 		z[0] = c.curve.Parameters.Radius.coordinate((lo + hi) / 2)
 	}
@@ -127,6 +128,9 @@ func (c *channel) within(lo, hi float64, z []float64) (found extent, value float
 		}
 	}
 	c.reach(nodes, &found)
+	if c.family != nil {
+		found.hook = c.settled(nodes)
+	}
 	mid := c.radiusOf(found.z)
 	margin := math.Max((hi-lo)/50, math.Min((found.hi-found.lo)/reach, (hi-lo)/8)) // of 2 sd
 	switch {
@@ -138,9 +142,30 @@ func (c *channel) within(lo, hi float64, z []float64) (found extent, value float
 	return found, value, move, nil
 }
 
+// settled is the size of the coefficient of the settling, at most, in units of the error
+// of a mean over all samples.
+func (c *channel) settled(nodes []*node) float64 {
+	most := 0.0
+	top := math.Inf(-1)
+	for _, n := range nodes {
+		top = math.Max(top, n.logMass)
+	}
+	m := len(c.target.free)
+	gradient, curvature := make([]float64, m), make([]float64, pairs(m))
+	for _, n := range nodes {
+		if !(n.logMass > top-12) {
+			continue
+		}
+		c.target.slopes(n, n.mode, gradient, curvature)
+		last := len(c.target.s) - 1
+		most = math.Max(most, math.Abs(c.target.s[last])+4*math.Sqrt(c.target.inverse[packed(last, last)]))
+	}
+	return most * math.Sqrt(c.mean*float64(c.used))
+}
+
 // radiusOf is the radius ratio at a point.
 func (c *channel) radiusOf(z []float64) float64 {
-	c.target.parameters.at(c.target.law, c.target.free, z, &c.target.at)
+	c.target.parameters.at(c.target.law, c.target.free, z, false, &c.target.at)
 	return c.target.at.r
 }
 

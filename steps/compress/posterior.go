@@ -153,7 +153,7 @@ func (c *channel) marginals(d *draws, f *fitted) []Marginal {
 	for i, lw := range d.logWeight {
 		w := math.Exp(lw)
 		weight[i] = w
-		c.target.parameters.at(c.target.law, c.target.free, d.z[i*d.m:(i+1)*d.m], &c.target.at)
+		c.target.parameters.at(c.target.law, c.target.free, d.z[i*d.m:(i+1)*d.m], false, &c.target.at)
 		all[0][i] = draw{c.target.at.r, w}
 		for k := range c.law.count {
 			all[1+k][i] = draw{c.target.at.u[k], w}

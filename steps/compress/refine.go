@@ -24,7 +24,7 @@ func (c *channel) refine(x extent) (*fitted, error) {
 		out.error = worst
 		columns := c.columns
 		if c.family != nil && !c.shares() {
-			out.family = c.family.narrow(x.tauLo, x.tauHi)
+			out.family = c.family.narrow(x.tauLo, x.tauHi, math.Min(1e-4, math.Max(rare, mostError/3/x.hook)))
 			columns = append(append([][]float64(nil), c.columns[:c.fixed]...), out.family.columns...)
 		}
 		for _, e := range entries {

@@ -71,7 +71,7 @@ func (t *target) room(b *tables) {
 // value is the logarithm of the density at coordinates z, up to a constant; -Inf where
 // there is none, and where the tables do not reach.
 func (t *target) value(n *node, z []float64) float64 {
-	t.parameters.at(t.law, t.free, z, &t.at)
+	t.parameters.at(t.law, t.free, z, false, &t.at)
 	b := n.piece(t.at.r)
 	if b == nil {
 		return math.Inf(-1)
@@ -104,7 +104,7 @@ func (t *target) density(chi2, logDet float64, z []float64) float64 {
 // slopes is value with its gradient in z, and minus its second derivatives but for those
 // of the determinant and of the shares in r and u, which are small at the mode.
 func (t *target) slopes(n *node, z, gradient, curvature []float64) float64 {
-	t.parameters.at(t.law, t.free, z, &t.at)
+	t.parameters.at(t.law, t.free, z, true, &t.at)
 	b := n.piece(t.at.r)
 	if b == nil {
 		return math.Inf(-1)
