@@ -108,4 +108,5 @@ def main():
     np.concatenate([[least], *out]).tofile(sys.stdout.buffer)
 
 
-main()
+if __name__ == "__main__":
+    main()
