@@ -273,14 +273,16 @@ func newSamples() *samples {
 	with.White, with.Channel, with.Function = append(slices.Clone(whitePriors), hook...), append(slices.Clone(channelPriors), hook...), names
 
 	s := &samples{byType: map[reflect.Type][]reflect.Value{}, own: map[string][][]any{
-		"fit.White":        {{white, curves[0]}, {model, settling}},
-		"fit.WhiteOrbit":   {{white}, {model, settling}, {"fitted", "published", "tested"}},
-		"fit.Channel":      {{curves[0], curves[1]}, {posterior}, {model, settling}},
-		"fit.Channels":     {{curves, curves[:2]}, {posterior}, {model, settling, marginal}, {fewDraws, fit.Sampling{Effective: 100, Compared: -1}}},
-		"fit.ChannelCurve": {{curves[0]}, {sampled[0]}, {posterior}, {model}},
-		"fit.WhiteWith":    {{white}, {with}, {ramp}},
-		"fit.ChannelWith":  {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
-		"fit.Function":     {{white}, {with, alone}, {ramp}},
+		"fit.White":                {{white, curves[0]}, {model, settling}},
+		"fit.WhiteOrbit":           {{white}, {model, settling}, {"fitted", "published", "tested"}},
+		"fit.Channel":              {{curves[0], curves[1]}, {posterior}, {model, settling}},
+		"fit.Channels":             {{curves, curves[:2]}, {posterior}, {model, settling, marginal}, {fewDraws, fit.Sampling{Effective: 100, Compared: -1}}},
+		"fit.GeometryDraws":        {{posterior}, {model}, {8, 20}},
+		"fit.ChannelsOverGeometry": {{curves[:1]}, {posterior}, {model}, {fewDraws}, {8}},
+		"fit.ChannelCurve":         {{curves[0]}, {sampled[0]}, {posterior}, {model}},
+		"fit.WhiteWith":            {{white}, {with}, {ramp}},
+		"fit.ChannelWith":          {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
+		"fit.Function":             {{white}, {with, alone}, {ramp}},
 
 		"orbit.FitEphemeris":           {{[]int{0, 3, 10}}, {[]float64{100.2, 109.8, 132.3}}, {[]float64{0.001, 0.002, 0.001}}},
 		"orbit.Ephemeris.Timings":      {{ephemeris}, {[]float64{2460512.4, 2460525.1}}, {[]float64{0.001, 0}}},
