@@ -60,7 +60,7 @@ func asksForMuch(args []reflect.Value) bool {
 		case []lightcurve.Curve:
 			channels = len(s)
 		case fit.Sampling:
-			return channels > 100
+			return channels > 8
 		case sample.NUTSSettings:
 			return s.Evaluations == 0 || float64(s.Evaluations)*starts > evaluations
 		case sample.EnsembleSettings:

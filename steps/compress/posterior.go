@@ -18,6 +18,7 @@ type Settings struct {
 	Effective int    // draws that the weighted ones are to be worth
 	Scale     bool   // whether to integrate over a common factor of the errors, with the prior 1/factor
 	Compare   int    // draws to compare with the exact likelihood; 0 for none
+	Quick     bool   // do without walkers: what importance sampling gives, however bad
 	Seed      uint64 // of all random numbers
 	Stream    int    // of the light curve
 	// Directions are ways in which the geometry that light curves share may be wrong, each
@@ -109,7 +110,7 @@ func (c *channel) draw(settings Settings, out *Posterior) (f *fitted, d *draws, 
 		x.lo, x.hi = math.Max(lo, x.lo-half), math.Min(hi, x.hi+half)
 	}
 	out.K, out.Mixed = d.k, d.k <= mostK
-	if !out.Mixed {
+	if !out.Mixed && !settings.Quick {
 		w, rhat, err := c.walk(d, f, settings.Seed, settings.Stream)
 		if err == nil {
 			d, out.RHat, out.By = w, rhat, ByWalkers

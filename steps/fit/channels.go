@@ -41,10 +41,16 @@ import (
 // Errors: those of Channel; curves with other times than the first; a law or a parameter
 // that this method cannot have; settings out of range.
 func Channels(curves []lightcurve.Curve, white Posterior, model Model, sampling Sampling) ([]spectrum.Point, []ChannelPosterior, error) {
+	return channels(curves, white, model, sampling, false)
+}
+
+// channels is Channels; quick, for means and errors, without walkers.
+func channels(curves []lightcurve.Curve, white Posterior, model Model, sampling Sampling, quick bool) ([]spectrum.Point, []ChannelPosterior, error) {
 	b, err := newBatch(curves, white, model, sampling)
 	if err != nil {
 		return nil, nil, fmt.Errorf("channels: %w", err)
 	}
+	b.quick = quick
 	points, posteriors := make([]spectrum.Point, len(curves)), make([]ChannelPosterior, len(curves))
 	faults := make([]error, len(curves))
 	b.each(func(i int) { points[i], posteriors[i], faults[i] = b.sample(i) })
@@ -79,6 +85,7 @@ type batch struct {
 	whole      *space   // of the white fit
 	star       compress.Star
 	settling   float64 // held, d; 0 without one, NaN where it is free
+	quick      bool    // without walkers
 	scaled     bool    // the scale of the errors is integrated over
 	finite     []bool  // integrations at which all columns are known
 	inTransit  []bool
@@ -403,7 +410,7 @@ func (b *batch) sample(i int) (spectrum.Point, ChannelPosterior, error) {
 	if reason := b.unusable(in.Used); reason != "" {
 		return none(reason)
 	}
-	settings := compress.Settings{Effective: b.sampling.Effective, Scale: b.scaled, Seed: b.sampling.Seed,
+	settings := compress.Settings{Effective: b.sampling.Effective, Quick: b.quick, Scale: b.scaled, Seed: b.sampling.Seed,
 		Stream: curve.Channel.Index, Directions: b.directions}
 	if b.compared(i) {
 		settings.Compare = comparedDraws

@@ -11,7 +11,7 @@ import (
 
 const (
 	leastGeometries = 8
-	mostGeometries  = 200
+	mostGeometries  = 100
 	// geometryStream is the second half of the seed of draws of the geometry.
 	geometryStream = 0x67656f6d
 	// triesOfGeometry bounds how often a draw outside of what an orbit can be is made again.
@@ -23,7 +23,7 @@ const (
 // and the parameters themselves allow, and exact. Coefficients of the trend, of limb
 // darkening and of the noise, and what the data do not determine, stay as they are.
 //
-// Errors: an n that is not from 8 to 200; a posterior without a covariance, or with one
+// Errors: an n that is not from 8 to 100; a posterior without a covariance, or with one
 // that is none.
 func GeometryDraws(white Posterior, model Model, n int, seed uint64) ([]Posterior, error) {
 	const what = "draws of the geometry"
@@ -170,7 +170,7 @@ func ChannelsOverGeometry(curves []lightcurve.Curve, white Posterior, model Mode
 	quick := sampling
 	quick.Effective, quick.Compared = 1000, -1 // means and errors need fewer draws than intervals
 	for d, geometry := range draws {
-		some, _, err := Channels(curves, geometry, model, quick)
+		some, _, err := channels(curves, geometry, model, quick, true)
 		if err != nil {
 			return nil, nil, nil, err
 		}

@@ -52,7 +52,7 @@ func TestGeometry(t *testing.T) {
 	if _, err := spectrum.Assemble(points, shared); err != nil {
 		t.Error(err)
 	}
-	if _, err := GeometryDraws(white, model, 3, 1); err == nil || !strings.Contains(err.Error(), "expected 8 to 200") {
+	if _, err := GeometryDraws(white, model, 3, 1); err == nil || !strings.Contains(err.Error(), "expected 8 to 100") {
 		t.Errorf("three draws: %v", err)
 	}
 	white.Cov = nil
