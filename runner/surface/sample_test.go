@@ -279,7 +279,7 @@ func newSamples() *samples {
 		"fit.Channels":             {{curves, curves[:2]}, {posterior}, {model, settling, marginal}, {fewDraws, fit.Sampling{Effective: 100, Compared: -1}}},
 		"fit.GeometryDraws":        {{posterior}, {model}, {8, 20}},
 		"fit.ChannelsOverGeometry": {{curves[:1]}, {posterior}, {model}, {fewDraws}, {8}},
-		"fit.ChannelCurve":         {{curves[0]}, {sampled[0]}, {posterior}, {model}},
+		"fit.ChannelCurves":        {{curves}, {sampled}, {posterior}, {model}},
 		"fit.WhiteWith":            {{white}, {with}, {ramp}},
 		"fit.ChannelWith":          {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
 		"fit.Function":             {{white}, {with, alone}, {ramp}},

@@ -62,15 +62,26 @@ func channels(curves []lightcurve.Curve, white Posterior, model Model, sampling 
 	return points, posteriors, nil
 }
 
-// ChannelCurve is the light curve of a channel beside the model at the mode of its
-// posterior, for the white fit and the model that [Channels] had. The trend is that which
-// fits best with it. Errors: those of Channels.
-func ChannelCurve(curve lightcurve.Curve, posterior ChannelPosterior, white Posterior, model Model) (CurveFit, error) {
-	b, err := newBatch([]lightcurve.Curve{curve}, white, model, Sampling{})
-	if err != nil {
-		return CurveFit{}, fmt.Errorf("channel curve: %w", err)
+// ChannelCurves are the light curves of channels beside the models at the modes of their
+// posteriors, for the white fit and the model that [Channels] had. Trends are those that
+// fit best with them. Errors: those of Channels; another number of posteriors than of
+// curves.
+func ChannelCurves(curves []lightcurve.Curve, posteriors []ChannelPosterior, white Posterior, model Model) ([]CurveFit, error) {
+	if len(curves) != len(posteriors) {
+		return nil, fmt.Errorf("channel curves: %d posteriors; expected one for each of %d curves", len(posteriors), len(curves))
 	}
-	return b.curveFit(0, posterior)
+	b, err := newBatch(curves, white, model, Sampling{})
+	if err != nil {
+		return nil, fmt.Errorf("channel curves: %w", err)
+	}
+	out, faults := make([]CurveFit, len(curves)), make([]error, len(curves))
+	b.each(func(i int) { out[i], faults[i] = b.curveFit(i, posteriors[i]) })
+	for _, err := range faults {
+		if err != nil {
+			return nil, err
+		}
+	}
+	return out, nil
 }
 
 // A batch is channels to be sampled.

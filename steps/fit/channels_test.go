@@ -41,6 +41,13 @@ func TestChannelsAgreeWithFits(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	fits, err := ChannelCurves(curves, posteriors, white, model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := ChannelCurves(curves, posteriors[1:], white, model); err == nil {
+		t.Error("a posterior too few was accepted")
+	}
 	for i, c := range curves {
 		want, wantFit, err := Channel(c, white, model)
 		if err != nil {
@@ -71,10 +78,7 @@ func TestChannelsAgreeWithFits(t *testing.T) {
 		if q.Effective < 4000 || !q.Reliable || q.How != "importance sampling" {
 			t.Errorf("channel %d: %+v", i, q)
 		}
-		fitted, err := ChannelCurve(c, q, white, model)
-		if err != nil {
-			t.Fatal(err)
-		}
+		fitted := fits[i]
 		for k := range c.Time {
 			near("transit", fitted.Transit[k], wantFit.Transit[k], 2e-6)
 			near("trend", fitted.Trend[k], wantFit.Trend[k], 2e-5)

@@ -10,7 +10,7 @@ import (
 func init() {
 	Table["rimlight/steps/fit/fit"] = map[string]reflect.Value{
 		"Channel":              reflect.ValueOf(fit.Channel),
-		"ChannelCurve":         reflect.ValueOf(fit.ChannelCurve),
+		"ChannelCurves":        reflect.ValueOf(fit.ChannelCurves),
 		"ChannelPosterior":     reflect.ValueOf((*fit.ChannelPosterior)(nil)),
 		"ChannelWith":          reflect.ValueOf(fit.ChannelWith),
 		"Channels":             reflect.ValueOf(fit.Channels),
