@@ -11,8 +11,12 @@
 // limb-darkened star (package transit), and a linear combination of the terms of
 // a [systematics.Trend]. The method is Levenberg-Marquardt with analytic
 // derivatives; all coefficients, of the transit and of the trend, are fitted
-// jointly, so that the covariance holds all of them. Nothing is random: the same
-// input gives the same result, bit for bit.
+// jointly, so that the covariance holds all of them. The same input gives the same
+// result, bit for bit.
+//
+// [Channels] gives posteriors of all channels, with intervals and not only errors, for
+// less than the cost of their best fits: the likelihood is compressed (package
+// compress). Its draws follow from a seed.
 //
 // A recipe can bring a model of its own, a function of parameters that returns a
 // column with a value for each integration (package vector): as a further factor
