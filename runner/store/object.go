@@ -128,8 +128,8 @@ func (s *Store) putDrafts(drafts []*Draft) error {
 }
 
 func (s *Store) syncFolders(objects []Hash) error {
-	if len(objects) > manySyncs {
-		syncAll(s.dir)
+	if len(objects) > manySyncs && s.files.all(s.dir) {
+		return nil
 	}
 	done := map[byte]bool{}
 	for _, h := range objects {

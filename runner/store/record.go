@@ -211,8 +211,8 @@ func (s *Store) SetRecords(records []Record) []error {
 			errs[i] = s.explain(errs[i])
 		}
 	}
-	if len(folders) > manySyncs {
-		syncAll(s.dir)
+	if len(folders) > manySyncs && s.files.all(s.dir) {
+		return errs
 	}
 	for dir := range folders {
 		if err := s.syncFolder(dir); err != nil {
