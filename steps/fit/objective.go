@@ -51,7 +51,7 @@ type objective struct {
 	coords   [slots]float64
 	dip      []float64   // the transit
 	gradient [][]float64 // its derivatives in the transit model's arguments
-	chain    *chain      // and what makes them those in coordinates
+	chain    *chainRule  // and what makes them those in coordinates
 	factor   []float64   // the function; 1 without one
 	linear   []float64
 	trend    []float64 // factor × linear
@@ -179,9 +179,6 @@ func (m *objective) limits(k int) (lo, hi float64) {
 	}
 	return math.Inf(-1), math.Inf(1)
 }
-
-// joint poses the fit of all elements as a least-squares problem.
-func (m *objective) joint() *leastSquares { return m.problem(m.size(), m.residuals) }
 
 // problem poses the fit of the first n elements.
 func (m *objective) problem(n int, residuals func(x, res []float64, jac [][]float64) bool) *leastSquares {

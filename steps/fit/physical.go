@@ -122,13 +122,13 @@ func (s *space) params(v *[slots]float64, o orbit.Orbit) transit.Params {
 	}
 }
 
-// A chain turns the gradient of a light curve in the transit model's arguments, in
+// A chainRule turns the gradient of a light curve in the transit model's arguments, in
 // their order, into that in the slots' coordinates: a weight for each slot and
 // argument.
-type chain [slots][arguments]float64
+type chainRule [slots][arguments]float64
 
 // physicalChain is physical with the chain there.
-func (s *space) physicalChain(v *[slots]float64) (transit.Params, *chain, error) {
+func (s *space) physicalChain(v *[slots]float64) (transit.Params, *chainRule, error) {
 	e := s.elements(v)
 	o, jacobian, err := e.Jacobian()
 	if err != nil {
@@ -141,7 +141,7 @@ func (s *space) physicalChain(v *[slots]float64) (transit.Params, *chain, error)
 	if !polar {
 		o.Eccentricity = max(o.Eccentricity, leastEccentricity)
 	}
-	w := new(chain)
+	w := new(chainRule)
 	sin, cos := math.Sincos(o.Periastron)
 	for k, slot := range [...]int{slotPeriod, slotMid, slotSize, slotTilt, slotShape1, slotShape2, slotRadius} {
 		for row := range argumentShape {

@@ -3,6 +3,7 @@ package fit
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"rimlight/steps/orbit"
 	"rimlight/steps/transit"
@@ -155,28 +156,19 @@ func unitOf(name string) string {
 	return p.unit
 }
 
-// derived lists what follows from the parameters of a white fit.
-func (s *solution) derived() []Quantity {
-	space := s.objective.space
-	from := func(f func(p transit.Params) float64) func(v *[slots]float64) float64 {
-		return func(v *[slots]float64) float64 {
-			p, err := space.physical(v)
-			if err != nil {
-				return math.NaN()
-			}
-			return f(p)
-		}
-	}
-	out := []Quantity{
-		s.quantity("depth", "", "squared radius ratio", from(func(p transit.Params) float64 { return p.RadiusRatio * p.RadiusRatio })),
-	}
+// A derivation is a quantity that follows from the parameters of a transit.
+type derivation struct {
+	name, unit, about string
+	f                 func(p transit.Params) float64
+}
+
+// derivations lists those of a white fit that are not parameters of it.
+func (s *space) derivations() []derivation {
+	out := []derivation{{"depth", "", "squared radius ratio", func(p transit.Params) float64 { return p.RadiusRatio * p.RadiusRatio }}}
 	add := func(name, about string, f func(p transit.Params) float64) {
-		for _, known := range space.name {
-			if known == name {
-				return
-			}
+		if !slices.Contains(s.name[:], name) {
+			out = append(out, derivation{name, unitOf(name), about, f})
 		}
-		out = append(out, s.quantity(name, unitOf(name), about, from(f)))
 	}
 	add("midTransit", "time of mid-transit, BJD_TDB", func(p transit.Params) float64 { return p.Orbit.MidTransit })
 	add("axisRatio", "semi-major axis in stellar radii", func(p transit.Params) float64 { return p.Orbit.AxisRatio })
@@ -191,9 +183,38 @@ func (s *solution) derived() []Quantity {
 	})
 	add("eccentricity", "of the orbit", func(p transit.Params) float64 { return p.Orbit.Eccentricity })
 	add("periastron", "argument of periastron", func(p transit.Params) float64 { return p.Orbit.Periastron / degree })
-	for k := range space.limbs {
+	for k := range s.limbs {
 		add(fmt.Sprintf("u%d", k+1), [...]string{"first", "second", "third", "fourth"}[k]+" limb-darkening coefficient",
 			func(p transit.Params) float64 { return p.Law.Coefficients[k] })
+	}
+	return out
+}
+
+// derived lists what follows from the parameters of a white fit.
+func (s *solution) derived() []Quantity {
+	var out []Quantity
+	for _, d := range s.objective.space.derivations() {
+		out = append(out, s.quantity(d.name, d.unit, d.about, func(v *[slots]float64) float64 {
+			p, err := s.objective.space.physical(v)
+			if err != nil {
+				return math.NaN()
+			}
+			return d.f(p)
+		}))
+	}
+	return out
+}
+
+// derivedAt are the values of [solution.derived] at other coordinates.
+func (s *solution) derivedAt(v *[slots]float64) []float64 {
+	p, err := s.objective.space.physical(v)
+	var out []float64
+	for _, d := range s.objective.space.derivations() {
+		if err != nil {
+			out = append(out, math.NaN())
+		} else {
+			out = append(out, d.f(p))
+		}
 	}
 	return out
 }
