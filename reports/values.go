@@ -80,6 +80,8 @@ func (b *builder) show(title string, value any) []block {
 		return []block{{Posterior: b.posterior(v)}}
 	case []fit.Posterior:
 		return b.posteriors(title, v)
+	case fit.Sampled:
+		return b.sampled(title, v)
 	case fit.Model:
 		return b.model(v)
 	case fit.Priors:

@@ -20,7 +20,7 @@ import (
 // shown are the library's result types, by the Go type that recipes know them
 // by. Values of other types are decoded without their Go type.
 var shown = types(
-	check.Check{}, diagnose.Summary{}, figure.Figure{}, fit.CurveFit{}, fit.Model{}, fit.Posterior{}, fit.Quantity{}, lightcurve.Channel{}, lightcurve.Cube{}, lightcurve.Curve{},
+	check.Check{}, diagnose.Summary{}, figure.Figure{}, fit.CurveFit{}, fit.Model{}, fit.Posterior{}, fit.Sampled{}, fit.Quantity{}, lightcurve.Channel{}, lightcurve.Cube{}, lightcurve.Curve{},
 	limbtable.Table{}, spectrum.Point{}, spectrum.Spectrum{}, table.Table{}, false, 0, 0.0, "",
 )
 

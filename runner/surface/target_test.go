@@ -78,7 +78,7 @@ func (t target) call(args []reflect.Value) []reflect.Value {
 // rare are targets that take a millisecond or more and get three calls where
 // others get eight. It is for the running time alone.
 var rare = []string{
-	"fit.White", "fit.WhiteOrbit", "fit.Channel", "fit.WhiteWith", "fit.ChannelWith", "fit.Function", "simulate.Make", "figure.",
+	"fit.White", "fit.WhiteOrbit", "fit.Channel", "fit.WhiteWith", "fit.ChannelWith", "fit.Function", "fit.Sample", "fit.SampleWith", "simulate.Make", "figure.",
 	"sample.NUTS", "sample.Ensemble", "sample.Nested",
 }
 

@@ -21,7 +21,7 @@ func (s symbol) text() string {
 	if s.sub == "" {
 		return short(s.name)
 	}
-	if len(s.sub) == 1 {
+	if len(s.sub) == 1 && s.sub[0] <= '9' {
 		return short(s.name) + s.sub
 	}
 	return short(s.name) + "_" + short(s.sub)

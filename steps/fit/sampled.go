@@ -14,12 +14,12 @@ import (
 	"rimlight/steps/vector"
 )
 
-// Methods of [Sampling].
+// Methods of [Sampler].
 const (
-	SamplingNone     = "none"     // the maximum and its curvature only
-	SamplingNUTS     = "nuts"     // by Hamiltonian trajectories along the gradient (Hoffman & Gelman 2014)
-	SamplingEnsemble = "ensemble" // by an affine-invariant ensemble of walkers (Goodman & Weare 2010)
-	SamplingNested   = "nested"   // by nested sampling, which gives the evidence too (Skilling 2006)
+	SamplerNone     = "none"     // the maximum and its curvature only
+	SamplerNUTS     = "nuts"     // by Hamiltonian trajectories along the gradient (Hoffman & Gelman 2014)
+	SamplerEnsemble = "ensemble" // by an affine-invariant ensemble of walkers (Goodman & Weare 2010)
+	SamplerNested   = "nested"   // by nested sampling, which gives the evidence too (Skilling 2006)
 )
 
 const (
@@ -32,9 +32,9 @@ const (
 	mostPerDraw    = 1000   // evaluations of a chain for each of its draws, on average
 )
 
-// A Sampling says how to draw from a posterior. All numbers may be 0, which
+// A Sampler says how to draw from a posterior. All numbers may be 0, which
 // stands for sound ones.
-type Sampling struct {
+type Sampler struct {
 	Method string // one of none (also when empty), nuts, ensemble and nested
 	Seed   uint64 // of all random numbers
 	Chains int    // of nuts, 4 when 0; or walkers of the ensemble, four for each parameter and at least 32; at most 64
@@ -68,7 +68,7 @@ type Sampled struct {
 //
 // Errors: those of White; a method or numbers out of range; a density that a
 // sampler cannot cope with.
-func Sample(curve lightcurve.Curve, model Model, settings Sampling) (Sampled, error) {
+func Sample(curve lightcurve.Curve, model Model, settings Sampler) (Sampled, error) {
 	if err := model.plain(); err != nil {
 		return Sampled{}, fmt.Errorf("%s: %w", whatSample, err)
 	}
@@ -81,7 +81,7 @@ func Sample(curve lightcurve.Curve, model Model, settings Sampling) (Sampled, er
 // the ensemble needs none.
 //
 // Errors: those of Sample and of the fit.
-func SampleWith(curve lightcurve.Curve, model Model, f func(p []float64) vector.V, settings Sampling) (Sampled, error) {
+func SampleWith(curve lightcurve.Curve, model Model, f func(p []float64) vector.V, settings Sampler) (Sampled, error) {
 	var own *function
 	var err error
 	if model.Alone {
@@ -97,7 +97,7 @@ func SampleWith(curve lightcurve.Curve, model Model, f func(p []float64) vector.
 
 const whatSample = "posterior of a light curve"
 
-func sampled(curve lightcurve.Curve, model Model, own *function, settings Sampling) (Sampled, error) {
+func sampled(curve lightcurve.Curve, model Model, own *function, settings Sampler) (Sampled, error) {
 	fail := func(err error) (Sampled, error) { return Sampled{}, fmt.Errorf("%s: %w", whatSample, err) }
 	if err := settings.check(); err != nil {
 		return fail(err)
@@ -107,7 +107,7 @@ func sampled(curve lightcurve.Curve, model Model, own *function, settings Sampli
 		return fail(err)
 	}
 	out := Sampled{Posterior: s.posterior(model)}
-	if settings.Method == SamplingNone {
+	if settings.Method == SamplerNone {
 		return out, nil
 	}
 	t := newTarget(s.objective)
@@ -128,10 +128,10 @@ func sampled(curve lightcurve.Curve, model Model, own *function, settings Sampli
 }
 
 // check fills in the method and reports what is out of range.
-func (s *Sampling) check() error {
-	methods := []string{SamplingNone, SamplingNUTS, SamplingEnsemble, SamplingNested}
+func (s *Sampler) check() error {
+	methods := []string{SamplerNone, SamplerNUTS, SamplerEnsemble, SamplerNested}
 	if s.Method == "" {
-		s.Method = SamplingNone
+		s.Method = SamplerNone
 	}
 	known := false
 	for _, m := range methods {
@@ -154,12 +154,12 @@ func (s *Sampling) check() error {
 }
 
 // draw runs the sampler and puts checks and evidence into out.
-func (t *target) draw(s *solution, settings Sampling, out *Sampled) (chain.Draws, error) {
+func (t *target) draw(s *solution, settings Sampler, out *Sampled) (chain.Draws, error) {
 	parameters := t.parameters()
 	density := func(y []float64) float64 { return t.density(y, nil) }
 	const prefix = "posterior"
 	switch settings.Method {
-	case SamplingNUTS:
+	case SamplerNUTS:
 		start, covariance := t.start(s, orElse(settings.Chains, nutsChains), settings.Seed)
 		n := sample.NUTSSettings{
 			Seed: settings.Seed, WarmUp: orElse(settings.WarmUp, nutsWarmUp), Draws: settings.Draws,
@@ -171,7 +171,7 @@ func (t *target) draw(s *solution, settings Sampling, out *Sampled) (chain.Draws
 			out.Checks = chain.Checks(prefix, draws)
 		}
 		return draws, err
-	case SamplingEnsemble:
+	case SamplerEnsemble:
 		walkers := orElse(settings.Chains, min(mostChains, max(32, 4*len(t.at))))
 		start, _ := t.start(s, walkers, settings.Seed)
 		draws, err := sample.Ensemble(parameters, density, start, sample.EnsembleSettings{Seed: settings.Seed, WarmUp: settings.WarmUp, Draws: settings.Draws, Differential: 0.2})
