@@ -88,7 +88,7 @@ func TestMarginalLikelihood(t *testing.T) {
 	_, _, best, _ := target.place(y, false)
 	sd := [2]float64{1e-4, 2e-4}
 	const half, steps = 8, 400
-	sum, top := 0.0, math.Inf(-1)
+	sum := 0.0
 	at := func(a, b float64) float64 {
 		c := []float64{a, b}
 		m.combine(c)
@@ -100,7 +100,7 @@ func TestMarginalLikelihood(t *testing.T) {
 		z := (b - 1e-4) / 2e-4
 		return total - z*z/2 - math.Log(2e-4) - math.Log(2*math.Pi)/2
 	}
-	top = at(best[0], best[1])
+	top := at(best[0], best[1])
 	for i := -steps; i <= steps; i++ {
 		for j := -steps; j <= steps; j++ {
 			a, b := best[0]+half*sd[0]*float64(i)/steps, best[1]+half*sd[1]*float64(j)/steps
