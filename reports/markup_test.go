@@ -52,7 +52,7 @@ var known = map[string]bool{}
 func init() {
 	for _, n := range strings.Fields(`html head meta title style body a header svg circle path p code time span h1 h2 h3 h4 h5 h6 main nav ol ul li
 		section div strong pre b del ins figure figcaption dl dt dd article aside details summary table caption thead tbody tr th td script em br hr
-		input blockquote math mrow mi mn mo msub msup`) {
+		input blockquote math mrow mi mn mo mspace msub msup`) {
 		known[n] = true
 	}
 	for n := range svgNames {

@@ -99,9 +99,9 @@ func (p product) text() string {
 }
 
 func (p product) mathML() string {
-	sign := p.sign
-	if sign == "" {
-		sign = "\u2062" // invisible times
+	between := `<mspace width="0.17em"></mspace>`
+	if p.sign != "" {
+		between = "<mo>" + p.sign + "</mo>"
 	}
 	var parts []string
 	for _, f := range p.factors {
@@ -111,7 +111,7 @@ func (p product) mathML() string {
 			parts = append(parts, f.mathML())
 		}
 	}
-	return "<mrow>" + strings.Join(parts, "<mo>"+sign+"</mo>") + "</mrow>"
+	return "<mrow>" + strings.Join(parts, between) + "</mrow>"
 }
 
 // sum adds.
