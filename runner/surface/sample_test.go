@@ -272,6 +272,8 @@ func newSamples() *samples {
 	few, nuts := model, fit.Sampler{Method: fit.SamplerNUTS, Chains: 1, WarmUp: 10, Draws: 10}
 	few.White = fit.Priors{{Name: "radiusRatio", Kind: fit.Uniform, A: 0.05, B: 0.2}, {Name: "u1", Kind: fit.Normal, A: 0.4, B: 0.1}}
 	with, alone := model, fit.Model{Trend: model.Trend, White: hook, Function: names}
+	ramps := alone
+	ramps.Alone = true
 	with.White, with.Channel, with.Function = append(slices.Clone(whitePriors), hook...), append(slices.Clone(channelPriors), hook...), names
 
 	s := &samples{byType: map[reflect.Type][]reflect.Value{}, own: map[string][][]any{
@@ -286,7 +288,7 @@ func newSamples() *samples {
 		"fit.ChannelWith":          {{curves[0], curves[1]}, {posterior}, {with}, {ramp}},
 		"fit.Function":             {{white}, {with, alone}, {ramp}},
 		"fit.Sample":               {{curves[0]}, {few, fit.Model{White: hook}}, {fit.Sampler{}, nuts, fit.Sampler{Method: fit.SamplerEnsemble, WarmUp: 10, Draws: 10}}},
-		"fit.SampleWith":           {{curves[0]}, {alone}, {ramp}, {fit.Sampler{}, nuts}},
+		"fit.SampleWith":           {{curves[0]}, {ramps}, {ramp}, {fit.Sampler{}, nuts}},
 
 		"orbit.FitEphemeris":           {{[]int{0, 3, 10}}, {[]float64{100.2, 109.8, 132.3}}, {[]float64{0.001, 0.002, 0.001}}},
 		"orbit.Ephemeris.Timings":      {{ephemeris}, {[]float64{2460512.4, 2460525.1}}, {[]float64{0.001, 0}}},
@@ -369,6 +371,7 @@ func newSamples() *samples {
 		"limbtable.ReadThroughput":      {{[]byte(throughputCSV)}},
 		"limbtable.Band":                {{intensities}, {throughput, limbtable.Throughput{}}, {1.0, 1.5}, {2.0, 3.0}, {limbtable.Photons, limbtable.Energy}},
 		"limbtable.SteepestEdge":        {{profile}},
+		"limbtable.Table.LawAt":         {{limbs}, {1.0, 1.5}, {2.0, 3.0}},
 		"limbtable.FitLaw":              {{profile}, {limbtable.Choice{}, choice}},
 		"limbtable.Coefficients":        {{intensities}, {throughput}, {channelsOf}, {limbtable.Photons}, {limbtable.Choice{}, choice}},
 		"spectrum.ReadCSV":              {{spectrum.CSV(spec)}},
