@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"os/signal"
 	"sync"
@@ -16,6 +17,7 @@ import (
 
 	"rimlight/runner/diag"
 	"rimlight/runner/plan"
+	"rimlight/runner/worker"
 )
 
 // Exit statuses.
@@ -75,6 +77,7 @@ func Run(args []string, stdout, stderr io.Writer) int {
 	// Another Ctrl-C ends the program at once, but not one that came with the
 	// first, as from a program that sends it to the process and to its group.
 	defer context.AfterFunc(ctx, func() { time.AfterFunc(time.Second, func() { signal.Reset(os.Interrupt) }) })()
+	tuneCollector()
 	a := &app{args: args, stdout: stdout, stderr: stderr, terminal: isTerminal(stderr),
 		executable: sync.OnceValue(executableHash), library: sync.OnceValues(plan.OpenLibrary)}
 	root := a.root()
@@ -116,3 +119,11 @@ A recipe is a program. Read a stranger's recipe before you run it.` + exitHelp,
 	root.AddCommand(a.runCommand(), a.checkCommand(), a.demoCommand(), a.storeCommand(), a.chunkCommand())
 	return root
 }
+
+// tuneCollector lets garbage lie about in this process as in a worker: a run
+// with everything known took a third less time. Whoever sets GOGC is obeyed.
+var tuneCollector = sync.OnceFunc(func() {
+	if os.Getenv("GOGC") == "" {
+		worker.TuneCollector(math.MaxInt64)
+	}
+})

@@ -18,9 +18,10 @@ const (
 	leastGarbage = 10
 )
 
-// tuneCollector has the garbage collector's pace set anew after each
-// collection, in a worker that may have so many bytes of memory.
-func tuneCollector(memory int64) {
+// TuneCollector has the garbage collector's pace set anew after each
+// collection, in a process that may have so many bytes of memory: a worker, or
+// the program that starts them. It is for the start of a process.
+func TuneCollector(memory int64) {
 	live := []metrics.Sample{{Name: "/gc/heap/live:bytes"}}
 	most := uint64(min(mostGarbage, memory/garbageShare))
 	now := int(min(mostPercent, most*100/(4<<20))) // nothing is live yet; Go then counts as if 4 MiB were

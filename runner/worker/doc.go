@@ -38,6 +38,6 @@
 // three, and nothing else.
 //
 // A worker collects its garbage more eagerly than Go does by default once its
-// heap is large (see tuneCollector): numbers need not be looked at, so it costs
+// heap is large (see TuneCollector): numbers need not be looked at, so it costs
 // little, and the heap does not double.
 package worker

@@ -91,7 +91,7 @@ func (s *server) serve(q Message) (Message, error) {
 			return Message{}, err
 		}
 		s.confined, s.results = true, h.Results
-		tuneCollector(h.Memory)
+		TuneCollector(h.Memory)
 		return message(answer, report)
 	case askCheck:
 		var h Code
