@@ -224,7 +224,7 @@ func TestMisbehaviour(t *testing.T) {
 		f.set("full", "2")
 		b.run(command.ExitDone)
 		same(t, b)
-		if n := f.arrays(); n < 3 { // four elements to go, of a first step here and a first wave
+		if n := f.arrays(); n < 2 { // of which the number follows from what elements cost
 			t.Errorf("there were %d arrays", n)
 		}
 	})
@@ -256,8 +256,9 @@ func TestMisbehaviour(t *testing.T) {
 		if !strings.Contains(said, "Slurm jobs ended before they had computed it") || !strings.Contains(said, "Detected 1 oom_kill event") {
 			t.Errorf("it said\n%s", said)
 		}
-		if n := f.arrays(); n != 3 {
-			t.Errorf("there were %d arrays, expected 3", n)
+		// On a busy machine, one wave of chunks may take more than one array.
+		if n := f.arrays(); n < 3 || n > 9 {
+			t.Errorf("there were %d arrays, expected 3 to 9", n)
 		}
 		b.clean()
 		os.Remove(filepath.Join(f.dir, "doomed"))
