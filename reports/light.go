@@ -71,28 +71,23 @@ func LightOf(value any) (Light, bool) {
 			Scatter: []float64{v.Scatter.RMS}, Ratio: []float64{v.Scatter.Ratio}, Beta: []float64{v.Beta.Value},
 		}, true
 	case []lightcurve.Curve:
-		out := Light{Kind: curvesLight}
-		for _, c := range v {
-			l, _ := LightOf(c)
-			out.Add(l)
-		}
-		return out, true
+		return sumOf(curvesLight, v), true
 	case []fit.CurveFit:
-		out := Light{Kind: fitsLight}
-		for _, c := range v {
-			l, _ := LightOf(c)
-			out.Add(l)
-		}
-		return out, true
+		return sumOf(fitsLight, v), true
 	case []diagnose.Summary:
-		out := Light{Kind: fitsLight}
-		for _, c := range v {
-			l, _ := LightOf(c)
-			out.Add(l)
-		}
-		return out, true
+		return sumOf(fitsLight, v), true
 	}
 	return Light{}, false
+}
+
+// sumOf is the sum of curves, or of fits.
+func sumOf[T any](kind string, values []T) Light {
+	out := Light{Kind: kind}
+	for _, v := range values {
+		l, _ := LightOf(v)
+		out.Add(l)
+	}
+	return out
 }
 
 func newLight(kind string, time []float64, aux []lightcurve.Series) Light {

@@ -65,6 +65,15 @@ type app struct {
 	library    func() (*plan.Library, error)
 }
 
+// Main is the whole program: a worker where the process was started as one,
+// otherwise the command line. It does not return.
+func Main() {
+	if worker.Requested() {
+		os.Exit(worker.Main())
+	}
+	os.Exit(Run(os.Args[1:], os.Stdout, os.Stderr))
+}
+
 // Run carries out one command line, without the program's name, and returns
 // the exit status.
 func Run(args []string, stdout, stderr io.Writer) int {

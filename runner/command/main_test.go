@@ -12,11 +12,8 @@ import (
 // TestMain lets this test binary serve as the program and as the worker that
 // tests start.
 func TestMain(m *testing.M) {
-	if worker.Requested() {
-		os.Exit(worker.Main())
-	}
-	if filepath.Base(os.Args[0]) == "rimlight" {
-		os.Exit(Run(os.Args[1:], os.Stdout, os.Stderr))
+	if worker.Requested() || filepath.Base(os.Args[0]) == "rimlight" {
+		Main()
 	}
 	os.Exit(m.Run())
 }

@@ -1,6 +1,7 @@
 package command
 
 import (
+	"context"
 	"fmt"
 	"slices"
 	"strings"
@@ -21,11 +22,7 @@ what no other report needs, and then what the store holds, step by step.
 Results that several steps or reports share count for each of them.` + exitHelp,
 		Args: cobra.ExactArgs(1),
 		RunE: func(c *cobra.Command, args []string) error {
-			s, err := openStore(args[0])
-			if err != nil {
-				return err
-			}
-			inv, err := a.inventory(c.Context(), s, args[0], nil)
+			inv, err := a.inventoryOf(c.Context(), args[0])
 			if err != nil {
 				return err
 			}
@@ -54,6 +51,15 @@ Results that several steps or reports share count for each of them.` + exitHelp,
 	c.Flags().BoolVar(&each, "each", false, "one line for each result, with who computed it, when and how long")
 	c.Flags().BoolVar(&json, "json", false, "one JSON object for each result, for programs")
 	return c
+}
+
+// inventoryOf opens a store and says what it holds.
+func (a *app) inventoryOf(ctx context.Context, dir string) (*inventory, error) {
+	s, err := openStore(dir)
+	if err != nil {
+		return nil, err
+	}
+	return a.inventory(ctx, s, dir, nil)
 }
 
 // listRuns shows the reports with what they need.
@@ -160,11 +166,7 @@ said, who needs it, and the text of the key with everything it was computed from
 		Example: "  rimlight store show rimlight.store 3f2a9c",
 		Args:    cobra.ExactArgs(2),
 		RunE: func(c *cobra.Command, args []string) error {
-			s, err := openStore(args[0])
-			if err != nil {
-				return err
-			}
-			inv, err := a.inventory(c.Context(), s, args[0], nil)
+			inv, err := a.inventoryOf(c.Context(), args[0])
 			if err != nil {
 				return err
 			}

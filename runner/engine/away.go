@@ -47,7 +47,7 @@ func (e *Engine) Carry(ctx context.Context, w Work, ended func(unit int, err err
 		ended(n, faultOf(err, comps[n].Log))
 	}
 	if items == nil {
-		err = e.carryOne(ctx, spec, &comps[0])
+		err = e.computeHere(ctx, spec, &comps[0])
 		if err == nil || ctx.Err() == nil {
 			told(0, err)
 		}
@@ -99,19 +99,4 @@ func (e *Engine) adopt(w Work) (*plan.Step, error) {
 		}
 	}
 	return spec, nil
-}
-
-func (e *Engine) carryOne(ctx context.Context, spec *plan.Step, c *Computation) error {
-	args, err := e.arguments(ctx, spec)
-	if err != nil {
-		return err
-	}
-	h := hold{e, massive(args)}
-	if !h.take(ctx) {
-		return ctx.Err()
-	}
-	defer h.give()
-	p := pool{e: e, spec: spec, args: args, hold: h}
-	defer p.close()
-	return p.compute(ctx, c, nil)
 }

@@ -116,6 +116,11 @@ func (e *Engine) compute(ctx context.Context, spec *plan.Step, c *Computation) e
 	if took := e.tookBefore(spec.Name, -1); e.mayLeave(spec) && e.Elsewhere.Takes(1, took) {
 		return e.computeAway(ctx, spec, c, took)
 	}
+	return e.computeHere(ctx, spec, c)
+}
+
+// computeHere computes a plain step in a worker of this machine.
+func (e *Engine) computeHere(ctx context.Context, spec *plan.Step, c *Computation) error {
 	args, err := e.arguments(ctx, spec)
 	if err != nil {
 		return err

@@ -104,21 +104,8 @@ func (c *checker) boundText() {
 		}
 		return true
 	})
-	known := map[string]int{}
-	var length func(e ast.Expr) int
-	named := func(name string) int {
-		if n, ok := known[name]; ok {
-			return n
-		}
-		known[name] = 0 // a cycle is a type error
-		most := 0
-		for _, e := range values[name] {
-			most = max(most, length(e))
-		}
-		known[name] = most
-		return most
-	}
-	length = func(e ast.Expr) int {
+	var named func(name string) int
+	named = longest(values, 0, func(e ast.Expr) int { // a cycle is a type error
 		sum := 0
 		ast.Inspect(e, func(n ast.Node) bool {
 			switch n := n.(type) {
@@ -133,7 +120,7 @@ func (c *checker) boundText() {
 			return true
 		})
 		return sum
-	}
+	})
 	total := 0
 	ast.Inspect(c.tree, func(n ast.Node) bool {
 		id, ok := n.(*ast.Ident)
@@ -145,6 +132,25 @@ func (c *checker) boundText() {
 		}
 		return true
 	})
+}
+
+// longest gives the length of what a name may stand for: the greatest that
+// length finds for any expression of that name, at least least. Length may ask
+// for names itself; within its own expressions a name counts as least.
+func longest(of map[string][]ast.Expr, least int, length func(ast.Expr) int) func(name string) int {
+	known := map[string]int{}
+	return func(name string) int {
+		if n, ok := known[name]; ok {
+			return n
+		}
+		known[name] = least
+		most := least
+		for _, e := range of[name] {
+			most = max(most, length(e))
+		}
+		known[name] = most
+		return most
+	}
 }
 
 // boundTypes bounds how long the types of the recipe are written out, with the
@@ -160,20 +166,8 @@ func (c *checker) boundTypes() {
 		}
 		return true
 	})
-	known := map[string]int{}
 	var parts func(e ast.Expr) int
-	named := func(name string) int {
-		if n, ok := known[name]; ok {
-			return n
-		}
-		known[name] = 1
-		most := 1
-		for _, e := range specs[name] {
-			most = max(most, parts(e))
-		}
-		known[name] = most
-		return most
-	}
+	named := longest(specs, 1, func(e ast.Expr) int { return parts(e) })
 	parts = func(e ast.Expr) int {
 		sum := 1
 		ast.Inspect(e, func(n ast.Node) bool {

@@ -18,11 +18,8 @@ import (
 // TestMain lets this test binary serve as the program, here and on nodes, and as
 // the worker that it starts.
 func TestMain(m *testing.M) {
-	if worker.Requested() {
-		os.Exit(worker.Main())
-	}
-	if filepath.Base(os.Args[0]) == "rimlight" {
-		os.Exit(command.Run(os.Args[1:], os.Stdout, os.Stderr))
+	if worker.Requested() || filepath.Base(os.Args[0]) == "rimlight" {
+		command.Main()
 	}
 	os.Exit(m.Run())
 }

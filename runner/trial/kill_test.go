@@ -13,8 +13,6 @@ import (
 	"syscall"
 	"testing"
 	"time"
-
-	"rimlight/runner/store"
 )
 
 // TestKills kills runs at random moments: the program, a worker, or both. A run
@@ -229,19 +227,7 @@ func (b *bench) finished() map[string]int {
 	if _, err := os.Stat(filepath.Join(b.store, "rimlight-store")); err != nil {
 		return out
 	}
-	s, err := store.Open(b.store)
-	if err != nil {
-		b.t.Fatal(err)
-	}
-	keys, err := s.Keys()
-	if err != nil {
-		b.t.Fatal(err)
-	}
-	for _, k := range keys {
-		r, ok, err := s.Record(k)
-		if !ok {
-			b.t.Errorf("after a kill, record %s: %v", k.Short(), err)
-		}
+	for _, r := range b.records() {
 		lines := strings.SplitN(r.Text, "\n", 3) // the version of keys, then what it is of
 		out[lines[1]]++
 	}

@@ -70,12 +70,7 @@ func TestSignals(t *testing.T) {
 	for _, s := range []syscall.Signal{syscall.SIGINT, syscall.SIGTERM, syscall.SIGHUP} {
 		t.Run(s.String(), func(t *testing.T) {
 			b := newBench(t).slow()
-			c := b.command()
-			var said bytes.Buffer
-			c.Stdout, c.Stderr = &said, &said
-			if err := c.Start(); err != nil {
-				t.Fatal(err)
-			}
+			c, said := b.started()
 			b.caught(20)
 			c.Process.Signal(s)
 			c.Process.Signal(s)

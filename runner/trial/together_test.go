@@ -87,12 +87,7 @@ func TestStoreDeleted(t *testing.T) {
 	want := undisturbed(t)
 	for i, part := range []string{"", "", "objects", "records"} {
 		b := newBench(t).slow()
-		c := b.command()
-		var said bytes.Buffer
-		c.Stdout, c.Stderr = &said, &said
-		if err := c.Start(); err != nil {
-			t.Fatal(err)
-		}
+		c, said := b.started()
 		b.caught(10 + 10*i)
 		if i == 0 { // in one go
 			if err := os.Rename(b.store, b.store+".gone"); err != nil {
@@ -152,12 +147,7 @@ func TestTrimming(t *testing.T) {
 			t.Fatal(err)
 		}
 	}
-	c := b.slow().command()
-	var said bytes.Buffer
-	c.Stdout, c.Stderr = &said, &said
-	if err := c.Start(); err != nil {
-		t.Fatal(err)
-	}
+	c, said := b.slow().started()
 	b.caught(elements + 20)
 	says(t, demand(t, b.program("store", "trim", b.store), 0), "would be taken out")
 	says(t, demand(t, b.program("store", "trim", b.store, "--remove"), 2), "the result store "+b.store+" is in use (a run on ", "wait until that is done")

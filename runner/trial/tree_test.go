@@ -32,20 +32,8 @@ func treeOf(b *bench) tree {
 			out[dir+"/"+filepath.Base(path)] = "there"
 		}
 	}
-	s, err := store.Open(b.store)
-	if err != nil {
-		b.t.Fatal(err)
-	}
-	keys, err := s.Keys()
-	if err != nil {
-		b.t.Fatal(err)
-	}
-	for _, k := range keys {
-		r, ok, err := s.Record(k)
-		if !ok {
-			b.t.Fatalf("record %s: %v", k.Short(), err)
-		}
-		out["records/"+k.String()] = fmt.Sprint(r.Text, r.Results, r.Log, r.Notes)
+	for _, r := range b.records() {
+		out["records/"+r.Key.String()] = fmt.Sprint(r.Text, r.Results, r.Log, r.Notes)
 	}
 	for _, name := range []string{"spectrum.csv", "spectrum.ecsv", "report.html"} {
 		text, err := os.ReadFile(filepath.Join(b.out, name))
@@ -98,6 +86,28 @@ func (got tree) equal(t testing.TB, want tree) {
 func (got tree) within(want tree) tree {
 	maps.DeleteFunc(got, func(name, _ string) bool { return want[name] == "" })
 	return got
+}
+
+// records are all records of the store, each of which must be readable.
+func (b *bench) records() []store.Record {
+	b.t.Helper()
+	s, err := store.Open(b.store)
+	if err != nil {
+		b.t.Fatal(err)
+	}
+	keys, err := s.Keys()
+	if err != nil {
+		b.t.Fatal(err)
+	}
+	var out []store.Record
+	for _, k := range keys {
+		r, ok, err := s.Record(k)
+		if !ok {
+			b.t.Fatalf("record %s: %v", k.Short(), err)
+		}
+		out = append(out, r)
+	}
+	return out
 }
 
 // gapBeyond reports whether an object that is not in want is the gap of an

@@ -16,11 +16,8 @@ import (
 // TestMain lets this test binary serve as the program and as the worker that
 // the program starts, as main of runner/cmd/rimlight does.
 func TestMain(m *testing.M) {
-	if worker.Requested() {
-		os.Exit(worker.Main())
-	}
-	if filepath.Base(os.Args[0]) == "rimlight" {
-		os.Exit(command.Run(os.Args[1:], os.Stdout, os.Stderr))
+	if worker.Requested() || filepath.Base(os.Args[0]) == "rimlight" {
+		command.Main()
 	}
 	os.Exit(m.Run())
 }
@@ -169,6 +166,17 @@ func (b *bench) run(status int, args ...string) string {
 func (b *bench) verify(status int) string {
 	b.t.Helper()
 	return demand(b.t, b.program("store", "verify", b.store), status)
+}
+
+// started is a run that goes on, with what it will have said.
+func (b *bench) started() (c *exec.Cmd, said *bytes.Buffer) {
+	b.t.Helper()
+	c, said = b.command(), new(bytes.Buffer)
+	c.Stdout, c.Stderr = said, said
+	if err := c.Start(); err != nil {
+		b.t.Fatal(err)
+	}
+	return c, said
 }
 
 // demand runs a command and demands its exit status. It gives what was said.

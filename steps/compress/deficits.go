@@ -5,7 +5,6 @@ import (
 	"math"
 
 	"gonum.org/v1/gonum/floats"
-	"gonum.org/v1/gonum/mat"
 
 	"rimlight/steps/limb"
 	"rimlight/steps/orbit"
@@ -132,13 +131,7 @@ func (d *Deficits) exact(star *Star, r float64) ([][]float64, error) {
 // turn rotates functions of time onto orthogonal ones.
 func (d *Deficits) turn(raw [][]float64) {
 	n := len(raw)
-	products := mat.NewSymDense(n, nil)
-	for a := range n {
-		for b := range a + 1 {
-			products.SetSym(a, b, floats.Dot(raw[a], raw[b]))
-		}
-	}
-	norm, vectors := decompose(products)
+	norm, vectors := decompose(raw)
 	for a := range norm {
 		if !(norm[a] > negligible*norm[0]) {
 			break

@@ -46,13 +46,7 @@ func (f *family) at(x float64) float64 { return (f.lo+f.hi)/2 + x*(f.hi-f.lo)/2 
 // columns get, rare the relative norm below which they are left out.
 func (f *family) settle(raw [][]float64, unit, rare float64) {
 	n := len(raw)
-	products := mat.NewSymDense(n, nil)
-	for a := range n {
-		for b := range a + 1 {
-			products.SetSym(a, b, floats.Dot(raw[a], raw[b]))
-		}
-	}
-	norm, vectors := decompose(products)
+	norm, vectors := decompose(raw)
 	transform := chebyshevTransform(n)
 	for m := range norm {
 		if !(norm[m] > rare*norm[0]) {
@@ -70,10 +64,17 @@ func (f *family) settle(raw [][]float64, unit, rare float64) {
 	}
 }
 
-// decompose gives roots of the eigenvalues of a matrix of products, decreasing, and the
-// eigenvectors in that order; nothing for numbers that are not finite.
-func decompose(products *mat.SymDense) (norm []float64, vectors *mat.Dense) {
-	n := products.SymmetricDim()
+// decompose gives roots of the eigenvalues of the matrix of products of functions of
+// time, decreasing, and the eigenvectors in that order; nothing for numbers that are not
+// finite.
+func decompose(raw [][]float64) (norm []float64, vectors *mat.Dense) {
+	n := len(raw)
+	products := mat.NewSymDense(n, nil)
+	for a := range n {
+		for b := range a + 1 {
+			products.SetSym(a, b, floats.Dot(raw[a], raw[b]))
+		}
+	}
 	var eigen mat.EigenSym
 	if !eigen.Factorize(products, true) {
 		return nil, nil

@@ -71,21 +71,36 @@ func (t *target) room(b *tables) {
 // value is the logarithm of the density at coordinates z, up to a constant; -Inf where
 // there is none, and where the tables do not reach.
 func (t *target) value(n *node, z []float64) float64 {
-	t.parameters.at(t.law, t.free, z, false, &t.at)
-	b := n.piece(t.at.r)
-	if b == nil {
-		return math.Inf(-1)
-	}
-	t.room(b)
-	if !t.phi.set(b.deficits, b.functions, t.at.r, &t.at.u) {
-		return math.Inf(-1)
-	}
-	b.fill(t.phi.value, t.g)
-	chi2, logDet, ok := factorise(t.g, b.size)
-	if !ok {
+	_, chi2, logDet := t.fit(n, z, false)
+	if math.IsInf(chi2, 1) {
 		return math.Inf(-1)
 	}
 	return t.density(chi2, logDet, z)
+}
+
+// fit takes what the coefficients can explain off, at coordinates z: chi-square of the
+// rest and the logarithm of the determinant, from the tables b that reach there. Chi-square
+// is +Inf where there is no density.
+func (t *target) fit(n *node, z []float64, slopes bool) (b *tables, chi2, logDet float64) {
+	t.parameters.at(t.law, t.free, z, slopes, &t.at)
+	if b = n.piece(t.at.r); b == nil {
+		return nil, math.Inf(1), 0
+	}
+	t.room(b)
+	var ok bool
+	if slopes {
+		ok = t.phi.slopes(b.deficits, b.functions, t.at.r, &t.at.u)
+	} else {
+		ok = t.phi.set(b.deficits, b.functions, t.at.r, &t.at.u)
+	}
+	if !ok {
+		return b, math.Inf(1), 0
+	}
+	b.fill(t.phi.value, t.g)
+	if chi2, logDet, ok = factorise(t.g, b.size); !ok {
+		return b, math.Inf(1), 0
+	}
+	return b, chi2, logDet
 }
 
 func (t *target) density(chi2, logDet float64, z []float64) float64 {
@@ -104,18 +119,8 @@ func (t *target) density(chi2, logDet float64, z []float64) float64 {
 // slopes is value with its gradient in z, and minus its second derivatives but for those
 // of the determinant and of the shares in r and u, which are small at the mode.
 func (t *target) slopes(n *node, z, gradient, curvature []float64) float64 {
-	t.parameters.at(t.law, t.free, z, true, &t.at)
-	b := n.piece(t.at.r)
-	if b == nil {
-		return math.Inf(-1)
-	}
-	t.room(b)
-	if !t.phi.slopes(b.deficits, b.functions, t.at.r, &t.at.u) {
-		return math.Inf(-1)
-	}
-	b.fill(t.phi.value, t.g)
-	chi2, logDet, ok := factorise(t.g, b.size)
-	if !ok {
+	b, chi2, logDet := t.fit(n, z, true)
+	if math.IsInf(chi2, 1) {
 		return math.Inf(-1)
 	}
 	solved(t.g, b.size, t.s, t.inverse)

@@ -17,19 +17,25 @@ func samplingPriors() Priors {
 		{Name: "settlingTime", Kind: LogUniform, A: 0.002, B: 0.2, Unit: "d"}}
 }
 
-// TestChannelsAgreeWithFits holds means and standard deviations of the posteriors against
-// the best fits and their errors, which they are near to in light curves like these.
-func TestChannelsAgreeWithFits(t *testing.T) {
-	s := newScene(t, 5, 1500, 6)
-	model := s.model()
+// fittedScene is a scene whose white light curve has been fitted with the model.
+func fittedScene(t *testing.T, seed uint64, integrations, channels int) (s scene, model Model, white Posterior) {
+	t.Helper()
+	s = newScene(t, seed, integrations, channels)
+	model = s.model()
 	curve, err := lightcurve.White(s.cube)
 	if err != nil {
 		t.Fatal(err)
 	}
-	white, _, err := White(curve, withWhite(model, whitePriors()))
-	if err != nil {
+	if white, _, err = White(curve, withWhite(model, whitePriors())); err != nil {
 		t.Fatal(err)
 	}
+	return s, model, white
+}
+
+// TestChannelsAgreeWithFits holds means and standard deviations of the posteriors against
+// the best fits and their errors, which they are near to in light curves like these.
+func TestChannelsAgreeWithFits(t *testing.T) {
+	s, model, white := fittedScene(t, 5, 1500, 6)
 	curves := lightcurve.Curves(s.cube)
 	curves[2].Mask[700] = lightcurve.Outlier
 	curves[2].Flux[700] = math.NaN()
@@ -97,16 +103,7 @@ func TestChannelsAgreeWithFits(t *testing.T) {
 // TestChannelsOnAnyCores asks for the same bytes whatever the cores, and whatever the
 // block that a channel is in.
 func TestChannelsOnAnyCores(t *testing.T) {
-	s := newScene(t, 6, 800, 5)
-	model := s.model()
-	curve, err := lightcurve.White(s.cube)
-	if err != nil {
-		t.Fatal(err)
-	}
-	white, _, err := White(curve, withWhite(model, whitePriors()))
-	if err != nil {
-		t.Fatal(err)
-	}
+	s, model, white := fittedScene(t, 6, 800, 5)
 	curves := lightcurve.Curves(s.cube)
 	for k := range curves[1].Mask { // too little is left
 		if k > 20 {

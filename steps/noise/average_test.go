@@ -17,7 +17,7 @@ func even(n int) []float64 {
 	return out
 }
 
-func fileOf(t *testing.T, name string) [][]string {
+func fileOf(t testing.TB, name string) [][]string {
 	t.Helper()
 	f, err := os.Open(filepath.Join("../../testdata", name))
 	if err != nil {

@@ -1,7 +1,6 @@
 package noise
 
 import (
-	"encoding/csv"
 	"encoding/json"
 	"math"
 	"os"
@@ -17,15 +16,7 @@ const testdata = "../../testdata/noise"
 // columnsOf reads the columns of a file by name.
 func columnsOf(t testing.TB, file string) map[string][]float64 {
 	t.Helper()
-	f, err := os.Open(filepath.Join(testdata, file))
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
+	rows := fileOf(t, "noise/"+file)
 	out := map[string][]float64{}
 	for k, name := range rows[0] {
 		for _, row := range rows[1:] {

@@ -2,16 +2,6 @@
 // transmission spectrum, by running Markdown recipes with embedded Go steps.
 package main
 
-import (
-	"os"
+import "rimlight/runner/command"
 
-	"rimlight/runner/command"
-	"rimlight/runner/worker"
-)
-
-func main() {
-	if worker.Requested() {
-		os.Exit(worker.Main())
-	}
-	os.Exit(command.Run(os.Args[1:], os.Stdout, os.Stderr))
-}
+func main() { command.Main() }
